@@ -1,0 +1,1 @@
+"""designer: payment rules for shared decisions, proved before anyone signs."""
