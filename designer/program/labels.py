@@ -1,0 +1,106 @@
+"""Labels are values: the same label names a row, its multiplier and the sentence about it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Label:
+    """The name of a row or a column. `at` is one type label per party, in party order."""
+
+
+# -- columns -----------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Pays(Label):
+    """t_i(theta): what a party pays at a profile."""
+
+    party: str
+    at: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Decides(Label):
+    """x_k(theta): the probability of an option at a profile."""
+
+    option: str
+    at: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class ExpectedPay(Label):
+    """m_i(a): a party's expected payment when it reports a type (column or defining row)."""
+
+    party: str
+    type: str
+
+
+@dataclass(frozen=True)
+class ExpectedDecision(Label):
+    """q_i(k, a): the probability of an option when a party reports a type."""
+
+    party: str
+    type: str
+    option: str
+
+
+@dataclass(frozen=True)
+class Unknown(Label):
+    """A scalar unknown: outside money, a floor, the largest payment, a margin."""
+
+    name: str
+
+
+# -- rows --------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Honest(Label):
+    """A party of a true type does not gain by reporting another; at a profile if dominant."""
+
+    party: str
+    true: str
+    told: str
+    at: tuple[str, ...] | None = None
+
+
+@dataclass(frozen=True)
+class TakesPart(Label):
+    """A party is no worse off than outside: on average, per type, or at a profile."""
+
+    party: str
+    type: str | None = None
+    at: tuple[str, ...] | None = None
+
+
+@dataclass(frozen=True)
+class Balances(Label):
+    """The pot covers the outlay: on average (at is None) or at a profile."""
+
+    at: tuple[str, ...] | None = None
+
+
+@dataclass(frozen=True)
+class Lottery(Label):
+    """The probabilities of the options sum to one at a profile."""
+
+    at: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Clause(Label):
+    """A limit, a side demand, an even-handedness row or a goal's own row."""
+
+    group: str
+    key: str
+    party: str | None = None
+    at: tuple[str, ...] | None = None
+
+
+@dataclass(frozen=True)
+class Pin(Label):
+    """An earlier goal keeps its optimal value."""
+
+    goal: str
