@@ -192,6 +192,13 @@ class Setting:
             positions.append(position)
         return tuple(reversed(positions))
 
+    def labels_at(self, profile: int) -> tuple[str, ...]:
+        """The type label of each party at a profile number."""
+        positions = self.types_at(profile)
+        return tuple(
+            party.types[a].label for party, a in zip(self.parties, positions, strict=True)
+        )
+
     def profile_of(self, positions: tuple[int, ...]) -> int:
         """The profile number of one type position per party."""
         number = 0

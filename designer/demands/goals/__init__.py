@@ -1,0 +1,1 @@
+"""Goals, one small file each."""

@@ -1,0 +1,26 @@
+"""Highest floor: the largest gain over staying out that every type of every party is left."""
+
+from __future__ import annotations
+
+from designer.demands.kinds import Goal
+from designer.demands.terms import Terms
+from designer.program.affine import Affine
+from designer.program.draft import Draft
+from designer.program.labels import Clause
+
+
+def _objective(draft: Draft, terms: Terms) -> Affine:
+    """max z with U_i(a) - E[outside_i | a] >= z for every party and type.
+
+    Compelled parties count too: leaving them out would let the table take from them at will.
+    """
+    floor = draft.unknown("floor")
+    for index, party in enumerate(draft.setting.parties):
+        form = draft.interim_gain(index) - floor.repeat(party.size)
+        draft.require(
+            form, ">=", "goal floor", lambda _, name=party.name: Clause("goal", "floor", name)
+        )
+    return floor
+
+
+GOAL = Goal("floor", "max", "largest worst interim gain over staying out", _objective)

@@ -1,0 +1,24 @@
+"""Ex-ante participation: before types are known, nobody expects to do better outside."""
+
+from __future__ import annotations
+
+from designer.demands.kinds import Demand
+from designer.demands.terms import Terms
+from designer.program.affine import constants
+from designer.program.draft import Draft
+from designer.program.labels import TakesPart
+
+
+def _rows(draft: Draft, terms: Terms) -> None:
+    """E[u_i] - E[outside_i] >= -shortfall, one row per party that is not compelled."""
+    for index, party in enumerate(draft.setting.parties):
+        if party.name in terms.compelled:
+            continue
+        label = TakesPart(party.name)
+        outside = constants(draft.outside(index), draft.setting.grain, draft.dtype)
+        gain = draft.expected_utility(index) - outside.mean(draft.weights)
+        allowed = draft.allowance("shortfall", terms.shortfall)
+        draft.require(gain + allowed, ">=", "takes part", lambda _, label=label: label)
+
+
+DEMAND = Demand("ir ex-ante", lambda terms: terms.ir == "ex-ante", _rows)
