@@ -1,0 +1,1 @@
+"""The audit: any table against every demand."""
