@@ -104,8 +104,11 @@ class Textbook:
         self.parties = range(len(setting.parties))
         self.options = range(len(setting.options))
         self.problem = pulp.LpProblem("textbook", pulp.LpMinimize)
-        self.money = pulp.LpVariable("S") if "outside-money" in terms.goals else None
-        self.margin = pulp.LpVariable("margin") if "margin" in terms.goals else None
+        # PuLP 3.3 and later hand out variables through the problem; before, the class did.
+        self.variable = getattr(self.problem, "add_variable", pulp.LpVariable)
+        self.money = self.variable("S") if "outside-money" in terms.goals else None
+        widened = "margin" in terms.goals
+        self.margin = self.variable("margin", -float(terms.slack)) if widened else None
         self._variables(setting)
 
     def total(self, pairs: Iterable[tuple[float, Any]]) -> Any:
@@ -126,7 +129,7 @@ class Textbook:
             number = plain.number[p]
             best = plain.efficient(p) if decision == "efficient" else []
             for k in self.options:
-                x = pulp.LpVariable(f"x_{k}_{number}", 0, 1, kind)
+                x = self.variable(f"x_{k}_{number}", 0, 1, kind)
                 self.x[k, p] = x
                 if decision == "efficient" and k not in best:
                     self.problem += x == 0
@@ -135,7 +138,7 @@ class Textbook:
                     self.problem += x == int(setting.rule[number, k]) / setting.rule_den
             self.problem += self.total((1.0, self.x[k, p]) for k in self.options) == 1
             for i in self.parties:
-                self.t[i, p] = pulp.LpVariable(f"t_{i}_{number}")
+                self.t[i, p] = self.variable(f"t_{i}_{number}")
 
     # -- the building blocks, as lists of (coefficient, variable)
 
@@ -180,10 +183,10 @@ class Textbook:
     # -- demands
 
     def demand_honesty(self) -> None:
-        """No lie gains more than the slack (less, if a margin is being widened)."""
+        """No lie gains more than the slack; or every lie loses the margin, where it is widened."""
         terms, plain = self.terms, self.plain
         extra = [(-1.0, self.margin)] if self.margin is not None else []
-        floor = -float(terms.slack)
+        floor = 0.0 if self.margin is not None else -float(terms.slack)
         for i in self.parties:
             if plain.setting.parties[i].name in terms.trusted:
                 continue
@@ -245,6 +248,15 @@ class Textbook:
                 self.problem += variable <= float(limits.pays_at_most)
             if limits.pays_at_least is not None:
                 self.problem += variable >= float(limits.pays_at_least)
+        for i in self.parties:
+            for p in self.plain.profiles:
+                if limits.within_worth:
+                    self.problem += self.total(self.utility(i, p, p, 1.0)) >= 0.0
+                if limits.only_when_served and limits.pays_at_most is not None:
+                    cap = float(limits.pays_at_most)
+                    served = [k for k in self.options if self.plain.worth(i, k, p) > 0]
+                    room = [(cap, self.x[k, p]) for k in served]
+                    self.problem += self.total([*room, (-1.0, self.t[i, p])]) >= 0.0
 
     def demand_sides(self) -> None:
         """Floors on expected welfare and pot, and interim probabilities."""
@@ -280,7 +292,7 @@ class Textbook:
             return 1, self.margin
         if name == "blend":
             return 1, self._blend()
-        bound = pulp.LpVariable(name.replace("-", "_"))
+        bound = self.variable(name.replace("-", "_"))
         if name == "floor":
             for i in self.parties:
                 for a in range(self.plain.setting.shape[i]):
@@ -319,7 +331,12 @@ class Textbook:
 
 
 def build(setting: Setting, terms: Terms, quick: bool = False) -> Textbook:
-    """The textbook problem with every demand in it, no goal yet."""
+    """The textbook problem with every demand in it, no goal yet.
+
+    Raises NotImplementedError for even-handedness, which it does not know.
+    """
+    if terms.even_handed:
+        raise NotImplementedError("even-handedness")
     textbook = Textbook(setting, terms, quick)
     textbook.demand_honesty()
     textbook.demand_participation()
