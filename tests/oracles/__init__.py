@@ -1,0 +1,1 @@
+"""Independent ways of computing the same answers."""

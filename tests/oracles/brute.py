@@ -158,9 +158,7 @@ class _Payments:
         for group in groups:
             average = self.terms.balance == "ex-ante"
             shares = [self.chance[p] if average else Fraction(1) for p in group]
-            rhs = sum(
-                (s * self.outlay(p) for s, p in zip(shares, group, strict=True)), Fraction(0)
-            )
+            rhs = sum((s * self.outlay(p) for s, p in zip(shares, group, strict=True)), Fraction(0))
             parts = [(s, i, p) for s, p in zip(shares, group, strict=True) for i in range(self.n)]
             if money:
                 parts.append((Fraction(1), -1, 0))

@@ -16,7 +16,7 @@ Row = tuple[Mapping[int, Fraction], str, Fraction]
 def maximise(
     cost: Mapping[int, Fraction], rows: Sequence[Row], columns: int
 ) -> tuple[str, Fraction | None]:
-    """max cost . x over FREE columns subject to the rows: the status and the exact optimum.
+    """Maximise cost . x over FREE columns subject to the rows: the status and the exact optimum.
 
     Status "possible", "impossible" or "unbounded"; bounds on columns are rows too.
     """

@@ -109,9 +109,7 @@ def test_brute_force_and_textbook_agree_on_a_given_rule(setting: Setting, demand
 
 
 @settings(max_examples=25, deadline=None, derandomize=True)
-@given(
-    small_settings(most_profiles=4, most_options=2), small_demands(GOALS, ("deterministic",))
-)
+@given(small_settings(most_profiles=4, most_options=2), small_demands(GOALS, ("deterministic",)))
 def test_brute_force_and_textbook_agree_on_all_deterministic_rules(
     setting: Setting, demands: Demands
 ) -> None:

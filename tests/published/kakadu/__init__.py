@@ -1,0 +1,1 @@
+"""The open contingent-valuation survey Kakadu, from answers to verdict."""

@@ -50,7 +50,9 @@ def read_answers(path: Path = ANSWERS) -> tuple[Answer, ...]:
     """The counts of a CSV with columns lower, upper (empty: unbounded) and count."""
     with path.open(encoding="utf-8", newline="") as lines:
         return tuple(
-            Answer(int(row["lower"]), int(row["upper"]) if row["upper"] else None, int(row["count"]))
+            Answer(
+                int(row["lower"]), int(row["upper"]) if row["upper"] else None, int(row["count"])
+            )
             for row in csv.DictReader(lines)
         )
 
