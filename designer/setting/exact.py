@@ -5,21 +5,27 @@ from __future__ import annotations
 import re
 from fractions import Fraction
 
+MAX_TEXT = 4000
+"""Longest decimal number read from text; Python itself refuses 4,300 digits."""
+
 _NUMBER = re.compile(r"\s*[+-]?(\d+(/\d+)?|\d+\.\d*|\.\d+)([eE][+-]?\d{1,3})?\s*", re.ASCII)
+_HEX = re.compile(r"\s*[+-]?0x[0-9a-f]+(/0x[0-9a-f]+)?\s*", re.ASCII)
 
 
 def text(value: Fraction | int) -> str:
     """The canonical exact text: an integer, or "p/q" in lowest terms.
 
-    Hexadecimal ("0x…") beyond 4,000 digits, where Python refuses decimal conversion.
+    Hexadecimal ("0x…") beyond about 3,900 digits, where Python refuses decimal conversion.
 
     >>> text(Fraction(6, 4)), text(Fraction(4, 2))
     ('3/2', '2')
     """
     value = Fraction(value)
+    if max(value.numerator.bit_length(), value.denominator.bit_length()) < 6_500:
+        return str(value)  # both parts together stay below MAX_TEXT characters
     if value.denominator == 1:
-        return _digits(value.numerator)
-    return f"{_digits(value.numerator)}/{_digits(value.denominator)}"
+        return hex(value.numerator)
+    return f"{hex(value.numerator)}/{hex(value.denominator)}"
 
 
 def number(written: str) -> Fraction:
@@ -30,15 +36,15 @@ def number(written: str) -> Fraction:
     >>> number("0.1"), number(" 2/6 ")
     (Fraction(1, 10), Fraction(1, 3))
     """
-    if "0x" in written:
-        top, _, bottom = written.strip().partition("/")
-        return Fraction(int(top, 16), int(bottom, 16) if bottom else 1)
-    if len(written) > 4000 or not _NUMBER.fullmatch(written):
-        raise ValueError(f"not an exact number: {written[:40]!r}")
     try:
-        return Fraction(written)
+        if "0x" in written and _HEX.fullmatch(written):
+            top, _, bottom = written.strip().partition("/")
+            return Fraction(int(top, 16), int(bottom, 16) if bottom else 1)
+        if len(written) <= MAX_TEXT and _NUMBER.fullmatch(written):
+            return Fraction(written)
     except ZeroDivisionError:
-        raise ValueError(f"a zero denominator: {written!r}") from None
+        raise ValueError(f"a zero denominator: {written[:40]!r}") from None
+    raise ValueError(f"not an exact number: {written[:40]!r}")
 
 
 def decimal(value: Fraction, digits: int = 6) -> str:
@@ -52,8 +58,5 @@ def decimal(value: Fraction, digits: int = 6) -> str:
     try:
         return f"{float(value):.{digits}g}"
     except OverflowError:
-        return f"{'-' if value < 0 else ''}about 2**{value.numerator.bit_length() - value.denominator.bit_length()}"
-
-
-def _digits(value: int) -> str:
-    return str(value) if value.bit_length() < 13_000 else hex(value)
+        power = value.numerator.bit_length() - value.denominator.bit_length()
+        return f"{'-' if value < 0 else ''}about 2**{power}"

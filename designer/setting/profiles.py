@@ -1,0 +1,61 @@
+"""Profile numbers: row-major over the parties' types, the last party fastest."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import Any, cast
+
+import numpy as np
+
+from designer.setting.setting import IntArray
+
+MOST = 5_000_000
+"""Most profiles for which a table over profiles (joint prior, rule, interdependent worths) is
+held in memory; settings of independent priors and private worths have no such limit."""
+
+
+def strides(shape: Sequence[int]) -> tuple[int, ...]:
+    """stride_i with profile number = sum_i a_i * stride_i.
+
+    >>> strides((2, 3, 4))
+    (12, 4, 1)
+    """
+    steps = [1] * len(shape)
+    for i in range(len(shape) - 2, -1, -1):
+        steps[i] = steps[i + 1] * shape[i + 1]
+    return tuple(steps)
+
+
+def spread(compact: IntArray, axes: Sequence[int], shape: Sequence[int]) -> IntArray:
+    """Entries over some parties' types, repeated over everyone else's: (N,).
+
+    compact  int, shape (T_j for j in axes), `axes` increasing
+    shape    (T_1, ..., T_n)
+
+    >>> spread(np.array([1, 2]), (0,), (2, 3)).tolist()
+    [1, 1, 1, 2, 2, 2]
+    """
+    # Parties of one type add no axis, so that numpy's limit of 64 axes is never met:
+    # N <= MOST leaves at most 22 parties of two types or more.
+    wide = [i for i, size in enumerate(shape) if size > 1]
+    seen = compact.reshape([shape[i] if i in axes else 1 for i in wide])
+    full: IntArray = np.broadcast_to(cast(Any, seen), [shape[i] for i in wide])
+    return full.reshape(math.prod(shape))
+
+
+def narrow(compact: IntArray, axes: Sequence[int]) -> tuple[IntArray, tuple[int, ...]]:
+    """Drop the axes along which nothing changes: (compact, axes) in their shortest form.
+
+    >>> narrow(np.array([[1, 1], [2, 2]]), (0, 1))[1]
+    (0,)
+    """
+    kept: list[int] = []
+    for axis in axes:
+        at = len(kept)
+        first = compact.take([0], axis=at)
+        if bool(np.all(compact == first)):
+            compact = first.reshape(compact.shape[:at] + compact.shape[at + 1 :])
+        else:
+            kept.append(axis)
+    return compact, tuple(kept)

@@ -1,0 +1,225 @@
+"""Worths and outside options: numbers, expressions and lists, to integers over one grain."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from fractions import Fraction
+from typing import Any, cast
+
+import numpy as np
+
+from designer.setting import exact, profiles
+from designer.setting.evaluate import MAX_BITS, Amounts, collect, constant, evaluate
+from designer.setting.expression import ExpressionError, parse, references
+from designer.setting.parties import Roster
+from designer.setting.reading import Report, Section, describe, read_number, unknown_keys
+from designer.setting.setting import IntArray, Type, integers
+
+FORMS = 'Write a number, an expression such as "type / 2", or a list with one entry per type.'
+
+
+class WorthReader:
+    """Reads the money amounts of one party (or, with `own` None, of the designer)."""
+
+    def __init__(self, roster: Roster, own: int | None, report: Report) -> None:
+        """Amounts may refer to the types in `roster`."""
+        self.roster = roster
+        self.own = own
+        self.report = report
+
+    def per_option(
+        self, section: Section, key: str, options: Sequence[str], *, rest_is_zero: bool
+    ) -> list[Amounts | None]:
+        """One amount per option from a table option = amount."""
+        missing = constant(Fraction(0)) if rest_is_zero else None
+        result: list[Amounts | None] = [missing] * len(options)
+        if key not in section:
+            if not rest_is_zero:
+                section.wrong(key, "a worth for every option", f"Write {key} = {{ … }}.")
+            return result
+        table = section.section(key)
+        if table is None:
+            return result
+        if options:
+            unknown_keys(table.values, options, table.place, self.report, "option")
+        for index, option in enumerate(options):
+            if option in table:
+                result[index] = self.read(table.values[option], table.at(option))
+            elif not rest_is_zero:
+                table.wrong(option, "a worth for every option", "Write 0 if it is worth nothing.")
+        return result
+
+    def read(self, raw: object, place: str) -> Amounts | None:
+        """An amount in any of its forms, in its shortest form; None when mistaken."""
+        before = len(self.report)
+        if isinstance(raw, list) and self.own is not None:
+            amounts = self.listed(raw, place, self.own)
+        else:
+            amounts = self.single(raw, place, self.roster.types)
+        if amounts is None or len(self.report) > before:
+            return None
+        num, axes = profiles.narrow(amounts.num, amounts.axes)
+        return Amounts(axes, num, amounts.den)
+
+    def single(
+        self, raw: object, place: str, types: Sequence[tuple[Type, ...] | None]
+    ) -> Amounts | None:
+        """A number or an expression."""
+        if not isinstance(raw, str) or _is_number(raw):
+            if isinstance(raw, (list, dict)):
+                remedy = FORMS if self.own is not None else "Write a number."
+                self.report.add(place, describe(raw), "an amount of money", remedy)
+                return None
+            value = read_number(raw, place, self.report)
+            return None if value is None else constant(value)
+        try:
+            tree = parse(raw, self.roster.expression_names(self.own))
+            if any(types[party] is None for party in references(tree)):
+                return None  # the mistakes in those types are already noted
+            names = [name or f"party[{i}]" for i, name in enumerate(self.roster.names)]
+            return evaluate(tree, [kinds or () for kinds in types], names)
+        except ExpressionError as fault:
+            self.report.add(place, fault.found, fault.expected, fault.remedy)
+            return None
+
+    def listed(self, raw: list[object], place: str, own: int) -> Amounts | None:
+        """One entry per own type; or lists in lists, one level per party in file order."""
+        types = self.roster.types
+        if types[own] is None:
+            return None
+        if any(isinstance(entry, list) for entry in raw):
+            return self.nested(raw, place)
+        if not self.counted(raw, place, own):
+            return None
+        slices: list[Amounts] = []
+        for a, (entry, kind) in enumerate(zip(raw, types[own] or (), strict=True)):
+            alone = [*types[:own], (kind,), *types[own + 1 :]]
+            amounts = self.single(entry, f"{place}[{a}]", alone)
+            if amounts is not None:
+                slices.append(amounts)
+        if len(slices) < len(raw):
+            return None
+        return _stack(slices, own, self.roster.shape)
+
+    def nested(self, raw: list[object], place: str) -> Amounts | None:
+        """A number for every profile."""
+        if not self.roster.complete:
+            return None
+        shape = self.roster.shape
+        if math.prod(shape) > profiles.MOST:
+            too_many(math.prod(shape), place, self.report)
+            return None
+        values: list[Fraction] = []
+        before = len(self.report)
+
+        def walk(level: object, depth: int, place: str) -> None:
+            if depth == len(shape):
+                value = read_number(level, place, self.report)
+                values.append(value if value is not None else Fraction(0))
+            elif not isinstance(level, list):
+                self.report.add(
+                    place,
+                    describe(level),
+                    f"a list, one entry per type of {self.roster.names[depth]}",
+                    "Lists in lists have one level per party, in file order.",
+                )
+            elif self.counted(level, place, depth):
+                for a, entry in enumerate(level):
+                    walk(entry, depth + 1, f"{place}[{a}]")
+
+        walk(raw, 0, place)
+        if len(self.report) > before:
+            return None
+        return collect(values, tuple(range(len(shape))), shape)
+
+    def counted(self, raw: list[object], place: str, party: int) -> bool:
+        """Whether a list has one entry per type of a party; a mistake if not."""
+        size = self.roster.shape[party]
+        if len(raw) == size:
+            return True
+        self.report.add(
+            place,
+            describe(raw),
+            f"{size} entr{'ies' if size > 1 else 'y'}, one per type of {self.roster.names[party]}",
+            "Add or remove entries.",
+        )
+        return False
+
+
+def too_many(count: int, place: str, report: Report) -> None:
+    """Note that a table over all profiles would be too large."""
+    shown = f"{count:,}" if count < 10**15 else f"about 10**{len(str(count)) - 1}"
+    report.add(
+        place,
+        f"a table over {shown} profiles",
+        f"at most {profiles.MOST:,}",
+        "Use independent priors and worths of the own type, or coarser types.",
+    )
+
+
+def grain_of(amounts: Sequence[Amounts]) -> int:
+    """The least common denominator of all money in the setting.
+
+    Raises ExpressionError when it has more than `MAX_BITS` binary digits.
+    """
+    grain = 1
+    for each in amounts:
+        shared = math.gcd(each.den, int(np.gcd.reduce(np.ravel(each.num))))
+        grain = math.lcm(grain, each.den // shared)
+        if grain.bit_length() > MAX_BITS:
+            raise ExpressionError(
+                f"money whose common denominator has more than {MAX_BITS:,} binary digits",
+                "amounts with common denominators",
+                "Round the amounts to a common unit.",
+            )
+    return grain
+
+
+def whole(amounts: Amounts, grain: int) -> IntArray:
+    """Units of 1/grain, num * grain / den: whole, as the grain is a common denominator."""
+    num = np.asarray(amounts.num, dtype=object) * grain // amounts.den
+    return integers(num, np.shape(amounts.num))
+
+
+def per_type(amounts: Sequence[Amounts], size: int, grain: int) -> IntArray:
+    """Amounts of the own type only, as columns: (T_i, columns)."""
+    columns = [np.broadcast_to(cast(Any, whole(each, grain)), (size,)) for each in amounts]
+    return frozen(integers(np.stack(columns, axis=1)))
+
+
+def per_profile(amounts: Sequence[Amounts], shape: Sequence[int], grain: int) -> IntArray:
+    """Amounts of any types, as columns over all profiles: (N, columns)."""
+    columns: list[Any] = [
+        profiles.spread(whole(each, grain), each.axes, shape) for each in amounts
+    ]
+    table: IntArray = np.stack(columns, axis=1)  # one wide column makes all of them Python ints
+    return frozen(table)
+
+
+def frozen(array: IntArray) -> IntArray:
+    """The array, closed to writing."""
+    array.flags.writeable = False
+    return array
+
+
+def _stack(slices: Sequence[Amounts], own: int, shape: Sequence[int]) -> Amounts:
+    """Amounts of one own type each, joined along the own axis."""
+    axes = tuple(sorted({own}.union(*(each.axes for each in slices))))
+    at = axes.index(own)
+    den = math.lcm(*(each.den for each in slices))
+    full = [1 if axis == own else shape[axis] for axis in axes]
+    parts = []
+    for each in slices:
+        sizes = [1 if axis == own or axis not in each.axes else shape[axis] for axis in axes]
+        part = np.asarray(each.num, dtype=object).reshape(sizes) * (den // each.den)
+        parts.append(np.broadcast_to(part, full))
+    return Amounts(axes, np.concatenate(parts, axis=at), den)
+
+
+def _is_number(raw: str) -> bool:
+    try:
+        exact.number(raw)
+    except ValueError:
+        return False
+    return True
