@@ -124,7 +124,9 @@ def _settle(chosen: dict[str, Any], setting: Setting, mistakes: list[Mistake]) -
 
 def _goal_mistakes(goals: tuple[str, ...]) -> list[Mistake]:
     mistakes = [
-        Mistake("demands.goal", repr(name), f"names among {', '.join(GOALS)}", "Pick from the list.")
+        Mistake(
+            "demands.goal", repr(name), f"names among {', '.join(GOALS)}", "Pick from the list."
+        )
         for name in goals
         if name not in GOALS
     ]
@@ -162,7 +164,7 @@ def _clashes(terms: Terms, setting: Setting) -> list[Mistake]:
             Mistake(
                 "demands.decision",
                 "'table' but the scenario gives no decision rule",
-                "[[rule]] entries, or rule = \"rule.csv\"",
+                '[[rule]] entries, or rule = "rule.csv"',
                 "Give the rule, or ask for another decision.",
             )
         )
@@ -196,7 +198,12 @@ def _clashes(terms: Terms, setting: Setting) -> list[Mistake]:
     names = {party.name for party in setting.parties}
     for name in sorted(terms.compelled - names):
         found.append(
-            Mistake("demands.compelled", repr(name), f"one of {', '.join(sorted(names))}", "Name a party.")
+            Mistake(
+                "demands.compelled",
+                repr(name),
+                f"one of {', '.join(sorted(names))}",
+                "Name a party.",
+            )
         )
     for name, _ in terms.blend:
         if name not in names | {"worth", "pot", "parties"}:

@@ -90,7 +90,7 @@ class Affine:
     def mean(self, weights: IntArray) -> Affine:
         """One form: the average of all R under positive integer weights.
 
-            f = sum_r weights_r * f_r / sum_r weights_r
+        f = sum_r weights_r * f_r / sum_r weights_r
         """
         common = math.lcm(*{int(den) for den in self.den})
         factor = weights * (common // self.den)

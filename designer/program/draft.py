@@ -123,7 +123,9 @@ class Draft:
 
     # -- rows ----------------------------------------------------------------------------
 
-    def require(self, form: Affine, relation: str, family: str, label: Callable[[int], Label]) -> None:
+    def require(
+        self, form: Affine, relation: str, family: str, label: Callable[[int], Label]
+    ) -> None:
         """Ask that every form be >= 0 (relation ">=") or = 0 (relation "=")."""
         if not len(form):
             return
@@ -353,9 +355,7 @@ class Draft:
                 fixed[cells[:, 0], cells[:, 1]],
                 np.full(len(cells), int(totals[0]) * self.chance_den, dtype=self.dtype),
             )
-            self.require(
-                form - of_columns(new, self.dtype), "=", "expected decision", label
-            )
+            self.require(form - of_columns(new, self.dtype), "=", "expected decision", label)
         self._expected_decision[index] = columns, fixed
         return columns, fixed
 
@@ -394,13 +394,17 @@ class Draft:
     def expected_choice(self, worth: IntArray) -> Affine:
         """E[sum_k x_k worth(k)] with worth int (K,) or (N, K) in units of 1/grain."""
         everywhere = np.arange(self.setting.profiles, dtype=np.int64)
-        return self.chosen(everywhere, worth.astype(self.dtype), self.setting.grain).mean(self.weights)
+        return self.chosen(everywhere, worth.astype(self.dtype), self.setting.grain).mean(
+            self.weights
+        )
 
     def expected_pot(self) -> Affine:
         """E[sum_i t_i - sum_k x_k outlay(k)], through the interim payments."""
         form = -self.expected_choice(self.setting.outlay)
         for index in range(len(self.setting.parties)):
-            form = form + of_columns(self.expected_pay(index), self.dtype).mean(self.marginal(index))
+            form = form + of_columns(self.expected_pay(index), self.dtype).mean(
+                self.marginal(index)
+            )
         return form
 
     # -- allowances: fixed amounts, or unknowns when a goal frees them --------------------

@@ -45,6 +45,17 @@ class Axis:
             index -= block.count
         raise IndexError(index)
 
+    def take(self, stop: int) -> Axis:
+        """The first `stop` labels."""
+        kept = []
+        for block in self.blocks:
+            count = min(block.count, stop)
+            if count <= 0:
+                break
+            kept.append(Block(block.family, count, block.label))
+            stop -= count
+        return Axis(tuple(kept))
+
     def start(self, family: str) -> int:
         """The position of the first label of a family; KeyError if there is none."""
         start = 0
@@ -101,4 +112,15 @@ class Program:
             cost_den=stage.cost_den,
             cost_const=stage.cost_const,
             sense=stage.sense,
+        )
+
+    def first(self, count: int) -> Program:
+        """The program of the first `count` stages alone, without the pin of the last."""
+        last = self.stages[count - 1]
+        return Program(
+            matrix=self.stage(count - 1),
+            stages=self.stages[:count],
+            column_axis=self.column_axis.take(last.columns),
+            row_axis=self.row_axis.take(last.rows),
+            row_scale=(self.row_scale[0][: last.rows], self.row_scale[1][: last.rows]),
         )

@@ -1,0 +1,253 @@
+"""The plain road: every profile's payments as columns, nothing reduced. The reference."""
+
+from __future__ import annotations
+
+import math
+import time
+from dataclasses import replace
+from fractions import Fraction
+
+import numpy as np
+
+from designer.demands.formulate import Formulation
+from designer.demands.terms import Terms
+from designer.engines.report import Engine
+from designer.engines.watch import Watch
+from designer.program.draft import Draft
+from designer.program.linear import Bound, LinearProgram
+from designer.program.program import Program
+from designer.proof.face import Settled as Faced
+from designer.proof.face import face, lift, reduced_costs
+from designer.proof.prove import Outcome, prove
+from designer.proof.vector import Vector
+from designer.roads.settled import GoalResult, Settled
+from designer.setting.setting import IntArray, Setting, integers
+from designer.table import Table
+
+TIDY_UP_TO = 4_000
+"""Payments up to which the tidy stage runs unless it is asked for by name.
+
+Bounding every payment undoes what presolve gains from their freedom: beyond this size the
+tidy stage costs many times the answer itself.
+"""
+
+
+def tidies(setting: Setting, terms: Terms) -> bool:
+    """Whether a closing tidy stage is due."""
+    if terms.tidy == "none" or "swing" in terms.goals:
+        return False
+    payments = setting.profiles * len(setting.parties)
+    return terms.tidy == "swing" or payments <= TIDY_UP_TO
+
+
+def travel(setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> Settled:
+    """Formulate, solve and prove goal by goal; stop at the first that has no optimum."""
+    return _Journey(setting, terms, engine, watch).travel()
+
+
+class _Journey:
+    """One walk down the road: what has been settled so far."""
+
+    def __init__(self, setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> None:
+        self.setting, self.terms, self.engine, self.watch = setting, terms, engine, watch
+        self.seconds: dict[str, float] = {}
+        self.engines: dict[str, None] = {}
+        since = time.perf_counter()
+        self.work = Formulation(setting, terms)
+        self._spent("formulate", since)
+        self.results: list[GoalResult] = []
+        self.faces: list[Faced] = []
+
+    def travel(self) -> Settled:
+        """Every goal in turn, then the tidy stage."""
+        tidy = tidies(self.setting, self.terms)
+        program, primal = None, None
+        for name in self.terms.goals:
+            if name == "any" and (tidy or len(self.terms.goals) > 1):
+                program = self._any()
+                continue
+            program = self._pose(name)
+            outcome = self._settle(program)
+            if outcome.status == "infeasible" and self.results:
+                return self._impossible_without(program)
+            if outcome.status != "optimal":
+                return self._stopped(program, outcome)
+            primal = outcome.primal
+        if tidy:
+            before = program, tuple(self.results)
+            program = self._pose("swing")
+            outcome = self._settle(program, tidy=True)
+            if outcome.status == "optimal":
+                primal = outcome.primal
+            elif primal is None:
+                return (
+                    self._impossible_without(program)
+                    if outcome.status == "infeasible"
+                    else self._stopped(program, outcome)
+                )
+            else:
+                # The goals are settled; only the choice among optimal tables is not.
+                program, results = before
+                self.results = [*results[:-1], replace(results[-1], pin=None)]
+                self.results.append(
+                    GoalResult("swing", None, False, tidy=True, reason=outcome.reason)
+                )
+        if program is None or primal is None:
+            raise AssertionError("a possible verdict needs a table")
+        since = time.perf_counter()
+        table = table_of(self.work.draft, primal)
+        self._spent("table", since)
+        return self._settled("possible", program, table=table, primal=primal)
+
+    def _pose(self, name: str) -> Program:
+        """Pin the goal before, if any, and pose the next."""
+        since = time.perf_counter()
+        if self.results and self.results[-1].goal != "any":
+            before = self.results[-1]
+            value = before.value
+            if value is None:
+                raise AssertionError("only settled goals are followed by another")
+            lp = self.work.program().stage(len(self.results) - 1)
+            pin = self.work.pin(value)
+            self.results[-1] = replace(before, pin=pin)
+            if before.dual is not None and not lp.integer.any():
+                self.faces.append(_faced(lp, before.dual, pin, self.work))
+        program = self.work.pose(name)
+        self._spent("formulate", since)
+        return program
+
+    def _any(self) -> Program:
+        """Nothing to optimise: the table of a later stage proves this one as well."""
+        program = self._pose("any")
+        rows = program.stages[-1].rows
+        self.results.append(GoalResult("any", Fraction(0), True, dual=Vector.zero(rows)))
+        return program
+
+    def _settle(self, program: Program, tidy: bool = False) -> Outcome:
+        """Prove the last stage of the program; keep the result if it has an optimum."""
+        lp = program.stage(len(program.stages) - 1)
+        whole = bool(lp.integer.any())
+        asked = lp
+        if whole and tidy and self.results and self.primal is not None:
+            asked = _with_rule(lp, self.primal)
+        elif self.faces and not whole:
+            asked = face(lp, self.faces)
+        outcome = prove(asked, engine=self.engine, watch=self.watch)
+        for part, seconds in outcome.seconds.items():
+            self.seconds[part] = self.seconds.get(part, 0.0) + seconds
+        self.engines[outcome.engine] = None
+        if outcome.status != "optimal":
+            return outcome
+        since = time.perf_counter()
+        self.primal = outcome.primal
+        dual = outcome.dual
+        if asked is not lp and not whole and dual is not None:
+            dual = lift(lp, self.faces, dual)
+        open_choice = asked is not lp and whole
+        self.results.append(
+            GoalResult(
+                goal=program.stages[-1].goal,
+                value=outcome.value,
+                proved=outcome.proved and not open_choice,
+                bound=outcome.bound,
+                dual=None if open_choice else dual,
+                tree=None if open_choice else outcome.tree,
+                tidy=tidy,
+                reason=outcome.reason,
+            )
+        )
+        self._spent("prove", since)
+        return outcome
+
+    primal: Vector | None = None
+
+    def _impossible_without(self, program: Program) -> Settled:
+        """The same question without goals: the certificate must speak of the demands alone."""
+        self.results, self.faces = [], []
+        stage = program.first(1)
+        outcome = prove(program.stage(0), engine=self.engine, watch=self.watch)
+        if outcome.status == "optimal":
+            outcome = replace(
+                outcome, status="undecided", proved=False, reason="the engine contradicts itself"
+            )
+        return self._stopped(stage, outcome)
+
+    def _stopped(self, program: Program, outcome: Outcome) -> Settled:
+        status = {"infeasible": "impossible", "unbounded": "unbounded"}.get(
+            outcome.status, "undecided"
+        )
+        if not outcome.proved and status != "undecided":
+            status = "undecided"
+        goal = program.stages[-1].goal
+        self.results.append(GoalResult(goal, None, outcome.proved, reason=outcome.reason))
+        return self._settled(
+            status,
+            program,
+            primal=outcome.primal if status == "unbounded" else None,
+            farkas=outcome.farkas if status == "impossible" else None,
+            tree=outcome.tree if status == "impossible" else None,
+            ray=outcome.ray if status == "unbounded" else None,
+            reason=outcome.reason,
+        )
+
+    def _settled(self, status: str, program: Program, **more: object) -> Settled:
+        return Settled(
+            status=status,  # type: ignore[arg-type]
+            path="full",
+            program=program,
+            goals=tuple(self.results),
+            engine=" + ".join(self.engines),
+            seconds=self.seconds,
+            **more,  # type: ignore[arg-type]
+        )
+
+    def _spent(self, part: str, since: float) -> None:
+        self.seconds[part] = self.seconds.get(part, 0.0) + time.perf_counter() - since
+
+
+def _faced(lp: LinearProgram, dual: Vector, pin: int, work: Formulation) -> Faced:
+    """A settled goal as the face it leaves, with its pin row."""
+    matrix = work.program().matrix
+    k = int(matrix.indptr[pin])
+    column = int(matrix.indices[k])
+    sign = 1 if lp.sense == "min" else -1
+    cost = Fraction(sign * int(lp.cost[column]), lp.cost_den)
+    return Faced(dual, reduced_costs(lp, dual), pin, int(matrix.data[k]) / cost)
+
+
+def _with_rule(lp: LinearProgram, primal: Vector) -> LinearProgram:
+    """The program with its whole-number columns fixed where a table has them."""
+    low, high = lp.col_lo.num.copy(), lp.col_hi.num.copy()
+    for column in np.flatnonzero(lp.integer):
+        low[column] = high[column] = int(primal.value(int(column)) * lp.col_den)
+    finite_low, finite_high = lp.col_lo.finite | lp.integer, lp.col_hi.finite | lp.integer
+    return replace(
+        lp,
+        col_lo=Bound(low, finite_low),
+        col_hi=Bound(high, finite_high),
+        integer=np.zeros_like(lp.integer),
+    )
+
+
+def table_of(draft: Draft, primal: Vector) -> Table:
+    """The decision and transfer rule that a point of the program stands for."""
+    setting = draft.setting
+    total, parties = setting.profiles, len(setting.parties)
+    numbers = primal.numerators()
+    pays, pays_den = _lowest(integers(numbers[: total * parties], (parties, total)), primal.den)
+    decides = np.zeros(draft.chance.shape, dtype=object)
+    common = math.lcm(primal.den, draft.chance_den) if (draft.chance_col >= 0).any() else 1
+    if common == 1:
+        return Table(integers(draft.chance), draft.chance_den, pays, pays_den)
+    free = draft.chance_col >= 0
+    columns = np.array(numbers, dtype=object)
+    decides[~free] = draft.chance[~free].astype(object) * (common // draft.chance_den)
+    decides[free] = columns[draft.chance_col[free]] * (common // primal.den)
+    chances, chances_den = _lowest(integers(decides), common)
+    return Table(chances, chances_den, pays, pays_den)
+
+
+def _lowest(values: IntArray, den: int) -> tuple[IntArray, int]:
+    """Numerators and denominator divided by what they share."""
+    shared = math.gcd(den, *{int(value) for value in values.flat})
+    return (values // shared, den // shared) if shared > 1 else (values, den)

@@ -1,0 +1,109 @@
+"""The answer, frozen: a status, whether it is proved, the table and the proof."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from fractions import Fraction
+from functools import cached_property
+from typing import TYPE_CHECKING, Any
+
+from designer.demands.terms import Terms
+from designer.program.program import Program
+from designer.proof.derivation import Derivation, derive
+from designer.proof.vector import Vector
+from designer.roads.settled import GoalResult
+from designer.setting.setting import Setting
+from designer.table import Table
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    from designer.auditing import Audit
+
+
+@dataclass(frozen=True, eq=False)
+class Verdict:
+    """What `pose` returns.
+
+    status   "possible", "impossible", "unbounded" or "undecided"
+    proved   True only when exact arithmetic confirmed the status and every goal's value
+    goals    one result per goal, in order; the tidy stage last, marked as such
+    table    the decision and transfer rule (possible), else None
+    proof    the proof document (format designer.proof/1), {} when undecided
+    claims   what the checker found the document to prove, in words
+    path     the road that decided
+    reason   why nothing was decided, and what to try
+    seconds  wall time by part of the work
+    """
+
+    setting: Setting
+    terms: Terms
+    status: str
+    proved: bool
+    goals: tuple[GoalResult, ...]
+    path: str
+    program: Program
+    table: Table | None = None
+    primal: Vector | None = None
+    farkas: Vector | None = None
+    ray: Vector | None = None
+    proof: dict[str, Any] = field(default_factory=dict)
+    claims: tuple[str, ...] = ()
+    reason: str = ""
+    engine: str = ""
+    seconds: dict[str, float] = field(default_factory=dict)
+
+    @property
+    def goal_value(self) -> Fraction | None:
+        """The exact value of the first goal; None unless the verdict is `possible`."""
+        return self.goals[0].value if self.status == "possible" else None
+
+    @property
+    def goal_values(self) -> dict[str, Fraction | None]:
+        """Every goal's exact value, the tidy stage apart."""
+        return {goal.goal: goal.value for goal in self.goals if not goal.tidy}
+
+    @cached_property
+    def audit(self) -> Audit | None:
+        """The table held against every demand by independent code; None without a table."""
+        from designer.auditing import audit
+
+        if self.table is None:
+            return None
+        return audit(self.setting, self.table, subsidy=self.subsidy)
+
+    @property
+    def subsidy(self) -> Fraction:
+        """The outside money of the table: what was asked for, or the least that was found."""
+        return self.goal_values.get("outside-money") or self.terms.subsidy
+
+    @property
+    def transfers(self) -> pd.DataFrame:
+        """The table, one row per profile, exact; columns as in transfers.csv.
+
+        `type:NAME` per party, `probability`, `decides:OPTION` per option, `pays:NAME` per
+        party (money units, paid BY the party) and `pot`. Empty without a table.
+        """
+        import pandas as pd
+
+        from designer.tablefile import columns, rows
+
+        if self.table is None:
+            return pd.DataFrame(columns=columns(self.setting))
+        return pd.DataFrame(rows(self.setting, self.table), columns=columns(self.setting))
+
+    @property
+    def interim(self) -> pd.DataFrame:
+        """Per party and type: expected payment, utility, gain, closest lie and its margin."""
+        import pandas as pd
+
+        if self.audit is None:
+            return pd.DataFrame()
+        return self.audit.interim
+
+    @cached_property
+    def derivation(self) -> Derivation | None:
+        """The impossibility line by line; None unless a linear program was proved empty."""
+        if self.status != "impossible" or self.farkas is None:
+            return None
+        return derive(self.program, self.farkas)
