@@ -22,7 +22,7 @@ from typing import Any
 import numpy as np
 
 from designer.demands.terms import Demands
-from designer.setting.setting import Chance, Party, Setting, Side, Type, integers
+from designer.setting.setting import Party, Setting, Side, Type, integers
 
 FOLDER = Path(__file__).parent
 PARTIES = ("Aster", "Briar", "Clover", "Dock", "Elder", "Fern", "Gorse", "Heath")
@@ -181,42 +181,3 @@ def given_rule(data: dict[str, Any], count: int) -> tuple[np.ndarray[Any, Any], 
 def setting_of(instance: str) -> Setting:
     """The setting of a stored instance, by name."""
     return as_setting(instances()[instance], instance)
-
-
-def midpoint_trade(size: int) -> dict[str, Any]:
-    """Bilateral trade, both worths uniform on the midpoints (2k-1)/(2K): data of entry B01."""
-    grid = [Fraction(2 * k - 1, 2 * size) for k in range(1, size + 1)]
-    prior = [str(Fraction(1, size))] * size
-    labels = [str(point) for point in grid]
-    return {
-        "agents": [
-            {"types": labels, "values": [["0", str(v)] for v in grid], "prior": prior},
-            {"types": labels, "values": [["0", str(-c)] for c in grid], "prior": prior},
-        ],
-        "decisions": ["0", "1"],
-    }
-
-
-def one_item(priors: list[list[Fraction]], grids: list[list[Fraction]]) -> dict[str, Any]:
-    """One item and n parties with private worths; option 0 keeps it, option i gives it to i."""
-    count = len(grids)
-    return {
-        "agents": [
-            {
-                "types": [str(v) for v in grid],
-                "values": [[str(v) if k == i + 1 else "0" for k in range(count + 1)] for v in grid],
-                "prior": [str(p) for p in prior],
-            }
-            for i, (grid, prior) in enumerate(zip(grids, priors, strict=True))
-        ],
-        "decisions": [str(k) for k in range(count + 1)],
-    }
-
-
-def interim_chances(count: int, chances: list[Fraction]) -> tuple[Chance, ...]:
-    """P(party i gets the item | its type a) = chances[a], for every party and type."""
-    return tuple(
-        Chance(party=i, type=a, option=i + 1, at_least=q, at_most=q)
-        for i in range(count)
-        for a, q in enumerate(chances)
-    )
