@@ -113,7 +113,7 @@ def recover(folder: str | os.PathLike[str]) -> bool:
     is still running is left alone, and so is a folder one may not write to.
     """
     changed = False
-    with contextlib.suppress(OSError):
+    with contextlib.suppress(OSError, ValueError, KeyError, TypeError):  # some damaged plan
         for stage in sorted(Path(folder).glob(f"{_HIDDEN}*")):
             with _locked(stage) as free:
                 if free:

@@ -2,10 +2,21 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from typing import TYPE_CHECKING
 
-from designer.setting.setting import IntArray
+import numpy as np
+
+from designer.setting.setting import IntArray, Setting
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+SAFE = 2**60
+"""Whole numbers below this can be added, and compared with a sentinel, inside int64."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -23,6 +34,21 @@ class Table:
     pays: IntArray
     pays_den: int
 
+    @classmethod
+    def of(
+        cls,
+        decides: Sequence[Sequence[Fraction | int]],
+        pays: Sequence[Sequence[Fraction | int]],
+    ) -> Table:
+        """Put together chances x_k(theta), a row per profile, and payments, a row per party.
+
+        >>> Table.of([[1, 0], [Fraction(1, 2), Fraction(1, 2)]], [[3, Fraction(1, 3)]]).pays_den
+        3
+        """
+        chances, chances_den = _over_one(decides)
+        amounts, amounts_den = _over_one(pays)
+        return cls(chances, chances_den, amounts, amounts_den)
+
     def payment(self, party: int, profile: int) -> Fraction:
         """t_i(theta)."""
         return Fraction(int(self.pays[party, profile]), self.pays_den)
@@ -30,3 +56,79 @@ class Table:
     def chance(self, profile: int, option: int) -> Fraction:
         """x_k(theta)."""
         return Fraction(int(self.decides[profile, option]), self.decides_den)
+
+
+def pot(table: Table, setting: Setting) -> tuple[IntArray, int]:
+    """Add up every profile's pot, sum_i t_i(theta) - sum_k x_k(theta) outlay(k).
+
+    Returns int, shape (N,), and the denominator under it: money units, positive = money left
+    over (convention 1).
+    """
+    den = math.lcm(table.pays_den, table.decides_den * setting.grain)
+    per_pay = den // table.pays_den
+    per_cost = den // (table.decides_den * setting.grain)
+    parties, options = len(table.pays), len(setting.options)
+    bound = parties * largest(table.pays) * per_pay
+    bound += options * largest(table.decides) * largest(setting.outlay) * per_cost
+    pays, decides = held(table.pays, bound), held(table.decides, bound)
+    total: IntArray = pays.sum(axis=0) * per_pay
+    for k, cost in enumerate(setting.outlay):
+        if cost:
+            total = total - decides[:, k] * (int(cost) * per_cost)
+    return total, den
+
+
+def frame(table: Table, setting: Setting) -> pd.DataFrame:
+    """Show the table as a pandas frame of Fractions with the columns of transfers.csv.
+
+    One row per profile: `type:NAME` per party, `probability`, `decides:OPTION` per option,
+    `pays:NAME` per party, `pot`. Meant for tables of a size one can look at.
+    """
+    import pandas as pd
+
+    pots, den = pot(table, setting)
+    labels = [setting.labels_at(profile) for profile in range(setting.profiles)]
+    columns: dict[str, list[object]] = {}
+    for i, party in enumerate(setting.parties):
+        columns[f"type:{party.name}"] = [row[i] for row in labels]
+    columns["probability"] = [setting.probability(profile) for profile in range(setting.profiles)]
+    for k, option in enumerate(setting.options):
+        chances = table.decides[:, k].tolist()
+        columns[f"decides:{option}"] = [Fraction(top, table.decides_den) for top in chances]
+    for i, party in enumerate(setting.parties):
+        columns[f"pays:{party.name}"] = [
+            Fraction(t, table.pays_den) for t in table.pays[i].tolist()
+        ]
+    columns["pot"] = [Fraction(top, den) for top in pots.tolist()]
+    return pd.DataFrame(columns)
+
+
+def largest(array: IntArray) -> int:
+    """Find the largest absolute entry, 0 in an empty array, as a Python int."""
+    if array.size == 0:
+        return 0
+    return max(abs(int(array.max())), abs(int(array.min())))
+
+
+def held(array: IntArray, bound: int) -> IntArray:
+    """Hold the array as int64 when everything made of it stays below `bound` < 2**60.
+
+    Python ints otherwise, slower and of any size.
+    """
+    if bound < SAFE:
+        return array.astype(np.int64, copy=False)
+    return array.astype(object, copy=False)
+
+
+def whole(values: Sequence[int]) -> IntArray:
+    """Lay integers out flat: int64 when all of them fit, Python ints otherwise."""
+    try:
+        return np.array(values, dtype=np.int64)
+    except OverflowError:
+        return np.array(values, dtype=object)
+
+
+def _over_one(rows: Sequence[Sequence[Fraction | int]]) -> tuple[IntArray, int]:
+    den = math.lcm(*{value.denominator for row in rows for value in row})
+    flat = whole([value.numerator * (den // value.denominator) for row in rows for value in row])
+    return flat.reshape(len(rows), -1), den

@@ -1,0 +1,1 @@
+"""Holds any payment table against every demand, straight from the definitions."""
