@@ -1,1 +1,62 @@
-"""designer: payment rules for shared decisions, proved before anyone signs."""
+"""designer: payment rules for shared decisions, proved before anyone signs.
+
+The public names are loaded when first used, so that the proof checker can be imported with
+the standard library alone.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from designer.auditing import Audit, audit
+    from designer.demands.terms import Demands, Terms
+    from designer.posing import pose
+    from designer.proof.recheck import recheck
+    from designer.setting.scenario import parse_scenario, read_scenario
+    from designer.setting.setting import Limits, Setting, Side
+    from designer.table import Table
+    from designer.tablefile import read_table
+    from designer.verdict import Verdict
+
+_HOMES = {
+    "Audit": "designer.auditing",
+    "Demands": "designer.demands.terms",
+    "Limits": "designer.setting.setting",
+    "Setting": "designer.setting.setting",
+    "Side": "designer.setting.setting",
+    "Table": "designer.table",
+    "Terms": "designer.demands.terms",
+    "Verdict": "designer.verdict",
+    "audit": "designer.auditing",
+    "parse_scenario": "designer.setting.scenario",
+    "pose": "designer.posing",
+    "read_scenario": "designer.setting.scenario",
+    "read_table": "designer.tablefile",
+    "recheck": "designer.proof.recheck",
+}
+
+__all__ = [
+    "Audit",
+    "Demands",
+    "Limits",
+    "Setting",
+    "Side",
+    "Table",
+    "Terms",
+    "Verdict",
+    "audit",
+    "parse_scenario",
+    "pose",
+    "read_scenario",
+    "read_table",
+    "recheck",
+]
+
+
+def __getattr__(name: str) -> Any:
+    """Load a public name from its home module."""
+    if name not in _HOMES:
+        raise AttributeError(f"module 'designer' has no attribute {name!r}")
+    return getattr(import_module(_HOMES[name]), name)

@@ -5,7 +5,8 @@ from __future__ import annotations
 import time
 from pathlib import Path
 
-from designer.demands.terms import Demands, Terms, as_plain
+from designer.demands.plain import as_plain
+from designer.demands.terms import Demands, Terms
 from designer.engines.choose import engine_named
 from designer.engines.watch import Progress, Watch
 from designer.proof.document import build

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, field, fields
 from fractions import Fraction
-from typing import Any, cast
+from typing import Any
 
 from designer.errors import Mistake, UsageError
 from designer.setting.setting import Limits, Setting, Side
@@ -216,49 +216,3 @@ def _clashes(terms: Terms, setting: Setting) -> list[Mistake]:
                 )
             )
     return found
-
-
-def as_plain(terms: Terms) -> dict[str, object]:
-    """The terms as JSON-ready values, amounts as exact text; what `--json` and proofs carry."""
-    from designer.setting.exact import text
-
-    plain: dict[str, object] = {
-        "decision": terms.decision,
-        "ic": terms.ic,
-        "ir": terms.ir,
-        "balance": terms.balance,
-        "budget": terms.budget,
-        "goal": list(terms.goals),
-        "subsidy": text(terms.subsidy),
-        "slack": text(terms.slack),
-        "tidy": terms.tidy,
-        "even_handed": terms.even_handed,
-        "compelled": sorted(terms.compelled),
-    }
-    if terms.shortfall:
-        plain["shortfall"] = text(terms.shortfall)
-    if terms.trusted:
-        plain["trusted"] = sorted(terms.trusted)
-    if terms.blend:
-        plain["blend"] = {name: text(weight) for name, weight in terms.blend}
-    for name in ("limits", "side"):
-        part = getattr(terms, name)
-        if part != type(part)():
-            plain[name] = _plain(part)
-    return plain
-
-
-def _plain(value: object) -> object:
-    from designer.setting.exact import text
-
-    if isinstance(value, Fraction):
-        return text(value)
-    if isinstance(value, tuple):
-        return [_plain(item) for item in value]
-    if hasattr(value, "__dataclass_fields__"):
-        return {
-            entry.name: _plain(getattr(value, entry.name))
-            for entry in fields(cast(Any, value))
-            if getattr(value, entry.name) is not None
-        }
-    return value
