@@ -1,0 +1,259 @@
+"""Square integer systems K x = b and K' y = c, solved exactly.
+
+The kernel of a basis is nearly triangular: rows and columns with a single entry are peeled
+off first. What remains, the core, is solved by fraction-free elimination while tiny, by
+FLINT while small, and by numeric-symbolic lifting (`lifting.py`) beyond.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from functools import cached_property
+from math import gcd, lcm
+
+import numpy as np
+
+from designer.engines.watch import Watch
+from designer.proof.lifting import Lifting, NotLifted
+from designer.proof.sparse import Matrix, largest, narrow
+from designer.setting.setting import IntArray
+
+PEEL = 4_000
+"""Kernels up to this size are peeled in Python before anything else."""
+TINY = 30
+"""Cores up to this size are eliminated in Python ints; importing FLINT costs more."""
+DENSE = 220
+"""Cores up to this size go to FLINT; importing the sparse float LU costs more."""
+DENSE_LAST = 1_500
+"""Cores up to this size go to FLINT when lifting does not converge."""
+
+Ratio = tuple[int, int]
+"""A rational number in lowest terms, denominator positive."""
+
+
+class Singular(Exception):  # noqa: N818 - a finding about a basis, not a mistake
+    """The kernel has no inverse (or none could be found): the basis is no basis."""
+
+
+class Kernel:
+    """An integer square matrix that can be solved with exactly, either way round."""
+
+    def __init__(self, matrix: Matrix, watch: Watch | None = None) -> None:
+        """Keep the matrix; Singular is raised when rows and columns differ in number."""
+        if matrix.rows != matrix.columns:
+            raise Singular(f"{matrix.rows} rows against {matrix.columns} columns")
+        self.matrix = matrix
+        self.watch = watch or Watch()
+
+    @property
+    def size(self) -> int:
+        """The number of rows."""
+        return self.matrix.rows
+
+    def solve(self, b: IntArray) -> tuple[IntArray, int]:
+        """(N, q) with K N = q b, q > 0. Raises Singular."""
+        return self._solve(b, False)
+
+    def solve_transposed(self, c: IntArray) -> tuple[IntArray, int]:
+        """(M, p) with K' M = p c, p > 0. Raises Singular."""
+        return self._solve(c, True)
+
+    def _solve(self, b: IntArray, transposed: bool) -> tuple[IntArray, int]:
+        if self.size == 0 or largest(b) == 0:
+            # still to be checked regular by whoever needs that; 0 solves every system
+            return np.zeros(self.size, dtype=np.int64), 1
+        if self.size <= PEEL and len(self._peeled.core_rows) <= DENSE:
+            return self._peeled.solve(b.tolist(), transposed)
+        try:
+            return self._lifting.solve(b, transposed)
+        except NotLifted as failure:
+            if self.size <= PEEL and len(self._peeled.core_rows) <= DENSE_LAST:
+                return self._peeled.solve(b.tolist(), transposed)
+            raise Singular(str(failure)) from failure
+
+    @cached_property
+    def _peeled(self) -> Peeled:
+        return Peeled(self.matrix, self.watch)
+
+    @cached_property
+    def _lifting(self) -> Lifting:
+        return Lifting(self.matrix, self.watch)
+
+
+class Peeled:
+    """A kernel with its singleton rows and columns taken off, in order.
+
+    first   (row, column): at its turn the row had this one column left
+    last    (row, column): at its turn the column had this one row left
+    """
+
+    def __init__(self, matrix: Matrix, watch: Watch) -> None:
+        """Peel until every remaining row and column has two entries or more."""
+        self.watch = watch
+        self.rows = matrix.entries()
+        self.columns = matrix.transposed.entries()
+        self.first: list[tuple[int, int]] = []
+        self.last: list[tuple[int, int]] = []
+        row_left = [len(row) for row in self.rows]
+        column_left = [len(column) for column in self.columns]
+        row_gone = [False] * len(row_left)
+        column_gone = [False] * len(row_left)
+        waiting = [(True, i) for i, count in enumerate(row_left) if count <= 1]
+        waiting += [(False, j) for j, count in enumerate(column_left) if count <= 1]
+        while waiting:
+            by_row, k = waiting.pop()
+            if row_gone[k] if by_row else column_gone[k]:
+                continue
+            line, gone = (self.rows[k], column_gone) if by_row else (self.columns[k], row_gone)
+            alive = [other for other, _ in line if not gone[other]]
+            if len(alive) != 1:
+                raise Singular("an empty row or column")
+            i, j = (k, alive[0]) if by_row else (alive[0], k)
+            (self.first if by_row else self.last).append((i, j))
+            row_gone[i] = column_gone[j] = True
+            for other, _ in self.rows[i]:
+                column_left[other] -= 1
+                if not column_gone[other] and column_left[other] <= 1:
+                    waiting.append((False, other))
+            for other, _ in self.columns[j]:
+                row_left[other] -= 1
+                if not row_gone[other] and row_left[other] <= 1:
+                    waiting.append((True, other))
+        self.core_rows = [i for i, gone in enumerate(row_gone) if not gone]
+        self.core_columns = [j for j, gone in enumerate(column_gone) if not gone]
+
+    def solve(self, b: Sequence[int], transposed: bool) -> tuple[IntArray, int]:
+        """(N, q) with K N = q b, or K' N = q b."""
+        # For K x = b the singleton rows come first, then the core, then the singleton
+        # columns backwards; for the transpose the two swap roles.
+        lines = self.columns if transposed else self.rows
+        first = [(j, i) for i, j in self.last] if transposed else self.first
+        last = [(j, i) for i, j in self.first] if transposed else self.last
+        core_lines = self.core_columns if transposed else self.core_rows
+        core_unknowns = self.core_rows if transposed else self.core_columns
+        known: list[Ratio | None] = [None] * len(lines)
+        for line, unknown in first:
+            known[unknown] = _resolve(lines[line], b[line], unknown, known)
+        if core_lines:
+            place = {unknown: k for k, unknown in enumerate(core_unknowns)}
+            system, right = [], []
+            for line in core_lines:
+                row = {place[k]: a for k, a in lines[line] if k in place}
+                n, d = _left(lines[line], b[line], known)
+                system.append({k: a * d for k, a in row.items()} if d != 1 else row)
+                right.append(n)
+            for unknown, value in zip(core_unknowns, self._core(system, right), strict=True):
+                known[unknown] = value
+        for line, unknown in reversed(last):
+            known[unknown] = _resolve(lines[line], b[line], unknown, known)
+        values = [value for value in known if value is not None]
+        common = lcm(*{d for _, d in values})
+        return narrow(np.array([n * (common // d) for n, d in values], dtype=object)), common
+
+    def _core(self, system: list[dict[int, int]], right: list[int]) -> list[Ratio]:
+        if not any(right):
+            return [(0, 1)] * len(right)
+        if len(system) <= TINY:
+            return eliminate(system, right, self.watch)
+        return _flint(system, right)
+
+
+def _left(line: list[tuple[int, int]], b: int, known: list[Ratio | None]) -> Ratio:
+    """B minus what the known unknowns of the line contribute, not reduced."""
+    n, d = b, 1
+    for k, a in line:
+        value = known[k]
+        if value is None or value[0] == 0:
+            continue
+        vn, vd = value
+        if vd == d:
+            n -= a * vn
+        elif d % vd == 0:
+            n -= a * vn * (d // vd)
+        else:
+            common = d // gcd(d, vd) * vd
+            n = n * (common // d) - a * vn * (common // vd)
+            d = common
+    return n, d
+
+
+def _resolve(line: list[tuple[int, int]], b: int, unknown: int, known: list[Ratio | None]) -> Ratio:
+    n, d = _left(line, b, known)
+    pivot = next(a for k, a in line if k == unknown)
+    return _ratio(n, d * pivot)
+
+
+def _ratio(n: int, d: int) -> Ratio:
+    common = gcd(n, d)
+    return (n // common, d // common) if d > 0 else (-n // common, -d // common)
+
+
+def eliminate(system: list[dict[int, int]], right: list[int], watch: Watch) -> list[Ratio]:
+    """Solve a small sparse integer system by elimination with Markowitz's (1957) pivot choice.
+
+    `system[i]` maps columns to nonzero integers; rows are kept free of common factors.
+    Raises Singular.
+    """
+    rows = [dict(row) for row in system]
+    right = list(right)
+    alive = set(range(len(rows)))
+    order: list[tuple[int, int]] = []
+    while alive:
+        watch.check()
+        counts: dict[int, int] = {}
+        for i in alive:
+            for j in rows[i]:
+                counts[j] = counts.get(j, 0) + 1
+        best: tuple[int, int, int] | None = None
+        for i in alive:
+            if not rows[i]:
+                raise Singular("dependent rows")
+            width = len(rows[i]) - 1
+            for j in rows[i]:
+                cost = width * (counts[j] - 1)
+                if best is None or cost < best[0]:
+                    best = (cost, i, j)
+        assert best is not None  # noqa: S101 - alive is not empty, so a row was seen
+        _, i, j = best
+        alive.remove(i)
+        order.append((i, j))
+        pivot_row, pivot = rows[i], rows[i][j]
+        for other in alive:
+            row = rows[other]
+            factor = row.pop(j, 0)
+            if not factor:
+                continue
+            common = gcd(pivot, factor)
+            up, down = pivot // common, factor // common
+            if up != 1:
+                for k in row:
+                    row[k] *= up
+            for k, a in pivot_row.items():
+                if k == j:
+                    continue
+                value = row.get(k, 0) - down * a
+                if value:
+                    row[k] = value
+                else:
+                    del row[k]
+            right[other] = up * right[other] - down * right[i]
+            content = gcd(right[other], *row.values())
+            if content > 1:
+                rows[other] = {k: a // content for k, a in row.items()}
+                right[other] //= content
+    known: list[Ratio | None] = [None] * len(rows)
+    for i, j in reversed(order):
+        known[j] = _resolve(list(rows[i].items()), right[i], j, known)
+    return [value for value in known if value is not None]
+
+
+def _flint(system: list[dict[int, int]], right: list[int]) -> list[Ratio]:
+    import flint
+
+    size = len(system)
+    dense = [[row.get(k, 0) for k in range(size)] for row in system]
+    try:
+        answer = flint.fmpz_mat(dense).solve(flint.fmpz_mat([[b] for b in right]))
+    except ZeroDivisionError as error:
+        raise Singular("dependent rows") from error
+    return [(int(answer[k, 0].p), int(answer[k, 0].q)) for k in range(size)]

@@ -1,0 +1,214 @@
+"""Decides a continuous program exactly: an optimal corner, a Farkas vector or a ray."""
+
+from __future__ import annotations
+
+from collections import Counter
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from designer.engines.highs import HIGHS
+from designer.engines.report import Basis, Engine, Report
+from designer.engines.watch import Interrupted, TimeUp, Watch
+from designer.program.linear import LinearProgram
+from designer.proof.corner import Corner
+from designer.proof.elastic import directions, elastic
+from designer.proof.exact import Exact, Point
+from designer.proof.kernel import Singular
+from designer.proof.magnify import magnified
+from designer.proof.pivot import drop_added, pivot, slack_basis
+from designer.proof.sparse import dot
+from designer.setting.setting import IntArray
+
+STRICT = 1e-10
+"""Feasibility tolerances of the warm restart, the smallest HiGHS accepts."""
+MAGNIFY = 3
+"""Rounds of magnification."""
+PIVOTS = 400
+"""Exact pivots before giving up."""
+PIVOTS_SMALL = 4_000
+"""The same for small programs."""
+SMALL = 400
+"""Rows plus columns of a program on which exact pivots from scratch are quick."""
+
+
+@dataclass
+class Effort:
+    """What one proof took: seconds inside engines, and counts."""
+
+    engine_seconds: float = 0.0
+    counts: Counter[str] = field(default_factory=Counter)
+
+    def note(self, report: Report) -> Report:
+        """Add an engine's seconds and iterations; raise Stopped if it was stopped."""
+        self.engine_seconds += report.seconds
+        self.counts["solves"] += 1
+        self.counts["iterations"] += report.iterations
+        if report.status == "time-limit":
+            raise TimeUp
+        if report.status == "interrupted":
+            raise Interrupted
+        return report
+
+
+@dataclass(frozen=True, eq=False)
+class Settled:
+    """An exact answer about a program, or the engine's word.
+
+    corner  optimal; with `ray` it is only feasible and the program unbounded
+    farkas  infeasible
+    said    nothing exact was found: the engine's last report, and `reason` why
+    """
+
+    corner: Corner | None = None
+    ray: Point | None = None
+    farkas: Point | None = None
+    said: Report | None = None
+    reason: str = ""
+
+
+def settle(
+    lp: LinearProgram,
+    engine: Engine,
+    watch: Watch,
+    effort: Effort,
+    scale: IntArray | None = None,
+) -> Settled:
+    """Decide a continuous program exactly, as far as it goes. Raises Stopped."""
+    exact = Exact(lp)
+    report = effort.note(engine.solve(lp, watch))
+    first = report
+    if report.status == "optimal" and report.basis is None and report.x is not None:
+        # an engine without bases: HiGHS makes a corner of its point
+        report = effort.note(HIGHS.cross(lp, report, watch))
+    if report.status == "optimal" and report.basis is not None:
+        found = repair(exact, report.basis, watch, effort)
+        return found or _unsettled(first)
+
+    feasible = find_feasible(lp, watch, effort, scale)
+    if feasible.corner is None:
+        return feasible if feasible.farkas is not None else _unsettled(first)
+    start = feasible.corner
+    ray = None
+    if report.status in ("unbounded", "unclear"):
+        ray = _direction(exact, watch, effort)
+    if ray is None:
+        # the engine was wrong, or does not know: go on from the feasible corner
+        report = effort.note(HIGHS.solve(lp, watch, basis=start.basis, tolerance=STRICT))
+        if report.status == "optimal" and report.basis is not None:
+            found = repair(exact, report.basis, watch, effort)
+            if found is not None:
+                return found
+        ray = _direction(exact, watch, effort)
+    if ray is not None:
+        return Settled(corner=start, ray=ray)
+    return _pivoted(exact, start.basis, watch, effort) or _unsettled(first)
+
+
+def repair(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settled | None:
+    """Settle from a basis, repairing it if need be; None if it cannot be done.
+
+    In this order: the basis itself; a warm restart at the strictest tolerances; the
+    magnified program; exact pivots.
+    """
+    corner = _regular(exact, basis, watch, effort)
+    if corner is not None and corner.optimal:
+        return Settled(corner=corner)
+
+    effort.counts["repairs"] += 1
+    report = effort.note(HIGHS.solve(exact.lp, watch, basis=basis, tolerance=STRICT))
+    if report.basis is not None and report.status == "optimal":
+        corner = _regular(exact, report.basis, watch, effort) or corner
+        if corner is not None and corner.optimal:
+            return Settled(corner=corner)
+    for _ in range(MAGNIFY):
+        if corner is None:
+            break
+        effort.counts["magnified"] += 1
+        again = magnified(corner, watch)
+        better = _regular(exact, again, watch, effort) if again is not None else None
+        if better is None:
+            break
+        corner = better
+        if corner.optimal:
+            return Settled(corner=corner)
+    start = corner.basis if corner is not None else slack_basis(exact)
+    return _pivoted(exact, start, watch, effort)
+
+
+def find_feasible(
+    lp: LinearProgram, watch: Watch, effort: Effort, scale: IntArray | None = None
+) -> Settled:
+    """Find an exact feasible corner of `lp` or an exact Farkas vector, by the elastic program.
+
+    The corner is feasible, not optimal. `said` is set when neither was found.
+    """
+    exact = Exact(lp)
+    for full in (False, True):
+        wider = Exact(elastic(lp, scale, full=full))
+        report = effort.note(HIGHS.solve(wider.lp, watch))
+        if report.status != "optimal" or report.basis is None:
+            continue
+        found = repair(wider, report.basis, watch, effort)
+        if found is None:
+            continue
+        if found.corner is not None and dot(wider.cost, found.corner.x.num) == 0:
+            corner = Corner(exact, drop_added(found.corner, lp.columns), watch)
+            if corner.feasible:
+                return Settled(corner=corner)
+            continue
+        y = found.farkas if found.corner is None else found.corner.y
+        if y is not None and exact.proves_infeasible(y):
+            return Settled(farkas=y)
+    return Settled(said=report)
+
+
+def _direction(exact: Exact, watch: Watch, effort: Effort) -> Point | None:
+    """An exact improving direction of the program, if it has one."""
+    along = Exact(directions(exact.lp))
+    report = effort.note(HIGHS.solve(along.lp, watch))
+    if report.status != "optimal" or report.basis is None:
+        return None
+    found = repair(along, report.basis, watch, effort)
+    if found is None or found.corner is None:
+        return None
+    return found.corner.x if exact.proves_ray(found.corner.x) else None
+
+
+def _regular(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Corner | None:
+    """The corner of a basis, None if the basis is singular."""
+    corner = Corner(exact, basis, watch)
+    try:
+        effort.counts["kernel"] = max(effort.counts["kernel"], corner.kernel.size)
+        _ = corner.x, corner.y
+    except Singular:
+        return None
+    return corner
+
+
+def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settled | None:
+    small = exact.matrix.rows + exact.matrix.columns <= SMALL
+    starts = [basis, slack_basis(exact)] if small else [basis]
+    for start in starts:
+        try:
+            ended = pivot(exact, start, watch, PIVOTS_SMALL if small else PIVOTS)
+        except Singular:
+            continue
+        if ended is None:
+            continue
+        effort.counts["pivots"] += ended.pivots
+        if ended.farkas is not None:
+            return Settled(farkas=ended.farkas) if exact.proves_infeasible(ended.farkas) else None
+        if ended.ray is not None:
+            return Settled(ended.corner, ended.ray) if exact.proves_ray(ended.ray) else None
+        if ended.corner is not None and ended.corner.optimal:
+            return Settled(corner=ended.corner)
+    return None
+
+
+def _unsettled(report: Report) -> Settled:
+    return Settled(
+        said=report,
+        reason=f"{report.engine} says {report.status!r} but no exact proof was found; "
+        "try another engine, or state the amounts with smaller denominators",
+    )
