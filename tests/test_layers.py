@@ -102,4 +102,6 @@ def test_every_goal_file_is_registered_under_its_word() -> None:
     files = _declared(ROOT / "demands" / "goals", "GOAL")
     assert {stem.replace("_", "-") for stem in files} == set(registry.GOALS)
     assert set(registry.GOALS) == set(vocabulary.GOALS)
-    assert all(isinstance(goal, Goal) and name == goal.name for name, goal in registry.GOALS.items())
+    assert all(
+        isinstance(goal, Goal) and name == goal.name for name, goal in registry.GOALS.items()
+    )

@@ -3,19 +3,19 @@
 Two parties are alike when swapping them, together with a matching swap of the options, leaves
 every number of the setting as it was. Swapping them must then leave the table as it was:
 
-    t_i(theta) = t_j(swapped theta),  t_l(theta) = t_l(swapped theta),  x_k(theta) = x_k'(swapped theta)
+    t_i(theta) = t_j(swapped),   t_l(theta) = t_l(swapped),   x_k(theta) = x_k'(swapped)
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 
 import numpy as np
 
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
-from designer.program.labels import Clause
+from designer.program.labels import Clause, Label
 from designer.program.linear import IndexArray
 from designer.setting.setting import Setting
 
@@ -110,7 +110,9 @@ def _rows(draft: Draft, terms: Terms) -> None:
             if index == j or not len(keep):
                 continue  # the mirror image of the rows of i
 
-            def label(n: int, name: str = party.name, keep: IndexArray = keep) -> Clause:
+            def label(
+                n: int, name: str = party.name, keep: IndexArray = keep, pair: str = pair
+            ) -> Clause:
                 return Clause("even-handed", pair, name, setting.labels_at(int(keep[n])))
 
             form = draft.pays(index, keep) - draft.pays(other, profile[keep])
@@ -125,8 +127,12 @@ def _rows(draft: Draft, terms: Terms) -> None:
                 form,
                 "=",
                 "even-handed",
-                lambda n: Clause("even-handed", pair, None, setting.labels_at(n)),
+                _option_label(setting, pair),
             )
+
+
+def _option_label(setting: Setting, pair: str) -> Callable[[int], Label]:
+    return lambda n: Clause("even-handed", pair, None, setting.labels_at(n))
 
 
 DEMAND = Demand("even-handed", lambda terms: terms.even_handed, _rows)

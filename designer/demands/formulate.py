@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from fractions import Fraction
 
 import numpy as np
@@ -20,29 +21,40 @@ from designer.setting.setting import IntArray, Setting
 class Formulation:
     """A program that grows goal by goal: pose a goal, settle it, pin it, pose the next."""
 
-    def __init__(self, setting: Setting, terms: Terms) -> None:
-        """Write every demand of `terms`; no goal yet."""
+    def __init__(
+        self,
+        setting: Setting,
+        terms: Terms,
+        free: Mapping[str, tuple[Fraction | None, Fraction | None]] | None = None,
+    ) -> None:
+        """Write every demand of `terms`; no goal yet.
+
+        `free` turns allowances (subsidy, slack, shortfall, shortfall:PARTY, pays_at_most,
+        pays_at_least, welfare_at_least, revenue_at_least) into unknowns within bounds.
+        """
         self.setting = setting
         self.terms = terms
         self.draft = Draft(setting, terms.decision, _amounts(terms))
         self.stages: list[Stage] = []
         self._objectives: list[tuple[Goal, Affine]] = []
+        for name, (low, high) in (free or {}).items():
+            self.draft.free_allowance(name, low, high)
         for name in terms.goals:
             GOALS[name].prepare(self.draft, terms)
         for demand in DEMANDS:
             if demand.asked(terms):
                 demand.rows(self.draft, terms)
 
-    def pose(self, name: str) -> Program:
-        """Add a goal as the next stage and return the program so far."""
-        goal = GOALS[name]
+    def pose(self, asked: str | Goal) -> Program:
+        """Add a goal, by name or of one's own, as the next stage; the program so far."""
+        goal = GOALS[asked] if isinstance(asked, str) else asked
         form = goal.objective(self.draft, self.terms)
         cost = np.zeros(self.draft.columns, dtype=form.num.dtype)
         np.add.at(cost, form.col, form.num)
         rows = sum(block.count for block in self.draft.row_blocks)
         self.stages.append(
             Stage(
-                goal=name,
+                goal=goal.name,
                 sense=goal.sense,
                 columns=self.draft.columns,
                 rows=rows,
@@ -174,7 +186,7 @@ def _column_bounds(draft: Draft) -> tuple[Bound, Bound, int]:
         num = np.zeros(draft.columns, dtype=np.int64 if small else object)
         finite = np.zeros(draft.columns, dtype=bool)
         for entry in draft.bounds:
-            bound = entry[pick]
+            bound = entry[2] if pick == 2 else entry[3]
             finite[entry[0] : entry[1]] = bound is not None
             if bound is not None:
                 num[entry[0] : entry[1]] = int(bound * den)

@@ -26,9 +26,10 @@ def _nothing(draft: Draft, terms: Terms) -> None:
 
 @dataclass(frozen=True)
 class Goal:
-    """One goal: `prepare` frees allowances before the demands are written; `objective` adds
-    the goal's own columns and rows, if any, and returns the form to optimise.
+    """One goal: what to optimise, and how.
 
+    `prepare` frees allowances before the demands are written; `objective` adds the goal's own
+    columns and rows, if any, and returns the form to optimise.
     `reads` completes the sentence "the … is" on the screen; `money` tells whether the value
     is an amount of money.
     """

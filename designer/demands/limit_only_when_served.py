@@ -8,6 +8,7 @@ from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
 from designer.program.labels import Clause
+from designer.program.linear import IndexArray
 
 
 def _rows(draft: Draft, terms: Terms) -> None:
@@ -30,7 +31,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
             at = everywhere
             form = served.times(cap) - draft.pays(index, at)
 
-        def label(j: int, name: str = party.name, at: np.ndarray = at) -> Clause:  # type: ignore[type-arg]
+        def label(j: int, name: str = party.name, at: IndexArray = at) -> Clause:
             return Clause("limit", "only_when_served", name, setting.labels_at(int(at[j])))
 
         draft.require(form, ">=", "only when served", label)

@@ -2,14 +2,43 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
+
+import numpy as np
+
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
+from designer.program.labels import Clause
 
 
 def _rows(draft: Draft, terms: Terms) -> None:
-    """pays_at_least <= t_i(theta) <= pays_at_most, as bounds of the payment columns."""
-    draft.bound_payments(terms.limits.pays_at_least, terms.limits.pays_at_most)
+    """pays_at_least <= t_i(theta) <= pays_at_most, as bounds of the payment columns.
+
+    A limit that has been freed, to see how far it must give, is an unknown: rows then.
+    """
+    limits = terms.limits
+    cap, floor = draft.freed("pays_at_most"), draft.freed("pays_at_least")
+    draft.bound_payments(
+        None if floor else limits.pays_at_least, None if cap else limits.pays_at_most
+    )
+    for key, given, sign in (("pays_at_most", cap, 1), ("pays_at_least", floor, -1)):
+        if given:
+            _free_limit(draft, key, sign)
+
+
+def _free_limit(draft: Draft, key: str, sign: int) -> None:
+    """Sign * (limit - t_i(theta)) >= 0 at every profile."""
+    setting = draft.setting
+    everywhere = np.arange(setting.profiles, dtype=np.int64)
+    limit = draft.allowance(key, Fraction(0)).repeat(setting.profiles)
+    for index, party in enumerate(setting.parties):
+
+        def label(j: int, name: str = party.name) -> Clause:
+            return Clause("limit", key, name, setting.labels_at(j))
+
+        room = (limit - draft.pays(index, everywhere)).times(Fraction(sign))
+        draft.require(room, ">=", "limit", label)
 
 
 def _asked(terms: Terms) -> bool:

@@ -6,7 +6,7 @@ from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.affine import constants
 from designer.program.draft import Draft
-from designer.program.labels import TakesPart
+from designer.program.labels import TakesPart, always
 
 
 def _rows(draft: Draft, terms: Terms) -> None:
@@ -17,8 +17,8 @@ def _rows(draft: Draft, terms: Terms) -> None:
         label = TakesPart(party.name)
         outside = constants(draft.outside(index), draft.setting.grain, draft.dtype)
         gain = draft.expected_utility(index) - outside.mean(draft.weights)
-        allowed = draft.allowance("shortfall", terms.shortfall)
-        draft.require(gain + allowed, ">=", "takes part", lambda _, label=label: label)
+        allowed = draft.allowance("shortfall", terms.shortfall, party.name)
+        draft.require(gain + allowed, ">=", "takes part", always(label))
 
 
 DEMAND = Demand("ir ex-ante", lambda terms: terms.ir == "ex-ante", _rows)

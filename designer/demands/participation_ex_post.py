@@ -19,7 +19,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
             continue
         outside = constants(draft.outside(index)[scope], draft.setting.grain, draft.dtype)
         utility = draft.worth(index, scope, scope) - draft.pays(index, scope)
-        allowed = draft.allowance("shortfall", terms.shortfall).repeat(len(scope))
+        allowed = draft.allowance("shortfall", terms.shortfall, party.name).repeat(len(scope))
         draft.require(utility - outside + allowed, ">=", "takes part", _label(draft, index))
 
 

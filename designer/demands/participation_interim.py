@@ -16,7 +16,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
     for index, party in enumerate(draft.setting.parties):
         if party.name in terms.compelled:
             continue
-        allowed = draft.allowance("shortfall", terms.shortfall).repeat(party.size)
+        allowed = draft.allowance("shortfall", terms.shortfall, party.name).repeat(party.size)
         draft.require(draft.interim_gain(index) + allowed, ">=", "takes part", _label(party))
 
 

@@ -7,7 +7,7 @@ import numpy as np
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
-from designer.program.labels import Clause
+from designer.program.labels import Clause, always
 
 
 def _rows(draft: Draft, terms: Terms) -> None:
@@ -20,12 +20,12 @@ def _rows(draft: Draft, terms: Terms) -> None:
         label = Clause("side", f"chance[{place}]", party.name)
         low, high = chance.at_least, chance.at_most
         if low is not None and low == high:
-            draft.require(form.plus(-low), "=", "side", lambda _, label=label: label)
+            draft.require(form.plus(-low), "=", "side", always(label))
             continue
         if low is not None:
-            draft.require(form.plus(-low), ">=", "side", lambda _, label=label: label)
+            draft.require(form.plus(-low), ">=", "side", always(label))
         if high is not None:
-            draft.require((-form).plus(high), ">=", "side", lambda _, label=label: label)
+            draft.require((-form).plus(high), ">=", "side", always(label))
 
 
 DEMAND = Demand("side chance", lambda terms: bool(terms.side.chances), _rows)

@@ -12,7 +12,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
     """E[pot] >= revenue_at_least."""
     floor = terms.side.revenue_at_least
     if floor is not None:
-        form = draft.expected_pot().plus(-floor)
+        form = draft.expected_pot() - draft.allowance("revenue_at_least", floor)
         draft.require(form, ">=", "side", lambda _: Clause("side", "revenue_at_least"))
 
 

@@ -13,7 +13,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
     """E[total worth net of outlay] >= welfare_at_least."""
     floor = terms.side.welfare_at_least
     if floor is not None:
-        form = expected_welfare(draft).plus(-floor)
+        form = expected_welfare(draft) - draft.allowance("welfare_at_least", floor)
         draft.require(form, ">=", "side", lambda _: Clause("side", "welfare_at_least"))
 
 

@@ -41,8 +41,8 @@ class Terms:
     even_handed: bool = False
     compelled: frozenset[str] = frozenset()
     trusted: frozenset[str] = frozenset()
-    limits: Limits = Limits()
-    side: Side = Side()
+    limits: Limits = field(default_factory=Limits)
+    side: Side = field(default_factory=Side)
     blend: tuple[tuple[str, Fraction], ...] = ()
 
 

@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from fractions import Fraction
+from typing import Any
 
 import numpy as np
 
@@ -120,7 +121,7 @@ def _over(form: Affine, common: IntArray) -> Affine:
     return Affine(form.row, form.col, form.num * factor[form.row], form.const * factor, common)
 
 
-def constants(values: IntArray, den: int, dtype: np.dtype[np.generic]) -> Affine:
+def constants(values: IntArray, den: int, dtype: np.dtype[Any]) -> Affine:
     """Forms without columns: values / den."""
     return Affine(
         np.empty(0, dtype=np.int64),
@@ -131,7 +132,7 @@ def constants(values: IntArray, den: int, dtype: np.dtype[np.generic]) -> Affine
     )
 
 
-def of_columns(columns: IndexArray, dtype: np.dtype[np.generic]) -> Affine:
+def of_columns(columns: IndexArray, dtype: np.dtype[Any]) -> Affine:
     """One form per listed column: the column itself."""
     size = len(columns)
     return Affine(

@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from fractions import Fraction
 from functools import cached_property
+from typing import Any
 
 import numpy as np
 
@@ -414,10 +415,18 @@ class Draft:
         self._allowances[name] = self.unknown(name, lo, hi)
         return self._allowances[name]
 
-    def allowance(self, name: str, amount: Fraction) -> Affine:
-        """An allowance as one form: its unknown if freed, else the fixed amount."""
-        if name in self._allowances:
-            return self._allowances[name]
+    def freed(self, name: str) -> bool:
+        """Whether an allowance is an unknown of this program."""
+        return name in self._allowances
+
+    def allowance(self, name: str, amount: Fraction, party: str = "") -> Affine:
+        """An allowance as one form: its unknown if freed, else the fixed amount.
+
+        An allowance freed for one party alone is called "name:PARTY".
+        """
+        for known in (f"{name}:{party}", name):
+            if known in self._allowances:
+                return self._allowances[known]
         return constants(np.zeros(1, dtype=self.dtype), 1, self.dtype).plus(amount)
 
 
@@ -436,7 +445,7 @@ def _averages(forms: Affine, weights: IntArray, totals: IntArray) -> Affine:
     )
 
 
-def _dtype(setting: Setting, amounts: tuple[Fraction, ...]) -> np.dtype[np.generic]:
+def _dtype(setting: Setting, amounts: tuple[Fraction, ...]) -> np.dtype[Any]:
     """int64 where no product or sum of a row can leave it, Python integers otherwise."""
     money = [setting.outlay, setting.worth]
     for party in setting.parties:

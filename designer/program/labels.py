@@ -2,12 +2,18 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 
 @dataclass(frozen=True)
 class Label:
     """The name of a row or a column. `at` is one type label per party, in party order."""
+
+
+def always(label: Label) -> Callable[[int], Label]:
+    """The labels of rows that share one."""
+    return lambda _: label
 
 
 # -- columns -----------------------------------------------------------------------------

@@ -85,7 +85,9 @@ def derive(program: Program, farkas: Vector) -> Derivation:
         item = _Item(Balances(), weight, average, bound / weight)
         lines.append(_line(program, item, len(balances)))
     else:
-        defined = {i.label: i.form for i in money if isinstance(i.label, ExpectedPay)}
+        defined: dict[Label, Form] = {
+            i.label: i.form for i in money if isinstance(i.label, ExpectedPay)
+        }
         lines = [_line(program, _spelled_out(program, i, defined)) for i in (*rest, *balances)]
     if structure:
         form, bound = _sum(structure)

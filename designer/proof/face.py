@@ -33,7 +33,7 @@ class Settled:
 
 
 def reduced_costs(lp: LinearProgram, dual: Vector) -> Vector:
-    """d = c - A'y of the minimising form, exactly; c includes the sign of a `max` goal.
+    """D = c - A'y of the minimising form, exactly; c includes the sign of a `max` goal.
 
     `dual` and the result are in units of the cost itself (its cost_den taken into account).
     """

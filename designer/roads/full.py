@@ -18,7 +18,8 @@ from designer.program.linear import Bound, LinearProgram
 from designer.program.program import Program
 from designer.proof.face import Settled as Faced
 from designer.proof.face import face, lift, reduced_costs
-from designer.proof.prove import Outcome, prove
+from designer.proof.outcome import Outcome
+from designer.proof.prove import prove
 from designer.proof.vector import Vector
 from designer.roads.settled import GoalResult, Settled
 from designer.setting.setting import IntArray, Setting, integers
@@ -102,7 +103,7 @@ class _Journey:
     def _pose(self, name: str) -> Program:
         """Pin the goal before, if any, and pose the next."""
         since = time.perf_counter()
-        if self.results and self.results[-1].goal != "any":
+        if self.results and self.work.stages[-1].cost.any():
             before = self.results[-1]
             value = before.value
             if value is None:

@@ -19,11 +19,12 @@ from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import cached_property
 from types import MappingProxyType
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
-IntArray = npt.NDArray[np.int64] | npt.NDArray[np.object_]
+IntArray = npt.NDArray[Any]
 """Integers: int64 where every entry and product in sight fits, Python ints otherwise."""
 
 SMALL = 2**31
@@ -195,9 +196,7 @@ class Setting:
     def labels_at(self, profile: int) -> tuple[str, ...]:
         """The type label of each party at a profile number."""
         positions = self.types_at(profile)
-        return tuple(
-            party.types[a].label for party, a in zip(self.parties, positions, strict=True)
-        )
+        return tuple(party.types[a].label for party, a in zip(self.parties, positions, strict=True))
 
     def profile_of(self, positions: tuple[int, ...]) -> int:
         """The profile number of one type position per party."""

@@ -12,7 +12,7 @@ from designer.program.draft import Draft
 
 
 def _objective(draft: Draft, terms: Terms) -> Affine:
-    """sum of weight * part, parts: E[designer's worth], E[pot], E[sum_i u_i], E[u_NAME]."""
+    """Sum of weight * part, parts: E[designer's worth], E[pot], E[sum_i u_i], E[u_NAME]."""
     form = constants(np.zeros(1, dtype=draft.dtype), 1, draft.dtype)
     for name, weight in terms.blend:
         if name == "worth":

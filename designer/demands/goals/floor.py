@@ -6,20 +6,18 @@ from designer.demands.kinds import Goal
 from designer.demands.terms import Terms
 from designer.program.affine import Affine
 from designer.program.draft import Draft
-from designer.program.labels import Clause
+from designer.program.labels import Clause, always
 
 
 def _objective(draft: Draft, terms: Terms) -> Affine:
-    """max z with U_i(a) - E[outside_i | a] >= z for every party and type.
+    """Max z with U_i(a) - E[outside_i | a] >= z for every party and type.
 
     Compelled parties count too: leaving them out would let the table take from them at will.
     """
     floor = draft.unknown("floor")
     for index, party in enumerate(draft.setting.parties):
         form = draft.interim_gain(index) - floor.repeat(party.size)
-        draft.require(
-            form, ">=", "goal floor", lambda _, name=party.name: Clause("goal", "floor", name)
-        )
+        draft.require(form, ">=", "goal floor", always(Clause("goal", "floor", party.name)))
     return floor
 
 

@@ -14,7 +14,7 @@ from designer.program.labels import Clause
 
 
 def _objective(draft: Draft, terms: Terms) -> Affine:
-    """min z with -z <= t_i(theta) <= z at every profile."""
+    """Min z with -z <= t_i(theta) <= z at every profile."""
     setting = draft.setting
     swing = draft.unknown("swing", Fraction(0))
     everywhere = np.arange(setting.profiles, dtype=np.int64)

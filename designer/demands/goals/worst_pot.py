@@ -10,7 +10,7 @@ from designer.program.labels import Clause
 
 
 def _objective(draft: Draft, terms: Terms) -> Affine:
-    """max z with pot(theta) >= z at every profile in scope."""
+    """Max z with pot(theta) >= z at every profile in scope."""
     scope = draft.scope
     worst = draft.unknown("worst pot")
     form = draft.pot(scope) - worst.repeat(len(scope))
