@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import time
 from pathlib import Path
+from typing import Any, cast
 
 from designer.demands.plain import as_plain
 from designer.demands.terms import Demands, Terms
@@ -67,8 +68,8 @@ def pose_terms(
 
 def judge(setting: Setting, terms: Terms, settled: Settled) -> Verdict:
     """Let the checker, which trusts nothing, say what the road's certificates prove."""
-    document = {}
-    holds, claims = False, ()
+    document: dict[str, Any] = {}
+    holds, claims = False, cast("tuple[str, ...]", ())
     if settled.status != "undecided":
         document = build(setting, as_plain(terms), settled)
         finding = recheck(document)

@@ -50,8 +50,6 @@ class Axis:
         kept = []
         for block in self.blocks:
             count = min(block.count, stop)
-            if count <= 0:
-                break
             kept.append(Block(block.family, count, block.label))
             stop -= count
         return Axis(tuple(kept))
