@@ -8,7 +8,7 @@ from types import MappingProxyType
 
 from designer.setting import exact
 from designer.setting.parties import TAKEN, Roster
-from designer.setting.reading import Section, describe, listing, suggestion, unknown_keys
+from designer.setting.reading import Section, describe, listing, unknown_keys
 from designer.setting.setting import Chance, Limits, Side
 from designer.setting.vocabulary import AMOUNTS, CHOICES, GOALS, SWITCHES
 
@@ -79,7 +79,7 @@ def _one_of(section: Section, key: str, known: Sequence[str | None], what: str) 
         return known.index(value)
     names = [name for name in known if name is not None]
     if len(names) == len(known) and names:
-        section.wrong(key, listing(names), suggestion(value, names) or f"Name {what}.")
+        section.wrong(key, listing(names), section.report.near(value, names) or f"Name {what}.")
     return None
 
 
@@ -137,7 +137,7 @@ def _goals(section: Section) -> tuple[str, ...]:
     for index, name in enumerate(names):
         if not isinstance(name, str) or name not in GOALS:
             place = section.at("goal") if isinstance(raw, str) else f"{section.at('goal')}[{index}]"
-            remedy = suggestion(name, GOALS) or "Pick from the list."
+            remedy = section.report.near(name, GOALS) or "Pick from the list."
             section.report.add(place, describe(name), f"one of {', '.join(GOALS)}", remedy)
         elif name in names[:index]:
             section.report.add(

@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import contextlib
 import hashlib
+import itertools
 import math
 import re
 from collections.abc import Iterator, Mapping, Sequence
@@ -91,14 +92,16 @@ def _worth(column: IntArray, depends: bool, setting: Setting, own: int) -> str:
     """One amount per own type; a nested list where it really depends on other types."""
     if not depends:
         return _nested(column, setting.grain)
-    table, axes = profiles.narrow(column.reshape(setting.shape), range(len(setting.shape)))
+    wide = profiles.wide(setting.shape)
+    table, axes = profiles.narrow(column.reshape([setting.shape[i] for i in wide]), wide)
     if set(axes) <= {own}:
         along: IntArray = np.broadcast_to(cast(Any, table), (setting.shape[own],))
         return _nested(along, setting.grain)
-    return _nested(column.reshape(setting.shape), setting.grain)
+    return _nested(column, setting.grain, setting.shape)
 
 
-def _nested(table: IntArray, grain: int) -> str:
+def _nested(column: IntArray, grain: int, shape: Sequence[int] = ()) -> str:
+    """A list; with a shape, lists in lists, the last level of its last size."""
     known: dict[int, str] = {}
 
     def amount(value: int) -> str:
@@ -107,36 +110,38 @@ def _nested(table: IntArray, grain: int) -> str:
             written = known[value] = _number(Fraction(value, grain))
         return written
 
-    def level(part: object) -> str:
-        if isinstance(part, list):
-            return f"[{', '.join(map(level, part))}]"
-        return amount(part)  # type: ignore[arg-type]  # tolist() gives ints at the leaves
-
-    return level(table.tolist())
+    level = [amount(int(value)) for value in column]
+    for size in reversed(shape[1:]):
+        level = [f"[{', '.join(level[i : i + size])}]" for i in range(0, len(level), size)]
+    return f"[{', '.join(level)}]"
 
 
-def _at(setting: Setting, profile: int) -> str:
-    pairs = zip(setting.parties, setting.types_at(profile), strict=True)
-    named = (f"{_key(party.name)} = {_label(party.types[a])}" for party, a in pairs)
-    return f"at = {{ {', '.join(named)} }}"
+def _ats(setting: Setting) -> Iterator[str]:
+    """The profiles in words, in the order of their numbers."""
+    choices = (
+        [f"{_key(party.name)} = {_label(kind)}" for kind in party.types]
+        for party in setting.parties
+    )
+    return (f"at = {{ {', '.join(named)} }}" for named in itertools.product(*choices))
 
 
 def _joint(setting: Setting) -> Iterator[str]:
     if setting.joint is None:
         return
-    factor = math.gcd(*(int(weight) for weight in setting.joint)) or 1
-    for profile in np.flatnonzero(setting.joint).tolist():
-        yield ""
-        yield "[[joint]]"
-        yield _at(setting, profile)
-        yield f"weight = {_number(Fraction(int(setting.joint[profile]) // factor))}"
+    factor = int(np.gcd.reduce(setting.joint)) or 1
+    for at, weight in zip(_ats(setting), setting.joint, strict=True):
+        if weight:
+            yield ""
+            yield "[[joint]]"
+            yield at
+            yield f"weight = {_number(Fraction(int(weight) // factor))}"
 
 
 def _rule(setting: Setting) -> Iterator[str]:
     if setting.rule is None:
         return
     known: dict[tuple[int, ...], str] = {}
-    for profile, row in enumerate(setting.rule.tolist()):
+    for at, row in zip(_ats(setting), setting.rule.tolist(), strict=True):
         drawn = tuple(row)
         if drawn not in known:
             shares = (Fraction(chance, setting.rule_den) for chance in drawn)
@@ -146,7 +151,7 @@ def _rule(setting: Setting) -> Iterator[str]:
             )
         yield ""
         yield "[[rule]]"
-        yield _at(setting, profile)
+        yield at
         yield f"take = {{ {known[drawn]} }}"
 
 

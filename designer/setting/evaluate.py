@@ -35,10 +35,8 @@ from designer.setting.expression import (
     references,
     shorten,
 )
+from designer.setting.reading import MAX_BITS
 from designer.setting.setting import IntArray, Type
-
-MAX_BITS = 20_000
-"""Longest numerator or common denominator met on the way."""
 
 MAX_POWER = 1000
 

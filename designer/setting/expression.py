@@ -28,7 +28,7 @@ from typing import NoReturn, TypeAlias
 from designer.setting import exact
 
 MAX_LENGTH = 4000
-MAX_DEPTH = 80
+MAX_DEPTH = 100
 
 RESERVED = frozenset({"type", "types", "min", "max", "abs", "name", "number"})
 """Words the language or the file keeps; no field may be called so."""

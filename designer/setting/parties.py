@@ -20,7 +20,6 @@ from designer.setting.reading import (
     listing,
     read_name,
     read_number,
-    suggestion,
 )
 from designer.setting.setting import Type
 
@@ -70,8 +69,8 @@ class Roster:
             report.add(
                 place,
                 describe(raw),
-                f"a type of {self.names[party] or 'that party'}: {listing(list(known))}",
-                suggestion(raw, known) or "Write one of its types.",
+                f"a type of {self.names[party] or 'that party'}: {listing(known)}",
+                report.near(raw, known) or "Write one of its types.",
             )
         return None
 
@@ -84,7 +83,7 @@ class Roster:
                     join(place, key),
                     f"an unknown party {describe(key)}",
                     f"one of {listing(self.known_names())}",
-                    suggestion(key, self.known_names()) or "Remove it.",
+                    report.near(key, self.known_names()) or "Remove it.",
                 )
         for party, name in enumerate(self.names):
             if name is None:

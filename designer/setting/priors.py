@@ -12,7 +12,7 @@ import numpy as np
 
 from designer.setting import exact, profiles
 from designer.setting.parties import Roster
-from designer.setting.reading import Report, Section, describe, read_number
+from designer.setting.reading import MAX_BITS, Report, Section, describe, read_number
 from designer.setting.setting import IntArray, integers
 from designer.setting.sheet import read_sheet
 from designer.setting.worths import frozen, too_many
@@ -78,17 +78,24 @@ def smallest(weights: Sequence[Fraction], place: str, report: Report) -> tuple[i
     common = 1
     for den in {weight.denominator for weight in weights}:
         common = math.lcm(common, den)
-        if common.bit_length() > 20_000:
-            report.add(
-                place,
-                "weights whose common denominator has more than 20,000 binary digits",
-                "weights with common denominators",
-                "Round them to a common unit.",
-            )
+        if common.bit_length() > MAX_BITS:
+            _no_common(place, report)
             return None
     whole = [weight.numerator * (common // weight.denominator) for weight in weights]
     factor = math.gcd(*whole) or 1
+    if max(whole, default=0) // factor >= 2**MAX_BITS:
+        _no_common(place, report)
+        return None
     return tuple(weight // factor for weight in whole)
+
+
+def _no_common(place: str, report: Report) -> None:
+    report.add(
+        place,
+        f"weights whose common denominator has more than {MAX_BITS:,} binary digits",
+        "weights with common denominators",
+        "Round them to a common unit.",
+    )
 
 
 def read_joint(
@@ -127,11 +134,10 @@ def read_joint(
         return None
     dense = np.zeros(count, dtype=object)
     dense[list(weights)] = listed
-    table = dense.reshape(roster.shape)
     marginals = []
     for party, section in enumerate(roster.sections):
-        others = tuple(axis for axis in range(len(roster.shape)) if axis != party)
-        along = [int(weight) for weight in np.ravel(table.sum(axis=others))]
+        blocks = dense.reshape(-1, roster.shape[party], steps[party])
+        along = [int(weight) for weight in blocks.sum(axis=(0, 2))]
         for kind, mass in zip(roster.types[party] or (), along, strict=True):
             if mass == 0:
                 report.add(

@@ -27,6 +27,28 @@ def strides(shape: Sequence[int]) -> tuple[int, ...]:
     return tuple(steps)
 
 
+def positions(profile: int, shape: Sequence[int]) -> tuple[int, ...]:
+    """The type position of each party at a profile number.
+
+    >>> positions(23, (2, 3, 4))
+    (1, 2, 3)
+    """
+    found = []
+    for size in reversed(shape):
+        profile, position = divmod(profile, size)
+        found.append(position)
+    return tuple(reversed(found))
+
+
+def wide(shape: Sequence[int]) -> tuple[int, ...]:
+    """The parties with two types or more.
+
+    Arrays over profiles get an axis for these only, so that numpy's limit of 64 axes is never
+    met: at most `MOST` profiles leave at most 22 of them.
+    """
+    return tuple(i for i, size in enumerate(shape) if size > 1)
+
+
 def spread(compact: IntArray, axes: Sequence[int], shape: Sequence[int]) -> IntArray:
     """Entries over some parties' types, repeated over everyone else's: (N,).
 
@@ -36,11 +58,8 @@ def spread(compact: IntArray, axes: Sequence[int], shape: Sequence[int]) -> IntA
     >>> spread(np.array([1, 2]), (0,), (2, 3)).tolist()
     [1, 1, 1, 2, 2, 2]
     """
-    # Parties of one type add no axis, so that numpy's limit of 64 axes is never met:
-    # N <= MOST leaves at most 22 parties of two types or more.
-    wide = [i for i, size in enumerate(shape) if size > 1]
-    seen = compact.reshape([shape[i] if i in axes else 1 for i in wide])
-    full: IntArray = np.broadcast_to(cast(Any, seen), [shape[i] for i in wide])
+    seen = compact.reshape([shape[i] if i in axes else 1 for i in wide(shape)])
+    full: IntArray = np.broadcast_to(cast(Any, seen), [shape[i] for i in wide(shape)])
     return full.reshape(math.prod(shape))
 
 

@@ -8,15 +8,16 @@ return None (or the default), so that reading goes on and finds the other mistak
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Sequence
+from collections.abc import Collection, Iterable, Sequence
 from fractions import Fraction
+from itertools import islice
 from typing import Any
 
 from designer.errors import Mistake
 from designer.setting import exact
 
 MAX_BITS = 10_000
-"""Longest numerator or denominator of a number in a scenario, in binary digits."""
+"""Longest numerator or (common) denominator of the numbers of a scenario, in binary digits."""
 
 SHOWN = 60
 """Mistakes listed before the rest is only counted."""
@@ -49,6 +50,14 @@ class Report:
 
     def __len__(self) -> int:
         return len(self._found) + self._more
+
+    def near(self, word: object, known: Iterable[str]) -> str:
+        """'Did you mean …?' when a known word is near; empty when none is, or in a long report.
+
+        The search costs far more than the mistake it helps with, so that a sheet with a
+        million wrong cells gets it for those that are listed only.
+        """
+        return suggestion(word, known) if len(self._found) < SHOWN else ""
 
     def mistakes(self) -> list[Mistake]:
         """The mistakes, the last line counting those not listed."""
@@ -112,7 +121,7 @@ class Section:
         value = self.values.get(key, default)
         if isinstance(value, str) and value in choices:
             return value
-        remedy = suggestion(value, choices) or "Pick one."
+        remedy = self.report.near(value, choices) or "Pick one."
         self.wrong(key, f"one of {listing(choices)}", remedy)
         return default
 
@@ -129,7 +138,7 @@ class Section:
         value = self.values[key]
         if isinstance(value, dict):
             return Section(value, self.at(key), self.report)
-        self.wrong(key, "a table", f"Write [{self.at(key)}] or {key} = {{ … }}.")
+        self.wrong(key, "a table", f"Write {key} = {{ … }}.")
         return None
 
     def sections(self, key: str) -> list[Section]:
@@ -213,7 +222,7 @@ def unknown_keys(
                 join(place, key),
                 f"an unknown {what} {describe(key)}",
                 f"one of {listing(known)}",
-                suggestion(key, known) or "Remove it.",
+                report.near(key, known) or "Remove it.",
             )
 
 
@@ -223,14 +232,14 @@ def suggestion(word: object, known: Iterable[str]) -> str:
 
     if not isinstance(word, str):
         return ""
-    folded = {name.casefold(): name for name in list(known)[:2000]}
+    folded = {name.casefold(): name for name in islice(known, 1000)}
     near = difflib.get_close_matches(word[:80].casefold(), folded, n=1, cutoff=0.6)
     return f"Did you mean '{folded[near[0]]}'?" if near else ""
 
 
-def listing(words: Sequence[str], most: int = 12) -> str:
+def listing(words: Collection[str], most: int = 12) -> str:
     """A comma-separated list, cut when long."""
-    shown = ", ".join(words[:most])
+    shown = ", ".join(islice(words, most))
     return f"{shown}, … ({len(words)} in all)" if len(words) > most else shown
 
 

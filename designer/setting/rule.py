@@ -19,7 +19,6 @@ from designer.setting.reading import (
     describe,
     listing,
     read_number,
-    suggestion,
     unknown_keys,
 )
 from designer.setting.setting import IntArray, integers
@@ -87,9 +86,9 @@ def read_rule(
 
 
 def _report_missing(missing: Any, roster: Roster, report: Report) -> None:
-    first = np.unravel_index(int(missing[0]), roster.shape)
+    first = profiles.positions(int(missing[0]), roster.shape)
     named = ", ".join(
-        f"{name} = {kinds[int(a)].label}"
+        f"{name} = {kinds[a].label}"
         for name, kinds, a in zip(roster.names, roster.types, first, strict=True)
         if kinds is not None
     )
@@ -129,7 +128,7 @@ def read_lottery(raw: object, place: str, options: Sequence[str], report: Report
     if isinstance(raw, str):
         if raw in options:
             return tuple(Fraction(option == raw) for option in options)
-        remedy = suggestion(raw, options) or "Name an option."
+        remedy = report.near(raw, options) or "Name an option."
         report.add(place, describe(raw), f"one of {listing(options)}", remedy)
         return None
     if not isinstance(raw, dict):

@@ -181,13 +181,14 @@ class _Reader:
         for i in range(len(shape)):
             value, depends = _array([_sure(one) for one in values[i]], i, shape, grain)
             outside, outside_depends = _array([_sure(outsides[i])], i, shape, grain)
+            outside = outside.reshape(-1)  # one column
             parties.append(
                 Party(
                     name=_sure(roster.names[i]),
                     types=_sure(roster.types[i]),
                     weights=_sure(weights[i]),
                     value=value,
-                    outside=outside[:, 0],
+                    outside=outside,
                     depends=depends,
                     outside_depends=outside_depends,
                     compelled=compelled[i],

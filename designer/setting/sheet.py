@@ -99,7 +99,7 @@ def read_sheet(written: str, folder: Path | None, place: str, report: Report) ->
     text = read_text((folder or Path()) / written, place, report)
     if text is None:
         return None
-    name = Path(written).name
+    name = written if written.isprintable() and len(written) <= 60 else describe(written)
     lines = csv.reader(io.StringIO(text, newline=""), strict=True)
     try:
         header = [cell.strip() for cell in next(lines)]

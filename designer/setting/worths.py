@@ -10,10 +10,10 @@ from typing import Any, cast
 import numpy as np
 
 from designer.setting import exact, profiles
-from designer.setting.evaluate import MAX_BITS, Amounts, collect, constant, evaluate
+from designer.setting.evaluate import Amounts, collect, constant, evaluate
 from designer.setting.expression import ExpressionError, parse, references
 from designer.setting.parties import Roster
-from designer.setting.reading import Report, Section, describe, read_number, unknown_keys
+from designer.setting.reading import MAX_BITS, Report, Section, describe, read_number, unknown_keys
 from designer.setting.setting import IntArray, Type, integers
 
 FORMS = 'Write a number, an expression such as "type / 2", or a list with one entry per type.'
@@ -131,7 +131,8 @@ class WorthReader:
         walk(raw, 0, place)
         if len(self.report) > before:
             return None
-        return collect(values, tuple(range(len(shape))), shape)
+        axes = profiles.wide(shape)
+        return collect(values, axes, tuple(shape[axis] for axis in axes))
 
     def counted(self, raw: list[object], place: str, party: int) -> bool:
         """Whether a list has one entry per type of a party; a mistake if not."""
@@ -190,9 +191,7 @@ def per_type(amounts: Sequence[Amounts], size: int, grain: int) -> IntArray:
 
 def per_profile(amounts: Sequence[Amounts], shape: Sequence[int], grain: int) -> IntArray:
     """Amounts of any types, as columns over all profiles: (N, columns)."""
-    columns: list[Any] = [
-        profiles.spread(whole(each, grain), each.axes, shape) for each in amounts
-    ]
+    columns: list[Any] = [profiles.spread(whole(each, grain), each.axes, shape) for each in amounts]
     table: IntArray = np.stack(columns, axis=1)  # one wide column makes all of them Python ints
     return frozen(table)
 
