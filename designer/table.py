@@ -69,7 +69,8 @@ def pot(table: Table, setting: Setting) -> tuple[IntArray, int]:
     per_cost = den // (table.decides_den * setting.grain)
     parties, options = len(table.pays), len(setting.options)
     bound = parties * largest(table.pays) * per_pay
-    bound += options * largest(table.decides) * largest(setting.outlay) * per_cost
+    bound += options * largest(table.decides) * (largest(setting.outlay) + 1) * per_cost
+    bound = max(bound, per_pay)
     pays, decides = held(table.pays, bound), held(table.decides, bound)
     total: IntArray = pays.sum(axis=0) * per_pay
     for k, cost in enumerate(setting.outlay):

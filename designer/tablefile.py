@@ -51,12 +51,14 @@ class ReadTable:
 
     exact      no entry looks rounded
     tolerance  money; what rounding alone can amount to, 0 when exact
+    chance_tolerance  the same for the sum of a lottery
     decisions  where they come from: "file", the scenario's "rule", or "efficient"
     """
 
     table: Table
     exact: bool
     tolerance: Fraction
+    chance_tolerance: Fraction
     decisions: Literal["file", "rule", "efficient"]
 
 
@@ -445,10 +447,10 @@ class _Reading:
         pays, pays_den = self._over_one("payments", [columns[name] for name in self.pays])
         decisions: Literal["file", "rule", "efficient"] = "file"
         if self.has_decisions:
-            chances, decides_den = self._over_one(
+            lotteries, decides_den = self._over_one(
                 "chances", [columns[name] for name in self.decides]
             )
-            decides: IntArray = chances.T.copy()
+            decides: IntArray = lotteries.T.copy()
         else:
             decides, decides_den, decisions = self._settled_decisions()
         table = Table(decides, decides_den, pays, pays_den)
@@ -467,7 +469,8 @@ class _Reading:
             slack = pots + self.numbers["pot"].unit / 2
             self._compare("pot", columns["pot"], pot(table, self.setting), slack, rows)
         self.mistakes.check()
-        return ReadTable(table, exact, max(gain, pots), decisions)
+        chances = len(self.decides) * chance_unit / 2
+        return ReadTable(table, exact, max(gain, pots), chances, decisions)
 
     def _rounding(self, pay_unit: Fraction, chance_unit: Fraction) -> tuple[Fraction, Fraction]:
         """Bound what rounding can do to a gain from a lie, and to a pot."""
@@ -532,7 +535,7 @@ class _Reading:
     ) -> None:
         """Note where a column that follows from the rest says something else."""
         (tops, dens), (numerators, den) = given, right
-        bound = largest(tops) * den + largest(dens) * largest(numerators)
+        bound = largest(tops) * den + largest(dens) * (largest(numerators) + den)
         bound = max(bound * slack.denominator, largest(dens) * den * slack.numerator)
         tops, dens, numerators = held(tops, bound), held(dens, bound), held(numerators, bound)
         gap = np.abs(tops * den - numerators * dens) * slack.denominator
