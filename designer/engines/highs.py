@@ -210,7 +210,9 @@ def _listening(model: Any, watch: Watch, attached: bool) -> Iterator[_Stop]:
     if not attached:
         yield stop
         return
-    from highspy.cb import HighsCallbackType as Kind
+    import highspy
+
+    Kind = highspy.cb.HighsCallbackType
 
     last = time.monotonic()
 

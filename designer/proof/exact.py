@@ -13,11 +13,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
-from math import gcd
+from math import gcd, inf, isfinite
 
 import numpy as np
 import numpy.typing as npt
 
+from designer.engines.floats import ldexp, parts
 from designer.engines.report import FloatArray
 from designer.program.linear import LinearProgram
 from designer.proof.sparse import Matrix, dot, narrow, plus, scaled
@@ -124,9 +125,13 @@ class Exact:
 
     # -- translations to the program's own units ---------------------------------------
 
+    def minimum(self, x: Point) -> Fraction:
+        """c.X of the min problem."""
+        return Fraction(dot(self.cost, x.num), x.den)
+
     def value(self, x: Point) -> Fraction:
         """The program's objective at X."""
-        return self.own_value(Fraction(dot(self.cost, x.num), x.den))
+        return self.own_value(self.minimum(x))
 
     def own_value(self, minimum: Fraction) -> Fraction:
         """The program's value of a value c.X of the min problem."""
@@ -146,15 +151,25 @@ class Exact:
         common = gcd(*y.num.tolist()) or 1
         return Vector.over(1, [number // common for number in y.num.tolist()])
 
+    def rough_bound(self, cost: float) -> float:
+        """Turn an engine's bound on the integer cost into the program's own value."""
+        if not isfinite(cost):
+            return -cost if self.lp.sense == "max" else cost
+        try:
+            return float(self.own_value(Fraction(cost) * self.lp.col_den))
+        except OverflowError:
+            return inf if cost > 0 else -inf
+
+    def rough_minimum(self, x: FloatArray) -> float:
+        """Estimate cost.x of the min problem at an engine's point, in floats."""
+        used = np.flatnonzero(np.asarray(self.cost != 0, dtype=bool))
+        mantissa, exponent = parts(self.cost[used])
+        with np.errstate(over="ignore", invalid="ignore"):
+            return float(np.sum(ldexp(mantissa * x[used], exponent)))
+
     def rough_value(self, x: FloatArray) -> float:
         """The program's objective at an engine's point, in floats."""
-        from math import fsum
-
-        used = np.flatnonzero(np.asarray(self.lp.cost != 0, dtype=bool)).tolist()
-        costs = self.lp.cost.tolist()
-        return fsum(float(Fraction(costs[k], self.lp.cost_den)) * x[k] for k in used) + float(
-            self.lp.cost_const
-        )
+        return self.rough_bound(self.rough_minimum(x))
 
     # -- certificates --------------------------------------------------------------------
 

@@ -1,12 +1,14 @@
 """Square integer systems K x = b and K' y = c, solved exactly.
 
 The kernel of a basis is nearly triangular: rows and columns with a single entry are peeled
-off first. What remains, the core, is solved by fraction-free elimination while tiny, by
-FLINT while small, and by numeric-symbolic lifting (`lifting.py`) beyond.
+off first. What remains, the core, is solved by sparse elimination in Python ints while
+small (no library to import), by numeric-symbolic lifting (`lifting.py`) beyond; dense FLINT
+helps where the one fills in and the other does not converge.
 """
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Sequence
 from functools import cached_property
 from math import gcd, lcm
@@ -20,10 +22,14 @@ from designer.setting.setting import IntArray
 
 PEEL = 4_000
 """Kernels up to this size are peeled in Python before anything else."""
-TINY = 30
-"""Cores up to this size are eliminated in Python ints; importing FLINT costs more."""
-DENSE = 220
-"""Cores up to this size go to FLINT; importing the sparse float LU costs more."""
+SPARSE = 700
+"""Cores up to this size are first tried by elimination in Python ints."""
+WORK = 150_000
+"""Entry updates after which elimination gives up: the core fills in."""
+IMPORTED = 60
+"""The same as `SPARSE` once the float LU has been imported anyway."""
+DENSE = 150
+"""Cores that fill in go to FLINT up to this size; importing the float LU costs more."""
 DENSE_LAST = 1_500
 """Cores up to this size go to FLINT when lifting does not converge."""
 
@@ -33,6 +39,10 @@ Ratio = tuple[int, int]
 
 class Singular(Exception):  # noqa: N818 - a finding about a basis, not a mistake
     """The kernel has no inverse (or none could be found): the basis is no basis."""
+
+
+class Crowded(Exception):  # noqa: N818 - a finding: another method is quicker
+    """Elimination fills the core in."""
 
 
 class Kernel:
@@ -62,13 +72,20 @@ class Kernel:
         if self.size == 0 or largest(b) == 0:
             # still to be checked regular by whoever needs that; 0 solves every system
             return np.zeros(self.size, dtype=np.int64), 1
-        if self.size <= PEEL and len(self._peeled.core_rows) <= DENSE:
-            return self._peeled.solve(b.tolist(), transposed)
+        core = len(self._peeled.core_rows) if self.size <= PEEL else self.size
+        sparse = IMPORTED if "scipy.sparse.linalg" in sys.modules else SPARSE
+        if core <= sparse:
+            try:
+                return self._peeled.solve(b.tolist(), transposed)
+            except Crowded:
+                pass
+        if core <= DENSE:
+            return self._peeled.solve(b.tolist(), transposed, dense=True)
         try:
             return self._lifting.solve(b, transposed)
         except NotLifted as failure:
-            if self.size <= PEEL and len(self._peeled.core_rows) <= DENSE_LAST:
-                return self._peeled.solve(b.tolist(), transposed)
+            if self.size <= PEEL and core <= DENSE_LAST:
+                return self._peeled.solve(b.tolist(), transposed, dense=True)
             raise Singular(str(failure)) from failure
 
     @cached_property
@@ -122,8 +139,10 @@ class Peeled:
         self.core_rows = [i for i, gone in enumerate(row_gone) if not gone]
         self.core_columns = [j for j, gone in enumerate(column_gone) if not gone]
 
-    def solve(self, b: Sequence[int], transposed: bool) -> tuple[IntArray, int]:
-        """(N, q) with K N = q b, or K' N = q b."""
+    def solve(
+        self, b: Sequence[int], transposed: bool, *, dense: bool = False
+    ) -> tuple[IntArray, int]:
+        """(N, q) with K N = q b, or K' N = q b. Raises Singular, and Crowded unless `dense`."""
         # For K x = b the singleton rows come first, then the core, then the singleton
         # columns backwards; for the transpose the two swap roles.
         lines = self.columns if transposed else self.rows
@@ -142,7 +161,7 @@ class Peeled:
                 n, d = _left(lines[line], b[line], known)
                 system.append({k: a * d for k, a in row.items()} if d != 1 else row)
                 right.append(n)
-            for unknown, value in zip(core_unknowns, self._core(system, right), strict=True):
+            for unknown, value in zip(core_unknowns, self._core(system, right, dense), strict=True):
                 known[unknown] = value
         for line, unknown in reversed(last):
             known[unknown] = _resolve(lines[line], b[line], unknown, known)
@@ -150,12 +169,10 @@ class Peeled:
         common = lcm(*{d for _, d in values})
         return narrow(np.array([n * (common // d) for n, d in values], dtype=object)), common
 
-    def _core(self, system: list[dict[int, int]], right: list[int]) -> list[Ratio]:
+    def _core(self, system: list[dict[int, int]], right: list[int], dense: bool) -> list[Ratio]:
         if not any(right):
             return [(0, 1)] * len(right)
-        if len(system) <= TINY:
-            return eliminate(system, right, self.watch)
-        return _flint(system, right)
+        return _flint(system, right) if dense else eliminate(system, right, self.watch)
 
 
 def _left(line: list[tuple[int, int]], b: int, known: list[Ratio | None]) -> Ratio:
@@ -188,59 +205,62 @@ def _ratio(n: int, d: int) -> Ratio:
     return (n // common, d // common) if d > 0 else (-n // common, -d // common)
 
 
-def eliminate(system: list[dict[int, int]], right: list[int], watch: Watch) -> list[Ratio]:
-    """Solve a small sparse integer system by elimination with Markowitz's (1957) pivot choice.
+def eliminate(
+    system: list[dict[int, int]], right: list[int], watch: Watch, work: int = WORK
+) -> list[Ratio]:
+    """Solve a sparse integer system by elimination, the shortest row first.
 
-    `system[i]` maps columns to nonzero integers; rows are kept free of common factors.
-    Raises Singular.
+    `system[i]` maps columns to nonzero integers. Within the shortest row the pivot is the
+    column with the fewest entries, a cheap form of Markowitz's (1957) rule; rows are kept
+    free of common factors. Raises Singular, and Crowded after `work` entry updates.
     """
-    rows = [dict(row) for row in system]
-    right = list(right)
+    rows, right = [dict(row) for row in system], list(right)
+    where: list[set[int]] = [set() for _ in rows]
+    for i, row in enumerate(rows):
+        for j in row:
+            where[j].add(i)
     alive = set(range(len(rows)))
     order: list[tuple[int, int]] = []
     while alive:
         watch.check()
-        counts: dict[int, int] = {}
-        for i in alive:
-            for j in rows[i]:
-                counts[j] = counts.get(j, 0) + 1
-        best: tuple[int, int, int] | None = None
-        for i in alive:
-            if not rows[i]:
-                raise Singular("dependent rows")
-            width = len(rows[i]) - 1
-            for j in rows[i]:
-                cost = width * (counts[j] - 1)
-                if best is None or cost < best[0]:
-                    best = (cost, i, j)
-        assert best is not None  # noqa: S101 - alive is not empty, so a row was seen
-        _, i, j = best
+        i = min(alive, key=lambda k: len(rows[k]))
+        pivot_row = rows[i]
+        if not pivot_row:
+            raise Singular("dependent rows")
+        j = min(pivot_row, key=lambda k: len(where[k]))
+        pivot = pivot_row[j]
         alive.remove(i)
         order.append((i, j))
-        pivot_row, pivot = rows[i], rows[i][j]
-        for other in alive:
+        for k in pivot_row:
+            where[k].discard(i)
+        others = [(k, a) for k, a in pivot_row.items() if k != j]
+        for other in where[j]:
             row = rows[other]
-            factor = row.pop(j, 0)
-            if not factor:
-                continue
+            factor = row.pop(j)
             common = gcd(pivot, factor)
             up, down = pivot // common, factor // common
+            work -= len(others) + (len(row) if up != 1 else 0)
             if up != 1:
                 for k in row:
                     row[k] *= up
-            for k, a in pivot_row.items():
-                if k == j:
-                    continue
-                value = row.get(k, 0) - down * a
+            for k, a in others:
+                before = row.get(k, 0)
+                value = before - down * a
                 if value:
                     row[k] = value
+                    if not before:
+                        where[k].add(other)
                 else:
                     del row[k]
+                    where[k].discard(other)
             right[other] = up * right[other] - down * right[i]
             content = gcd(right[other], *row.values())
             if content > 1:
-                rows[other] = {k: a // content for k, a in row.items()}
+                for k in row:
+                    row[k] //= content
                 right[other] //= content
+        if work < 0:
+            raise Crowded
     known: list[Ratio | None] = [None] * len(rows)
     for i, j in reversed(order):
         known[j] = _resolve(list(rows[i].items()), right[i], j, known)

@@ -39,11 +39,16 @@ class Effort:
     engine_seconds: float = 0.0
     counts: Counter[str] = field(default_factory=Counter)
 
-    def note(self, report: Report) -> Report:
-        """Add an engine's seconds and iterations; raise Stopped if it was stopped."""
+    def add(self, report: Report) -> Report:
+        """Add an engine's seconds and iterations."""
         self.engine_seconds += report.seconds
         self.counts["solves"] += 1
         self.counts["iterations"] += report.iterations
+        return report
+
+    def note(self, report: Report) -> Report:
+        """Add a report; raise Stopped if the engine was stopped."""
+        self.add(report)
         if report.status == "time-limit":
             raise TimeUp
         if report.status == "interrupted":
@@ -75,9 +80,18 @@ def settle(
     scale: IntArray | None = None,
 ) -> Settled:
     """Decide a continuous program exactly, as far as it goes. Raises Stopped."""
-    exact = Exact(lp)
-    report = effort.note(engine.solve(lp, watch))
-    first = report
+    return conclude(lp, effort.note(engine.solve(lp, watch)), watch, effort, scale)
+
+
+def conclude(
+    lp: LinearProgram,
+    report: Report,
+    watch: Watch,
+    effort: Effort,
+    scale: IntArray | None = None,
+) -> Settled:
+    """Go on from an engine's report to an exact answer. Raises Stopped."""
+    exact, first = Exact(lp), report
     if report.status == "optimal" and report.basis is None and report.x is not None:
         # an engine without bases: HiGHS makes a corner of its point
         report = effort.note(HIGHS.cross(lp, report, watch))

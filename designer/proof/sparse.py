@@ -38,7 +38,7 @@ def scaled(values: IntArray, factor: int) -> IntArray:
     """values * factor, exactly."""
     if factor == 1:
         return values
-    if values.dtype != object and largest(values) * abs(factor) < ROOM:
+    if values.dtype != object and max(1, largest(values)) * abs(factor) < ROOM:
         fitting: IntArray = values * np.int64(factor)
         return fitting
     exact: IntArray = values.astype(object) * factor
