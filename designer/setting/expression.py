@@ -227,7 +227,9 @@ class _Copier:
         """A node that must be a number."""
         self.depth += 1
         if self.depth > MAX_DEPTH:
-            self.refuse(f"more than {MAX_DEPTH} levels", "Simplify it, or give a list of worths.")
+            self.refuse(
+                f"more than {MAX_DEPTH} levels are nested", "Simplify it, or give a list of worths."
+            )
         tree = self._worth(node)
         self.depth -= 1
         return tree
@@ -267,7 +269,9 @@ class _Copier:
         """A node that must be a condition."""
         self.depth += 1
         if self.depth > MAX_DEPTH:
-            self.refuse(f"more than {MAX_DEPTH} levels", "Simplify it, or give a list of worths.")
+            self.refuse(
+                f"more than {MAX_DEPTH} levels are nested", "Simplify it, or give a list of worths."
+            )
         tree = self._test(node)
         self.depth -= 1
         return tree
@@ -354,7 +358,7 @@ class _Copier:
                 return candidate
         choices = [*also, *sorted(known)]
         return self.refuse(
-            f"unknown name {shorten(name)}",
+            f"the name {shorten(name)} is unknown",
             _near(name, choices)
             or (
                 f"Known here: {', '.join(choices[:12])}."
@@ -380,8 +384,8 @@ class _Copier:
 
     def refuse(self, why: str, remedy: str) -> NoReturn:
         raise ExpressionError(
-            f"{shorten(self.source)}, in which {why}",
-            "an expression over the types",
+            f"{shorten(self.source)}, where {why}",
+            "an amount in the value language",
             remedy,
         )
 

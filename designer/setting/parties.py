@@ -139,7 +139,11 @@ def read_party_name(section: Section, earlier: Sequence[str | None]) -> str | No
         return None
     name = read_name(section.values["name"], section.at("name"), section.report, "a name")
     if name in TAKEN:
-        section.wrong("name", f"a name other than {listing(TAKEN)}", "Those mean something else.")
+        section.wrong(
+            "name",
+            f"a name other than {listing(TAKEN)}",
+            "Rename it: in the blend of goals these words mean something else.",
+        )
         return None
     if name is not None and name in earlier:
         section.wrong(
@@ -153,7 +157,7 @@ def read_types(section: Section) -> tuple[Type, ...] | None:
     """The types of a party; None if any is mistaken."""
     raw = section.values.get("types")
     if not isinstance(raw, list) or not raw:
-        section.wrong("types", "a list of types", "Write types = [20, 50] or ['low', 'high'].")
+        section.wrong("types", "a list of types", 'Write types = [20, 50] or ["low", "high"].')
         return None
     types: list[Type] = []
     labels: set[str] = set()

@@ -54,7 +54,7 @@ def _own_prior(section: Section, size: int | None) -> tuple[int, ...] | None:
             section.report.add(
                 place,
                 exact.text(value),
-                "a positive number (convention 3)",
+                "a positive number",
                 "Remove the type if it cannot occur.",
             )
         elif value is not None:
@@ -143,7 +143,7 @@ def read_joint(
                 report.add(
                     section.at("types"),
                     f"the type {kind.label!r} of probability 0 in the joint prior",
-                    "a positive probability for every type (convention 3)",
+                    "a positive probability for every type",
                     "Give a profile with it some weight, or remove the type.",
                 )
         factor = math.gcd(*along) or 1

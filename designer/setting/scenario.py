@@ -214,7 +214,7 @@ class _Reader:
         )
 
     def options(self) -> list[str]:
-        """The decisions to choose from."""
+        """The decisions to choose from; empty when mistaken, and then nothing is held to them."""
         if "decisions" not in self.root:
             self.root.wrong("decisions", "the options", 'Write [decisions] and options = ["…"].')
         section = self.root.section("decisions")
@@ -225,6 +225,7 @@ class _Reader:
         if not isinstance(raw, list) or not raw:
             section.wrong("options", "a list of names", 'Write options = ["build", "leave"].')
             return []
+        before = len(self.report)
         options: list[str] = []
         for index, entry in enumerate(raw):
             place = f"{section.at('options')}[{index}]"
@@ -233,7 +234,7 @@ class _Reader:
                 self.report.add(place, f"{name!r} a second time", "each once", "Remove one.")
             elif name is not None:
                 options.append(name)
-        return options
+        return options if len(self.report) == before else []
 
     def designer(
         self, roster: Roster, options: Sequence[str]

@@ -43,6 +43,9 @@ class WorthReader:
             return result
         if options:
             unknown_keys(table.values, options, table.place, self.report, "option")
+        else:
+            for name, raw in table.values.items():
+                self.read(raw, table.at(name))
         for index, option in enumerate(options):
             if option in table:
                 result[index] = self.read(table.values[option], table.at(option))
