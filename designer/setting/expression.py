@@ -391,5 +391,5 @@ class _Copier:
 
 
 def _near(word: str, known: Sequence[str]) -> str:
-    near = difflib.get_close_matches(word[:80], known[:2000], n=1, cutoff=0.6)
+    near = difflib.get_close_matches(word[:80], known[:2000], n=1, cutoff=0.65)
     return f"Did you mean '{near[0]}'?" if near else ""

@@ -233,7 +233,7 @@ def suggestion(word: object, known: Iterable[str]) -> str:
     if not isinstance(word, str):
         return ""
     folded = {name.casefold(): name for name in islice(known, 1000)}
-    near = difflib.get_close_matches(word[:80].casefold(), folded, n=1, cutoff=0.6)
+    near = difflib.get_close_matches(word[:80].casefold(), folded, n=1, cutoff=0.65)
     return f"Did you mean '{folded[near[0]]}'?" if near else ""
 
 

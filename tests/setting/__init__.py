@@ -1,0 +1,1 @@
+"""Reading scenarios: keys, mistakes, sheets, the value language, laws and attacks."""
