@@ -8,7 +8,7 @@ from fractions import Fraction
 MAX_TEXT = 4000
 """Longest decimal number read from text; Python itself refuses 4,300 digits."""
 
-_NUMBER = re.compile(r"\s*[+-]?(\d+(/\d+)?|\d+\.\d*|\.\d+)([eE][+-]?\d{1,3})?\s*", re.ASCII)
+_NUMBER = re.compile(r"\s*[+-]?(\d+/\d+|(\d+\.?\d*|\.\d+)([eE][+-]?\d{1,3})?)\s*", re.ASCII)
 _HEX = re.compile(r"\s*[+-]?0x[0-9a-f]+(/0x[0-9a-f]+)?\s*", re.ASCII)
 
 
