@@ -1,0 +1,150 @@
+"""A label of the program as a term in a sum, and as the sentence of the demand it names."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from fractions import Fraction
+
+from designer.program.labels import (
+    Balances,
+    Clause,
+    Decides,
+    ExpectedDecision,
+    ExpectedPay,
+    Honest,
+    Label,
+    Lottery,
+    Pays,
+    Pin,
+    TakesPart,
+    Unknown,
+)
+from designer.setting import exact
+
+MOST_TERMS = 12
+"""Terms of one sum that are written out."""
+
+LEGEND: dict[type[Label], str] = {
+    ExpectedPay: "E[P pays | a]  what P pays on average when it reports a",
+    Pays: "[P pays | a, b, …]  what P pays when the reports are a, b, … in the parties' order",
+    ExpectedDecision: "Pr[d | P a]  how likely d is when P reports a",
+    Decides: "Pr[d | a, b, …]  how likely d is when the reports are a, b, … in the parties' order",
+}
+
+
+def term(label: Label) -> str:
+    """A column of the program, as it stands in a sum."""
+    match label:
+        case Pays(party, at):
+            return f"[{party} pays | {', '.join(at)}]"
+        case ExpectedPay(party, kind):
+            return f"E[{party} pays | {kind}]"
+        case Decides(option, at):
+            return f"Pr[{option} | {', '.join(at)}]"
+        case ExpectedDecision(party, kind, option):
+            return f"Pr[{option} | {party} {kind}]"
+        case Unknown(name):
+            return f"[{name}]"
+    return f"[{label}]"
+
+
+def addends(terms: Sequence[tuple[Label, Fraction]], most: int = MOST_TERMS) -> list[str]:
+    """The parts of a sum of coefficients times terms, each with its sign; "0" for none.
+
+    >>> addends([(Unknown("floor"), Fraction(-1)), (Unknown("swing"), Fraction(1, 2))])
+    ['-[floor]', '+ 1/2·[swing]']
+    """
+    parts: list[str] = []
+    for label, coefficient in terms[:most]:
+        size = "" if abs(coefficient) == 1 else f"{exact.text(abs(coefficient))}·"
+        sign = "-" if coefficient < 0 else "+"
+        lead = ("-" if sign == "-" else "") if not parts else f"{sign} "
+        parts.append(f"{lead}{size}{term(label)}")
+    if len(terms) > most:
+        parts.append(f"+ {len(terms) - most:,} more terms")
+    return parts or ["0"]
+
+
+def legend(labels: Iterable[Label]) -> list[str]:
+    """What the kinds of terms in use mean, in a fixed order."""
+    used = {type(label) for label in labels}
+    return [meaning for kind, meaning in LEGEND.items() if kind in used]
+
+
+def sentence(label: Label | None, folds: int = 1) -> str:
+    """The demand a row stands for; `folds` rows of a family may be folded into one line."""
+    match label:
+        case None | Lottery():
+            return "the chances of the decisions are at least 0 and add up to 1"
+        case Honest(party, true, told, at):
+            gain = f"{party}, being {true}, gains nothing by reporting {told}"
+            return f"{gain}{_where(at)}"
+        case TakesPart(party, None, None):
+            return f"{party} takes part, before it knows its type"
+        case TakesPart(party, kind, at):
+            return f"{party}, being {kind}, takes part{_where(at)}"
+        case Balances(None) if folds > 1:
+            return f"the pot balances in every case ({folds:,} rows, each weighed as likely)"
+        case Balances(None):
+            return "the pot balances on average"
+        case Balances(at):
+            return f"the pot balances{_where(at)}"
+        case Clause(group, key, party, at):
+            return f"{_clause(group, key, party)}{_where(at)}"
+        case Pin(goal):
+            return f"the goal {goal} keeps its value"
+        case ExpectedPay(party, kind):
+            return f"what {party} pays on average when it reports {kind} is an average"
+        case ExpectedDecision(party, kind, option):
+            return f"how likely {option} is when {party} reports {kind} is an average"
+        case Unknown(name):
+            return f"the {name} keeps its sign"
+    return "a chance is at least 0"
+
+
+def family(label: Label | None) -> str:
+    """The kind of demand a row belongs to, for saying what collides."""
+    match label:
+        case Honest():
+            return "honesty"
+        case TakesPart():
+            return "taking part"
+        case Balances():
+            return "the pot"
+        case Clause("limit"):
+            return "the limits on payments"
+        case Clause("side"):
+            return "the side demands"
+        case Clause("even-handed"):
+            return "even-handedness"
+        case Clause("goal") | Pin() | Unknown():
+            return "the goal"
+    return "what a lottery is"
+
+
+def _where(at: tuple[str, ...] | None) -> str:
+    return "" if at is None else f", when the types are ({', '.join(at)})"
+
+
+def _clause(group: str, key: str, party: str | None) -> str:
+    who = party or "nobody"
+    match group, key:
+        case "limit", "pays_at_most":
+            return f"{who} pays no more than the cap"
+        case "limit", "pays_at_least":
+            return f"{who} pays no less than the floor"
+        case "limit", "only_when_served":
+            return f"{who} pays only when it is served"
+        case "limit", "within_worth":
+            return f"{who} pays no more than the decision is worth to it"
+        case "side", "welfare_at_least":
+            return "expected welfare reaches its floor"
+        case "side", "revenue_at_least":
+            return "the expected pot reaches its floor"
+        case "side", _:
+            return f"the demand on how likely a decision is, {key}, is met for {who}"
+        case "even-handed", _:
+            return f"{key} are treated alike" + (f" in what {party} pays" if party else "")
+        case "goal", _:
+            return f"the row that defines the goal {key}" + (f", for {party}" if party else "")
+    return f"{group} {key}"

@@ -1,0 +1,181 @@
+"""The screen of a possible verdict: the goals' values, the table, and what it means."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+from designer.auditing.outcome import Pot, Standing
+from designer.demands.registry import GOALS
+from designer.roads.settled import GoalResult
+from designer.setting.setting import Setting
+from designer.table import Table
+from designer.verdict import Verdict
+from designer.views.amounts import ROUNDED, amount, cell
+from designer.views.grid import Column, Grid
+from designer.views.page import Page, caution, heading, listed, paragraph
+
+CASES = 12
+"""Rows of the case-by-case table shown unless asked otherwise."""
+STANDINGS = 40
+"""Rows of the type-by-type table shown unless asked otherwise."""
+SLIP = 2
+"""A table longer by so few rows is shown whole: 'and 2 more' would take a line as well."""
+
+
+def possible(verdict: Verdict, rows: int | None = None) -> Page:
+    """The values, the table, type by type, the pot; `rows` limits either table."""
+    page: Page = [heading(f"POSSIBLE, {'proved' if verdict.proved else 'unproved'}.")]
+    page += goals(verdict)
+    audit = verdict.audit
+    if verdict.table is None or audit is None:
+        return page
+    page += cases(verdict.setting, verdict.table, audit.pot, rows)
+    page += standings(verdict.setting, audit.standings, rows)
+    page += pots(verdict.setting, audit.pot)
+    page.append(caution())
+    return page
+
+
+def goals(verdict: Verdict) -> Page:
+    """A sentence for every goal, and how far it is proved."""
+    lines = []
+    for goal in verdict.goals:
+        if line := _goal(goal, verdict.setting):
+            lines.append(("tidy" if goal.tidy else goal.goal, line))
+    page: Page = [listed(lines)] if lines else []
+    if verdict.proved:
+        page.append(paragraph(f"Proved in exact arithmetic: {'; '.join(verdict.claims)}."))
+    elif verdict.reason:
+        page.append(paragraph(f"Unproved: {verdict.reason}"))
+    elif verdict.claims:
+        page.append(paragraph(f"Proved so far: {'; '.join(verdict.claims)}."))
+    return page
+
+
+def _goal(goal: GoalResult, setting: Setting) -> str:
+    if goal.tidy:
+        if goal.value is None:
+            return f"Not tidied: {goal.reason or 'among the best tables any was taken'}."
+        return (
+            "Among such tables this one has the smallest largest payment, "
+            f"{amount(goal.value, setting.money)}.{_doubt(goal, setting)}"
+        )
+    if goal.goal == "any" or goal.value is None:
+        return ""
+    known = GOALS[goal.goal]
+    value = amount(goal.value, setting.money if known.money else "")
+    more = ""
+    if goal.goal == "outside-money" and goal.value < 0:
+        more = " Negative: so much can be handed out."
+    return f"The {known.reads} is {value}.{more}{_doubt(goal, setting)}"
+
+
+def _doubt(goal: GoalResult, setting: Setting) -> str:
+    if goal.proved:
+        return ""
+    if goal.bound is None:
+        return " Unproved: a better one may exist."
+    return f" Unproved: the engine says that nothing beyond {goal.bound:.6g} exists."
+
+
+def cases(setting: Setting, table: Table, pot: Pot, rows: int | None = None) -> Page:
+    """The table case by case, the first rows of it."""
+    shown = _shown(setting.profiles, CASES if rows is None else rows)
+    page: Page = [heading("Case by case")]
+    columns = [Column(party.name, group="when the reports are") for party in setting.parties]
+    columns += [Column("chance", right=True), Column("decided")]
+    columns += [Column(party.name, right=True, group="they pay") for party in setting.parties]
+    columns.append(Column("pot", right=True))
+    lines, stacked = [], []
+    for profile in range(shown):
+        labels = setting.labels_at(profile)
+        pays = [cell(table.payment(i, profile)) for i in range(len(setting.parties))]
+        chance, decided = cell(setting.probability(profile)), decision(setting, table, profile)
+        rest = cell(pot[profile])
+        lines.append([*labels, chance, decided, *pays, rest])
+        opening = f"{_paired(setting, labels)} (chance {chance}): {decided}"
+        stacked.append((opening, f"pays: {_paired(setting, pays)}; pot {rest}"))
+    if shown:
+        page.append(Grid(columns, lines, stacked))
+    page += _rest(setting.profiles - shown, "case", "transfers.csv", lines)
+    return page
+
+
+def decision(setting: Setting, table: Table, profile: int) -> str:
+    """What is decided at a profile: the option, or the lottery in a few words."""
+    chances = [(table.chance(profile, k), option) for k, option in enumerate(setting.options)]
+    drawn = [(chance, option) for chance, option in chances if chance]
+    if len(drawn) == 1 and drawn[0][0] == 1:
+        return drawn[0][1]
+    return ", ".join(f"{cell(chance)} {option}" for chance, option in drawn)
+
+
+def standings(setting: Setting, found: Sequence[Standing], rows: int | None = None) -> Page:
+    """What each type of each party can expect, and the lie that comes closest."""
+    shown = _shown(len(found), STANDINGS if rows is None else rows)
+    page: Page = [heading("Type by type, on average when everyone is honest")]
+    columns = [
+        Column("party"),
+        Column("type"),
+        Column("pays", right=True),
+        Column("utility", right=True),
+        Column("gain over out", right=True),
+        Column("nearest lie"),
+        Column("it loses", right=True),
+    ]
+    lines, stacked = [], []
+    for one in found[:shown]:
+        amounts = [cell(one.pays), cell(one.utility), cell(one.gain)]
+        lie, loses = one.lie or "none", "" if one.margin is None else cell(one.margin)
+        lines.append([one.party, one.type, *amounts, lie, loses])
+        told = f"nearest lie {lie}, which loses {loses}" if one.lie else "no lie to tell"
+        stacked.append(
+            (
+                f"{one.party}, {one.type}:",
+                f"pays {amounts[0]}; utility {amounts[1]}; "
+                f"gain over staying out {amounts[2]}; {told}",
+            )
+        )
+    if shown:
+        page.append(Grid(columns, lines, stacked))
+    page += _rest(len(found) - shown, "type", "interim.csv", lines)
+    return page
+
+
+def pots(setting: Setting, pot: Pot) -> Page:
+    """The pot in a sentence: what is left over when the outlay is paid."""
+    if pot.least == pot.most:
+        return [heading("Pot"), paragraph(f"{amount(pot.least, setting.money)} in every case.")]
+    rows = [
+        ("least", f"{amount(pot.least, setting.money)}, at {_at(pot.least_at)}"),
+        ("most", f"{amount(pot.most, setting.money)}, at {_at(pot.most_at)}"),
+        ("expected", amount(pot.expected, setting.money)),
+    ]
+    return [heading("Pot, what is left when the outlay is paid"), listed(rows)]
+
+
+def _at(profile: Mapping[str, str]) -> str:
+    return ", ".join(f"{name} {kind}" for name, kind in profile.items())
+
+
+def _paired(setting: Setting, cells: Sequence[str]) -> str:
+    parties = setting.parties
+    return ", ".join(f"{party.name} {text}" for party, text in zip(parties, cells, strict=True))
+
+
+def _shown(count: int, limit: int) -> int:
+    return count if count <= limit + SLIP and limit else min(count, limit)
+
+
+def _rest(left: int, noun: str, file: str, lines: Sequence[Sequence[str]]) -> Page:
+    """What the table leaves out, and what its marks mean."""
+    notes = []
+    if any(text.startswith(ROUNDED) for line in lines for text in line):
+        notes.append(f"{ROUNDED} marks a rounded number.")
+    if left:
+        notes.append(
+            f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them, "
+            f"--save DIR writes them all, exact, to {file}."
+        )
+    return [paragraph(" ".join(notes))] if notes else []
+
