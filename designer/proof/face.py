@@ -24,11 +24,12 @@ class Settled:
     """A settled goal, in the minimising form: its dual, its reduced costs, and its pin row.
 
     pin_scale  the pin's stored coefficients are pin_scale times the minimising cost
+    Without a pin (None) the face can be solved on, but its duals cannot be lifted.
     """
 
     dual: Vector
     reduced: Vector
-    pin: int
+    pin: int | None
     pin_scale: Fraction
 
 
@@ -54,7 +55,7 @@ def face(lp: LinearProgram, settled: list[Settled]) -> LinearProgram:
     for goal in settled:
         _tighten(row_lo, row_hi, goal.dual)
         _tighten(col_lo, col_hi, goal.reduced)
-    for pin in (goal.pin for goal in settled):
+    for pin in (goal.pin for goal in settled if goal.pin is not None):
         # A pin would put the earlier value, whatever its size, into the engine's floats.
         row_lo.finite[pin] = row_hi.finite[pin] = False
     return replace(lp, row_lo=row_lo, row_hi=row_hi, col_lo=col_lo, col_hi=col_hi)
@@ -72,6 +73,8 @@ def lift(lp: LinearProgram, settled: list[Settled], dual: Vector) -> Vector:
         )
         if not needed:
             continue
+        if goal.pin is None:
+            raise ValueError("a face without a pin cannot be lifted")
         for into, own in ((rows, own_rows), (columns, own_columns)):
             for place, value in own.items():
                 into[place] = into.get(place, Fraction(0)) + needed * value

@@ -1,0 +1,1 @@
+"""What must give: collisions, ladders, prices, frontiers and the ledger."""
