@@ -20,6 +20,7 @@ from designer.auditing.outcome import (
     PARTICIPATION,
     Audit,
     Finding,
+    Payment,
     Pot,
     Standing,
 )
@@ -270,15 +271,13 @@ def _balance(
     return found
 
 
-def _largest(table: Table, setting: Setting) -> Finding:
+def _largest(table: Table, setting: Setting) -> Payment:
     """Find the largest payment in size, made or received."""
     low, high = int(table.pays.argmin()), int(table.pays.argmax())
     place = low if abs(int(table.pays.flat[low])) > abs(int(table.pays.flat[high])) else high
     index, profile = divmod(place, setting.profiles)
-    party = setting.parties[index]
-    types = labels(setting, profile)
     amount = table.payment(index, profile)
-    return Finding("largest-payment", True, amount, party.name, types[party.name], profile=types)
+    return Payment(setting.parties[index].name, amount, labels(setting, profile))
 
 
 def _worst(findings: Iterable[Finding], names: Iterable[str]) -> Mapping[str, Finding]:

@@ -76,6 +76,15 @@ class Standing:
     margin: Fraction | None
 
 
+@dataclass(frozen=True)
+class Payment:
+    """One payment: by whom (negative: to whom, convention 1), money, at which profile."""
+
+    party: str
+    amount: Fraction
+    profile: Mapping[str, str]
+
+
 @dataclass(frozen=True, eq=False)
 class Pot:
     """The pot by profile (convention 1): num / den, money left over where positive."""
@@ -138,7 +147,7 @@ class Audit:
     standings: tuple[Standing, ...]
     pot: Pot
     decisions: Decisions
-    largest: Finding
+    largest: Payment
     compelled: frozenset[str] = frozenset()
     limits: Mapping[str, Finding] = field(default_factory=lambda: MappingProxyType({}))
 

@@ -108,7 +108,11 @@ def as_json(audit: Audit) -> dict[str, Any]:
             "welfare_lost": _both(decisions.lost),
         },
         "limits": {name: _finding(finding) for name, finding in audit.limits.items()},
-        "largest_payment": _finding(audit.largest, "amount"),
+        "largest_payment": {
+            "party": audit.largest.party,
+            "amount": _both(audit.largest.amount),
+            "profile": dict(audit.largest.profile),
+        },
     }
 
 
@@ -131,11 +135,10 @@ def _both(value: Fraction) -> dict[str, str]:
     return {"exact": text(value), "approx": decimal(value)}
 
 
-def _finding(finding: Finding, amount: str = "margin") -> dict[str, Any]:
-    plain: dict[str, Any] = {"holds": finding.holds} if amount == "margin" else {}
-    plain[amount] = None if finding.margin is None else text(finding.margin)
+def _finding(finding: Finding) -> dict[str, Any]:
+    plain: dict[str, Any] = {"holds": finding.holds, "margin": None}
     if finding.margin is not None:
-        plain["approx"] = decimal(finding.margin)
+        plain |= {"margin": text(finding.margin), "approx": decimal(finding.margin)}
     for name in ("party", "type", "lie", "option"):
         value = getattr(finding, name)
         if value is not None:
