@@ -21,11 +21,14 @@ def small_settings(
     most_options: int = 3,
     correlated: bool = True,
     with_rule: bool = False,
+    interdependent: bool = True,
+    outlays: bool = True,
 ) -> Setting:
     """Up to three parties of up to three types; whole worths over a grain of 1, 2 or 3.
 
     Priors are independent or joint (then with zeros at times); worths and outside options
-    are private or depend on everyone's types; some parties are compelled.
+    are private or depend on everyone's types; some parties are compelled. The switches leave
+    out what a test has no use for.
     """
     count = draw(st.sampled_from((2, 1, 3)))
     shape: list[int] = []
@@ -33,7 +36,7 @@ def small_settings(
         shape.append(draw(st.integers(1, max(1, min(3, most_profiles // math.prod(shape))))))
     profiles = math.prod(shape)
     options = draw(st.integers(1, most_options))
-    depends = draw(st.booleans()) and draw(st.booleans())
+    depends = interdependent and draw(st.booleans()) and draw(st.booleans())
     joint = None
     if correlated and draw(st.booleans()):
         joint = draw(st.lists(st.integers(0, 4), min_size=profiles, max_size=profiles))
@@ -68,7 +71,7 @@ def small_settings(
         title="random",
         options=tuple(f"option {k}" for k in range(options)),
         parties=parties,
-        outlay=_table(draw, (options,), 0, 5),
+        outlay=_table(draw, (options,), 0, 5 if outlays else 0),
         worth=_table(draw, (options,), -1, 1),
         grain=draw(st.integers(1, 3)),
         joint=None if joint is None else integers(joint),

@@ -9,11 +9,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from designer import Demands, pose
+from designer import Demands, audit, pose
 from designer.proof.recheck import recheck
 from designer.setting.setting import Setting
 from designer.setting.vocabulary import GOALS
 from designer.verdict import Verdict
+from tests.oracles.audited import achieved, shortcomings
 from tests.oracles.brute import best_of, best_of_all
 from tests.oracles.settings import small_demands, small_settings
 from tests.oracles.textbook import build_and_solve
@@ -24,11 +25,25 @@ WITHOUT_BLEND = tuple(goal for goal in GOALS if goal != "blend")
 
 
 def proved(setting: Setting, demands: Demands) -> Verdict:
-    """A verdict on which the checker agrees."""
+    """A verdict on which the checker and the audit of its table agree."""
     verdict = pose(setting, demands)
     assert verdict.proved, (verdict.status, verdict.reason)
     finding = recheck(verdict.proof)
     assert finding.holds, finding.faults
+    if verdict.table is not None:
+        terms = verdict.terms
+        found = audit(
+            setting,
+            verdict.table,
+            subsidy=verdict.subsidy,
+            slack=terms.slack,
+            limits=terms.limits,
+            side=terms.side,
+        )
+        assert shortcomings(found, demands) == []
+        for goal, value in verdict.goal_values.items():
+            if goal not in ("any", "margin", "blend"):
+                assert achieved(found, goal) == value
     return verdict
 
 

@@ -12,7 +12,7 @@ import pytest
 
 from designer import audit, pose
 from designer.proof.recheck import recheck
-from tests.published.audited import shortcomings
+from tests.oracles.audited import achieved, shortcomings
 from tests.published.corpus import Query, entries, instances, queries, setting_of
 
 
@@ -34,7 +34,10 @@ def test_published_answer(query: Query) -> None:
 
     if query.verdict == "possible":
         assert verdict.table is not None
-        assert shortcomings(audit(setting, verdict.table), query.demands) == []
+        findings = audit(setting, verdict.table)
+        assert shortcomings(findings, query.demands) == []
+        if query.value is not None:
+            assert achieved(findings, verdict.terms.goals[0]) == query.value
     else:
         assert verdict.table is None
 

@@ -177,7 +177,11 @@ def test_keeping_the_reserve_whenever_it_is_worth_it_takes_outside_money() -> No
     assert verdict.goal_value == least_outside_money(310)
     assert verdict.goal_value > 0
     assert recheck(verdict.proof).holds
-    assert audit(setting, verdict.table) is not None
+    assert verdict.table is not None
+    found = audit(setting, verdict.table, subsidy=verdict.goal_value)
+    assert found.decisions.efficient.holds
+    for name in ("ic-bayesian", "ir-interim", "balance-ex-post-exact"):
+        assert found.holds[name], name
 
     # So without outside money the demands collide, and that is proved too.
     stuck = pose(setting, Demands(goal="any"))
