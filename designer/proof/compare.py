@@ -61,7 +61,7 @@ def rebuild(document: object, setting: Setting, terms: Terms) -> Program:
     for s, stage in enumerate(stages):
         if stage.goal not in GOALS:
             raise _malformed(f"the goal {stage.goal!r}")
-        if s and stages[s - 1].goal != "any":
+        if s and work.stages[-1].cost.any():  # a constant goal needs no pin
             try:
                 ratio = decode.ratio(stages[s - 1].found.get("value"), f"stages[{s - 1}].value")
             except decode.Fault as fault:

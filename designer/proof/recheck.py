@@ -60,9 +60,9 @@ def recheck(document: object, *, limit: int = LIMIT) -> Finding:
         else:
             primal = decode.vector(top["primal"], program.columns, "primal")
             claims.append(_table(program, primal, meter))
-            _settled(program, stages, primal, meter, claims, unclaimed)
-        if verdict == "unbounded":
-            claims.append(_ray(program, stages[-1], top["ray"], meter))
+            kept = _settled(program, stages, primal, meter, claims, unclaimed)
+            if verdict == "unbounded":
+                claims.append(_ray(program, stages[-1], top["ray"], meter) + kept)
     except Fault as fault:
         return Finding(False, verdict, (), (str(fault),))
     return Finding(True, verdict, tuple(claims), (), tuple(unclaimed))
@@ -128,12 +128,12 @@ def _settled(
     meter: _Meter,
     claims: list[str],
     unclaimed: list[str],
-) -> None:
-    """Each stage's value, its pin in what follows, and why nothing does better."""
+) -> str:
+    """Each stage's value, its pin in what follows, and why nothing does better; what is pinned."""
     kept = ""
     for s, stage in enumerate(stages):
         if "value" not in stage.found:  # the last stage of an unbounded program
-            return
+            break
         where, cost, found = f"stages[{s}]", stage.cost, stage.found
         (p, q), (u, w) = decode.ratio(found["value"], f"{where}.value"), stage.const
         net, over = p * w - u * q, q * w  # the value without the constant: net / over
@@ -150,6 +150,7 @@ def _settled(
             claims.append(f"{what} {value} for {stage.goal}")
             unclaimed += [stage.goal] * is_open
             kept += f"{' and' if kept else ' among those with'} {stage.goal} = {value}"
+    return kept
 
 
 def _pinned(

@@ -1,0 +1,1 @@
+"""Attacks on the checker: true proofs spoiled in thousands of ways."""

@@ -1,0 +1,1 @@
+"""Proofs: how they are found, written down and checked."""
