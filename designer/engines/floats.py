@@ -63,7 +63,7 @@ class FloatProgram:
 
 
 def ldexp(mantissa: FloatArray, exponent: Exponents) -> FloatArray:
-    """Return mantissa * 2**exponent; beyond the range of floats infinite or 0, without a warning."""
+    """Return mantissa * 2**exponent; infinite or 0 beyond floats, without a warning."""
     with np.errstate(over="ignore", under="ignore"):
         short = np.clip(exponent, -4000, 4000).astype(np.intc)
         return cast(FloatArray, np.ldexp(mantissa, short))

@@ -19,7 +19,7 @@ import numpy as np
 
 from designer.engines.floats import Exponents, FloatProgram, floats, ldexp, parts
 from designer.engines.highs import HIGHS
-from designer.engines.report import BASIC, LOWER, Basis, FloatArray
+from designer.engines.report import BASIC, LOWER, Basis, FloatArray, Report
 from designer.engines.watch import Watch
 from designer.proof.corner import Corner
 from designer.proof.exact import Point, Side
@@ -32,8 +32,11 @@ USUAL = 30
 """Used for the side (point or multipliers) of which nothing is wrong."""
 
 
-def magnified(corner: Corner, watch: Watch) -> Basis | None:
-    """Return the basis HiGHS finds for the program magnified at `corner`, or None."""
+def magnified(corner: Corner, watch: Watch) -> Report:
+    """Return HiGHS's report on the program magnified at `corner`.
+
+    Its basis is one of the program itself; x and y are left out.
+    """
     exact = corner.exact
     base = floats(exact.lp)
     x, y = corner.x, corner.y
@@ -72,11 +75,12 @@ def magnified(corner: Corner, watch: Watch) -> Basis | None:
     )
     report = HIGHS.run(program, watch, basis=start, tolerance=1e-9)
     if report.basis is None:
-        return None
+        return replace(report, x=None, y=None)
     found = report.basis.columns[columns:].copy()
     # a basic slack of A z - s = 0 spans what the row's own activity would
     found[report.basis.rows == BASIC] = BASIC
-    return replace(report.basis, columns=report.basis.columns[:columns], rows=found)
+    basis = Basis(report.basis.columns[:columns], found)
+    return replace(report, x=None, y=None, basis=basis)
 
 
 def _offset(

@@ -79,6 +79,7 @@ def outcome_of(exact: Exact, settled: Settled) -> Outcome:
             table_proved=True,
             value=exact.value(corner.x),
             primal=exact.primal_vector(corner.x),
+            reason=settled.reason,
         )
         if settled.ray is not None:
             return replace(outcome, status="unbounded", ray=exact.primal_vector(settled.ray))

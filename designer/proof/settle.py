@@ -3,9 +3,7 @@
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass, field
-
-import numpy as np
+from dataclasses import dataclass, field, replace
 
 from designer.engines.highs import HIGHS
 from designer.engines.report import Basis, Engine, Report
@@ -24,8 +22,10 @@ STRICT = 1e-10
 """Feasibility tolerances of the warm restart, the smallest HiGHS accepts."""
 MAGNIFY = 3
 """Rounds of magnification."""
+PIVOTS_FIRST = 40
+"""Exact pivots that may finish a repair."""
 PIVOTS = 400
-"""Exact pivots before giving up."""
+"""Exact pivots before giving up for good."""
 PIVOTS_SMALL = 4_000
 """The same for small programs."""
 SMALL = 400
@@ -62,7 +62,8 @@ class Settled:
 
     corner  optimal; with `ray` it is only feasible and the program unbounded
     farkas  infeasible
-    said    nothing exact was found: the engine's last report, and `reason` why
+    said    nothing exact was found: the engine's report
+    reason  why nothing was found, or that the engine was overruled
     """
 
     corner: Corner | None = None
@@ -97,8 +98,10 @@ def conclude(
         report = effort.note(HIGHS.cross(lp, report, watch))
     if report.status == "optimal" and report.basis is not None:
         found = repair(exact, report.basis, watch, effort)
-        return found or _unsettled(first)
+        if found is not None:
+            return found
 
+    # No optimum seen, or none that holds: first whether there is a feasible point at all.
     feasible = find_feasible(lp, watch, effort, scale)
     if feasible.corner is None:
         return feasible if feasible.farkas is not None else _unsettled(first)
@@ -112,11 +115,11 @@ def conclude(
         if report.status == "optimal" and report.basis is not None:
             found = repair(exact, report.basis, watch, effort)
             if found is not None:
-                return found
+                return replace(found, reason=_overruled(first))
         ray = _direction(exact, watch, effort)
     if ray is not None:
         return Settled(corner=start, ray=ray)
-    return _pivoted(exact, start.basis, watch, effort) or _unsettled(first)
+    return _pivoted(exact, start.basis, watch, effort, PIVOTS) or _unsettled(first)
 
 
 def repair(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settled | None:
@@ -139,15 +142,15 @@ def repair(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settled 
         if corner is None:
             break
         effort.counts["magnified"] += 1
-        again = magnified(corner, watch)
-        better = _regular(exact, again, watch, effort) if again is not None else None
+        again = effort.note(magnified(corner, watch)).basis
+        better = None if again is None else _regular(exact, again, watch, effort)
         if better is None:
             break
         corner = better
         if corner.optimal:
             return Settled(corner=corner)
     start = corner.basis if corner is not None else slack_basis(exact)
-    return _pivoted(exact, start, watch, effort)
+    return _pivoted(exact, start, watch, effort, PIVOTS_FIRST)
 
 
 def find_feasible(
@@ -200,12 +203,12 @@ def _regular(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Corner
     return corner
 
 
-def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settled | None:
+def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort, cap: int) -> Settled | None:
     small = exact.matrix.rows + exact.matrix.columns <= SMALL
     starts = [basis, slack_basis(exact)] if small else [basis]
     for start in starts:
         try:
-            ended = pivot(exact, start, watch, PIVOTS_SMALL if small else PIVOTS)
+            ended = pivot(exact, start, watch, PIVOTS_SMALL if small else cap)
         except Singular:
             continue
         if ended is None:
@@ -218,6 +221,10 @@ def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Settle
         if ended.corner is not None and ended.corner.optimal:
             return Settled(corner=ended.corner)
     return None
+
+
+def _overruled(report: Report) -> str:
+    return f"{report.engine} said {report.status!r}; the exact proof stands on HiGHS's basis"
 
 
 def _unsettled(report: Report) -> Settled:

@@ -1,0 +1,217 @@
+"""Any engine PuLP finds, as a second opinion: its answer is a hint like any other.
+
+The model goes over through `LpProblem.fromDict`, which PuLP 2.9, 3 and 4 share, and comes
+back as a point; HiGHS then makes a corner of the point, and the exact proof decides.
+"""
+
+from __future__ import annotations
+
+import math
+import time
+import warnings
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from designer.engines.floats import FloatProgram, floats
+from designer.engines.report import Basis, FloatArray, Report, Said
+from designer.engines.silence import silent_stdout
+from designer.engines.watch import Watch
+from designer.errors import Mistake, UsageError
+from designer.program.linear import LinearProgram
+
+BOX = 2.0**20
+"""First box put around free columns for engines that need one, in scaled units."""
+WIDER = 2.0**7
+"""Each further box is wider by this much."""
+BOXES = 4
+"""Boxes tried before the engine's word is called unclear."""
+
+NEEDS_BOX = ("CBC", "COIN", "CYLP")
+"""Engines whose dual simplex invents bounds of 1e10 on free columns and may stop there."""
+
+
+def available() -> list[str]:
+    """List the names of the engines PuLP finds on this machine."""
+    import pulp
+
+    with silent_stdout(), warnings.catch_warnings():
+        # PuLP 3.3 warns about engines that PuLP 4 drops merely for being listed
+        warnings.simplefilter("ignore", DeprecationWarning)
+        return [str(name) for name in pulp.listSolvers(onlyAvailable=True)]
+
+
+def bridge(name: str) -> PulpEngine:
+    """Return the engine PuLP calls `name` (capitals do not matter).
+
+    Raises UsageError when PuLP does not know it or does not find it installed.
+    """
+    found = available()
+    for known in found:
+        if known.lower() == name.lower():
+            return PulpEngine(known)
+    raise UsageError(
+        [
+            Mistake(
+                "--engine",
+                f"'pulp:{name}'",
+                f"an engine that PuLP finds here: {', '.join(found) or 'none'}",
+                "Pick one of these, install the engine so that PuLP finds it, or leave the "
+                "option out to use HiGHS.",
+            )
+        ]
+    )
+
+
+@dataclass(frozen=True)
+class PulpEngine:
+    """One of PuLP's engines."""
+
+    solver: str
+
+    @property
+    def name(self) -> str:
+        """'pulp:' and PuLP's name of the engine."""
+        return f"pulp:{self.solver}"
+
+    def solve(
+        self,
+        lp: LinearProgram,
+        watch: Watch,
+        *,
+        basis: Basis | None = None,
+        tolerance: float | None = None,
+    ) -> Report:
+        """Return the engine's answer to `lp`; `basis` and `tolerance` are not passed on."""
+        program = floats(lp)
+        free = ~np.isfinite(program.col_lo) | ~np.isfinite(program.col_hi)
+        boxed = any(word in self.solver.upper() for word in NEEDS_BOX) and bool(free.any())
+        box, seconds = BOX if boxed else math.inf, 0.0
+        report = Report("failed", self.name)
+        for _ in range(BOXES if boxed else 1):
+            report = self._once(program, watch, box)
+            seconds += report.seconds
+            if report.status != "optimal" or report.x is None:
+                break
+            if 4 * float(np.abs(program.scaled(report.x)[free]).max(initial=0.0)) <= box:
+                break
+            box *= WIDER
+        status: Said = report.status
+        if boxed and status == "infeasible":
+            status = "unclear"  # the box may be what clashes
+        elif boxed and status == "optimal" and report.x is not None:
+            far = float(np.abs(program.scaled(report.x)[free]).max(initial=0.0))
+            status = "optimal" if 4 * far <= box else "unclear"
+        return Report(status, self.name, report.x, seconds=seconds, message=report.message)
+
+    def _once(self, program: FloatProgram, watch: Watch, box: float) -> Report:
+        import pulp
+
+        began = time.monotonic()
+        if watch.left <= 0:
+            return Report("time-limit", self.name, message="no time left to start")
+        options: dict[str, Any] = {"msg": False}
+        if watch.limit is not None:
+            options["timeLimit"] = max(1.0, watch.left)
+        with silent_stdout(), warnings.catch_warnings():
+            # the user chose this engine by name: that PuLP 4 drops it is no news to act on
+            warnings.simplefilter("ignore", DeprecationWarning)
+            columns, problem = pulp.LpProblem.fromDict(as_dict(program, box))
+            try:
+                said = problem.solve(pulp.getSolver(self.solver, **options))
+            except (pulp.PulpSolverError, OSError, RuntimeError, ValueError) as error:
+                return Report("failed", self.name, message=str(error))
+        seconds = time.monotonic() - began
+        # PuLP 4 returns statistics, earlier ones the status itself
+        status = _said(int(getattr(said, "status", said)), watch)
+        values = [columns[f"x{j}"].varValue for j in range(len(program.cost))]
+        x: FloatArray | None = None
+        if status in ("optimal", "time-limit") and any(value is not None for value in values):
+            # PuLP drops columns that no row and no cost mentions
+            x = program.point(_filled(values, program))
+        return Report(status, self.name, x, seconds=seconds, message=str(status))
+
+
+def as_dict(program: FloatProgram, box: float = math.inf) -> dict[str, Any]:
+    """Write a float program as PuLP's dictionary; columns x0, x1, ..., rows r0, r1, ....
+
+    A row with two different bounds becomes two; one with none is left out. Unbounded sides
+    of columns are put at `box`.
+    """
+    data = program.data.tolist()
+    names = [f"x{j}" for j in program.indices.tolist()]
+    cuts = program.indptr.tolist()
+    rows: list[dict[str, Any]] = []
+    for i, (low, high) in enumerate(
+        zip(program.row_lo.tolist(), program.row_hi.tolist(), strict=True)
+    ):
+        terms = [
+            {"name": name, "value": value}
+            for name, value in zip(
+                names[cuts[i] : cuts[i + 1]], data[cuts[i] : cuts[i + 1]], strict=True
+            )
+        ]
+        sides = [(0, low)] if low == high else [(1, low), (-1, high)]
+        for sense, right in sides:
+            if math.isfinite(right):
+                rows.append(
+                    {
+                        "sense": sense,
+                        "pi": None,
+                        "constant": -right,
+                        "name": f"r{i}_{sense + 1}",
+                        "coefficients": terms,
+                    }
+                )
+    columns = [
+        {
+            "name": f"x{j}",
+            "cat": "Integer" if whole else "Continuous",
+            "lowBound": _side(low, -box),
+            "upBound": _side(high, box),
+            "varValue": None,
+            "dj": None,
+        }
+        for j, (low, high, whole) in enumerate(
+            zip(
+                program.col_lo.tolist(),
+                program.col_hi.tolist(),
+                program.integer.tolist(),
+                strict=True,
+            )
+        )
+    ]
+    cost = [
+        {"name": f"x{j}", "value": value} for j, value in enumerate(program.cost.tolist()) if value
+    ]
+    return {
+        "parameters": {"name": "program", "sense": 1, "status": 0, "sol_status": 0},
+        "objective": {"name": "goal", "coefficients": cost},
+        "variables": columns,
+        "constraints": rows,
+        "sos1": [],
+        "sos2": [],
+    }
+
+
+def _side(value: float, box: float) -> float | None:
+    if math.isfinite(value):
+        return value
+    return box if math.isfinite(box) else None
+
+
+def _said(status: int, watch: Watch) -> Said:
+    if watch.left <= 0 and status != -1:
+        return "time-limit"  # whatever the engine calls what it has by then
+    words: dict[int, Said] = {1: "optimal", -1: "infeasible", -2: "unbounded", -3: "unclear"}
+    # the codes below -3 are PuLP 4's: limits of several kinds, Ctrl-C, numerical trouble
+    limits: dict[int, Said] = {-4: "time-limit", -10: "interrupted"}
+    return words.get(status) or limits.get(status, "failed")
+
+
+def _filled(values: Sequence[float | None], program: FloatProgram) -> FloatArray:
+    filled = np.array([0.0 if value is None else value for value in values], dtype=np.float64)
+    clipped: FloatArray = np.clip(filled, program.col_lo, program.col_hi)
+    return clipped
