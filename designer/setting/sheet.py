@@ -13,8 +13,11 @@ MAX_BYTES = 64 * 2**20
 """Largest file read."""
 
 
-def read_text(path: Path, place: str, report: Report) -> str | None:
-    """The UTF-8 text of a file, or None and a mistake."""
+def read_text(path: Path, place: str, report: Report, name: str = "file") -> str | None:
+    """The UTF-8 text of a file, or None and a mistake.
+
+    place  where the file is asked for; name  what it is called when its inside is wrong
+    """
     try:
         with path.open("rb") as stream:
             data = stream.read(MAX_BYTES + 1)
@@ -22,7 +25,7 @@ def read_text(path: Path, place: str, report: Report) -> str | None:
         reason = getattr(failure, "strerror", None) or "not a possible path"
         report.add(
             place,
-            f"{describe(str(path))}, which cannot be read ({reason})",
+            f"{str(path)[-300:]!r}, which cannot be read ({reason})",
             "a readable file",
             "Check the path and its permissions.",
         )
@@ -40,7 +43,7 @@ def read_text(path: Path, place: str, report: Report) -> str | None:
     except UnicodeDecodeError as failure:
         line = data.count(b"\n", 0, failure.start) + 1
         report.add(
-            f"{place}, line {line}",
+            f"{name}, line {line}",
             f"the byte 0x{data[failure.start]:02x}, which is not UTF-8",
             "text in UTF-8",
             "Save the file with the encoding UTF-8.",
@@ -96,11 +99,11 @@ def read_sheet(written: str, folder: Path | None, place: str, report: Report) ->
             "Read the scenario from a file, or write the entries in it.",
         )
         return None
-    text = read_text((folder or Path()) / written, place, report)
+    name = written if written.isprintable() and len(written) <= 60 else describe(written)
+    text = read_text((folder or Path()) / written, place, report, name)
     if text is None:
         return None
-    name = written if written.isprintable() and len(written) <= 60 else describe(written)
-    lines = csv.reader(io.StringIO(text, newline=""), strict=True)
+    lines = csv.reader(io.StringIO(text, newline=""), strict=True, skipinitialspace=True)
     try:
         header = [cell.strip() for cell in next(lines)]
     except (StopIteration, csv.Error):
