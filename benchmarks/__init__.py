@@ -1,0 +1,1 @@
+"""Sized problems, our time on them and other ways' time on them, in one run."""

@@ -1,0 +1,183 @@
+"""The results as Markdown, which also reads well in a terminal."""
+
+from __future__ import annotations
+
+import os
+import platform
+from collections.abc import Sequence
+from datetime import UTC, datetime
+from importlib.metadata import version
+
+from benchmarks.measure import Measured, Series
+from benchmarks.startup import Start
+from benchmarks.targets import Target
+
+BASELINES = ("textbook", "textbook-quick", "linprog", "highs")
+PARTS = ("read", "formulate", "solve", "prove", "table", "check", "save")
+VERSIONS = ("highspy", "numpy", "scipy", "pulp")
+
+NOTES = """\
+Every figure comes from one run. Each measurement has a process of its own and the ways of a
+problem take turns. Times are medians in seconds, with the least in brackets; memory is the
+peak of the whole process in MiB, imports included.
+
+- **ours**: `read_scenario` and `pose`, from the file to the checked proof. Saving is not in it.
+- **shell**: `designer pose FILE --json`, start-up included.
+- **textbook**: PuLP and HiGHS with a loop per quantifier (`tests/oracles/textbook.py`), from the
+  setting in memory to a float answer; **textbook-quick** adds terms up in dictionaries.
+- **linprog**: scipy's `linprog` on sparse rows built with numpy (`benchmarks/naive.py`), likewise.
+- **highs**: HiGHS alone on our arrays, already floats: it starts where our formulation ends.
+- Times in the form `4.2×` say how often our time fits into theirs; `>` marks a way that was
+  stopped, so that the true figure is larger.
+"""
+
+
+def seconds(value: float | None) -> str:
+    """Three significant figures."""
+    return "–" if value is None else f"{value:.3g}" if value >= 0.1 else f"{value:.2g}"
+
+
+def table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
+    """A Markdown table, padded so that its source is readable."""
+    widths = [max(len(row[j]) for row in (head, *rows)) for j in range(len(head))]
+    lines = [[cell.ljust(width) for cell, width in zip(head, widths, strict=True)]]
+    lines.append(["-" * width for width in widths])
+    lines += [[cell.ljust(w) for cell, w in zip(row, widths, strict=True)] for row in rows]
+    return "\n".join(f"| {' | '.join(line)} |" for line in lines) + "\n"
+
+
+def compared(measured: Sequence[Measured]) -> str:
+    """Time, memory and ratio of every way, a row per problem and way."""
+    rows = []
+    for one in measured:
+        if "ours" not in one.series:
+            continue
+        for way, series in one.series.items():
+            ratio = one.ratio(way)
+            told = ""
+            if way in BASELINES and ratio is not None:
+                sign = "> " if ratio[2] else ""
+                told = f"{sign}{ratio[0]:.3g}× ({sign}{ratio[1]:.3g}×)"
+            rows.append(
+                [one.problem.name, way, _time(series), _peak(series), told, _answer(series)]
+            )
+    return table(["problem", "way", "seconds", "MiB", "times ours", "answer"], rows)
+
+
+def shares(measured: Sequence[Measured]) -> str:
+    """Where our time goes, in percent, saving included."""
+    rows = []
+    for one in measured:
+        ours = one.series.get("ours")
+        if ours is None or not ours.runs:
+            continue
+        parts = [ours.part(name) for name in PARTS]
+        total = ours.part(*PARTS)
+        sizes = ours.runs[0].sizes
+        rows.append(
+            [
+                one.problem.name,
+                f"{sizes['rows']:,}",
+                f"{sizes['nonzeros']:,}",
+                seconds(total),
+                *(f"{100 * part / total:.0f} %" if total else "–" for part in parts),
+            ]
+        )
+    return table(["problem", "rows", "nonzeros", "seconds", *PARTS], rows)
+
+
+def alone(measured: Sequence[Measured]) -> str:
+    """Formulation and rechecking on their own."""
+    rows = []
+    for one in measured:
+        for way in ("formulate", "recheck"):
+            series = one.series.get(way)
+            if series is None or not series.runs:
+                continue
+            run = series.runs[0]
+            more = ", ".join(f"{name} {seconds(series.part(name))} s" for name in run.parts)
+            rows.append(
+                [
+                    one.problem.name,
+                    way,
+                    f"{run.sizes['rows']:,}",
+                    f"{run.sizes['nonzeros']:,}",
+                    _time(series),
+                    _peak(series),
+                    more,
+                ]
+            )
+    return table(["problem", "part", "rows", "nonzeros", "seconds", "MiB", "beside it"], rows)
+
+
+def starting(found: Sequence[Start]) -> str:
+    """Start-up times."""
+    rows = [
+        [one.says, f"{seconds(one.median)} ({seconds(one.least)})", f"{one.peak:.0f}"]
+        for one in found
+    ]
+    return table(["command", "seconds", "MiB"], rows)
+
+
+def aims(found: Sequence[Target]) -> str:
+    """Targets, measured and met or not."""
+    rows = [[one.says, one.wanted, one.found, "yes" if one.met else "NO"] for one in found]
+    return table(["target", "wanted", "measured", "met"], rows)
+
+
+def machine() -> str:
+    """Date, versions and machine size, one line each."""
+    memory = os.sysconf("SC_PAGE_SIZE") * os.sysconf("SC_PHYS_PAGES") / 2**30
+    packages = ", ".join(f"{name} {version(name)}" for name in VERSIONS)
+    return (
+        f"- {datetime.now(UTC):%Y-%m-%d}, designer {version('designer')}\n"
+        f"- Python {platform.python_version()}, {packages}\n"
+        f"- {os.cpu_count()} cores ({platform.machine()}), {memory:.0f} GiB of memory\n"
+    )
+
+
+def document(
+    measured: Sequence[Measured],
+    start: Sequence[Start],
+    found: Sequence[Target],
+    faults: Sequence[str],
+) -> str:
+    """Everything, as one Markdown document."""
+    parts = ["# Benchmarks\n", "Written by `python -m benchmarks --write`.\n", machine(), NOTES]
+    for title, text, any_of in (
+        ("Targets", aims(found), found),
+        ("Start-up", starting(start), start),
+        ("Beside other ways", compared(measured), measured),
+        ("Where our time goes", shares(measured), measured),
+        ("Formulating and rechecking alone", alone(measured), measured),
+    ):
+        if any_of:
+            parts += [f"## {title}\n", text]
+    parts.append("## Answers\n")
+    if faults:
+        parts.append("\n".join(f"- {fault}" for fault in faults) + "\n")
+    else:
+        parts.append("All ways gave the same answers; all of ours are proved.\n")
+    says = "\n".join(f"- **{one.problem.name}**: {one.problem.says}" for one in measured)
+    parts += ["## The problems\n", says + "\n"]
+    return "\n".join(parts)
+
+
+def _time(series: Series) -> str:
+    if series.failure:
+        return "failed"
+    if series.median is None:
+        return f"> {series.over:.0f}" if series.over else "–"
+    return f"{seconds(series.median)} ({seconds(series.least)})"
+
+
+def _peak(series: Series) -> str:
+    return "–" if series.peak is None else f"{series.peak:,.0f}"
+
+
+def _answer(series: Series) -> str:
+    if not series.runs:
+        return ""
+    run = series.runs[0]
+    value = run.exact or ("" if run.value is None else f"{run.value:.8g}")
+    return f"{run.status} {value}".strip()

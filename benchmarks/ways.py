@@ -1,0 +1,206 @@
+"""The ways of answering one problem, each timed from the same files.
+
+A way takes the path of a scenario and returns a `Run`. Imports are not timed: a measuring
+process answers a tiny problem first. What is timed is said beside each way.
+
+Baselines start from the setting in memory, and stop at a float answer. Ours starts from the
+file and stops at a checked proof; saving is timed apart, since the others save nothing.
+"""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+import tempfile
+import time
+from collections.abc import Callable
+from dataclasses import asdict, dataclass, field
+from pathlib import Path
+from typing import Any
+
+
+@dataclass(frozen=True)
+class Run:
+    """One answer: wall seconds, status, value of the first goal, seconds by part, sizes."""
+
+    seconds: float
+    status: str
+    value: float | None = None
+    exact: str = ""
+    proved: bool = False
+    parts: dict[str, float] = field(default_factory=dict)
+    sizes: dict[str, int] = field(default_factory=dict)
+
+    def plain(self) -> dict[str, Any]:
+        """The run as JSON values."""
+        return asdict(self)
+
+
+def ours(path: Path) -> Run:
+    """The library call: read the file, pose, prove, check. Saving is a part of its own."""
+    from designer import pose, read_scenario
+
+    began = time.perf_counter()
+    setting = read_scenario(path)
+    reading = time.perf_counter() - began
+    verdict = pose(setting)
+    seconds = time.perf_counter() - began
+    began = time.perf_counter()
+    _save(verdict)
+    saving = time.perf_counter() - began
+    matrix = verdict.program.matrix
+    value = verdict.goal_value
+    named = verdict.goals[0].goal != "any"
+    return Run(
+        seconds,
+        verdict.status,
+        float(value) if value is not None and named else None,
+        "" if value is None or not named else _short(str(value)),
+        verdict.proved,
+        {"read": reading, **verdict.seconds, "save": saving},
+        {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros},
+    )
+
+
+def textbook(path: Path, quick: bool = False) -> Run:
+    """PuLP and HiGHS as a textbook writes it: build and solve, from the setting in memory."""
+    from designer import Demands, read_scenario
+    from tests.oracles.textbook import build_and_solve
+
+    setting = read_scenario(path)
+    began = time.perf_counter()
+    status, value, parts = build_and_solve(setting, Demands(), quick)
+    return Run(time.perf_counter() - began, status, value, parts=parts)
+
+
+def textbook_quick(path: Path) -> Run:
+    """The same with terms added up by a dictionary instead of `lpSum`."""
+    return textbook(path, quick=True)
+
+
+def linprog(path: Path) -> Run:
+    """Call scipy's linprog on sparse rows built with numpy: build and solve."""
+    from benchmarks.naive import Naive
+    from designer import Demands, read_scenario
+
+    setting = read_scenario(path)
+    began = time.perf_counter()
+    rows = Naive(setting, Demands().over(setting))
+    built = time.perf_counter()
+    status, value = rows.solve()
+    ended = time.perf_counter()
+    parts = {"formulate": built - began, "solve": ended - built}
+    return Run(ended - began, status, value, parts=parts)
+
+
+def highs(path: Path) -> Run:
+    """HiGHS alone on our arrays, already floats: pass the model and run, nothing else."""
+    from designer import Demands, read_scenario
+    from designer.demands.formulate import formulate
+    from designer.engines.floats import floats
+    from designer.engines.highs import load, quiet_highs
+
+    setting = read_scenario(path)
+    terms = Demands().over(setting)
+    program = formulate(setting, terms)
+    lp = program.stage(0)
+    arrays = floats(lp)
+    began = time.perf_counter()
+    model = quiet_highs()
+    if not load(model, arrays):
+        raise RuntimeError("HiGHS refused the model")
+    model.run()
+    seconds = time.perf_counter() - began
+    words = {7: "possible", 8: "impossible", 9: "undecided", 10: "unbounded"}
+    status = words.get(int(model.getModelStatus()), "undecided")
+    value = None
+    if status == "possible" and terms.goals[0] != "any":
+        reached = model.getInfo().objective_function_value / 2.0**arrays.cost_exp
+        if lp.sense == "max":
+            reached = -reached
+        value = float(reached / lp.cost_den + float(lp.cost_const))
+    return Run(seconds, status, value)
+
+
+def formulate_only(path: Path) -> Run:
+    """From the setting in memory to the exact labelled program."""
+    from designer import Demands, read_scenario
+    from designer.demands.formulate import formulate
+
+    setting = read_scenario(path)
+    terms = Demands().over(setting)
+    began = time.perf_counter()
+    matrix = formulate(setting, terms).matrix
+    seconds = time.perf_counter() - began
+    sizes = {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros}
+    return Run(seconds, "formulated", sizes=sizes)
+
+
+def recheck_only(path: Path) -> Run:
+    """The checker alone on a saved proof; loading it and `designer recheck` are parts."""
+    from designer import pose, recheck
+    from designer.proof.document import as_bytes, load_document
+
+    verdict = pose(path)
+    matrix = verdict.program.matrix
+    sizes = {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros}
+    raw = as_bytes(verdict.proof)
+    status, sizes["bytes"] = verdict.status, len(raw)
+    del verdict
+    with tempfile.TemporaryDirectory() as folder:
+        place = Path(folder, "proof.json")
+        place.write_bytes(raw)
+        began = time.perf_counter()
+        document = load_document(place)
+        loading = time.perf_counter() - began
+        began = time.perf_counter()
+        finding = recheck(document)
+        seconds = time.perf_counter() - began
+        parts = {"load": loading}
+        shell = _shell("recheck", str(place))
+        if shell is not None:
+            parts["shell"] = shell
+    return Run(
+        seconds, status if finding.holds else "rejected", None, "", finding.holds, parts, sizes
+    )
+
+
+WAYS: dict[str, Callable[[Path], Run]] = {
+    "ours": ours,
+    "textbook": textbook,
+    "textbook-quick": textbook_quick,
+    "linprog": linprog,
+    "highs": highs,
+    "formulate": formulate_only,
+    "recheck": recheck_only,
+}
+"""The ways measured in a process of their own; "shell" is timed from outside."""
+
+
+def command(*words: str) -> list[str]:
+    """The command line that runs `designer` with these words."""
+    script = Path(sys.executable).with_name("designer")
+    return [str(script), *words] if script.exists() else [sys.executable, "-m", "designer", *words]
+
+
+def _shell(*words: str) -> float | None:
+    """Wall seconds of one command; None if it fails."""
+    began = time.perf_counter()
+    done = subprocess.run(command(*words), capture_output=True, check=False)
+    return time.perf_counter() - began if done.returncode == 0 else None
+
+
+def _save(verdict: Any) -> None:
+    from designer.files import write_all
+    from designer.proof.document import as_bytes
+    from designer.tablefile import transfers_csv
+
+    files: dict[str, Any] = {"proof.json": as_bytes(verdict.proof)}
+    if verdict.table is not None:
+        files["transfers.csv"] = transfers_csv(verdict.table, verdict.setting)
+    with tempfile.TemporaryDirectory() as folder:
+        write_all(folder, files)
+
+
+def _short(text: str) -> str:
+    return text if len(text) <= 40 else f"{len(text)} characters"

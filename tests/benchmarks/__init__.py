@@ -1,0 +1,1 @@
+"""The benchmarks measure what they say they measure."""
