@@ -11,16 +11,12 @@ from rich.padding import Padding
 from rich.table import Table
 from rich.text import Text
 
+from designer.views.caution import CAUTION
+
 if TYPE_CHECKING:
     from rich.console import Console
 
 INDENT = 2
-
-CAUTION = (
-    "This is analysis under the stated priors and types, not legal or financial advice. "
-    "Local law, procurement and competition rules, and licensed advisers decide."
-)
-"""Stands under whatever compels, charges or allocates."""
 
 Page = list[RenderableType]
 """A screen: renderables from top to bottom."""

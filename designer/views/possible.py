@@ -30,7 +30,7 @@ def possible(verdict: Verdict, rows: int | None = None) -> Page:
     if verdict.table is None or audit is None:
         return page
     page += cases(verdict.setting, verdict.table, audit.pot, rows)
-    page += standings(verdict.setting, audit.standings, rows)
+    page += standings(audit.standings, rows)
     page += pots(verdict.setting, audit.pot)
     page.append(caution())
     return page
@@ -82,9 +82,9 @@ def cases(setting: Setting, table: Table, pot: Pot, rows: int | None = None) -> 
     """The table case by case, the first rows of it."""
     shown = _shown(setting.profiles, CASES if rows is None else rows)
     page: Page = [heading("Case by case")]
-    columns = [Column(party.name, group="when the reports are") for party in setting.parties]
+    columns = [Column(party.name, group="reported") for party in setting.parties]
     columns += [Column("chance", right=True), Column("decided")]
-    columns += [Column(party.name, right=True, group="they pay") for party in setting.parties]
+    columns += [Column(party.name, right=True, group="pays") for party in setting.parties]
     columns.append(Column("pot", right=True))
     lines, stacked = [], []
     for profile in range(shown):
@@ -110,8 +110,11 @@ def decision(setting: Setting, table: Table, profile: int) -> str:
     return ", ".join(f"{cell(chance)} {option}" for chance, option in drawn)
 
 
-def standings(setting: Setting, found: Sequence[Standing], rows: int | None = None) -> Page:
-    """What each type of each party can expect, and the lie that comes closest."""
+def standings(found: Sequence[Standing], rows: int | None = None, saved: bool = True) -> Page:
+    """What each type of each party can expect, and the lie that comes closest.
+
+    saved  whether --save is there to write the rest of a long list
+    """
     shown = _shown(len(found), STANDINGS if rows is None else rows)
     page: Page = [heading("Type by type, on average when everyone is honest")]
     columns = [
@@ -138,7 +141,7 @@ def standings(setting: Setting, found: Sequence[Standing], rows: int | None = No
         )
     if shown:
         page.append(Grid(columns, lines, stacked))
-    page += _rest(len(found) - shown, "type", "interim.csv", lines)
+    page += _rest(len(found) - shown, "type", "interim.csv" if saved else "", lines)
     return page
 
 
@@ -173,9 +176,7 @@ def _rest(left: int, noun: str, file: str, lines: Sequence[Sequence[str]]) -> Pa
     if any(text.startswith(ROUNDED) for line in lines for text in line):
         notes.append(f"{ROUNDED} marks a rounded number.")
     if left:
-        notes.append(
-            f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them, "
-            f"--save DIR writes them all, exact, to {file}."
-        )
+        more = f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them"
+        notes.append(f"{more}, --save DIR writes them all, exact, to {file}." if file else f"{more}.")
     return [paragraph(" ".join(notes))] if notes else []
 

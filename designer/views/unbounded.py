@@ -25,12 +25,12 @@ def unbounded(verdict: Verdict) -> Page:
     if verdict.ray is not None:
         found = direction(verdict.program, verdict.ray, verdict.setting)
         known, unit = GOALS[found.goal], verdict.setting.money
-        step = f"1 {unit}" if known.money else "1"
+        step = f"1 ({unit})" if known.money else "1"
         page.append(heading("How"))
         page.append(
             paragraph(
-                f"Some table does all that is asked; the change below keeps every demand, moves "
-                f"the {known.reads} by {step}, and can be made again and again:"
+                "Some table does all that is asked; the change below keeps every demand, brings "
+                f"the goal {found.goal} further by {step}, and can be made again and again:"
             )
         )
         rows = [(change.party, _in_words(change)) for change in found.changes[:SHOWN]]

@@ -1,0 +1,151 @@
+"""`designer audit`: any payment table against every demand."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+
+from designer.cli import options
+from designer.cli.output import IMPOSSIBLE, POSSIBLE, Output, command
+
+if TYPE_CHECKING:
+    from designer.auditing import Audit
+    from designer.demands.terms import Terms
+    from designer.setting.setting import Setting
+    from designer.table import Table
+
+EPILOG = """\b
+Examples:
+  designer audit scenarios/ropewalk.toml scenarios/ropewalk-table.csv
+  designer audit scenarios/ropewalk.toml scenarios/ropewalk-table.csv --ic dominant --json"""
+
+
+@command
+def audit(
+    scenario: options.Scenario,
+    table: Annotated[
+        Path, typer.Argument(metavar="TABLE.csv", help="A table in the format of transfers.csv.")
+    ],
+    tolerance: Annotated[
+        str | None,
+        typer.Option(
+            metavar="AMOUNT",
+            help="How much may be missed; else 0, or what rounding in the file explains.",
+        ),
+    ] = None,
+    decision: options.Decision = None,
+    ic: options.Ic = None,
+    ir: options.Ir = None,
+    balance: options.Balance = None,
+    budget: options.Budget = None,
+    subsidy: options.Subsidy = None,
+    slack: options.Slack = None,
+    compel: options.Compel = None,
+    rows: options.Rows = None,
+    json: options.Json = False,
+    quiet: options.Quiet = False,
+) -> None:
+    """Does a payment table, ours or anyone's, do all that is asked? And what else does it do?"""
+    from designer.auditing import as_json, judge
+    from designer.setting.scenario import read_scenario
+
+    setting = read_scenario(scenario)
+    terms = options.demands(
+        setting,
+        compel,
+        decision=decision,
+        ic=ic,
+        ir=ir,
+        balance=balance,
+        budget=budget,
+        subsidy=subsidy,
+        slack=slack,
+    ).over(setting)
+    found = _audited(setting, table, terms, _amount(tolerance), free=subsidy is None)
+    asked = {
+        "decision": terms.decision,
+        "ic": terms.ic,
+        "ir": terms.ir,
+        "balance": terms.balance,
+        "budget": terms.budget,
+    }
+    failing = judge(found, asked)
+    output = Output(json=json, quiet=quiet)
+    if json:
+        output.document(
+            {**as_json(found), "asked": asked, "satisfied": not failing, "failing": failing}
+        )
+    else:
+        from designer.views.audited import audited
+
+        output.page(audited(found, _names(asked, found), failing, rows))
+    raise typer.Exit(IMPOSSIBLE if failing else POSSIBLE)
+
+
+def _audited(
+    setting: Setting, path: Path, terms: Terms, tolerance: Fraction | None, free: bool
+) -> Audit:
+    """The audit under the terms.
+
+    free  whether no --subsidy was given: where the scenario's goal leaves outside money
+          open, the table is then held against the outside money it takes itself
+    """
+    from designer.auditing import audit
+
+    def held(table: Table | Path, subsidy: Fraction, tolerance: Fraction | None) -> Audit:
+        return audit(
+            setting,
+            table,
+            tolerance=tolerance,
+            subsidy=subsidy,
+            slack=terms.slack,
+            compelled=terms.compelled,
+        )
+
+    found = held(path, terms.subsidy, tolerance)
+    if free and "outside-money" in terms.goals:
+        taken = found.pot.least if terms.balance == "ex-post" else found.pot.expected
+        return held(path, -taken, tolerance)
+    return found
+
+
+def _names(asked: dict[str, str], found: Audit) -> list[str]:
+    """The findings the table is held to, by the names the audit gives them."""
+    names = [f"decision-{asked['decision']}", "lottery", *found.limits]
+    names += [f"{key}-{asked[key]}" for key in ("ic", "ir")]
+    return [*names, f"balance-{asked['balance']}-{asked['budget']}"]
+
+
+def _amount(written: str | None) -> Fraction | None:
+    from designer.errors import Mistake, UsageError
+    from designer.setting.exact import number
+
+    if written is None:
+        return None
+    try:
+        value = number(written)
+        if value >= 0:
+            return value
+    except ValueError:
+        pass
+    raise UsageError(
+        [
+            Mistake(
+                "--tolerance",
+                repr(written[:40]),
+                "an exact amount of at least 0",
+                'Write 0, 0.01 or "1/100".',
+            )
+        ]
+    )
+
+
+def register(app: typer.Typer) -> None:
+    """Add the command."""
+    app.command(epilog=EPILOG)(audit)
+
+
+__all__: list[Any] = ["audit", "register"]
