@@ -107,6 +107,8 @@ def read_sheet(written: str, folder: Path | None, place: str, report: Report) ->
     try:
         header = [cell.strip() for cell in next(lines)]
     except (StopIteration, csv.Error):
+        header = []
+    if not any(header):
         report.add(
             f"{name}, line 1", "no header", "a row of column names", "Name the columns first."
         )
