@@ -64,9 +64,7 @@ def some_outlay(setting: Setting) -> Refusal | None:
         return None
     return Refusal(
         "an outlay to share among the parties",
-        "no decision with a cost"
-        if not any(setting.outlay)
-        else "a decision that brings money in",
+        "no decision with a cost" if not any(setting.outlay) else "a decision that brings money in",
         "State the cost in [designer] outlay, or use expected-externality.",
     )
 

@@ -38,9 +38,7 @@ def balanced(setting: Setting, interim: Sequence[Amounts], target: Amounts) -> l
         if rest.num.any():
             raise ValueError("one party cannot be asked for more than its own payment")
         return flat
-    effects = [
-        by_profile(setting, j, expected_by_type(setting, j, rest)) for j in range(n)
-    ]
+    effects = [by_profile(setting, j, expected_by_type(setting, j, rest)) for j in range(n)]
     together = total(effects)
     common = (rest - together).times(Fraction(1, n)) + together.times(Fraction(1, n - 1))
     return [

@@ -119,7 +119,8 @@ def _line(setting: Setting, index: int) -> Line | None:
         a = next(a for a, step in enumerate(x) if step)
         for k in moving:
             slopes[k] = Fraction(int(change[a, k]), x[a])
-            if slopes[k] < 0 or any(slopes[k] * step != s for step, s in zip(x, change[:, k])):
+            steps = zip(x, change[:, k].tolist(), strict=True)
+            if slopes[k] < 0 or any(slopes[k] * step != moved for step, moved in steps):
                 return None
     scale = math.lcm(*(slope.denominator for slope in slopes))
     level = [Fraction(step, scale * setting.grain) for step in x]
@@ -160,10 +161,7 @@ def envelope(setting: Setting, party: int, line: Line, decides: IntArray, den: i
     at = split(setting, party)
     by_level = q.reshape(at)[:, list(line.order), :]
     steps = Amounts.of(
-        [
-            line.level[b] - line.level[a]
-            for a, b in zip(line.order, line.order[1:], strict=False)
-        ]
+        [line.level[b] - line.level[a] for a, b in zip(line.order, line.order[1:], strict=False)]
         or [0]
     )
     bound = (largest(q) + 1) * (largest(steps.num) + 1) * len(line.order)

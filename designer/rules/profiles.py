@@ -79,7 +79,8 @@ def chosen(amounts: Amounts, choice: IntArray) -> Amounts:
 
 def certain(setting: Setting, choice: IntArray) -> IntArray:
     """Write decisions as a rule without lotteries: 0 or 1, (N, K)."""
-    return (choice[:, None] == np.arange(len(setting.options))).astype(np.int64)
+    rows: IntArray = (choice[:, None] == np.arange(len(setting.options))).astype(np.int64)
+    return rows
 
 
 def split(setting: Setting, party: int) -> tuple[int, int, int]:

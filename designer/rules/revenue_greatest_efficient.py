@@ -13,19 +13,36 @@ the scenario compels are treated as free to stay out.
 Sources: V. Krishna and M. Perry (1998), Efficient mechanism design; S. R. Williams (1999), A
 characterization of efficient, Bayesian incentive compatible mechanisms, Economic Theory
 14:155-180 (both from memory); the form for finitely many types is the shortest-path one.
+
+Ties move the pot. Where worths are one-way (one_way.py) the efficient decision with the largest
+virtual worth is taken, which no other choice among ties beats; elsewhere the first in the order
+of the options.
 """
 
 from __future__ import annotations
 
-from designer.rules import checks
+import numpy as np
+
+from designer.rules import checks, one_way
 from designer.rules.amounts import Amounts, stacked, total
-from designer.rules.kinds import Built, Rule
+from designer.rules.kinds import Built, Refusal, Rule
 from designer.rules.lift import balanced
-from designer.rules.profiles import TIES, by_profile, certain, chosen, efficient, expected, outlay
+from designer.rules.profiles import (
+    TIES,
+    by_profile,
+    certain,
+    chosen,
+    efficient,
+    expected,
+    outlay,
+    total_worth,
+)
 from designer.rules.type_graph import largest_payments
 from designer.setting.exact import text
 from designer.setting.setting import IntArray, Setting
 from designer.table import Table
+
+POT_TIES = "Of equally efficient decisions the one best for the pot is taken."
 
 
 def greatest(setting: Setting, decides: IntArray) -> list[Amounts]:
@@ -39,15 +56,28 @@ def greatest(setting: Setting, decides: IntArray) -> list[Amounts]:
     return found
 
 
+def decision(setting: Setting) -> tuple[IntArray, str]:
+    """Choose among the efficient decisions: (N,), and how ties were broken."""
+    lines = one_way.lines(setting)
+    if isinstance(lines, Refusal):
+        return efficient(setting), TIES
+    worths = total_worth(setting)
+    best = worths.num == worths.num.max(axis=1, keepdims=True)
+    parts = [one_way.scores(setting, i, line, line.virtual) for i, line in enumerate(lines)]
+    pots = total(parts) - outlay(setting)
+    floor = int(pots.num.min()) - 1
+    return np.where(best, pots.num, floor).argmax(axis=1), POT_TIES
+
+
 def build(setting: Setting) -> Built:
     """Build the efficient rule, the pot the same in every case."""
-    choice = efficient(setting)
+    choice, ties = decision(setting)
     decides = certain(setting, choice)
     cost = chosen(outlay(setting), choice)
     interim = greatest(setting, decides)
     flat = [by_profile(setting, i, part) for i, part in enumerate(interim)]
     pot = expected(setting, total(flat) - cost)
-    notes = [TIES, f"The pot is {text(pot)} in every case."]
+    notes = [ties, f"The pot is {text(pot)} in every case."]
     if len(setting.parties) == 1:
         notes[1] = f"The pot is {text(pot)} on average; one party's payments cannot even it out."
         return Built(Table(decides, 1, *stacked(flat)), tuple(notes))

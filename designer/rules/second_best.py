@@ -53,10 +53,7 @@ class Search:
 
     def _score(self, by_type: list[list[Fraction]]) -> Amounts:
         return total(
-            [
-                one_way.scores(self.setting, i, line, by_type[i])
-                for i, line in enumerate(self.lines)
-            ]
+            [one_way.scores(self.setting, i, line, by_type[i]) for i, line in enumerate(self.lines)]
         )
 
     def best(self, z: Fraction) -> Point:

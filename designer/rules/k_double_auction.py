@@ -1,0 +1,48 @@
+"""The k-double auction played at face value: trade if the bids cross, at a price between them.
+
+    price = k v + (1 - k) c with k = 1/2, on the buyer's word v and the seller's word c
+
+Bids are not truths here: both shade. On a continuum of uniform worths the shading has a linear
+equilibrium whose truthful counterpart is linear-double-auction; on a grid no exact counterpart
+is known in closed form, and this table shows what the bare price rule loses to lies.
+
+Source: K. Chatterjee and W. Samuelson (1983), Bargaining under incomplete information,
+Operations Research 31:835-851 (from memory).
+"""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+from designer.rules import checks
+from designer.rules.amounts import Amounts, stacked
+from designer.rules.deal import a_trade, buyer, nets, recognised
+from designer.rules.kinds import Built, Rule
+from designer.rules.profiles import TIES, certain, efficient
+from designer.setting.setting import Setting
+from designer.table import Table
+
+
+def build(setting: Setting) -> Built:
+    """Build trade at the middle of the two reports."""
+    found = recognised(setting)
+    buys = buyer(found)
+    if buys is None:
+        raise ValueError("not a trade")
+    choice = efficient(setting)
+    rows, den = nets(setting, found)
+    # The seller's net worth is -c, so that v + c is the difference of the two.
+    middle = Amounts(rows[buys], den) - Amounts(rows[1 - buys], den)
+    traded = (choice == found.on).astype(int)
+    price = Amounts(middle.num * traded, middle.den).times(Fraction(1, 2))
+    pays = [price, price.times(-1)] if buys == 0 else [price.times(-1), price]
+    return Built(Table(certain(setting, choice), 1, *stacked(pays)), (TIES,))
+
+
+RULE = Rule(
+    name="k-double-auction",
+    source="Chatterjee and Samuelson 1983",
+    assumes="a trade between two; bids taken at face value (k = 1/2)",
+    checks=(checks.tabulated, checks.private, a_trade),
+    build=build,
+)
