@@ -24,6 +24,9 @@ Exponents = npt.NDArray[np.int64]
 NEAR = 20
 """Coefficients within 2**-20 .. 2**20 after row scaling need no column scaling."""
 
+MOST = 40
+"""Coefficients are kept below 2**40; engines refuse much larger ones."""
+
 FAR = 27
 """Bounds beyond 2**27 make absolute tolerances of 1e-7 meaningless: rescale."""
 
@@ -142,12 +145,12 @@ def floats(lp: LinearProgram) -> FloatProgram:
 
 
 def _middle(exponents: Exponents, group: npt.NDArray[np.int64], size: int) -> Exponents:
-    """Minus the middle of the smallest and the largest exponent of each group."""
+    """Minus the middle of the smallest and the largest exponent of each group, capped."""
     low = np.full(size, 2**40, dtype=np.int64)
     high = np.full(size, -(2**40), dtype=np.int64)
     np.minimum.at(low, group, exponents)
     np.maximum.at(high, group, exponents)
-    middle = -((low + high) // 2)
+    middle = np.minimum(-((low + high) // 2), MOST - high)
     middle[low > high] = 0
     return middle
 

@@ -59,6 +59,8 @@ class Lifting:
         """(N, q) with K N = q b (K' N = q b), q > 0, checked. Raises NotLifted."""
         matrix = self.matrix.transposed if transposed else self.matrix
         residual = narrow(b)
+        if largest(residual) == 0:
+            return np.zeros(matrix.rows, dtype=np.int64), 1
         total: IntArray = np.zeros(matrix.rows, dtype=object)
         shift, target, slow = 0, FIRST, 0
         step, top = self._step(residual, transposed)

@@ -104,7 +104,9 @@ def conclude(
     # No optimum seen, or none that holds: first whether there is a feasible point at all.
     feasible = find_feasible(lp, watch, effort, scale)
     if feasible.corner is None:
-        return feasible if feasible.farkas is not None else _unsettled(first)
+        if feasible.farkas is not None:
+            return feasible
+        return _pivoted(exact, slack_basis(exact), watch, effort, 0) or _unsettled(first)
     start = feasible.corner
     ray = None
     if report.status in ("unbounded", "unclear"):
@@ -206,9 +208,10 @@ def _regular(exact: Exact, basis: Basis, watch: Watch, effort: Effort) -> Corner
 def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort, cap: int) -> Settled | None:
     small = exact.matrix.rows + exact.matrix.columns <= SMALL
     starts = [basis, slack_basis(exact)] if small else [basis]
+    cap = PIVOTS_SMALL if small else cap
     for start in starts:
         try:
-            ended = pivot(exact, start, watch, PIVOTS_SMALL if small else cap)
+            ended = pivot(exact, start, watch, cap)
         except Singular:
             continue
         if ended is None:

@@ -161,8 +161,10 @@ def judge(lp: LinearProgram, outcome: Outcome) -> None:
     if outcome.status == "unbounded":
         assert outcome.ray is not None
         r = outcome.ray.dense()
-        zero_rows = [[None if side is None else Fraction(0) for side in sides]
-                     for sides in (plain.row_lo, plain.row_hi, plain.col_lo, plain.col_hi)]
+        zero_rows = [
+            [None if side is None else Fraction(0) for side in sides]
+            for sides in (plain.row_lo, plain.row_hi, plain.col_lo, plain.col_hi)
+        ]
         assert all(map(_between, [_dot(row, r) for row in plain.rows], zero_rows[0], zero_rows[1]))
         assert all(map(_between, r, zero_rows[2], zero_rows[3]))
         assert plain.value(r) < 0
