@@ -1,4 +1,4 @@
-"""What `--save` writes: the table, the interim table, the verdict, the proof, and their data package.
+"""What `--save` writes: the tables with their data package, the verdict, the proof.
 
     transfers.csv      one row per profile (possible only)
     interim.csv        one row per party and type (possible only)
@@ -19,14 +19,10 @@ from pathlib import Path
 from typing import Any
 
 from designer.files import Content, write_all
-from designer.setting.setting import Setting
 from designer.verdict import Verdict
 
 NAMES = ("transfers.csv", "interim.csv", "datapackage.json", "verdict.json", "proof.json")
 """Every file a verdict may have; ours to replace or take away."""
-
-EXACT = r"-?(\d+(/\d+)?|0x[0-9a-f]+(/0x[0-9a-f]+)?)"
-"""The pattern of an exact number: "p", "p/q", hexadecimal where very long."""
 
 
 def planned(verdict: Verdict, folder: str | os.PathLike[str]) -> dict[str, str]:
@@ -56,86 +52,13 @@ def save(
     audit = verdict.audit
     if verdict.table is not None and audit is not None:
         from designer.auditing import interim_csv
-        from designer.tablefile import transfers_csv
+        from designer.tablefile import datapackage, transfers_csv
 
         contents["transfers.csv"] = transfers_csv(verdict.table, verdict.setting)
         contents["interim.csv"] = interim_csv(audit)
-        contents["datapackage.json"] = _json(data_package(verdict.setting, bool(verdict.proof)))
+        contents["datapackage.json"] = datapackage(verdict.setting)
     write_all(folder, contents, retire=NAMES)
     return planned(verdict, folder)
-
-
-def data_package(setting: Setting, proved: bool = True) -> dict[str, Any]:
-    """Describe the saved files as a Data Package (datapackage.org, version 2).
-
-    Exact amounts are fractions, which the standard's number type cannot hold; they are
-    strings with a pattern.
-    """
-    money = f"{setting.money}, exact"
-    transfers = [_field(f"type:{party.name}", f"type of {party.name}") for party in setting.parties]
-    transfers.append(_exact("probability", "probability of the profile"))
-    transfers += [_exact(f"decides:{k}", f"probability of the decision {k}") for k in setting.options]
-    transfers += [
-        _exact(f"pays:{party.name}", f"paid by {party.name}, negative when received; {money}")
-        for party in setting.parties
-    ]
-    transfers.append(_exact("pot", f"payments less outlay; {money}"))
-    interim = [
-        _field("party", "the party"),
-        _field("type", "its true type"),
-        _exact("expected payment", f"paid on average, given the type; {money}"),
-        _exact("expected utility", f"worth less payment on average, given the type; {money}"),
-        _exact("gain over staying out", f"expected utility less the outside option; {money}"),
-        _field("closest lie", "the other type whose report loses least; empty if there is none"),
-        _exact("margin", f"what that report loses against the truth; {money}"),
-    ]
-    keys = [f"type:{party.name}" for party in setting.parties]
-    resources = [
-        _table("transfers", "Decisions and payments, one row per profile", transfers, keys),
-        _table("interim", "Expectations, one row per party and type", interim, ["party", "type"]),
-        _document("verdict", "The verdict"),
-    ]
-    if proved:
-        resources.append(_document("proof", "The proof, for `designer recheck`"))
-    return {
-        "$schema": "https://datapackage.org/profiles/2.0/datapackage.json",
-        "name": f"transfers-{setting.digest[:12]}",
-        "title": setting.title,
-        "description": setting.note,
-        "resources": resources,
-    }
-
-
-def _field(name: str, description: str) -> dict[str, Any]:
-    return {"name": name, "type": "string", "description": description}
-
-
-def _exact(name: str, description: str) -> dict[str, Any]:
-    return {**_field(name, description), "constraints": {"pattern": EXACT}}
-
-
-def _table(name: str, title: str, fields: list[dict[str, Any]], keys: list[str]) -> dict[str, Any]:
-    return {
-        "name": name,
-        "type": "table",
-        "title": title,
-        "path": f"{name}.csv",
-        "format": "csv",
-        "mediatype": "text/csv",
-        "encoding": "utf-8",
-        "schema": {"fields": fields, "primaryKey": keys},
-    }
-
-
-def _document(name: str, title: str) -> dict[str, Any]:
-    return {
-        "name": name,
-        "title": title,
-        "path": f"{name}.json",
-        "format": "json",
-        "mediatype": "application/json",
-        "encoding": "utf-8",
-    }
 
 
 def _json(document: Mapping[str, Any]) -> str:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from fractions import Fraction
 from pathlib import Path
-from typing import TYPE_CHECKING, Annotated, Any
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
@@ -48,7 +48,7 @@ def audit(
     json: options.Json = False,
     quiet: options.Quiet = False,
 ) -> None:
-    """Does a payment table, ours or anyone's, do all that is asked? And what else does it do?"""
+    """Hold a payment table, ours or anyone's, against every demand, asked or not."""
     from designer.auditing import as_json, judge
     from designer.setting.scenario import read_scenario
 
@@ -78,7 +78,7 @@ def audit(
         output.document(
             {**as_json(found), "asked": asked, "satisfied": not failing, "failing": failing}
         )
-    else:
+    elif not quiet:
         from designer.views.audited import audited
 
         output.page(audited(found, _names(asked, found), failing, rows))
@@ -145,7 +145,4 @@ def _amount(written: str | None) -> Fraction | None:
 
 def register(app: typer.Typer) -> None:
     """Add the command."""
-    app.command(epilog=EPILOG)(audit)
-
-
-__all__: list[Any] = ["audit", "register"]
+    app.command(epilog=EPILOG, short_help="Any payment table against every demand.")(audit)

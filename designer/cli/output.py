@@ -62,7 +62,9 @@ class Output:
 
     def document(self, document: Mapping[str, Any]) -> None:
         """Print the JSON document, alone on stdout."""
-        write(sys.stdout, json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n")
+        write(
+            sys.stdout, json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+        )
 
 
 def console(stream: IO[str]) -> Console:

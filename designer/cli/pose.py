@@ -77,7 +77,7 @@ def pose(
         typer.Option("--progress/--no-progress", help="Progress on stderr; else on terminals."),
     ] = None,
 ) -> None:
-    """Is there a payment table that does all that is asked, and which is best? Proved."""
+    """Find the best payment table that does all that is asked, or prove that none does."""
     from designer.setting.scenario import read_scenario
 
     setting = read_scenario(scenario)
@@ -105,7 +105,7 @@ def pose(
         from designer.views.documents import verdict_document
 
         output.document(verdict_document(verdict, files))
-    else:
+    elif not quiet:
         from designer.views.screen import screen
 
         output.page(screen(verdict, rows))
@@ -139,12 +139,16 @@ def _save(verdict: Verdict, folder: Path | None, output: Output) -> dict[str, st
 
 
 def _export(setting: Any, demands: Any, path: Path) -> None:
+    """The program of the first goal, each row and column under a name made of its label."""
     from designer.demands.formulate import formulate
-    from designer.engines.export import write_program
+    from designer.engines.export import export
+    from designer.views.labels import axis_names
 
-    write_program(formulate(setting, demands.over(setting)), path)
+    program = formulate(setting, demands.over(setting))
+    rows, columns = axis_names(program.row_axis), axis_names(program.column_axis)
+    export(program.stage(0), rows, columns, path)
 
 
 def register(app: typer.Typer) -> None:
     """Add the command."""
-    app.command(epilog=EPILOG)(pose)
+    app.command(epilog=EPILOG, short_help="The main job: demands to a proved verdict.")(pose)

@@ -26,7 +26,7 @@ def recheck(
     json: options.Json = False,
     quiet: options.Quiet = False,
 ) -> None:
-    """Is a saved proof right about its verdict, and is its program the scenario's?"""
+    """Check that a saved proof is right, and that its program is the scenario's."""
     from designer.proof.document import load_document
     from designer.proof.recheck import recheck
 
@@ -42,7 +42,7 @@ def recheck(
         from designer.views.documents import recheck_document
 
         output.document(recheck_document(title, digest, finding, compared, differences))
-    else:
+    elif not quiet:
         from designer.views.rechecked import rechecked
 
         output.page(rechecked(title, finding, compared, differences))
@@ -66,4 +66,4 @@ def _named(document: object) -> tuple[str, str]:
 
 def register(app: typer.Typer) -> None:
     """Add the command."""
-    app.command(epilog=EPILOG)(recheck)
+    app.command(epilog=EPILOG, short_help="A saved proof, with no solver.")(recheck)

@@ -1,1 +1,1 @@
-"""Pure functions of a verdict, an audit or a finding: screens for people, documents for programs."""
+"""Pure functions of a verdict, an audit, a finding: screens for people, documents for programs."""

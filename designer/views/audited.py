@@ -13,8 +13,8 @@ from designer.auditing.outcome import Audit, Finding
 from designer.setting.setting import Setting
 from designer.views.amounts import amount
 from designer.views.page import INDENT, Page, caution, heading, paragraph
-from designer.views.possible import pots, standings
 from designer.views.posed import scenario
+from designer.views.possible import pots, standings
 
 NAMES: dict[str, str] = {
     "ic-bayesian": "honesty, on average",

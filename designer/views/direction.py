@@ -53,9 +53,7 @@ def direction(program: Program, ray: Vector, setting: Setting) -> Direction:
     scale = abs(Fraction(stage.cost_den) / gain)
     moved: dict[str, dict[int, Fraction]] = {}
     unknowns: list[tuple[str, Fraction]] = []
-    positions = [
-        {kind.label: a for a, kind in enumerate(party.types)} for party in setting.parties
-    ]
+    positions = [{kind.label: a for a, kind in enumerate(party.types)} for party in setting.parties]
     for column, value in entries.items():
         label = program.column_axis.label(column)
         if isinstance(label, Pays):

@@ -97,7 +97,7 @@ def recheck_document(
 def error_document(
     kind: str, code: int, message: str, mistakes: Sequence[Mistake] = ()
 ) -> dict[str, Any]:
-    """What went wrong: kind "input", "usage", "interrupted", "memory" or "bug", and the exit code."""
+    """What went wrong; kind is "input", "usage", "interrupted", "memory" or "bug"."""
     return {
         "format": ERROR,
         "kind": kind,

@@ -12,7 +12,7 @@ from rich.padding import Padding
 from rich.table import Table as RichTable
 from rich.text import Text
 
-from designer.proof.derivation import Derivation, Line
+from designer.proof.derivation import Derivation
 from designer.setting import exact
 from designer.views.amounts import counted
 from designer.views.labels import addends, family, legend, sentence
@@ -84,13 +84,17 @@ def derivation(found: Derivation) -> Page:
     table.add_column(justify="right")
     table.add_column(ratio=1, overflow="fold")
     for line in shown:
-        table.add_row(f"{exact.text(line.multiplier)} ×", Text(f"{sentence(line.label, line.folds)}:"))
+        table.add_row(
+            f"{exact.text(line.multiplier)} ×", Text(f"{sentence(line.label, line.folds)}:")
+        )
         table.add_row("", Padding(Sum(addends(line.terms), exact.text(line.bound)), (0, 0, 0, 2)))
     page.append(Padding(table, (1, 0, 0, 2)))
     left = len(found.lines) - len(shown)
     if left:
         page.append(
-            paragraph(f"… and {counted(left, 'line')} more: --save DIR writes the whole to proof.json.")
+            paragraph(
+                f"… and {counted(left, 'line')} more: --save DIR writes the whole to proof.json."
+            )
         )
     page.append(paragraph(_sum(found, whole=not left)))
     return page
@@ -99,9 +103,7 @@ def derivation(found: Derivation) -> Page:
 def _sum(found: Derivation, whole: bool) -> str:
     """The closing line; with the bounds added up where every line is there to see."""
     result = exact.text(found.total)
-    products = [
-        (line.multiplier, line.bound) for line in found.lines if line.bound
-    ]
+    products = [(line.multiplier, line.bound) for line in found.lines if line.bound]
     if not whole or len(products) < 2:
         return f"Sum: on the left everything cancels, and 0 ≥ {result} is left, which is false."
     parts = []

@@ -19,6 +19,7 @@ from designer.program.labels import (
     TakesPart,
     Unknown,
 )
+from designer.program.program import Axis
 from designer.setting import exact
 
 MOST_TERMS = 12
@@ -69,6 +70,26 @@ def legend(labels: Iterable[Label]) -> list[str]:
     """What the kinds of terms in use mean, in a fixed order."""
     used = {type(label) for label in labels}
     return [meaning for kind, meaning in LEGEND.items() if kind in used]
+
+
+def axis_names(axis: Axis) -> list[str]:
+    """A name for every label of an axis, for files that name rows and columns."""
+    return [axis_name(axis.label(position)) for position in range(len(axis))]
+
+
+def axis_name(label: Label) -> str:
+    """The kind of a label and what it says, in one word.
+
+    >>> axis_name(Pays("Suth", ("20", "50")))
+    'Pays_Suth_20_50'
+    """
+    parts = [type(label).__name__]
+    for value in vars(label).values():
+        if isinstance(value, tuple):
+            parts += value
+        elif value is not None:
+            parts.append(str(value))
+    return "_".join(parts)
 
 
 def sentence(label: Label | None, folds: int = 1) -> str:

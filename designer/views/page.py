@@ -59,15 +59,17 @@ def printed(page: Page, console: Console) -> str:
     with console.capture() as capture:
         for part in page:
             console.print(part)
-    lines = capture.get().split("\n")
-    return "\n".join(line.rstrip() for line in lines)
+    lines = [line.rstrip() for line in capture.get().split("\n")]
+    while lines and not lines[0]:  # the blank line of a heading that comes first
+        del lines[0]
+    return "\n".join(lines)
 
 
 def plain(page: Page, width: int = 80) -> str:
-    """The page as plain text of a given width, for files and tests.
+    r"""The page as plain text of a given width, for files and tests.
 
     >>> plain([heading("Pot"), paragraph("0 in every case")])
-    '\\nPot\\n  0 in every case\\n'
+    'Pot\n  0 in every case\n'
     """
     from rich.console import Console
 

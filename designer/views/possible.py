@@ -38,10 +38,7 @@ def possible(verdict: Verdict, rows: int | None = None) -> Page:
 
 def goals(verdict: Verdict) -> Page:
     """A sentence for every goal, and how far it is proved."""
-    lines = []
-    for goal in verdict.goals:
-        if line := _goal(goal, verdict.setting):
-            lines.append(("tidy" if goal.tidy else goal.goal, line))
+    lines = goal_lines(verdict)
     page: Page = [listed(lines)] if lines else []
     if verdict.proved:
         page.append(paragraph(f"Proved in exact arithmetic: {'; '.join(verdict.claims)}."))
@@ -50,6 +47,15 @@ def goals(verdict: Verdict) -> Page:
     elif verdict.claims:
         page.append(paragraph(f"Proved so far: {'; '.join(verdict.claims)}."))
     return page
+
+
+def goal_lines(verdict: Verdict) -> list[tuple[str, str]]:
+    """A name and a sentence for every goal that has a value, and for the tidy stage."""
+    return [
+        ("tidy" if goal.tidy else goal.goal, line)
+        for goal in verdict.goals
+        if (line := _goal(goal, verdict.setting))
+    ]
 
 
 def _goal(goal: GoalResult, setting: Setting) -> str:
@@ -176,7 +182,10 @@ def _rest(left: int, noun: str, file: str, lines: Sequence[Sequence[str]]) -> Pa
     if any(text.startswith(ROUNDED) for line in lines for text in line):
         notes.append(f"{ROUNDED} marks a rounded number.")
     if left:
-        more = f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them"
-        notes.append(f"{more}, --save DIR writes them all, exact, to {file}." if file else f"{more}.")
+        more = (
+            f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them"
+        )
+        notes.append(
+            f"{more}, --save DIR writes them all, exact, to {file}." if file else f"{more}."
+        )
     return [paragraph(" ".join(notes))] if notes else []
-

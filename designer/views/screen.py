@@ -7,7 +7,7 @@ from designer.views.amounts import counted
 from designer.views.impossible import impossible
 from designer.views.page import Page, heading, listed, paragraph
 from designer.views.posed import posed
-from designer.views.possible import goals, possible
+from designer.views.possible import goal_lines, possible
 from designer.views.unbounded import unbounded
 
 
@@ -29,11 +29,14 @@ def screen(verdict: Verdict, rows: int | None = None, scenario: bool = True) -> 
 
 def undecided(verdict: Verdict) -> Page:
     """Why nothing was decided, what is settled all the same, and what to try."""
-    page: Page = [heading("UNDECIDED."), paragraph(f"Why: {verdict.reason or 'no reason given'}.")]
-    settled = [goal for goal in verdict.goals if goal.value is not None]
+    page: Page = [
+        heading("UNDECIDED."),
+        paragraph(f"Why: {verdict.reason or 'no reason was given'}."),
+    ]
+    settled = goal_lines(verdict)
     if settled:
-        page.append(paragraph(f"Before that, {counted(len(settled), 'goal')} had a value:"))
-        page += goals(verdict)
+        page += [paragraph(f"Before that, {counted(len(settled), 'goal')} had a value:")]
+        page.append(listed(settled))
     tries = [
         ("time", "--time-limit SECONDS with more of them, or without the option."),
         ("engine", "--engine pulp:NAME asks any other engine that PuLP finds."),

@@ -100,7 +100,9 @@ def _limits(terms: Terms, setting: Setting) -> list[str]:
 def _side(terms: Terms, setting: Setting) -> list[str]:
     side, found = terms.side, []
     if side.welfare_at_least is not None:
-        found.append(f"Expected welfare is at least {amount(side.welfare_at_least, setting.money)}.")
+        found.append(
+            f"Expected welfare is at least {amount(side.welfare_at_least, setting.money)}."
+        )
     if side.revenue_at_least is not None:
         pot = amount(side.revenue_at_least, setting.money)
         found.append(f"The expected pot is at least {pot}.")
@@ -109,7 +111,9 @@ def _side(terms: Terms, setting: Setting) -> list[str]:
 
 def _chance(chance: Chance, setting: Setting) -> str:
     party = setting.parties[chance.party]
-    what = f"{setting.options[chance.option]!r} when {party.name} is {party.types[chance.type].label}"
+    what = (
+        f"{setting.options[chance.option]!r} when {party.name} is {party.types[chance.type].label}"
+    )
     return f"The chance of {what} is {_between(chance.at_least, chance.at_most)}."
 
 
