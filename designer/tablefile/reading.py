@@ -1,48 +1,30 @@
-"""Payment tables as CSV, exactly: `transfers.csv` out, and any such file back in.
-
-A table that is read may have its columns and rows in any order, but every profile exactly
-once: a lie can lead to any of them. `probability` and `pot` may be left out; where they are
-there they must agree with the scenario. `decides:` columns may be left out where the scenario
-itself settles every decision.
-
-Rounded tables. An integer, a fraction or a decimal of up to five places is an amount one can
-really pay, and is taken at its word. A decimal of six or more places, or one with an exponent,
-marks the table as rounded; `ReadTable.tolerance` is then the most that rounding every such
-entry by half a unit of its last place can do to a gain or to the pot.
-"""
+"""Payment tables in: any CSV file to a table of the setting, or every mistake in it."""
 
 from __future__ import annotations
 
 import csv
-import io
 import itertools
 import math
 import os
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from pathlib import Path
-from typing import IO, Literal
+from typing import Literal
 
 import numpy as np
 import numpy.typing as npt
 
 from designer import files
-from designer.errors import Mistake, TableError
-from designer.setting.exact import number, text
+from designer.setting.exact import text
 from designer.setting.profiles import strides
 from designer.setting.setting import IntArray, Setting
-from designer.table import Table, held, largest, pot, whole
+from designer.table import Table, held, largest, pot
+from designer.tablefile.cells import Lookup, Mistakes, Numbers
 
 CHUNK = 16_384
-MEMO = 65_536
-SHOWN = 20
 MOST_BITS = 4_000_000_000
 """Bits of all numerators together beyond which a common denominator is refused."""
-ROUNDED_PLACES = 6
-
-_PLAIN = 10**1000
-"""Whole numbers below this are written and read without further thought."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -62,77 +44,6 @@ class ReadTable:
     decisions: Literal["file", "rule", "efficient"]
 
 
-# --- writing ----------------------------------------------------------------------------------
-
-
-def transfers_csv(table: Table, setting: Setting) -> Callable[[IO[bytes]], None]:
-    """Give the table as the content of `transfers.csv`, for `designer.files`.
-
-    One row per profile: `type:NAME` per party, `probability`, `decides:OPTION` per option,
-    `pays:NAME` per party, `pot`; every number exact, an integer or "p/q".
-    """
-
-    def write(file: IO[bytes]) -> None:
-        pots, pot_den = pot(table, setting)
-        lines = io.TextIOWrapper(file, encoding="utf-8", newline="")
-        out = csv.writer(lines, lineterminator="\n")
-        out.writerow(
-            [
-                *(f"type:{party.name}" for party in setting.parties),
-                "probability",
-                *(f"decides:{option}" for option in setting.options),
-                *(f"pays:{party.name}" for party in setting.parties),
-                "pot",
-            ]
-        )
-        weights = setting.weights
-        odds, chances = _Texts(setting.total_weight), _Texts(table.decides_den)
-        amounts, rests = _Texts(table.pays_den), _Texts(pot_den)
-        labels = [[kind.label for kind in party.types] for party in setting.parties]
-        steps = strides(setting.shape)
-        for start in range(0, setting.profiles, CHUNK):
-            part = slice(start, min(start + CHUNK, setting.profiles))
-            numbers = np.arange(part.start, part.stop)
-            columns: list[list[str]] = []
-            for names, step in zip(labels, steps, strict=True):
-                columns.append([names[a] for a in ((numbers // step) % len(names)).tolist()])
-            columns.append(odds.of(weights[part]))
-            columns += [chances.of(table.decides[part, k]) for k in range(len(setting.options))]
-            columns += [amounts.of(row[part]) for row in table.pays]
-            columns.append(rests.of(pots[part]))
-            out.writerows(zip(*columns, strict=True))
-        lines.flush()
-        lines.detach()
-
-    return write
-
-
-class _Texts(dict[int, str]):
-    """The exact text of n/den, remembered for the numerators met lately."""
-
-    def __init__(self, den: int) -> None:
-        super().__init__()
-        self.den = den
-
-    def __missing__(self, top: int) -> str:
-        common = math.gcd(top, self.den)
-        over, under = top // common, self.den // common
-        if max(abs(over), under) >= _PLAIN:
-            written = text(Fraction(over, under))
-        else:
-            written = f"{over}/{under}" if under > 1 else str(over)
-        self[top] = written
-        return written
-
-    def of(self, numerators: IntArray) -> list[str]:
-        if len(self) > MEMO:
-            self.clear()
-        return [self[top] for top in numerators.tolist()]
-
-
-# --- reading ----------------------------------------------------------------------------------
-
-
 def read_table(path: str | os.PathLike[str], setting: Setting) -> ReadTable:
     """Read a payment table for a setting; see the module docstring for what is allowed.
 
@@ -140,7 +51,7 @@ def read_table(path: str | os.PathLike[str], setting: Setting) -> ReadTable:
     file holds.
     """
     files.recover(Path(path).parent)
-    mistakes = _Mistakes(str(path))
+    mistakes = Mistakes(str(path))
     try:
         with open(path, encoding="utf-8-sig", newline="") as lines:
             rows = csv.reader(lines, strict=True)
@@ -168,152 +79,24 @@ def read_table(path: str | os.PathLike[str], setting: Setting) -> ReadTable:
     raise mistakes.error()
 
 
-class _Mistakes:
-    """Collects mistakes: the first few whole, the others by number."""
-
-    def __init__(self, source: str) -> None:
-        self.source = source
-        self.kept: list[Mistake] = []
-        self.more = 0
-
-    def add(self, place: str, found: str, expected: str, remedy: str) -> None:
-        if len(self.kept) < SHOWN:
-            self.kept.append(Mistake(place, found, expected, remedy))
-        else:
-            self.more += 1
-
-    def check(self) -> None:
-        """Raise TableError if there were any."""
-        if self.kept:
-            raise self.error()
-
-    def error(self) -> TableError:
-        kept = list(self.kept)
-        if self.more:
-            kept.append(
-                Mistake(
-                    "the rest of the file",
-                    f"{self.more} more such mistakes",
-                    "none",
-                    "Mend the ones above first: they may have one cause.",
-                )
-            )
-        return TableError(kept, self.source)
-
-
-class _Numbers(dict[str, tuple[int, int] | None]):
-    """A column of exact numbers: cells to (numerator, denominator), None for no number.
-
-    `unit` is the largest last place among the cells that look rounded, 0 if there are none.
-    """
-
-    def __init__(self) -> None:
-        super().__init__()
-        self.unit = Fraction(0)
-        self.tops: list[IntArray] = []
-        self.dens: list[IntArray] = []
-
-    def __missing__(self, cell: str) -> tuple[int, int] | None:
-        over, slash, under = cell.partition("/")
-        if _digits(over.removeprefix("-")) and (not slash or (_digits(under) and under.strip("0"))):
-            # The two commonest forms, without the detour over a Fraction.
-            top, den = int(over), int(under or "1")
-            common = math.gcd(top, den)
-            parsed: tuple[int, int] | None = (top // common, den // common)
-        else:
-            parsed = self._parse(cell)
-        self[cell] = parsed
-        return parsed
-
-    def _parse(self, cell: str) -> tuple[int, int] | None:
-        try:
-            if "0x" not in cell and ("." in cell or "e" in cell.lower()):
-                self.unit = max(self.unit, _last_place(cell))
-            value = number(cell)
-        except (ValueError, ZeroDivisionError, OverflowError):
-            return None
-        return value.numerator, value.denominator
-
-    def read(self, cells: Sequence[str]) -> list[int]:
-        """Take in the next cells; the positions of those that are no numbers."""
-        if len(self) > MEMO:
-            self.clear()
-        parsed = [self[cell] for cell in cells]
-        bad = [at for at, entry in enumerate(parsed) if entry is None]
-        good = [entry or (0, 1) for entry in parsed]
-        self.tops.append(whole([top for top, _ in good]))
-        self.dens.append(whole([den for _, den in good]))
-        return bad
-
-    def settle(self, order: npt.NDArray[np.int64]) -> tuple[IntArray, IntArray]:
-        """All numerators and denominators, by profile."""
-        tops, dens = _joined(self.tops), _joined(self.dens)
-        self.tops, self.dens = [], []
-        return tops[order], dens[order]
-
-
-def _joined(parts: Sequence[IntArray]) -> IntArray:
-    """Chunks as one array: int64 if every one of them is."""
-    if all(part.dtype == np.int64 for part in parts):
-        return np.concatenate([part.astype(np.int64, copy=False) for part in parts])
-    return np.concatenate([part.astype(object, copy=False) for part in parts])
-
-
-def _digits(cell: str) -> bool:
-    return cell.isascii() and cell.isdigit() and len(cell) < 1000
-
-
-def _last_place(cell: str) -> Fraction:
-    """Find the unit of the last place of a decimal that looks rounded, else 0.
-
-    Kept between a 10**-12th and a millionth of the number: floats carry no more than the
-    former, and 1e3 is hardly meant to the nearest thousand.
-    """
-    digits, _, exponent = cell.strip().lower().partition("e")
-    places = len(digits.partition(".")[2])
-    if not exponent and places < ROUNDED_PLACES:
-        return Fraction(0)
-    size = max(Fraction(1), abs(number(cell)))
-    unit = Fraction(10) ** (int(exponent or 0) - places)
-    return min(max(unit, size / 10**12), size / 10**6)
-
-
-class _Lookup(dict[str, int]):
-    """Type cells to positions: by label, else by the number's value; -1 for none."""
-
-    def __init__(self, labels: Sequence[str], numbers: Sequence[Fraction | None]) -> None:
-        super().__init__({label: a for a, label in enumerate(labels)})
-        self.by_value = {value: a for a, value in enumerate(numbers) if value is not None}
-
-    def __missing__(self, cell: str) -> int:
-        stripped = cell.strip()
-        if stripped != cell and stripped in self:
-            return self[stripped]
-        try:
-            return self.by_value.get(number(cell), -1)
-        except (ValueError, ZeroDivisionError, OverflowError):
-            return -1
-
-
 class _Reading:
     """One file on its way to a table."""
 
-    def __init__(self, setting: Setting, header: list[str], mistakes: _Mistakes) -> None:
+    def __init__(self, setting: Setting, header: list[str], mistakes: Mistakes) -> None:
         self.setting = setting
         self.mistakes = mistakes
-        self.names = [name.strip() for name in header]
         self.lookups = {
-            f"type:{party.name}": _Lookup(
-                [kind.label for kind in party.types], [kind.number for kind in party.types]
-            )
+            f"type:{party.name}": Lookup([kind.label for kind in party.types])
             for party in setting.parties
         }
         self.pays = [f"pays:{party.name}" for party in setting.parties]
         self.decides = [f"decides:{option}" for option in setting.options]
+        self.known = [*self.lookups, "probability", *self.decides, *self.pays, "pot"]
+        self.names = [name if name in self.known else name.strip() for name in header]
         self._check_header()
         self.at = {name: place for place, name in enumerate(self.names)}
         self.has_decisions = self.decides[0] in self.at
-        self.numbers = {name: _Numbers() for name in self.names if name not in self.lookups}
+        self.numbers = {name: Numbers() for name in self.names if name not in self.lookups}
         self.profiles: list[npt.NDArray[np.int64]] = []
         self.rows: list[npt.NDArray[np.int64]] = []
 
@@ -327,7 +110,7 @@ class _Reading:
         return self._build(order)
 
     def _check_header(self) -> None:
-        known = [*self.lookups, "probability", *self.decides, *self.pays, "pot"]
+        known = self.known
         counts = {name: self.names.count(name) for name in self.names}
         for name, count in counts.items():
             if name not in known:
