@@ -74,6 +74,8 @@ def audit(
     }
     failing = judge(found, asked)
     output = Output(json=json, quiet=quiet)
+    if failing and (words := _posed_as(table, setting, asked)):
+        output.note(f"The table was made under other demands; hold it to them with {words}")
     if json:
         output.document(
             {**as_json(found), "asked": asked, "satisfied": not failing, "failing": failing}
@@ -110,6 +112,25 @@ def _audited(
         taken = found.pot.least if terms.balance == "ex-post" else found.pot.expected
         return held(path, -taken, tolerance)
     return found
+
+
+def _posed_as(table: Path, setting: Setting, asked: dict[str, str]) -> str:
+    """The options that restore the demands a table was saved under, if they are others.
+
+    Read from the verdict.json beside the table, where that is about the same scenario.
+    """
+    import json
+
+    try:
+        verdict = json.loads((table.parent / "verdict.json").read_bytes())
+        if verdict["scenario"]["digest"] != setting.digest:
+            return ""
+        made = {key: str(verdict["demands"][key]) for key in asked}
+    except (OSError, ValueError, KeyError, TypeError, RecursionError):
+        return ""
+    options = [f"--{key} {word}" for key, word in made.items() if word != asked[key]]
+    known = all(word.replace("-", "").isalpha() for word in made.values())
+    return " ".join(options) if known else ""
 
 
 def _names(asked: dict[str, str], found: Audit) -> list[str]:

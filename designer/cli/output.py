@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import contextlib
 import functools
+import io
 import json
 import os
 import sys
@@ -62,9 +63,9 @@ class Output:
 
     def document(self, document: Mapping[str, Any]) -> None:
         """Print the JSON document, alone on stdout."""
-        write(
-            sys.stdout, json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
-        )
+        text = json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False)
+        write(sys.stdout, f"{text}
+")
 
 
 def console(stream: IO[str]) -> Console:
@@ -80,8 +81,8 @@ def console(stream: IO[str]) -> Console:
 def write(stream: IO[str], text: str) -> None:
     """Write and flush; a reader who has gone away is no error, and stays gone."""
     try:
-        with contextlib.suppress(AttributeError, ValueError):
-            stream.reconfigure(errors="backslashreplace")  # type: ignore[union-attr]
+        if isinstance(stream, io.TextIOWrapper):  # some terminals cannot show every letter
+            stream.reconfigure(errors="backslashreplace")
         stream.write(text)
         stream.flush()
     except BrokenPipeError:

@@ -84,18 +84,14 @@ def derivation(found: Derivation) -> Page:
     table.add_column(justify="right")
     table.add_column(ratio=1, overflow="fold")
     for line in shown:
-        table.add_row(
-            f"{exact.text(line.multiplier)} ×", Text(f"{sentence(line.label, line.folds)}:")
-        )
+        demand = Text(f"{sentence(line.label, line.folds)}:")
+        table.add_row(f"{exact.text(line.multiplier)} ×", demand)
         table.add_row("", Padding(Sum(addends(line.terms), exact.text(line.bound)), (0, 0, 0, 2)))
     page.append(Padding(table, (1, 0, 0, 2)))
     left = len(found.lines) - len(shown)
     if left:
-        page.append(
-            paragraph(
-                f"… and {counted(left, 'line')} more: --save DIR writes the whole to proof.json."
-            )
-        )
+        more = f"… and {left:,} more: --save DIR writes the whole to proof.json."
+        page.append(paragraph(more))
     page.append(paragraph(_sum(found, whole=not left)))
     return page
 
@@ -106,7 +102,7 @@ def _sum(found: Derivation, whole: bool) -> str:
     products = [(line.multiplier, line.bound) for line in found.lines if line.bound]
     if not whole or len(products) < 2:
         return f"Sum: on the left everything cancels, and 0 ≥ {result} is left, which is false."
-    parts = []
+    parts: list[str] = []
     for multiplier, bound in products:
         size = exact.text(abs(bound))
         size = f"({size})" if "/" in size else size

@@ -182,10 +182,7 @@ def _rest(left: int, noun: str, file: str, lines: Sequence[Sequence[str]]) -> Pa
     if any(text.startswith(ROUNDED) for line in lines for text in line):
         notes.append(f"{ROUNDED} marks a rounded number.")
     if left:
-        more = (
-            f"… and {left:,} more {noun if left == 1 else noun + 's'}: --rows N shows more of them"
-        )
-        notes.append(
-            f"{more}, --save DIR writes them all, exact, to {file}." if file else f"{more}."
-        )
+        plural = "" if left == 1 else "s"
+        more = f"… and {left:,} more {noun}{plural}: --rows N shows more of them"
+        notes.append(f"{more}, --save DIR writes all, exact, to {file}." if file else f"{more}.")
     return [paragraph(" ".join(notes))] if notes else []

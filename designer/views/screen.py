@@ -29,10 +29,8 @@ def screen(verdict: Verdict, rows: int | None = None, scenario: bool = True) -> 
 
 def undecided(verdict: Verdict) -> Page:
     """Why nothing was decided, what is settled all the same, and what to try."""
-    page: Page = [
-        heading("UNDECIDED."),
-        paragraph(f"Why: {verdict.reason or 'no reason was given'}."),
-    ]
+    why = verdict.reason or "no reason was given"
+    page: Page = [heading("UNDECIDED."), paragraph(f"Why: {why}.")]
     settled = goal_lines(verdict)
     if settled:
         page += [paragraph(f"Before that, {counted(len(settled), 'goal')} had a value:")]

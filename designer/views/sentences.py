@@ -55,9 +55,9 @@ def _participation(terms: Terms, setting: Setting) -> str:
         return "Not asked: every party is in."
     short = f" by more than {amount(terms.shortfall, setting.money)}" if terms.shortfall else ""
     text = {
-        "ex-ante": f"Before it knows its type, no party expects to lose{short} against staying out.",
-        "interim": f"Knowing its type, no party expects to lose{short} against staying out.",
-        "ex-post": f"When all is known, no party has lost{short} against staying out.",
+        "ex-ante": f"Not yet knowing its type, no party expects to lose{short} by taking part.",
+        "interim": f"Knowing its type, no party expects to lose{short} by taking part.",
+        "ex-post": f"When all is known, no party has lost{short} by taking part.",
     }[terms.ir]
     return text + _excused(terms.compelled, "is compelled", "are compelled")
 
@@ -100,9 +100,8 @@ def _limits(terms: Terms, setting: Setting) -> list[str]:
 def _side(terms: Terms, setting: Setting) -> list[str]:
     side, found = terms.side, []
     if side.welfare_at_least is not None:
-        found.append(
-            f"Expected welfare is at least {amount(side.welfare_at_least, setting.money)}."
-        )
+        welfare = amount(side.welfare_at_least, setting.money)
+        found.append(f"Expected welfare is at least {welfare}.")
     if side.revenue_at_least is not None:
         pot = amount(side.revenue_at_least, setting.money)
         found.append(f"The expected pot is at least {pot}.")
@@ -110,11 +109,9 @@ def _side(terms: Terms, setting: Setting) -> list[str]:
 
 
 def _chance(chance: Chance, setting: Setting) -> str:
-    party = setting.parties[chance.party]
-    what = (
-        f"{setting.options[chance.option]!r} when {party.name} is {party.types[chance.type].label}"
-    )
-    return f"The chance of {what} is {_between(chance.at_least, chance.at_most)}."
+    party, option = setting.parties[chance.party], setting.options[chance.option]
+    when = f"{party.name} is {party.types[chance.type].label}"
+    return f"When {when}, the chance of {option} is {_between(chance.at_least, chance.at_most)}."
 
 
 def _between(low: Fraction | None, high: Fraction | None) -> str:
