@@ -64,8 +64,7 @@ class Output:
     def document(self, document: Mapping[str, Any]) -> None:
         """Print the JSON document, alone on stdout."""
         text = json.dumps(document, indent=2, ensure_ascii=False, allow_nan=False)
-        write(sys.stdout, f"{text}
-")
+        write(sys.stdout, f"{text}\n")
 
 
 def console(stream: IO[str]) -> Console:
