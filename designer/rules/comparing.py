@@ -86,16 +86,8 @@ def compare(
     for at, entry in enumerate(tables):
         name, given = entry if isinstance(entry, tuple) else (_name(entry, at), entry)
         names.append(name)
-        found.append(judged(setting, _read(given, setting), terms))
+        found.append(judged(setting, given, terms))
     return Comparison(setting, terms, _distinct(names), tuple(found), _changes(found))
-
-
-def _read(given: Given, setting: Setting) -> Table:
-    if isinstance(given, Table):
-        return given
-    from designer.tablefile import read_table
-
-    return read_table(given, setting).table
 
 
 def _name(given: Given, at: int) -> str:

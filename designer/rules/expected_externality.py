@@ -22,6 +22,7 @@ revelation under incomplete information (both from memory).
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from fractions import Fraction
 
 from designer.rules import checks
@@ -49,18 +50,27 @@ def externalities(setting: Setting, choice: IntArray) -> list[Amounts]:
     ]
 
 
+def redistributed(brought: Sequence[Amounts]) -> list[Amounts]:
+    """Pay each what she brings, at the others' expense: -g_i + sum over j != i of g_j/(n-1).
+
+    The table of weights, -1 on one's own and 1/(n-1) on the others', has columns that add up
+    to 0, which is why the payments do.
+    """
+    n = len(brought)
+    everyone = total(brought).times(Fraction(1, n - 1))
+    # -g_i + sum over j != i of g_j/(n-1)  =  everyone - g_i (1 + 1/(n-1))
+    return [everyone - gains.times(Fraction(n, n - 1)) for gains in brought]
+
+
 def payments(setting: Setting, choice: IntArray) -> list[Amounts]:
     """Find t_i over all profiles: (N,) each, adding up to the outlay in every one."""
-    n = len(setting.parties)
     due = chosen(share(setting), choice)
-    if n == 1:
+    if len(setting.parties) == 1:
         return [due]
     brought = [
         by_profile(setting, i, gains) for i, gains in enumerate(externalities(setting, choice))
     ]
-    everyone = total(brought).times(Fraction(1, n - 1))
-    # -g_i + sum over j != i of g_j/(n-1)  =  everyone - g_i (1 + 1/(n-1))
-    return [due + everyone - gains.times(Fraction(n, n - 1)) for gains in brought]
+    return [due + part for part in redistributed(brought)]
 
 
 def alone(setting: Setting) -> Refusal | None:

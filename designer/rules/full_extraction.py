@@ -31,6 +31,7 @@ from designer.rules.profiles import (
     certain,
     chosen,
     efficient,
+    independent,
     outside,
     split,
     total_worth,
@@ -65,7 +66,9 @@ def spanning(setting: Setting) -> Refusal | None:
                 "beliefs about the others that are linearly independent across types",
                 f"{party.name}'s, of rank {rank} for {party.size} types",
                 "Independent types never meet it: use optimal-auction or "
-                "revenue-greatest-efficient, or ask `designer pose --goal revenue`.",
+                "revenue-greatest-efficient."
+                if independent(setting)
+                else "Ask `designer pose --goal revenue` how much can be had all the same.",
             )
     return None
 

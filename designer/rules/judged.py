@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
@@ -92,31 +93,13 @@ class Judged:
         )
 
 
-def judged(setting: Setting, table: Table, terms: Terms) -> Judged:
-    """Audit a table and hold it to the terms."""
-    found = audit(
-        setting,
-        table,
-        subsidy=terms.subsidy,
-        slack=terms.slack,
-        shortfall=terms.shortfall,
-        compelled=terms.compelled,
-        limits=terms.limits,
-        side=terms.side,
-    )
+def judged(setting: Setting, table: Table | str | os.PathLike[str], terms: Terms) -> Judged:
+    """Audit a table, or the CSV file of one, and hold it to the terms."""
+    found = _audited(setting, table, terms, terms.subsidy)
     if "outside-money" in terms.goals and not terms.subsidy:
         # The outside money is what the goal leaves open: a table may take what it needs.
         needed = found.pot.least if terms.balance == "ex-post" else found.pot.expected
-        found = audit(
-            setting,
-            table,
-            subsidy=-needed,
-            slack=terms.slack,
-            shortfall=terms.shortfall,
-            compelled=terms.compelled,
-            limits=terms.limits,
-            side=terms.side,
-        )
+        found = _audited(setting, table, terms, -needed)
     asked = {
         "decision": terms.decision,
         "ic": terms.ic,
@@ -125,3 +108,18 @@ def judged(setting: Setting, table: Table, terms: Terms) -> Judged:
         "budget": terms.budget,
     }
     return Judged(found, tuple(judge(found, asked)))
+
+
+def _audited(
+    setting: Setting, table: Table | str | os.PathLike[str], terms: Terms, subsidy: Fraction
+) -> Audit:
+    return audit(
+        setting,
+        table,
+        subsidy=subsidy,
+        slack=terms.slack,
+        shortfall=terms.shortfall,
+        compelled=terms.compelled,
+        limits=terms.limits,
+        side=terms.side,
+    )

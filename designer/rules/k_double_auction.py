@@ -2,9 +2,9 @@
 
     price = k v + (1 - k) c with k = 1/2, on the buyer's word v and the seller's word c
 
-Bids are not truths here: both shade. On a continuum of uniform worths the shading has a linear
-equilibrium whose truthful counterpart is linear-double-auction; on a grid no exact counterpart
-is known in closed form, and this table shows what the bare price rule loses to lies.
+Bids are not truths here: both shade, and the audit shows what a lie wins. For uniform worths the
+shading has a linear equilibrium, whose truthful counterpart is linear-double-auction; for other
+priors none is known in closed form, and second-best takes its place.
 
 Source: K. Chatterjee and W. Samuelson (1983), Bargaining under incomplete information,
 Operations Research 31:835-851 (from memory).
@@ -22,6 +22,11 @@ from designer.rules.profiles import TIES, certain, efficient
 from designer.setting.setting import Setting
 from designer.table import Table
 
+COUNTERPART = (
+    "Its truthful counterpart is linear-double-auction where worths are uniform on one even "
+    "grid; for other priors none is known in closed form."
+)
+
 
 def build(setting: Setting) -> Built:
     """Build trade at the middle of the two reports."""
@@ -36,7 +41,7 @@ def build(setting: Setting) -> Built:
     traded = (choice == found.on).astype(int)
     price = Amounts(middle.num * traded, middle.den).times(Fraction(1, 2))
     pays = [price, price.times(-1)] if buys == 0 else [price.times(-1), price]
-    return Built(Table(certain(setting, choice), 1, *stacked(pays)), (TIES,))
+    return Built(Table(certain(setting, choice), 1, *stacked(pays)), (TIES, COUNTERPART))
 
 
 RULE = Rule(

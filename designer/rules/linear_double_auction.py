@@ -5,9 +5,10 @@ With both worths uniform on [lo, hi], the linear equilibrium of the k = 1/2 doub
     buyer bids 2v/3 + lo/4 + hi/12 ,   seller asks 2c/3 + lo/12 + hi/4
 
 so that, asked for worths directly, one trades where v - c >= (hi - lo)/4 at the price
-(v + c)/3 + (lo + hi)/6. It is honest on the continuum, and almost so on an even grid, which is
-read as the midpoints of equal steps: the audit shows how nearly. On the continuum it is the
-second best as well.
+(v + c)/3 + (lo + hi)/6. An even grid is read as the midpoints of equal steps. The source speaks
+of the continuum, where this is the second best as well; that the grid's table is honest too,
+to the last fraction, is what the audit finds at every size tried. On the grid, second-best does
+a little better.
 
 Source: K. Chatterjee and W. Samuelson (1983), Bargaining under incomplete information,
 Operations Research 31:835-851 (from memory).

@@ -101,8 +101,8 @@ RULE = Rule(
         checks.private,
         checks.independent_types,
         checks.at_least(2),
-        checks.pure_transfer,
         owned,
+        checks.pure_transfer,
     ),
     build=build,
 )

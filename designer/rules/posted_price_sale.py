@@ -73,6 +73,6 @@ RULE = Rule(
     name="posted-price-sale",
     source="Riley and Zeckhauser 1983",
     assumes="identical units, one to a party, and a designer who sells them",
-    checks=(checks.tabulated, checks.private, checks.pure_transfer, alike, any_set),
+    checks=(checks.tabulated, checks.private, alike, any_set, checks.pure_transfer),
     build=build,
 )

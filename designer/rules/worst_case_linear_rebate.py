@@ -99,6 +99,6 @@ RULE = Rule(
     name="worst-case-linear-rebate",
     source="Moulin 2009, Guo and Conitzer 2009",
     assumes="identical units, one to a party, two parties more than units",
-    checks=(checks.tabulated, checks.private, checks.pure_transfer, alike, more_parties),
+    checks=(checks.tabulated, checks.private, alike, more_parties, checks.pure_transfer),
     build=build,
 )

@@ -36,7 +36,7 @@ def compared(found: Comparison) -> Page:
     for name, table in rows:
         breaks = "; ".join(name_of(demand) for demand in table.failing)
         asked = f"Asked and broken: {breaks}." if breaks else "Does all that is asked."
-        words = f"{manners(table)} {asked} {worst(table, money)}"
+        words = f"{manners(table, money)} {asked} {worst(table, money)}"
         page += [paragraph(name), paragraph(words.rstrip(), 2 * INDENT)]
     page.append(caution())
     return page

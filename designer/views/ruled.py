@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+from designer.rules.profiles import TIES
 from designer.rules.report import RuleResult, RulesReport
 from designer.views.amounts import amount
 from designer.views.audited import name_of
@@ -31,6 +32,8 @@ def ruled(report: RulesReport) -> Page:
     applied = [result for result in report.results if result.applies]
     if applied:
         page.append(heading("Rule by rule"))
+    if any(TIES in result.notes for result in applied):
+        page.append(paragraph(f"{TIES} Where a rule does otherwise, it says so."))
     for result in applied:
         page += _rule(result, money)
     refused = [result for result in report.results if not result.applies]
@@ -53,10 +56,10 @@ def _rule(result: RuleResult, money: str) -> Page:
     breaks = "; ".join(name_of(name) for name in found.failing)
     words = [
         f"Assumes {result.rule.assumes}.",
-        manners(found),
+        manners(found, money),
         f"Asked and broken: {breaks}." if breaks else "Does all that is asked.",
         worst(found, money),
-        *result.notes,
+        *(note for note in result.notes if note != TIES),
     ]
     return [
         paragraph(_title(result)),
