@@ -65,7 +65,11 @@ def export(
         status = model.writeModel(str(written))
         if int(status) == -1 or not written.exists():
             raise _mistake(str(path), "a program HiGHS can write", "Try the other format.")
-        write_atomic(path, written.read_bytes())
+        content = written.read_bytes()
+    if path.suffix.lower() == ".lp":
+        # HiGHS heads sections that hold nothing; GLPK reads an empty "semi" as a column
+        content = re.sub(rb"(?m)^(bin|gen|semi)\n(?=(bin|gen|semi|end)$)", b"", content)
+    write_atomic(path, content)
 
 
 def safe_names(names: Iterable[str], first: str) -> list[str]:

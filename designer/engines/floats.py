@@ -150,7 +150,7 @@ def _middle(exponents: Exponents, group: npt.NDArray[np.int64], size: int) -> Ex
     high = np.full(size, -(2**40), dtype=np.int64)
     np.minimum.at(low, group, exponents)
     np.maximum.at(high, group, exponents)
-    middle = np.minimum(-((low + high) // 2), MOST - high)
+    middle: Exponents = np.minimum(-((low + high) // 2), MOST - high)
     middle[low > high] = 0
     return middle
 

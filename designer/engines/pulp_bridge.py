@@ -10,7 +10,7 @@ import math
 import time
 import warnings
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -26,8 +26,8 @@ BOX = 2.0**20
 """First box put around free columns for engines that need one, in scaled units."""
 WIDER = 2.0**7
 """Each further box is wider by this much."""
-BOXES = 4
-"""Boxes tried before the engine's word is called unclear."""
+BOXES = 3
+"""Boxes tried before 'infeasible' is called unclear."""
 
 NEEDS_BOX = ("CBC", "COIN", "CYLP")
 """Engines whose dual simplex invents bounds of 1e10 on free columns and may stop there."""
@@ -84,27 +84,24 @@ class PulpEngine:
         basis: Basis | None = None,
         tolerance: float | None = None,
     ) -> Report:
-        """Return the engine's answer to `lp`; `basis` and `tolerance` are not passed on."""
+        """Return the engine's answer to `lp`; `basis` and `tolerance` are not passed on.
+
+        A point on the side of a box is passed on as a hint like any other; only where a box
+        leaves nothing feasible is a wider one tried.
+        """
         program = floats(lp)
         free = ~np.isfinite(program.col_lo) | ~np.isfinite(program.col_hi)
         boxed = any(word in self.solver.upper() for word in NEEDS_BOX) and bool(free.any())
-        box, seconds = BOX if boxed else math.inf, 0.0
-        report = Report("failed", self.name)
-        for _ in range(BOXES if boxed else 1):
-            report = self._once(program, watch, box)
+        if not boxed:
+            return self._once(program, watch, math.inf)
+        seconds, report = 0.0, Report("failed", self.name)
+        for k in range(BOXES):
+            report = self._once(program, watch, BOX * WIDER**k)
             seconds += report.seconds
-            if report.status != "optimal" or report.x is None:
-                break
-            if 4 * float(np.abs(program.scaled(report.x)[free]).max(initial=0.0)) <= box:
-                break
-            box *= WIDER
-        status: Said = report.status
-        if boxed and status == "infeasible":
-            status = "unclear"  # the box may be what clashes
-        elif boxed and status == "optimal" and report.x is not None:
-            far = float(np.abs(program.scaled(report.x)[free]).max(initial=0.0))
-            status = "optimal" if 4 * far <= box else "unclear"
-        return Report(status, self.name, report.x, seconds=seconds, message=report.message)
+            if report.status != "infeasible":
+                return replace(report, seconds=seconds)
+        # the boxes may be what leaves nothing
+        return replace(report, status="unclear", seconds=seconds)
 
     def _once(self, program: FloatProgram, watch: Watch, box: float) -> Report:
         import pulp

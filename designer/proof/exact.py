@@ -52,32 +52,32 @@ class Exact:
 
     @cached_property
     def matrix(self) -> Matrix:
-        """A."""
+        """The matrix A."""
         return Matrix(self.lp.indptr, self.lp.indices, narrow(self.lp.data), self.lp.columns)
 
     @cached_property
     def cost(self) -> IntArray:
-        """c of the min problem."""
+        """Cost c of the min problem."""
         return narrow(-self.lp.cost if self.lp.sense == "max" else self.lp.cost)
 
     @cached_property
     def row_lo(self) -> Side:
-        """L."""
+        """Lower row bounds L."""
         return Side(scaled(narrow(self.lp.row_lo.num), self.lp.col_den), self.lp.row_lo.finite)
 
     @cached_property
     def row_hi(self) -> Side:
-        """U."""
+        """Upper row bounds U."""
         return Side(scaled(narrow(self.lp.row_hi.num), self.lp.col_den), self.lp.row_hi.finite)
 
     @cached_property
     def col_lo(self) -> Side:
-        """l."""
+        """Lower bounds l."""
         return Side(narrow(self.lp.col_lo.num), self.lp.col_lo.finite)
 
     @cached_property
     def col_hi(self) -> Side:
-        """u."""
+        """Upper bounds u."""
         return Side(narrow(self.lp.col_hi.num), self.lp.col_hi.finite)
 
     # -- checks ---------------------------------------------------------------------
@@ -150,6 +150,14 @@ class Exact:
         """Give y as it is: a Farkas vector has no unit, any positive multiple is one."""
         common = gcd(*y.num.tolist()) or 1
         return Vector.over(1, [number // common for number in y.num.tolist()])
+
+    def approximate(self, x: Point) -> float:
+        """The program's objective at X as a float, infinite beyond their range."""
+        value = self.value(x)
+        try:
+            return float(value)
+        except OverflowError:
+            return inf if value > 0 else -inf
 
     def rough_bound(self, cost: float) -> float:
         """Turn an engine's bound on the integer cost into the program's own value."""

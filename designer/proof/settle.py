@@ -18,6 +18,8 @@ from designer.proof.pivot import drop_added, pivot, slack_basis
 from designer.proof.sparse import dot
 from designer.setting.setting import IntArray
 
+AGREE = 1e-5
+"""Relative difference of two optima that is worth a word."""
 STRICT = 1e-10
 """Feasibility tolerances of the warm restart, the smallest HiGHS accepts."""
 MAGNIFY = 3
@@ -99,7 +101,7 @@ def conclude(
     if report.status == "optimal" and report.basis is not None:
         found = repair(exact, report.basis, watch, effort)
         if found is not None:
-            return found
+            return replace(found, reason=_disagreement(exact, first, found))
 
     # No optimum seen, or none that holds: first whether there is a feasible point at all.
     feasible = find_feasible(lp, watch, effort, scale)
@@ -224,6 +226,16 @@ def _pivoted(exact: Exact, basis: Basis, watch: Watch, effort: Effort, cap: int)
         if ended.corner is not None and ended.corner.optimal:
             return Settled(corner=ended.corner)
     return None
+
+
+def _disagreement(exact: Exact, report: Report, found: Settled) -> str:
+    """Say when an engine's optimum is not the proved one; '' when they agree."""
+    if report.x is None or found.corner is None or found.ray is not None:
+        return ""
+    said, value = exact.rough_value(report.x), exact.approximate(found.corner.x)
+    if abs(said - value) <= AGREE * max(1.0, abs(value)):
+        return ""
+    return f"{report.engine} stopped at {said:.9g}; the proved optimum is {value:.9g}"
 
 
 def _overruled(report: Report) -> str:

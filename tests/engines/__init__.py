@@ -1,0 +1,1 @@
+"""Tests of the engine adapters, and programs to test with."""

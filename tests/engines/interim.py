@@ -61,9 +61,10 @@ def interim_program(
         for i in range(n):
             mass[i][p[i]] += w
             wins[i][p[i]][p[i]] += w * built
-    for i, a in ((i, a) for i in range(n) for a in range(shape[i])):
-        entries = [(i * number + k, joint[k]) for k, p in enumerate(profiles) if p[i] == a]
-        row([*entries, (interim + int(start[i]) + a, -mass[i][a])], 0, 0)
+    for i in range(n):
+        for a in range(shape[i]):
+            entries = [(i * number + k, joint[k]) for k, p in enumerate(profiles) if p[i] == a]
+            row([*entries, (interim + int(start[i]) + a, -mass[i][a])], 0, 0)
     correlated = weights is None
     position = {p: k for k, p in enumerate(profiles)}
     for i in range(n):
@@ -88,14 +89,14 @@ def interim_program(
                     # the same sum is mass(a) m_i(b)
                     told = [(interim + int(start[i]) + b, mass[i][a])]
                 row([(interim + int(start[i]) + a, -mass[i][a]), *told], gain, None)
-    p, q = subsidy or (0, 1)
+    paid, q = subsidy or (0, 1)
     for k, built in enumerate(build):
         target = built * outlay * q
         entries = [(i * number + k, q) for i in range(n)]
         if subsidy is None:
             row([*entries, (money, q)], target, target)
         else:
-            row(entries, target - p, target - p)
+            row(entries, target - paid, target - paid)
     cost = np.zeros(columns, dtype=np.int64)
     cost[money] = int(goal == "subsidy" and subsidy is None)
     free = Bound(np.zeros(columns, dtype=np.int64), np.zeros(columns, dtype=bool))

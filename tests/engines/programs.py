@@ -70,7 +70,7 @@ def program(
 class Plain:
     """A program as lists of Fractions, to be minimised."""
 
-    def __init__(self, lp: LinearProgram) -> None:
+    def __init__(self, lp: LinearProgram) -> None:  # noqa: D107 - see the class
         self.n, self.m = lp.columns, lp.rows
         self.rows = [[Fraction(0)] * self.n for _ in range(self.m)]
         for i in range(self.m):

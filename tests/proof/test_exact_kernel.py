@@ -1,5 +1,7 @@
 """Integer systems solved exactly three ways, held against each other and against FLINT."""
 
+# ruff: noqa: S311 - repeatable test data, nothing secret
+
 from __future__ import annotations
 
 import random
