@@ -157,7 +157,7 @@ def stages(value: object, whole: Program, verdict: str) -> list[Stage]:
         where, extra = f"stages[{s}]", []
         if verdict == "possible" or (verdict == "unbounded" and s < len(value) - 1):
             reasons = [k for k in ("dual", "tree") if isinstance(entry, dict) and k in entry]
-            extra = ["value", "pin", *reasons[:1]]
+            extra = ["value", *reasons[:1]]
         stage = keys(entry, where, *_STAGE, *extra)
         goal, sense, before, above = stage["goal"], stage["sense"], columns, rows
         if not isinstance(goal, str) or not goal.isprintable() or not 1 <= len(goal) <= 60:

@@ -98,24 +98,18 @@ def compose(
         raise ValueError(f"no proof to write for the verdict {verdict!r}")
     valued = len(program.stages) - (verdict == "unbounded")
     for s in range(valued):
-        document["stages"][s] |= _found(
-            goals[s], program.stages[s], last=s == len(program.stages) - 1
-        )
+        document["stages"][s] |= _found(goals[s])
     document["primal"] = plain_vector(primal)
     if ray is not None and verdict == "unbounded":
         document["ray"] = plain_vector(ray)
     return document
 
 
-def _found(goal: GoalResult, stage: Stage, last: bool) -> dict[str, Any]:
-    """What is claimed of a stage: its value, its pin and why nothing does better."""
+def _found(goal: GoalResult) -> dict[str, Any]:
+    """What is claimed of a stage: its value and why nothing does better."""
     if goal.value is None:
         raise ValueError(f"the goal {goal.goal!r} has no value")
-    constant = not any(stage.cost.tolist())
-    found: dict[str, Any] = {
-        "value": text(goal.value),
-        "pin": None if last or constant else goal.pin,
-    }
+    found: dict[str, Any] = {"value": text(goal.value)}
     if goal.proved and goal.tree is not None:
         found["tree"] = plain_tree(goal.tree, "dual")
     elif goal.proved and goal.dual is not None:

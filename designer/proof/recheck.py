@@ -8,6 +8,7 @@ between products of integers. Nothing but the standard library is needed.
 
 from __future__ import annotations
 
+from collections import defaultdict
 from dataclasses import dataclass
 from operator import mul
 
@@ -62,7 +63,7 @@ def recheck(document: object, *, limit: int = LIMIT) -> Finding:
             claims.append(_table(program, primal, meter))
             kept = _settled(program, stages, primal, meter, claims, unclaimed)
             if verdict == "unbounded":
-                claims.append(_ray(program, stages[-1], top["ray"], meter) + kept)
+                claims.append(_ray(program, stages, top["ray"], meter) + kept)
     except Fault as fault:
         return Finding(False, verdict, (), (str(fault),))
     return Finding(True, verdict, tuple(claims), (), tuple(unclaimed))
@@ -79,19 +80,25 @@ class _Meter:
         need(self.left >= 0, "the document asks for more arithmetic than the checker allows")
 
 
+def _zeros(columns: int, used: int) -> list[int] | defaultdict[int, int]:
+    """Zero for each column; sparse where a document only claims to have that many columns."""
+    return [0] * columns if columns <= used else defaultdict(int)
+
+
 def _keeps(
     program: Program, rows: int, v: Vector, scale: int, meter: _Meter, where: str
-) -> dict[int, int]:
+) -> list[int] | defaultdict[int, int]:
     """Numerators of v by column, once v keeps `scale` times every bound of these rows.
 
     `scale` is v's own denominator for a table, and 0 for a ray: where a bound is, a ray must
     not cross 0.
     """
     row_lo, row_hi, col_lo, col_hi = program.bounds
-    products = len(program.data) + sum(map(len, program.bounds))
+    products = len(program.data) + len(v.idx) + sum(map(len, program.bounds))
     meter.spend(products, v.words, program.words)
-    at = dict.fromkeys(program.indices, 0)
-    at.update(zip(v.idx, v.num, strict=True))
+    at = _zeros(program.columns, products)
+    for j, number in zip(v.idx, v.num, strict=True):
+        at[j] = number
     for i in range(rows):
         part = slice(program.indptr[i], program.indptr[i + 1])
         level = sum(map(mul, program.data[part], map(at.__getitem__, program.indices[part])))
@@ -100,7 +107,7 @@ def _keeps(
             raise Fault(f"{where}: row {i} is not kept")
     for sign, bounds in ((1, col_lo), (-1, col_hi)):
         for j, side in bounds.items():
-            kept = sign * (at.get(j, 0) * program.col_den - side * scale) >= 0
+            kept = sign * (at[j] * program.col_den - side * scale) >= 0
             need(kept, f"{where}: a bound of column {j} is not kept")
     return at
 
@@ -108,7 +115,7 @@ def _keeps(
 def _table(program: Program, primal: Vector, meter: _Meter) -> str:
     """Section 7: the table is within every row, bound and whole-number demand."""
     at = _keeps(program, program.rows, primal, primal.den, meter, "primal")
-    whole = not any(at.get(j, 0) % primal.den for j in program.integer)
+    whole = not any(at[j] % primal.den for j in program.integer)
     need(whole, "primal: a whole-number column is not whole")
     columns = f" and its {len(program.integer)} whole-number columns" if program.integer else ""
     return f"the table meets all {program.rows} rows, all bounds{columns}"
@@ -129,7 +136,11 @@ def _settled(
     claims: list[str],
     unclaimed: list[str],
 ) -> str:
-    """Each stage's value, its pin in what follows, and why nothing does better; what is pinned."""
+    """Each stage's value and why nothing does better (section 5); the values in words.
+
+    A later stage's certificate need not look at the earlier values: it bounds all tables of its
+    prefix, so also those among them with the earlier values, one of which is the primal.
+    """
     kept = ""
     for s, stage in enumerate(stages):
         if "value" not in stage.found:  # the last stage of an unbounded program
@@ -139,7 +150,6 @@ def _settled(
         net, over = p * w - u * q, q * w  # the value without the constant: net / over
         reached = _at(cost, primal, meter) * over == net * cost.den * primal.den
         need(reached, f"{where}: the goal at primal is not the stated value")
-        _pinned(program, stage, stages[s + 1 : s + 2], net, over, where)
         is_open = "tree" not in found and "dual" not in found
         if not is_open:
             nodes = found["tree"] if "tree" in found else [{"dual": found["dual"]}]
@@ -151,25 +161,6 @@ def _settled(
             unclaimed += [stage.goal] * is_open
             kept += f"{' and' if kept else ' among those with'} {stage.goal} = {value}"
     return kept
-
-
-def _pinned(
-    program: Program, stage: Stage, after: list[Stage], net: int, over: int, where: str
-) -> None:
-    """Section 5: a row of the next prefix says that cost . x = net / over."""
-    pin, cost = stage.found["pin"], stage.cost
-    if not after or not cost.idx:
-        need(pin is None, f"{where}.pin: nothing to pin, so null is expected")
-        return
-    i = decode.count(pin, f"{where}.pin", after[0].rows)
-    part = slice(program.indptr[i], program.indptr[i + 1])
-    row, bound = program.data[part], program.bounds[0].get(i)
-    if program.indices[part] != cost.idx or bound is None or bound != program.bounds[1].get(i):
-        raise Fault(f"{where}.pin: row {i} is no equation over the columns of the goal")
-    k, c = row[0], cost.num[0]  # row = (k / c) . cost numerators
-    equal = all(r * c == k * n for r, n in zip(row, cost.num, strict=True))
-    keeps = equal and bound * c * over == k * cost.den * net
-    need(keeps, f"{where}.pin: row {i} does not keep the stated value")
 
 
 def _tree(
@@ -257,7 +248,9 @@ def _floor(
     indptr, den = program.indptr, cost.den * program.col_den
     products = sum(indptr[i + 1] - indptr[i] for i in y.idx) + len(y.idx) + len(cost.idx)
     meter.spend(products, y.words + cost.words, program.words)
-    reduced = {j: sign * c * y.den for j, c in zip(cost.idx, cost.num, strict=True)}
+    reduced = _zeros(program.columns, products)
+    for j, c in zip(cost.idx, cost.num, strict=True):
+        reduced[j] = sign * c * y.den
     floor = 0
     for i, weight in zip(y.idx, y.num, strict=True):
         side = program.bounds[0 if weight > 0 else 1].get(i)
@@ -266,8 +259,9 @@ def _floor(
         floor += weight * side * den
         part, times = slice(indptr[i], indptr[i + 1]), weight * cost.den
         for j, entry in zip(program.indices[part], program.data[part], strict=True):
-            reduced[j] = reduced.get(j, 0) - times * entry
-    for j, d in reduced.items():  # d is over cost.den * y.den
+            reduced[j] -= times * entry
+    columns = enumerate(reduced) if isinstance(reduced, list) else reduced.items()
+    for j, d in columns:  # d is over cost.den * y.den
         if d:
             bound = box[0 if d > 0 else 1].get(j)
             if bound is None:
@@ -276,9 +270,12 @@ def _floor(
     return floor, den * y.den
 
 
-def _ray(program: Program, stage: Stage, value: object, meter: _Meter) -> str:
-    """Section 7: from any table, going along the ray keeps everything and improves the goal."""
+def _ray(program: Program, stages: list[Stage], value: object, meter: _Meter) -> str:
+    """Section 7: along the ray every bound and earlier goal is kept, and the last improves."""
+    *earlier, stage = stages
     ray = decode.vector(value, stage.columns, "ray")
     _keeps(program, stage.rows, ray, 0, meter, "ray")
+    for before in earlier:
+        need(_at(before.cost, ray, meter) == 0, f"ray: it changes the goal {before.goal}")
     need(_at(stage.cost, ray, meter) * stage.sign < 0, "ray: it does not improve the goal")
     return f"{stage.goal} improves without end along the ray"

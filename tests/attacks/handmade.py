@@ -110,7 +110,7 @@ def mixture() -> dict[str, Any]:
     return document(
         "possible",
         program(rows, [(0, 3), (0, None)]),
-        [stage("revenue", "max", (2, 2), {0: 3, 1: 2}, value="11", pin=None, dual=vector({0: -2}))],
+        [stage("revenue", "max", (2, 2), {0: 3, 1: 2}, value="11", dual=vector({0: -2}))],
         primal=vector({0: 3, 1: 1}),
     )
 
@@ -133,7 +133,6 @@ def diet() -> dict[str, Any]:
                 den=6,
                 const="1",
                 value="9/4",
-                pin=None,
                 dual=vector({0: 1}, 3),
             )
         ],
@@ -155,7 +154,7 @@ def endless() -> dict[str, Any]:
 def two_goals() -> dict[str, Any]:
     """Most of (x + y) / 2 with x + y <= 2; then the smallest cap z on x and on y.
 
-    Row 1 pins x + y = 2, written as 2x + 2y = 4. Adding z - x >= 0, z - y >= 0: 2z >= 2.
+    Row 1 keeps x + y = 2, written as 2x + 2y = 4. Adding z - x >= 0, z - y >= 0: 2z >= 2.
     """
     rows: list[Row] = [
         ({0: 1, 1: 1}, None, 2),
@@ -163,12 +162,8 @@ def two_goals() -> dict[str, Any]:
         ({0: -1, 2: 1}, 0, None),
         ({1: -1, 2: 1}, 0, None),
     ]
-    first = stage(
-        "welfare", "max", (1, 2), {0: 1, 1: 1}, den=2, value="1", pin=1, dual=vector({0: -1}, 2)
-    )
-    second = stage(
-        "swing", "min", (4, 3), {2: 1}, value="1", pin=None, dual=vector({1: 1, 2: 2, 3: 2}, 4)
-    )
+    first = stage("welfare", "max", (1, 2), {0: 1, 1: 1}, den=2, value="1", dual=vector({0: -1}, 2))
+    second = stage("swing", "min", (4, 3), {2: 1}, value="1", dual=vector({1: 1, 2: 2, 3: 2}, 4))
     return document(
         "possible",
         program(rows, [(0, None), (0, None), (None, None)]),
@@ -180,7 +175,7 @@ def two_goals() -> dict[str, Any]:
 def first_bounded_then_endless() -> dict[str, Any]:
     """Most of x with x <= 3, pinned; then most of y, which nothing holds."""
     rows: list[Row] = [({0: 1}, None, 3), ({0: -1}, -3, -3), ({0: 1, 1: -1}, None, 5)]
-    first = stage("floor", "max", (1, 1), {0: 1}, value="3", pin=1, dual=vector({0: -1}))
+    first = stage("floor", "max", (1, 1), {0: 1}, value="3", dual=vector({0: -1}))
     return document(
         "unbounded",
         program(rows, [(0, None), (None, None)]),
@@ -205,7 +200,7 @@ def knapsack() -> dict[str, Any]:
     return document(
         "possible",
         program([({0: 2, 1: 2}, None, 3)], [(0, 1), (0, 1)], integer=[0, 1]),
-        [stage("welfare", "max", (1, 2), {0: 1, 1: 1}, value="1", pin=None, tree=tree)],
+        [stage("welfare", "max", (1, 2), {0: 1, 1: 1}, value="1", tree=tree)],
         primal=vector({1: 1}),
     )
 
@@ -245,15 +240,15 @@ def unsettled() -> dict[str, Any]:
     return document(
         "possible",
         program([({0: 1}, 0, 2)], [(None, None)], integer=[0]),
-        [stage("revenue", "max", (1, 1), {0: 1}, value="1", pin=None)],
+        [stage("revenue", "max", (1, 1), {0: 1}, value="1")],
         primal=vector({0: 1}),
     )
 
 
 def nothing_asked() -> dict[str, Any]:
-    """A goal that is constant, followed by another: nothing to pin."""
-    first = stage("any", "min", (1, 1), {}, const="2", value="2", pin=None, dual=vector({}))
-    second = stage("floor", "min", (1, 1), {0: 1}, value="1/2", pin=None, dual=vector({0: 1}, 2))
+    """A goal that is constant, followed by another."""
+    first = stage("any", "min", (1, 1), {}, const="2", value="2", dual=vector({}))
+    second = stage("floor", "min", (1, 1), {0: 1}, value="1/2", dual=vector({0: 1}, 2))
     return document(
         "possible",
         program([({0: 2}, 1, None)], [(None, None)]),

@@ -142,7 +142,6 @@ def knowing(document: Any, dice: random.Random) -> None:
         lambda: program.__setitem__("col_den", dice.choice([1, 2, 3, 5])),
         lambda: stage.__setitem__("rows", dice.randrange(program["rows"] + 1)),
         lambda: stage.__setitem__("columns", dice.randrange(program["columns"] + 1)),
-        lambda: stage.__setitem__("pin", dice.choice([None, *range(program["rows"])])),
         lambda: document["stages"].append(copied(stage)),
         lambda: document["stages"].remove(stage),
     ]

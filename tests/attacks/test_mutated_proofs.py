@@ -9,7 +9,7 @@ from typing import Any
 import pytest
 
 from designer.proof.recheck import recheck
-from tests.attacks.handmade import ALL, two_goals
+from tests.attacks.handmade import ALL, first_bounded_then_endless, two_goals
 from tests.attacks.mutations import blind, copied, knowing
 from tests.attacks.truth import TooLarge, is_true
 
@@ -90,3 +90,29 @@ def test_program_and_proof_changed_together_must_still_be_true() -> None:
     document["stages"][1]["value"] = "2"
     assert recheck(document).holds
     assert is_true(document)
+
+
+def test_a_ray_that_gives_up_an_earlier_goal_is_none() -> None:
+    """Without the row that keeps x = 3, the last goal x + y grows along (-1, 2)."""
+    document = first_bounded_then_endless()
+    program = document["program"]
+    program["row_lo"] = {"idx": [], "num": []}
+    program["row_hi"] = {"idx": [0, 2], "num": [3, 5]}
+    program["col_lo"] = {"idx": [], "num": []}
+    document["stages"][1]["cost"] |= {"idx": [0, 1], "num": [1, 1]}
+    document["ray"] = {"den": 1, "idx": [0, 1], "num": [-1, 2]}
+    assert recheck(document).faults == ("ray: it changes the goal floor",)
+    document["ray"] = {"den": 1, "idx": [1], "num": [2]}
+    assert recheck(document).holds
+    assert is_true(document)
+
+
+def test_later_certificates_without_the_row_that_keeps_the_earlier_value() -> None:
+    """The bound 2z >= x + y = 2 needs the kept value; with any other, it proves less."""
+    document = two_goals()
+    program = document["program"]
+    program["row_lo"]["num"][0] = 2  # x + y >= 1 is all that is left
+    assert is_true(document)
+    assert recheck(document).faults == (
+        "stages[1] node 0: the dual leaves room for something better",
+    )

@@ -201,6 +201,7 @@ FORM: list[tuple[str, Edit, str]] = [
     ("sale", drop("program", "row_lo", "num", 3), "program.row_lo: idx and num of different"),
     ("sale", put("program", "row_lo", "den", 1), "program.row_lo: its keys must be idx, num"),
     ("sale", put("program", "col_den", 0), "program.col_den: not positive"),
+    ("gap", put("program", "col_den", -3), "program.col_den: not positive"),
     ("sale", put("program", "integer", [0, 0]), "program.integer: not strictly ascending"),
     ("sale", put("program", "names", []), "program.names: not an object"),
     ("sale", put("program", "names", "columns", 0, 1, 3), "program.names: the columns do not add"),
@@ -224,7 +225,7 @@ FORM: list[tuple[str, Edit, str]] = [
     (
         "mixture",
         put("stages", 0, "tree", []),
-        "stages[0]: its keys must be goal, sense, columns, rows, cost, value, pin, dual",
+        "stages[0]: its keys must be goal, sense, columns, rows, cost, value, dual",
     ),
     ("mixture", put("stages", 0, "goal", ""), "stages[0].goal: not a short printable text"),
     ("mixture", put("stages", 0, "goal", "x\x1b[2J"), "stages[0].goal: not a short printable text"),
@@ -239,6 +240,14 @@ FORM: list[tuple[str, Edit, str]] = [
         "stages[0]: not a prefix that contains the one before",
     ),
     ("goals", put("stages", 1, "columns", 1), "stages[1]: not a prefix that contains the one"),
+    (
+        "nothing",
+        both(
+            put("stages", 1, "columns", 0),
+            put("stages", 1, "cost", {**vector({}), "const": "0"}),
+        ),
+        "stages[1]: not a prefix that contains the one before",
+    ),
     ("goals", put("stages", 1, "rows", 0), "stages[1]: not a prefix that contains the one before"),
     ("mixture", put("stages", 0, "cost", "const", 0), "stages[0].cost.const: not a ratio"),
     ("mixture", put("stages", 0, "cost", "const", "1/0"), "stages[0].cost.const: not a ratio"),
@@ -313,51 +322,23 @@ SENSE: list[tuple[str, Edit, str]] = [
     ),
     ("mixture", put(*DUAL, vector({2: 1})), "stages[0] node 0: an index out of range"),
     ("mixture", put(*DUAL, None), "stages[0] node 0: not an object"),
-    ("mixture", put("stages", 0, "pin", 0), "stages[0].pin: nothing to pin, so null is expected"),
-    ("nothing", put("stages", 0, "pin", 0), "stages[0].pin: nothing to pin, so null is expected"),
-    ("goals", put("stages", 0, "pin", None), "stages[0].pin: not an index or count, or out of"),
-    ("goals", put("stages", 0, "pin", 4), "stages[0].pin: not an index or count, or out of range"),
-    (
-        "goals",
-        put("stages", 0, "pin", 0),
-        "stages[0].pin: row 0 is no equation over the columns of the goal",
-    ),
-    (
-        "goals",
-        put("stages", 0, "pin", 2),
-        "stages[0].pin: row 2 is no equation over the columns of the goal",
-    ),
-    (
-        "goals",
-        put("program", "row_hi", {"idx": [0], "num": [2]}),
-        "stages[0].pin: row 1 is no equation over the columns of the goal",
-    ),
-    (
-        "goals",
-        both(put("program", "row_lo", "num", 0, 3), put("program", "row_hi", "num", 1, 5)),
-        "stages[0].pin: row 1 is no equation over the columns of the goal",
-    ),
     (
         "goals",
         put("stages", 0, "cost", "num", [2, 3]),
         "stages[0]: the goal at primal is not the stated value",
     ),
-    (
-        "goals",
-        both(put("stages", 0, "cost", "num", [2, 3]), put("stages", 0, "value", "5/2")),
-        "stages[0].pin: row 1 does not keep the stated value",
-    ),
-    (
-        "goals",
-        both(put("program", "data", 2, 1), put("program", "data", 3, 3)),
-        "stages[0].pin: row 1 does not keep the stated value",
-    ),
-    (
-        "goals",
-        both(put("program", "data", 2, 4), put("program", "data", 3, 4)),
-        "primal: row 1 is not kept",
-    ),
     ("then endless", put("ray", vector({0: 1})), "ray: row 0 is not kept"),
+    (
+        "then endless",
+        both(
+            put("program", "row_lo", {"idx": [], "num": []}),
+            put("ray", vector({0: -1, 1: 1})),
+            put("program", "col_lo", {"idx": [], "num": []}),
+            put("program", "data", 1, 1),
+            put("program", "row_hi", {"idx": [0, 2], "num": [3, 5]}),
+        ),
+        "ray: it changes the goal floor",
+    ),
     ("endless", put("ray", vector({0: 3, 1: 1})), "ray: row 0 is not kept"),
     ("endless", put("ray", vector({0: -1})), "ray: a bound of column 0 is not kept"),
     ("endless", put("ray", vector({1: 1})), "ray: it does not improve the goal"),
@@ -450,6 +431,11 @@ SENSE: list[tuple[str, Edit, str]] = [
         "gap",
         put("program", "col_hi", {"idx": [], "num": []}),
         "impossible node 2: the bounds of column 0 leave room",
+    ),
+    (
+        "gap",
+        put("program", "col_lo", "num", 0, 0),  # x <= 0 leaves 0 itself
+        "impossible node 1: the bounds of column 0 leave room",
     ),
     ("gap", put("tree", 1, "empty", 1), "impossible node 1: not an index or count, or out of"),
     ("odd", lambda d: d["tree"].append({"empty": 0}), "impossible: a node without a parent"),
@@ -567,7 +553,6 @@ def test_a_hundred_stages_and_no_more() -> None:
     document = nothing_asked()
     first = document["stages"][0]
     document["stages"] = [copied(first) for _ in range(100)]
-    document["stages"][-1]["pin"] = None
     assert recheck(document).holds
     document["stages"].append(copied(first))
     assert recheck(document).faults == ("stages: not a list of 1 to 100 stages",)

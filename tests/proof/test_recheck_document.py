@@ -107,7 +107,6 @@ def test_a_possible_verdict_is_written_as_by_hand(dtype: type) -> None:
                 Fraction(stage["value"]),
                 True,
                 dual=of(stage["dual"], stage["rows"]),
-                pin=stage["pin"],
             )
             for stage in by_hand["stages"]
         ]
