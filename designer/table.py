@@ -79,29 +79,46 @@ def pot(table: Table, setting: Setting) -> tuple[IntArray, int]:
     return total, den
 
 
-def frame(table: Table, setting: Setting) -> pd.DataFrame:
-    """Show the table as a pandas frame of Fractions with the columns of transfers.csv.
+def columns(setting: Setting) -> list[str]:
+    """Name the columns of transfers.csv.
 
-    One row per profile: `type:NAME` per party, `probability`, `decides:OPTION` per option,
-    `pays:NAME` per party, `pot`. Meant for tables of a size one can look at.
+    `type:NAME` per party, `probability`, `decides:OPTION` per option, `pays:NAME` per party,
+    `pot`.
     """
+    names = [party.name for party in setting.parties]
+    return [
+        *(f"type:{name}" for name in names),
+        "probability",
+        *(f"decides:{option}" for option in setting.options),
+        *(f"pays:{name}" for name in names),
+        "pot",
+    ]
+
+
+def rows(setting: Setting, table: Table) -> list[list[str | Fraction]]:
+    """Give the rows of transfers.csv, one per profile, numbers as Fractions.
+
+    Meant for tables of a size one can look at.
+    """
+    pots, den = pot(table, setting)
+    parties, options = range(len(setting.parties)), range(len(setting.options))
+    return [
+        [
+            *setting.labels_at(profile),
+            setting.probability(profile),
+            *(table.chance(profile, k) for k in options),
+            *(table.payment(i, profile) for i in parties),
+            Fraction(int(pots[profile]), den),
+        ]
+        for profile in range(setting.profiles)
+    ]
+
+
+def frame(table: Table, setting: Setting) -> pd.DataFrame:
+    """Show the table as a pandas frame of Fractions, with the columns of transfers.csv."""
     import pandas as pd
 
-    pots, den = pot(table, setting)
-    labels = [setting.labels_at(profile) for profile in range(setting.profiles)]
-    columns: dict[str, list[object]] = {}
-    for i, party in enumerate(setting.parties):
-        columns[f"type:{party.name}"] = [row[i] for row in labels]
-    columns["probability"] = [setting.probability(profile) for profile in range(setting.profiles)]
-    for k, option in enumerate(setting.options):
-        chances = table.decides[:, k].tolist()
-        columns[f"decides:{option}"] = [Fraction(top, table.decides_den) for top in chances]
-    for i, party in enumerate(setting.parties):
-        columns[f"pays:{party.name}"] = [
-            Fraction(t, table.pays_den) for t in table.pays[i].tolist()
-        ]
-    columns["pot"] = [Fraction(top, den) for top in pots.tolist()]
-    return pd.DataFrame(columns)
+    return pd.DataFrame(rows(setting, table), columns=columns(setting))
 
 
 def largest(array: IntArray) -> int:

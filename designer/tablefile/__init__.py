@@ -11,8 +11,9 @@ marks the table as rounded; `ReadTable.tolerance` is then the most that rounding
 entry by half a unit of its last place can do to a gain or to the pot.
 """
 
+from designer.table import columns, rows
 from designer.tablefile.package import datapackage
 from designer.tablefile.reading import ReadTable, read_table
 from designer.tablefile.writing import transfers_csv
 
-__all__ = ["ReadTable", "datapackage", "read_table", "transfers_csv"]
+__all__ = ["ReadTable", "columns", "datapackage", "read_table", "rows", "transfers_csv"]

@@ -11,7 +11,7 @@ import numpy as np
 
 from designer.setting.profiles import strides
 from designer.setting.setting import Setting
-from designer.table import Table, pot
+from designer.table import Table, columns, pot
 from designer.tablefile.cells import Texts
 
 CHUNK = 16_384
@@ -28,15 +28,7 @@ def transfers_csv(table: Table, setting: Setting) -> Callable[[IO[bytes]], None]
         pots, pot_den = pot(table, setting)
         lines = io.TextIOWrapper(file, encoding="utf-8", newline="")
         out = csv.writer(lines, lineterminator="\n")
-        out.writerow(
-            [
-                *(f"type:{party.name}" for party in setting.parties),
-                "probability",
-                *(f"decides:{option}" for option in setting.options),
-                *(f"pays:{party.name}" for party in setting.parties),
-                "pot",
-            ]
-        )
+        out.writerow(columns(setting))
         weights = setting.weights
         odds, chances = Texts(setting.total_weight), Texts(table.decides_den)
         amounts, rests = Texts(table.pays_den), Texts(pot_den)
@@ -45,14 +37,14 @@ def transfers_csv(table: Table, setting: Setting) -> Callable[[IO[bytes]], None]
         for start in range(0, setting.profiles, CHUNK):
             part = slice(start, min(start + CHUNK, setting.profiles))
             numbers = np.arange(part.start, part.stop)
-            columns: list[list[str]] = []
+            cells: list[list[str]] = []
             for names, step in zip(labels, steps, strict=True):
-                columns.append([names[a] for a in ((numbers // step) % len(names)).tolist()])
-            columns.append(odds.of(weights[part]))
-            columns += [chances.of(table.decides[part, k]) for k in range(len(setting.options))]
-            columns += [amounts.of(row[part]) for row in table.pays]
-            columns.append(rests.of(pots[part]))
-            out.writerows(zip(*columns, strict=True))
+                cells.append([names[a] for a in ((numbers // step) % len(names)).tolist()])
+            cells.append(odds.of(weights[part]))
+            cells += [chances.of(table.decides[part, k]) for k in range(len(setting.options))]
+            cells += [amounts.of(row[part]) for row in table.pays]
+            cells.append(rests.of(pots[part]))
+            out.writerows(zip(*cells, strict=True))
         lines.flush()
         lines.detach()
 
