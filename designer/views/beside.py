@@ -112,11 +112,13 @@ def _sentence(found: Judged, money: str) -> str:
     )
 
 
-def manners(found: Judged) -> str:
-    """What the table keeps, in a sentence."""
-    keeps = found.keeps
+def manners(found: Judged, money: str) -> str:
+    """What the table keeps, in a sentence, and the worth it gives up against efficiency."""
+    keeps, lost = found.keeps, found.audit.decisions.lost
+    given_up = f" It gives up {amount(lost, money)} of expected worth." if lost else ""
     return (
-        f"{HONEST[keeps['ic']].capitalize()}; {JOINED[keeps['ir']]}; {BALANCED[keeps['balance']]}."
+        f"{HONEST[keeps['ic']].capitalize()}; {JOINED[keeps['ir']]}; "
+        f"{BALANCED[keeps['balance']]}.{given_up}"
     )
 
 
