@@ -19,8 +19,8 @@ if TYPE_CHECKING:
 
 EPILOG = """\b
 Examples:
-  designer audit scenarios/ropewalk.toml scenarios/ropewalk-table.csv
-  designer audit scenarios/ropewalk.toml scenarios/ropewalk-table.csv --ic dominant --json"""
+  designer audit scenarios/ropewalk.toml scenarios/ropewalk-draft.csv --slack 27
+  designer audit scenarios/ropewalk.toml scenarios/ropewalk-draft.csv --ic none --json"""
 
 
 @command
