@@ -16,7 +16,7 @@ import numpy as np
 
 from designer.engines.highs import HIGHS
 from designer.engines.report import Engine, FloatArray, Report
-from designer.engines.watch import TimeUp, Watch
+from designer.engines.watch import Stopped, TimeUp, Watch
 from designer.program.linear import Bound, LinearProgram
 from designer.proof.exact import Exact, Point
 from designer.proof.outcome import Branch, Leaf, Outcome, Status, Tree
@@ -60,8 +60,8 @@ def prove_mixed(
         if incumbent is None:
             effort.note(report)
         return _unfinished(exact, report, incumbent)
-    if incumbent is None and report.status != "infeasible":
-        incumbent = _unbounded(exact, engine, watch, effort, scale)
+    if report.status not in ("optimal", "infeasible"):
+        incumbent = _unbounded(exact, incumbent, engine, watch, effort, scale)
     if incumbent is not None and incumbent.ray is not None:
         return Outcome(
             "unbounded",
@@ -72,20 +72,28 @@ def prove_mixed(
             ray=exact.primal_vector(incumbent.ray),
         )
     search = Search(exact, watch, seconds, effort, incumbent)
-    tree = search.tree()
+    why = f"within {seconds:g} seconds"
+    try:
+        tree = search.tree()
+    except (Stopped, KeyboardInterrupt) as stop:
+        # the table and the engine's word outlive the search for a proof
+        if search.incumbent is None:
+            raise
+        tree = None
+        why = f"before it stopped: {getattr(stop, 'reason', 'interrupted')}"
     if search.incumbent is not None:
-        return _optimal(exact, report, search.incumbent, tree, seconds)
+        return _optimal(exact, report, search.incumbent, tree, why)
     if tree is not None:
         return Outcome("infeasible", proved=True, tree=tree)
     status: Status = "infeasible" if report.status == "infeasible" else "undecided"
-    return Outcome(status, reason=_unproved(report, seconds))
+    return Outcome(status, reason=_unproved(report, why))
 
 
 def _optimal(
-    exact: Exact, report: Report, incumbent: Incumbent, tree: Tree | None, seconds: float
+    exact: Exact, report: Report, incumbent: Incumbent, tree: Tree | None, why: str
 ) -> Outcome:
     found = Outcome(
-        "optimal",
+        "optimal" if tree is not None or report.status == "optimal" else "undecided",
         proved=tree is not None,
         table_proved=True,
         value=exact.value(incumbent.point),
@@ -94,7 +102,7 @@ def _optimal(
     )
     if tree is not None:
         return found
-    return replace(found, bound=_bound(exact, report), reason=_unproved(report, seconds))
+    return replace(found, bound=_bound(exact, report), reason=_unproved(report, why))
 
 
 def _unfinished(exact: Exact, report: Report, incumbent: Incumbent | None) -> Outcome:
@@ -116,10 +124,9 @@ def _bound(exact: Exact, report: Report) -> float | None:
     return None if report.bound is None else exact.rough_bound(report.bound)
 
 
-def _unproved(report: Report, seconds: float) -> str:
+def _unproved(report: Report, why: str) -> str:
     return (
-        f"{report.engine} says {report.status!r}; our own branch and bound did not confirm it "
-        f"within {seconds:g} seconds"
+        f"{report.engine} says {report.status!r}; our own branch and bound did not confirm it {why}"
     )
 
 
@@ -158,16 +165,25 @@ def with_integers(exact: Exact, x: FloatArray, watch: Watch, effort: Effort) -> 
 
 
 def _unbounded(
-    exact: Exact, engine: Engine, watch: Watch, effort: Effort, scale: IntArray | None
+    exact: Exact,
+    incumbent: Incumbent | None,
+    engine: Engine,
+    watch: Watch,
+    effort: Effort,
+    scale: IntArray | None,
 ) -> Incumbent | None:
-    """Find an exact point with whole integers and an exact ray, if the relaxation has a ray.
+    """Give the incumbent, or any point with whole integers, a ray if the relaxation has one.
 
     The ray is rational, so whole multiples of it keep integers whole.
     """
+    if incumbent is not None and incumbent.ray is not None:
+        return incumbent
     relaxed = replace(exact.lp, integer=np.zeros(exact.lp.columns, dtype=bool))
     ray = settle(relaxed, HIGHS, watch, effort, scale).ray
     if ray is None:
-        return None
+        return incumbent
+    if incumbent is not None:
+        return replace(incumbent, ray=ray)
     costless = replace(exact.lp, cost=np.zeros(exact.lp.columns, dtype=np.int64))
     report = effort.note(engine.solve(costless, watch))
     if report.x is None:
