@@ -16,7 +16,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
-from benchmarks.child import write
+from benchmarks.child import ENOUGH, LONG, write
 from benchmarks.registry import Problem
 from benchmarks.ways import Run, command
 
@@ -194,8 +194,8 @@ def _in_child(series: Series, path: Path, budget: float, once: bool) -> None:
         reader.start()
         try:
             ready = lines.get(timeout=STARTING).strip() == "ready"
-            # Quick answers are repeated; the budget is for one.
-            answer = lines.get(timeout=budget + 1.0) if ready else ""
+            # The budget is for one answer; the first may be a dry run.
+            answer = lines.get(timeout=budget + LONG + ENOUGH) if ready else ""
         except queue.Empty:
             child.kill()
             series.over = budget

@@ -112,16 +112,16 @@ PROBLEMS: tuple[Problem, ...] = (
     Problem(
         "certain-3x4", "joint project, honest in every case", _project(3, 4, CERTAIN), small=True
     ),
-    Problem("certain-3x8", "joint project, honest in every case", _project(3, 8, CERTAIN)),
+    Problem("certain-3x9", "joint project, honest in every case", _project(3, 9, CERTAIN)),
     Problem("second-4", "sale, best lottery", _trade(4, SECOND), small=True),
-    Problem("second-20", "sale, best lottery", _trade(20, SECOND)),
+    Problem("second-30", "sale, best lottery", _trade(30, SECOND)),
     Problem("posted-4", "sale, honest in every case", _trade(4, POSTED), small=True),
-    Problem("posted-10", "sale, honest in every case", _trade(10, POSTED)),
+    Problem("posted-16", "sale, honest in every case", _trade(16, POSTED)),
     Problem("sale-15", "sale, everything asked at once", _trade(15, WHOLE), expected="impossible"),
     Problem("picked-3", "sale, whole decisions", _trade(3, PICKED), small=True, smoke=True),
     Problem("picked-6", "sale, whole decisions", _trade(6, PICKED)),
     Problem("item-2x4", "one item, most rent", partial(invented.one_item, 2, 4, RENT), small=True),
-    Problem("item-3x8", "one item, most rent", partial(invented.one_item, 3, 8, RENT)),
+    Problem("item-3x10", "one item, most rent", partial(invented.one_item, 3, 10, RENT)),
     Problem("item-4x5", "one item, most rent", partial(invented.one_item, 4, 5, RENT)),
     Problem(
         "correlated-2x4",
@@ -131,14 +131,14 @@ PROBLEMS: tuple[Problem, ...] = (
         smoke=True,
     ),
     Problem(
-        "correlated-2x16",
+        "correlated-2x30",
         "one item, types that go together",
-        partial(invented.correlated_item, 2, 16, ONE_RENT),
+        partial(invented.correlated_item, 2, 30, ONE_RENT),
     ),
     Problem(
-        "correlated-3x8",
+        "correlated-3x10",
         "one item, types that go together",
-        partial(invented.correlated_item, 3, 8, ONE_RENT),
+        partial(invented.correlated_item, 3, 10, ONE_RENT),
     ),
     Problem(
         "common-4",
@@ -147,9 +147,9 @@ PROBLEMS: tuple[Problem, ...] = (
         small=True,
     ),
     Problem(
-        "common-12",
+        "common-20",
         "worths that depend on the other's type",
-        partial(invented.common_worth, 12, SURE_RENT),
+        partial(invented.common_worth, 20, SURE_RENT),
     ),
     Problem("million-4x19", "130,321 balance rows", _project(4, 19, MONEY), ways=("formulate",)),
     Problem("million-3x20", "456,000 lie rows", _project(3, 20, CERTAIN), ways=("formulate",)),

@@ -21,7 +21,8 @@ Every figure comes from one run. Each measurement has a process of its own and t
 problem take turns. Times are medians in seconds, with the least in brackets; memory is the
 peak of the whole process in MiB, imports included.
 
-- **ours**: `read_scenario` and `pose`, from the file to the checked proof. Saving is not in it.
+- **ours**: `read_scenario` and `pose`, from the file to the checked proof. Saving (tables, their
+  audit, verdict, proof) is timed apart: the other ways save nothing.
 - **shell**: `designer pose FILE --json`, start-up included.
 - **textbook**: PuLP and HiGHS with a loop per quantifier (`tests/oracles/textbook.py`), from the
   setting in memory to a float answer; **textbook-quick** adds terms up in dictionaries.

@@ -15,6 +15,7 @@ import tempfile
 import time
 from collections.abc import Callable
 from dataclasses import asdict, dataclass, field
+from functools import cache
 from pathlib import Path
 from typing import Any
 
@@ -138,15 +139,10 @@ def formulate_only(path: Path) -> Run:
 
 def recheck_only(path: Path) -> Run:
     """The checker alone on a saved proof; loading it and `designer recheck` are parts."""
-    from designer import pose, recheck
-    from designer.proof.document import as_bytes, load_document
+    from designer import recheck
+    from designer.proof.document import load_document
 
-    verdict = pose(path)
-    matrix = verdict.program.matrix
-    sizes = {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros}
-    raw = as_bytes(verdict.proof)
-    status, sizes["bytes"] = verdict.status, len(raw)
-    del verdict
+    status, sizes, raw = _proof(path)
     with tempfile.TemporaryDirectory() as folder:
         place = Path(folder, "proof.json")
         place.write_bytes(raw)
@@ -191,15 +187,25 @@ def _shell(*words: str) -> float | None:
 
 
 def _save(verdict: Any) -> None:
-    from designer.files import write_all
-    from designer.proof.document import as_bytes
-    from designer.tablefile import transfers_csv
+    """As `--save` does: tables, their audit, verdict and proof."""
+    from designer.saving import planned, save
+    from designer.views.documents import verdict_document
 
-    files: dict[str, Any] = {"proof.json": as_bytes(verdict.proof)}
-    if verdict.table is not None:
-        files["transfers.csv"] = transfers_csv(verdict.table, verdict.setting)
     with tempfile.TemporaryDirectory() as folder:
-        write_all(folder, files)
+        save(verdict, folder, verdict_document(verdict, planned(verdict, folder)))
+
+
+@cache
+def _proof(path: Path) -> tuple[str, dict[str, int], bytes]:
+    """Status, sizes and the proof document of a scenario, posed once."""
+    from designer import pose
+    from designer.proof.document import as_bytes
+
+    verdict = pose(path)
+    matrix = verdict.program.matrix
+    raw = as_bytes(verdict.proof)
+    sizes = {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros}
+    return verdict.status, {**sizes, "bytes": len(raw)}, raw
 
 
 def _short(text: str) -> str:

@@ -74,8 +74,8 @@ def test_a_measuring_process_reports_back() -> None:
 
 def test_a_way_that_outlives_its_budget_is_stopped() -> None:
     one = replace(problem("floor-3x15"), ways=("textbook",))
-    found = measure(one, rounds=2, budget=0.0, once=True, tell=lambda _: None)
-    assert found.series["textbook"].over == 0.0
+    found = measure(one, rounds=2, budget=-15.0, once=True, tell=lambda _: None)
+    assert found.series["textbook"].over == -15.0
     assert found.series["textbook"].runs == []
 
 
