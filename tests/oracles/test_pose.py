@@ -47,7 +47,7 @@ def proved(setting: Setting, demands: Demands) -> Verdict:
     return verdict
 
 
-def same_as_textbook(setting: Setting, demands: Demands) -> None:
+def same_as_textbook(setting: Setting, demands: Demands, close: float = CLOSE) -> None:
     """Compare with the textbook program, in floats."""
     verdict = proved(setting, demands)
     status, value, _ = build_and_solve(setting, demands)
@@ -55,7 +55,7 @@ def same_as_textbook(setting: Setting, demands: Demands) -> None:
     if value is not None:
         exact = list(verdict.goal_values.values())[-1]
         assert exact is not None
-        assert float(exact) == pytest.approx(value, rel=CLOSE, abs=CLOSE)
+        assert float(exact) == pytest.approx(value, rel=close, abs=close)
 
 
 @settings(max_examples=250, deadline=None, derandomize=True)
@@ -100,7 +100,8 @@ def test_two_goals_one_after_the_other(
 ) -> None:
     balance = "ex-post" if demands.balance == "none" else demands.balance
     asked = {**vars(demands), "goal": tuple(goals), "balance": balance}
-    same_as_textbook(setting, Demands(**asked))
+    # In floats the first goal is kept only within 1e-7, which the second can use.
+    same_as_textbook(setting, Demands(**asked), close=1e-4)
 
 
 @settings(max_examples=100, deadline=None, derandomize=True)

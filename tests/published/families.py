@@ -68,6 +68,18 @@ def one_item(grids: list[list[Fraction]], priors: list[list[Fraction]] | None = 
     }
 
 
+def market(buyers: int, grid: list[Fraction]) -> Data:
+    """One unit, a seller (last) and several buyers, all uniform; option i: buyer i gets it."""
+    prior = even(len(grid))
+    return {
+        "agents": [
+            *(agent(grid, [int(k == i) for k in range(buyers + 1)], prior) for i in range(buyers)),
+            agent(grid, [-1] * buyers + [0], prior),
+        ],
+        "decisions": [*(f"buyer {i + 1}" for i in range(buyers)), "seller"],
+    }
+
+
 def partnership(grid: list[Fraction], prior: list[Fraction], shares: list[Fraction]) -> Data:
     """An asset owned in shares goes whole to one party; staying out keeps one's share."""
     count = len(shares)

@@ -13,7 +13,7 @@ import pytest
 from designer import audit, pose
 from designer.proof.recheck import recheck
 from tests.oracles.audited import achieved, shortcomings
-from tests.published.corpus import Query, entries, instances, queries, setting_of
+from tests.published.corpus import FOLDER, Query, entries, instances, queries, setting_of
 
 
 @pytest.mark.parametrize("query", queries(), ids=lambda query: query.name)
@@ -55,6 +55,12 @@ def test_every_entry_names_a_source_and_how_it_was_confirmed() -> None:
         assert entry["sources"], name
         for source in entry["sources"]:
             assert {"authors", "year", "title", "journal", "confirmed"} <= set(source), name
-        # What is not posed here says why.
-        assert ("beyond" in entry) == ("not_posed_because" in entry), name
+        # What is not posed here says why, and where it is used instead.
+        assert ("beyond" in entry) == ("beyond_because" in entry), name
         assert entry["queries"] or "beyond" in entry, name
+
+
+def test_the_readme_has_a_row_for_every_entry() -> None:
+    readme = (FOLDER / "README.md").read_text(encoding="utf-8")
+    rows = [line.split("|")[1].strip() for line in readme.splitlines() if line.startswith("| ")]
+    assert set(entries()) <= set(rows)

@@ -24,6 +24,7 @@ from tests.published.families import (
     endpoints,
     even,
     interim_chances,
+    market,
     midpoints,
     one_item,
     partnership,
@@ -79,6 +80,66 @@ def test_worths_that_cannot_cross_trade_at_a_price_between() -> None:
     data["agents"][0] = agent([1 + v for v in midpoints(6)], [0, 1], even(6))
     demands = Demands(ic="dominant", ir="ex-post", balance="ex-post", goal="any")
     assert settle(data, demands).status == "possible"
+
+
+def second_best(size: int) -> Fraction:
+    """The most gain from trade on midpoints, by the knapsack of entry B03.
+
+    Trades by index difference d have weight (K-d)/K**2, gain d/K and budget (2d-K+1)/K; they
+    are filled from the top, and broken where the budget runs out.
+    """
+    gain, budget = Fraction(0), Fraction(0)
+    for d in range(size - 1, 0, -1):
+        weight = Fraction(size - d, size**2)
+        each = Fraction(2 * d - size + 1, size)
+        part = Fraction(1)
+        if budget + weight * each < 0:
+            part = budget / (-weight * each)
+        gain += part * weight * Fraction(d, size)
+        budget += part * weight * each
+        if part < 1:
+            break
+    return gain
+
+
+def test_the_knapsack_gives_every_published_second_best() -> None:
+    """Stored values at 20, 40 and 80 points included."""
+    stored = {i["tag"]: Fraction(i["value"]) for i in entries()["B03"]["beyond"]}
+    posed = {q["tag"]: Fraction(q["value"]) for q in entries()["B03"]["queries"]}
+    assert len(stored) == 3
+    for tag, value in {**stored, **posed}.items():
+        assert second_best(int(tag.removeprefix("mid"))) == value, tag
+    # The limit of the source is 9/64 (Myerson and Satterthwaite 1983), from above.
+    assert Fraction(9, 64) < second_best(400) < Fraction(9, 64) + Fraction(1, 1000)
+
+
+@pytest.mark.parametrize("size", [7, 9, 12, 20, 40, 80])
+def test_second_best_trade_is_the_knapsack(size: int) -> None:
+    demands = Demands(decision="randomized", balance="ex-post", goal="welfare", tidy="none")
+    assert settle(trade(midpoints(size)), demands).goal_value == second_best(size)
+
+
+def beyond(entry: str, tag: str) -> Fraction:
+    """A stored value from a closed form."""
+    (item,) = [item for item in entries()[entry]["beyond"] if item["tag"] == tag]
+    return Fraction(item["value"])
+
+
+@pytest.mark.parametrize("tag", [item["tag"] for item in entries()["M01"]["beyond"]])
+def test_one_seller_and_several_buyers_at_larger_sizes(tag: str) -> None:
+    """Entry M01: up to 64,000 profiles on the full program; three buyers turn at eight points."""
+    buyers, size = (int(part.strip("nmid")) for part in tag.split("_"))
+    demands = Demands(balance="none", goal="revenue", tidy="none")
+    verdict = settle(market(buyers, midpoints(size)), demands)
+    assert verdict.goal_value == beyond("M01", tag)
+
+
+@pytest.mark.parametrize("tag", ["n2_mid20", "n2_mid40"])
+def test_largest_revenue_from_two_bidders_at_larger_sizes(tag: str) -> None:
+    """Entry U01: E max(0, virtual worths), Myerson 1981."""
+    grid = midpoints(int(tag.removeprefix("n2_mid")))
+    demands = Demands(decision="randomized", balance="none", goal="revenue", tidy="none")
+    assert settle(one_item([grid, grid]), demands).goal_value == beyond("U01", tag)
 
 
 # -- Arrow 1979; d'Aspremont and Gerard-Varet 1979, J. Public Economics 11:25-45
@@ -210,8 +271,7 @@ def test_one_owner_is_the_seller_of_a_trade() -> None:
 @pytest.mark.parametrize("size", [6, 8, 10, 12])
 def test_the_largest_share_that_dissolves(size: int) -> None:
     """Entry P01: possible at the published share, impossible a thousandth above it."""
-    published = {item["tag"]: item["value"] for item in entries()["P01"]["beyond"]}
-    share = Fraction(published[f"maxshare_mid{size}"])
+    share = beyond("P01", f"maxshare_mid{size}")
     for above, status in ((Fraction(0), "possible"), (Fraction(1, 1000), "impossible")):
         shares = [share + above, 1 - share - above]
         data = partnership(midpoints(size), even(size), shares)
