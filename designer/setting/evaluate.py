@@ -9,7 +9,7 @@ Branches of if-else, and the later parts of `and` / `or`, count only where they 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any, cast
@@ -77,7 +77,7 @@ def evaluate(tree: Worth, types: Sequence[Sequence[Type]], names: Sequence[str])
     shape = tuple(len(types[axis]) for axis in axes)
     if len(axes) > 60 or math.prod(shape) > profiles.MOST:
         raise ExpressionError(
-            f"an expression over {math.prod(shape):,} combinations of types",
+            f"an expression over {profiles.shown(math.prod(shape))} combinations of types",
             f"at most {profiles.MOST:,}, over at most 60 parties",
             "Mention fewer parties or use coarser types.",
         )
@@ -88,6 +88,20 @@ def evaluate(tree: Worth, types: Sequence[Sequence[Type]], names: Sequence[str])
 
 
 Ratio = tuple[IntArray, int]
+
+
+def common_multiple(numbers: Iterable[int]) -> int:
+    """The least common multiple, positive; ExpressionError beyond `MAX_BITS` binary digits."""
+    common = 1
+    for each in set(numbers):
+        common = math.lcm(common, each)
+        if common.bit_length() > MAX_BITS:
+            raise ExpressionError(
+                f"amounts whose common denominator has more than {MAX_BITS:,} binary digits",
+                "amounts with common denominators",
+                "Round them to a common unit.",
+            )
+    return common
 
 
 class _Run:
@@ -267,11 +281,7 @@ def _scalar(value: Fraction, unit: tuple[int, ...]) -> Ratio:
 
 def _common(values: Sequence[Fraction]) -> Ratio:
     """Exact numbers as integers over their least common denominator, one axis."""
-    den = 1
-    for each in {value.denominator for value in values}:
-        den = math.lcm(den, each)
-        if den.bit_length() > MAX_BITS:
-            raise _too_large("a common denominator")
+    den = common_multiple(value.denominator for value in values)
     num = np.empty(len(values), dtype=object)
     num[:] = [value.numerator * (den // value.denominator) for value in values]
     return _fit(num), den
@@ -280,11 +290,7 @@ def _common(values: Sequence[Fraction]) -> Ratio:
 def _divide(left: Ratio, right: Ratio) -> Ratio:
     (a, p), (b, q) = left, right
     # (a/p) / (b/q) = a*q*(L/b) / (p*L), L the least common multiple of the divisors.
-    common = 1
-    for each in set(b.ravel().tolist()):
-        common = math.lcm(common, each)
-        if common.bit_length() > MAX_BITS:
-            raise _too_large("a common denominator")
+    common = common_multiple(b.ravel().tolist())
     inverse = common // b.astype(object) * q
     return a.astype(object) * inverse, p * common
 

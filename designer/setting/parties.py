@@ -6,6 +6,7 @@ import keyword
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
+from functools import cached_property
 from types import MappingProxyType
 from typing import Any
 
@@ -30,7 +31,10 @@ TAKEN = ("worth", "pot", "parties")
 
 @dataclass
 class Roster:
-    """Who the parties are, as far as could be read; None where it could not."""
+    """Who the parties are, as far as could be read; None where it could not.
+
+    Filled by `read_roster`, and left as it is from then on.
+    """
 
     sections: list[Section]
     names: list[str | None]
@@ -42,18 +46,22 @@ class Roster:
         """Whether every name and type list was read."""
         return None not in self.names and None not in self.types
 
-    @property
+    @cached_property
     def shape(self) -> tuple[int, ...]:
         """(T_1, ..., T_n), counting 1 where the types could not be read."""
         return tuple(len(types) if types else 1 for types in self.types)
 
     def expression_names(self, own: int | None) -> Names:
         """What expressions of one party (None: the designer) may name."""
+        return Names(own, *self._names)
+
+    @cached_property
+    def _names(self) -> tuple[tuple[str | None, ...], tuple[frozenset[str] | None, ...]]:
         fields = tuple(
             None if types is None else frozenset(name for kind in types for name in kind.fields)
             for types in self.types
         )
-        return Names(own, tuple(self.names), fields)
+        return tuple(self.names), fields
 
     def known_names(self) -> list[str]:
         """The names that could be read."""

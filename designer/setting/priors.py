@@ -11,6 +11,8 @@ from typing import Any
 import numpy as np
 
 from designer.setting import exact, profiles
+from designer.setting.evaluate import common_multiple
+from designer.setting.expression import ExpressionError
 from designer.setting.parties import Roster
 from designer.setting.reading import MAX_BITS, Report, Section, describe, read_number
 from designer.setting.setting import IntArray, integers
@@ -75,12 +77,11 @@ def _own_prior(section: Section, size: int | None) -> tuple[int, ...] | None:
 
 def smallest(weights: Sequence[Fraction], place: str, report: Report) -> tuple[int, ...] | None:
     """Proportional whole numbers without a common factor."""
-    common = 1
-    for den in {weight.denominator for weight in weights}:
-        common = math.lcm(common, den)
-        if common.bit_length() > MAX_BITS:
-            _no_common(place, report)
-            return None
+    try:
+        common = common_multiple(weight.denominator for weight in weights)
+    except ExpressionError:
+        _no_common(place, report)
+        return None
     whole = [weight.numerator * (common // weight.denominator) for weight in weights]
     factor = math.gcd(*whole) or 1
     if max(whole, default=0) // factor >= 2**MAX_BITS:

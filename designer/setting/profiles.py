@@ -15,6 +15,15 @@ MOST = 5_000_000
 held in memory; settings of independent priors and private worths have no such limit."""
 
 
+def shown(count: int) -> str:
+    """A number of profiles, readable whatever its size.
+
+    >>> shown(1234567), shown(10**5000)
+    ('1,234,567', 'about 10**5000')
+    """
+    return f"{count:,}" if count < 10**15 else f"about 10**{round(math.log10(count))}"
+
+
 def strides(shape: Sequence[int]) -> tuple[int, ...]:
     """stride_i with profile number = sum_i a_i * stride_i.
 

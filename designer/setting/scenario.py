@@ -251,6 +251,7 @@ class _Reader:
         self, roster: Roster, options: Sequence[str]
     ) -> tuple[list[list[Amounts | None]], list[Amounts | None]]:
         """Each party's worth per option, and its outside option."""
+        count = math.prod(roster.shape)
         values: list[list[Amounts | None]] = []
         outsides: list[Amounts | None] = []
         for i, section in enumerate(roster.sections):
@@ -261,7 +262,6 @@ class _Reader:
                 outside = reader.read(section.values["outside"], section.at("outside"))
             for key, amounts in (("value", value), ("outside", [outside])):
                 others = any(one is not None and set(one.axes) - {i} for one in amounts)
-                count = math.prod(roster.shape)
                 if others and count > profiles.MOST:
                     too_many(count, section.at(key), self.report)
             values.append(value)

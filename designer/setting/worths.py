@@ -10,10 +10,10 @@ from typing import Any, cast
 import numpy as np
 
 from designer.setting import exact, profiles
-from designer.setting.evaluate import Amounts, collect, constant, evaluate
+from designer.setting.evaluate import Amounts, collect, common_multiple, constant, evaluate
 from designer.setting.expression import ExpressionError, parse, references
 from designer.setting.parties import Roster
-from designer.setting.reading import MAX_BITS, Report, Section, describe, read_number, unknown_keys
+from designer.setting.reading import Report, Section, describe, read_number, unknown_keys
 from designer.setting.setting import IntArray, Type, integers
 
 FORMS = 'Write a number, an expression such as "type / 2", or a list with one entry per type.'
@@ -56,10 +56,14 @@ class WorthReader:
     def read(self, raw: object, place: str) -> Amounts | None:
         """An amount in any of its forms, in its shortest form; None when mistaken."""
         before = len(self.report)
-        if isinstance(raw, list) and self.own is not None:
-            amounts = self.listed(raw, place, self.own)
-        else:
-            amounts = self.single(raw, place, self.roster.types)
+        amounts = None
+        try:
+            if isinstance(raw, list) and self.own is not None:
+                amounts = self.listed(raw, place, self.own)
+            else:
+                amounts = self.single(raw, place, self.roster.types)
+        except ExpressionError as fault:
+            self.report.add(place, fault.found, fault.expected, fault.remedy)
         if amounts is None or len(self.report) > before:
             return None
         num, axes = profiles.narrow(amounts.num, amounts.axes)
@@ -153,10 +157,9 @@ class WorthReader:
 
 def too_many(count: int, place: str, report: Report) -> None:
     """Note that a table over all profiles would be too large."""
-    shown = f"{count:,}" if count < 10**15 else f"about 10**{len(str(count)) - 1}"
     report.add(
         place,
-        f"a table over {shown} profiles",
+        f"a table over {profiles.shown(count)} profiles",
         f"at most {profiles.MOST:,}",
         "Use independent priors and worths of the own type, or coarser types.",
     )
@@ -167,17 +170,9 @@ def grain_of(amounts: Sequence[Amounts]) -> int:
 
     Raises ExpressionError when it has more than `MAX_BITS` binary digits.
     """
-    grain = 1
-    for each in amounts:
-        shared = math.gcd(each.den, int(np.gcd.reduce(np.ravel(each.num))))
-        grain = math.lcm(grain, each.den // shared)
-        if grain.bit_length() > MAX_BITS:
-            raise ExpressionError(
-                f"money whose common denominator has more than {MAX_BITS:,} binary digits",
-                "amounts with common denominators",
-                "Round the amounts to a common unit.",
-            )
-    return grain
+    return common_multiple(
+        each.den // math.gcd(each.den, int(np.gcd.reduce(np.ravel(each.num)))) for each in amounts
+    )
 
 
 def whole(amounts: Amounts, grain: int) -> IntArray:
@@ -209,7 +204,7 @@ def _stack(slices: Sequence[Amounts], own: int, shape: Sequence[int]) -> Amounts
     """Amounts of one own type each, joined along the own axis."""
     axes = tuple(sorted({own}.union(*(each.axes for each in slices))))
     at = axes.index(own)
-    den = math.lcm(*(each.den for each in slices))
+    den = common_multiple(each.den for each in slices)
     full = [1 if axis == own else shape[axis] for axis in axes]
     parts = []
     for each in slices:
