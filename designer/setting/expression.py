@@ -17,7 +17,6 @@ outside the language is refused with its reason.
 from __future__ import annotations
 
 import ast
-import difflib
 import unicodedata
 import warnings
 from collections.abc import Sequence
@@ -26,6 +25,7 @@ from fractions import Fraction
 from typing import NoReturn, TypeAlias
 
 from designer.setting import exact
+from designer.setting.reading import suggestion
 
 MAX_LENGTH = 4000
 MAX_DEPTH = 100
@@ -345,7 +345,7 @@ class _Copier:
         known_names = [known for known in parties if known is not None]
         return self.refuse(
             f"no party is called {shorten(name)}",
-            _near(name, known_names) or f"The parties are {', '.join(known_names[:12])}.",
+            suggestion(name, known_names) or f"The parties are {', '.join(known_names[:12])}.",
         )
 
     def field(self, party: int, name: str, also: Sequence[str]) -> str:
@@ -359,7 +359,7 @@ class _Copier:
         choices = [*also, *sorted(known)]
         return self.refuse(
             f"the name {shorten(name)} is unknown",
-            _near(name, choices)
+            suggestion(name, choices)
             or (
                 f"Known here: {', '.join(choices[:12])}."
                 if choices
@@ -388,8 +388,3 @@ class _Copier:
             "an amount in the value language",
             remedy,
         )
-
-
-def _near(word: str, known: Sequence[str]) -> str:
-    near = difflib.get_close_matches(word[:80], known[:2000], n=1, cutoff=0.65)
-    return f"Did you mean '{near[0]}'?" if near else ""
