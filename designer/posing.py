@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import time
 from pathlib import Path
-from typing import Any, cast
+from typing import Any
 
 from designer.demands.plain import as_plain
 from designer.demands.terms import Demands, Terms
@@ -12,7 +12,8 @@ from designer.engines.choose import engine_named
 from designer.engines.watch import Progress, Watch
 from designer.proof.document import build
 from designer.proof.recheck import recheck
-from designer.roads import full
+from designer.roads.interim.check import check
+from designer.roads.registry import choose
 from designer.roads.settled import Settled
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
@@ -25,6 +26,7 @@ def pose(
     engine: str = "highs",
     time_limit: float | None = None,
     progress: Progress | None = None,
+    path: str | None = None,
 ) -> Verdict:
     """Whether a transfer table exists that meets every demand, and the best one if so.
 
@@ -32,6 +34,7 @@ def pose(
     demands     overrides of the scenario's own demands; None: none
     engine      "highs", or "pulp:NAME" for any engine PuLP finds; its word is only a hint
     time_limit  seconds after which the verdict is `undecided`
+    path        the road to take ("full", "interim"); None: the first that applies
     progress    called with what is being done, seconds so far and a step count
 
     Raises ScenarioError for a scenario that cannot be read and UsageError for demands that
@@ -46,7 +49,9 @@ def pose(
 
         setting = read_scenario(setting)
     terms = (demands or Demands()).over(setting)
-    return pose_terms(setting, terms, engine=engine, time_limit=time_limit, progress=progress)
+    return pose_terms(
+        setting, terms, engine=engine, time_limit=time_limit, progress=progress, path=path
+    )
 
 
 def pose_terms(
@@ -56,29 +61,37 @@ def pose_terms(
     engine: str = "highs",
     time_limit: float | None = None,
     progress: Progress | None = None,
+    path: str | None = None,
 ) -> Verdict:
     """As `pose`, with the terms already settled."""
     watch = Watch(time_limit, progress)
-    settled = full.travel(setting, terms, engine_named(engine), watch)
+    road = choose(setting, terms, path).road
+    settled = road.travel(setting, terms, engine_named(engine), watch)
     since = time.perf_counter()
-    verdict = judge(setting, terms, settled)
+    verdict = judge(setting, terms, settled, watch)
     verdict.seconds["check"] = time.perf_counter() - since
     return verdict
 
 
-def judge(setting: Setting, terms: Terms, settled: Settled) -> Verdict:
+def judge(setting: Setting, terms: Terms, settled: Settled, watch: Watch) -> Verdict:
     """Let the checker, which trusts nothing, say what the road's certificates prove."""
     document: dict[str, Any] = {}
-    holds, claims = False, cast("tuple[str, ...]", ())
+    holds = False
+    claims: tuple[str, ...] = ()
+    faults: tuple[str, ...] = ()
     if settled.status != "undecided":
         document = build(setting, as_plain(terms), settled)
         finding = recheck(document)
-        holds, claims = finding.holds, finding.claims
+        holds, claims, faults = finding.holds, finding.claims, finding.faults
+        if holds and "reduction" in document:
+            faults = tuple(check(setting, document, watch))
+            holds = not faults
+            claims = (*claims, "no rule that is not listed does better")
     goals = settled.goals
     reason = settled.reason
     status = settled.status
     if document and not holds:
-        reason = f"the checker rejects the certificate: {'; '.join(finding.faults[:3])}"
+        reason = f"the checker rejects the certificate: {'; '.join(faults[:3])}"
         status = "undecided" if status != "possible" else status
     return Verdict(
         setting=setting,
@@ -89,6 +102,7 @@ def judge(setting: Setting, terms: Terms, settled: Settled) -> Verdict:
         path=settled.path,
         program=settled.program,
         table=settled.table,
+        mechanism=settled.mechanism,
         primal=settled.primal,
         farkas=settled.farkas,
         ray=settled.ray,

@@ -6,13 +6,13 @@ the program is what the scenario and the stated terms say, by the same formulati
 
 from __future__ import annotations
 
-from fractions import Fraction
 from typing import Any
 
 from designer.demands.formulate import Formulation
 from designer.demands.plain import from_plain
 from designer.program.program import Program
-from designer.proof.document import same_program
+from designer.proof.compare import same_program
+from designer.roads.interim.check import check
 from designer.setting.exact import number
 from designer.setting.setting import Setting
 
@@ -29,6 +29,8 @@ def rebuild(setting: Setting, document: dict[str, Any]) -> list[str]:
         differences.append(
             f"the proof names the scenario {named[:12]}…, this one is {setting.digest[:12]}…"
         )
+    if "reduction" in document:
+        return differences + check(setting, document)
     try:
         program = _program(setting, document)
     except (ValueError, KeyError, TypeError) as error:
@@ -40,11 +42,10 @@ def _program(setting: Setting, document: dict[str, Any]) -> Program:
     """The program of the document's stages, goal by goal, each pinned at its stated value."""
     work = Formulation(setting, from_plain(document["terms"], setting))
     program = None
-    for stage in document["stages"]:
+    for place, stage in enumerate(document["stages"]):
+        if place and work.stages[-1].cost.any():
+            work.pin(number(document["stages"][place - 1]["value"]))
         program = work.pose(stage["goal"])
-        if stage.get("pin") is not None:
-            pinned: Fraction = number(stage["value"])
-            work.pin(pinned)
     if program is None:
         raise ValueError("no stages")
     return program

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import cached_property
@@ -11,6 +12,7 @@ from designer.demands.terms import Terms
 from designer.program.program import Program
 from designer.proof.derivation import Derivation, derive
 from designer.proof.vector import Vector
+from designer.roads.interim.mechanism import Mechanism
 from designer.roads.settled import GoalResult
 from designer.setting.setting import Setting
 from designer.table import Table
@@ -28,6 +30,7 @@ class Verdict:
     status   "possible", "impossible", "unbounded" or "undecided"
     proved   True only when exact arithmetic confirmed the status and every goal's value
     goals    one result per goal, in order; the tidy stage last, marked as such
+    mechanism  computes the table on demand, where the road gives one (see `pays`)
     table    the decision and transfer rule (possible), else None
     proof    the proof document (format designer.proof/1), {} when undecided
     claims   what the checker found the document to prove, in words
@@ -44,6 +47,7 @@ class Verdict:
     path: str
     program: Program
     table: Table | None = None
+    mechanism: Mechanism | None = None
     primal: Vector | None = None
     farkas: Vector | None = None
     ray: Vector | None = None
@@ -70,12 +74,41 @@ class Verdict:
 
         if self.table is None:
             return None
-        return audit(self.setting, self.table, subsidy=self.subsidy)
+        terms = self.terms
+        return audit(
+            self.setting,
+            self.table,
+            subsidy=self.subsidy,
+            slack=terms.slack,
+            shortfall=terms.shortfall,
+            compelled=terms.compelled,
+            limits=terms.limits,
+            side=terms.side,
+        )
 
     @property
     def subsidy(self) -> Fraction:
         """The outside money of the table: what was asked for, or the least that was found."""
-        return self.goal_values.get("outside-money") or self.terms.subsidy
+        least = self.goal_values.get("outside-money")
+        return self.terms.subsidy if least is None else least
+
+    def pays(self, profile: Sequence[str]) -> tuple[Fraction, ...]:
+        """What every party pays at a profile given by type labels, exact, in party order.
+
+        Raises ValueError if there is no table, KeyError for a label a party does not have.
+        """
+        positions = []
+        for party, label in zip(self.setting.parties, profile, strict=True):
+            labels = [type_.label for type_ in party.types]
+            if label not in labels:
+                raise KeyError(label)
+            positions.append(labels.index(label))
+        if self.mechanism is not None:
+            return self.mechanism.pays(positions)
+        if self.table is None:
+            raise ValueError(f"the verdict is {self.status}: there is no table")
+        place = self.setting.profile_of(tuple(positions))
+        return tuple(self.table.payment(i, place) for i in range(len(positions)))
 
     @property
     def transfers(self) -> pd.DataFrame:

@@ -26,15 +26,17 @@ class Formulation:
         setting: Setting,
         terms: Terms,
         free: Mapping[str, tuple[Fraction | None, Fraction | None]] | None = None,
+        draft: Draft | None = None,
     ) -> None:
         """Write every demand of `terms`; no goal yet.
 
         `free` turns allowances (subsidy, slack, shortfall, shortfall:PARTY, pays_at_most,
         pays_at_least, welfare_at_least, revenue_at_least) into unknowns within bounds.
+        `draft` is where to write; by default a new one with a column per profile.
         """
         self.setting = setting
         self.terms = terms
-        self.draft = Draft(setting, terms.decision, _amounts(terms))
+        self.draft = draft or Draft(setting, terms.decision, amounts_of(terms))
         self.stages: list[Stage] = []
         self._objectives: list[tuple[Goal, Affine]] = []
         for name, (low, high) in (free or {}).items():
@@ -139,7 +141,7 @@ def formulate(setting: Setting, terms: Terms) -> Program:
     return Formulation(setting, terms).pose(terms.goals[0])
 
 
-def _amounts(terms: Terms) -> tuple[Fraction, ...]:
+def amounts_of(terms: Terms) -> tuple[Fraction, ...]:
     """Every exact amount the terms may write into a row."""
     limits, side = terms.limits, terms.side
     found: list[Fraction | None] = [

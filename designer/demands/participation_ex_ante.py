@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
-from designer.program.affine import constants
 from designer.program.draft import Draft
 from designer.program.labels import TakesPart, always
 
@@ -15,8 +14,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
         if party.name in terms.compelled:
             continue
         label = TakesPart(party.name)
-        outside = constants(draft.outside(index), draft.setting.grain, draft.dtype)
-        gain = draft.expected_utility(index) - outside.mean(draft.weights)
+        gain = draft.expected_utility(index) - draft.expected_outside(index)
         allowed = draft.allowance("shortfall", terms.shortfall, party.name)
         draft.require(gain + allowed, ">=", "takes part", always(label))
 

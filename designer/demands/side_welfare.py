@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from designer.demands.goals.welfare import expected_welfare
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
@@ -13,7 +12,7 @@ def _rows(draft: Draft, terms: Terms) -> None:
     """E[total worth net of outlay] >= welfare_at_least."""
     floor = terms.side.welfare_at_least
     if floor is not None:
-        form = expected_welfare(draft) - draft.allowance("welfare_at_least", floor)
+        form = draft.expected_welfare() - draft.allowance("welfare_at_least", floor)
         draft.require(form, ">=", "side", lambda _: Clause("side", "welfare_at_least"))
 
 

@@ -186,6 +186,19 @@ def _clashes(terms: Terms, setting: Setting) -> list[Mistake]:
                 "Add --ic bayesian or dominant.",
             )
         )
+    if (
+        terms.limits.only_when_served
+        and terms.limits.pays_at_most is None
+        and terms.decision != "table"
+    ):
+        found.append(
+            Mistake(
+                "limits.only_when_served",
+                "no pays_at_most beside it",
+                "a cap, which bounds what is collected upon service",
+                "Add pays_at_most to [limits]; a generous one will do.",
+            )
+        )
     if "blend" in terms.goals and not terms.blend:
         found.append(
             Mistake(

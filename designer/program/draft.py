@@ -148,7 +148,8 @@ class Draft:
         """A party's worth at every profile, int (N, K), units of 1/grain."""
         party = self.setting.parties[index]
         value = party.value.astype(self.dtype)
-        return value if party.depends else value[self.type_of(index)]
+        own: IntArray = value if party.depends else value[self.type_of(index)]
+        return own
 
     def outside(self, index: int) -> IntArray:
         """A party's outside option at every profile, int (N,), units of 1/grain."""
@@ -398,6 +399,15 @@ class Draft:
         return self.chosen(everywhere, worth.astype(self.dtype), self.setting.grain).mean(
             self.weights
         )
+
+    def expected_welfare(self) -> Affine:
+        """E[sum_k x_k (sum_i v_i(k) + worth(k) - outlay(k))]; worth is the designer's."""
+        return self.expected_choice(self.welfare)
+
+    def expected_outside(self, index: int) -> Affine:
+        """E[outside_i]."""
+        form = constants(self.outside(index), self.setting.grain, self.dtype)
+        return form.mean(self.weights)
 
     def expected_pot(self) -> Affine:
         """E[sum_i t_i - sum_k x_k outlay(k)], through the interim payments."""

@@ -53,6 +53,14 @@ class ExpectedDecision(Label):
 
 
 @dataclass(frozen=True)
+class Share(Label):
+    """The share of a listed rule among the profiles where the lead party has a type."""
+
+    type: str
+    rule: int
+
+
+@dataclass(frozen=True)
 class Unknown(Label):
     """A scalar unknown: outside money, a floor, the largest payment, a margin."""
 
@@ -93,6 +101,13 @@ class Lottery(Label):
     """The probabilities of the options sum to one at a profile."""
 
     at: tuple[str, ...]
+
+
+@dataclass(frozen=True)
+class Slice(Label):
+    """The shares of the rules sum to one where the lead party has a type."""
+
+    type: str
 
 
 @dataclass(frozen=True)

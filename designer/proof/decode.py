@@ -113,7 +113,9 @@ def document(value: object) -> tuple[dict[str, Any], str]:
     parts = {"possible": ["primal"], "impossible": [reason], "unbounded": ["primal", "ray"]}
     if not isinstance(verdict, str) or verdict not in parts:
         raise Fault("the document: its verdict is not possible, impossible or unbounded")
-    top = keys(value, "the document", *_TOP, *parts[verdict])
+    extra = ["reduction"] if "reduction" in value else []
+    top = keys(value, "the document", *_TOP, *extra, *parts[verdict])
+    need(isinstance(top.get("reduction", {}), dict), "reduction: not an object")
     texts = [top["path"], *keys(top["scenario"], "scenario", "title", "digest").values()]
     plain = isinstance(top["terms"], dict) and all(isinstance(text, str) for text in texts)
     need(plain, "the document: path, title and digest must be text, terms an object")

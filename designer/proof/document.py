@@ -62,6 +62,7 @@ def build(setting: Setting, terms: Mapping[str, object], settled: Settled) -> di
         farkas=settled.farkas,
         tree=settled.tree,
         ray=settled.ray,
+        reduction=settled.reduction,
     )
 
 
@@ -77,6 +78,7 @@ def compose(
     farkas: Sparse | None = None,
     tree: Tree | None = None,
     ray: Sparse | None = None,
+    reduction: Mapping[str, object] | None = None,
 ) -> dict[str, Any]:
     """The proof document made of its parts; `goals` run along the program's stages."""
     document: dict[str, Any] = {
@@ -88,6 +90,8 @@ def compose(
         "program": plain_program(program),
         "stages": [plain_stage(stage) for stage in program.stages],
     }
+    if reduction is not None:
+        document["reduction"] = dict(reduction)
     if verdict == "impossible":
         if tree is not None:
             document["tree"] = plain_tree(tree, "farkas")

@@ -96,10 +96,17 @@ def _tighten(low: Bound, high: Bound, multipliers: Vector) -> None:
 def _needed(
     low: Bound, high: Bound, values: dict[int, Fraction], own: dict[int, Fraction]
 ) -> Fraction:
-    """The least M >= 0 for which values + M * own has a legal sign wherever own can set it."""
+    """The least M >= 0 for which values + M * own names no other side than own does.
+
+    The face holds what `own` names at that side; a sign that named the far side would be legal
+    where that is finite, but would bound with the wrong number.
+    """
     needed = Fraction(0)
     for place, value in values.items():
-        legal = low.finite[place] if value > 0 else high.finite[place]
-        if value and not legal and own.get(place):
-            needed = max(needed, -value / own[place])
+        mine = own.get(place)
+        if not value or not mine or (value > 0) == (mine > 0):
+            continue
+        both = low.finite[place] and high.finite[place]
+        if not (both and low.num[place] == high.num[place]):
+            needed = max(needed, -value / mine)
     return needed

@@ -33,6 +33,10 @@ tidy stage costs many times the answer itself.
 """
 
 
+CELLS_UP_TO = 5_000_000
+"""Payment and decision columns up to which the plain program is built (about 20 GiB)."""
+
+
 def tidies(setting: Setting, terms: Terms) -> bool:
     """Whether a closing tidy stage is due."""
     if terms.tidy == "none" or "swing" in terms.goals:
@@ -236,11 +240,11 @@ def table_of(draft: Draft, primal: Vector) -> Table:
     total, parties = setting.profiles, len(setting.parties)
     numbers = primal.numerators()
     pays, pays_den = _lowest(integers(numbers[: total * parties], (parties, total)), primal.den)
-    decides = np.zeros(draft.chance.shape, dtype=object)
-    common = math.lcm(primal.den, draft.chance_den) if (draft.chance_col >= 0).any() else 1
-    if common == 1:
-        return Table(integers(draft.chance), draft.chance_den, pays, pays_den)
     free = draft.chance_col >= 0
+    if not free.any():
+        return Table(integers(draft.chance), draft.chance_den, pays, pays_den)
+    decides = np.zeros(draft.chance.shape, dtype=object)
+    common = math.lcm(primal.den, draft.chance_den)
     columns = np.array(numbers, dtype=object)
     decides[~free] = draft.chance[~free].astype(object) * (common // draft.chance_den)
     decides[free] = columns[draft.chance_col[free]] * (common // primal.den)

@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from fractions import Fraction
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 from designer.program.program import Program
 from designer.proof.outcome import Tree
 from designer.proof.vector import Vector
 from designer.table import Table
+
+if TYPE_CHECKING:
+    from designer.roads.interim.mechanism import Mechanism
 
 Status = Literal["possible", "impossible", "unbounded", "undecided"]
 
@@ -44,6 +47,8 @@ class Settled:
     primal  over all columns of `program` (possible, unbounded)
     farkas  over the rows of stage 0 (impossible), or `tree` for whole-number programs
     ray     over the columns of the last stage (unbounded)
+    mechanism  computes the table on demand where a road gives one
+    reduction  for a road that reduces: what stands behind the program's columns
     """
 
     status: Status
@@ -51,6 +56,8 @@ class Settled:
     program: Program
     goals: tuple[GoalResult, ...]
     table: Table | None = None
+    mechanism: Mechanism | None = None
+    reduction: dict[str, object] | None = None
     primal: Vector | None = None
     farkas: Vector | None = None
     tree: Tree | None = None

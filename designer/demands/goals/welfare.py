@@ -8,13 +8,9 @@ from designer.program.affine import Affine
 from designer.program.draft import Draft
 
 
-def expected_welfare(draft: Draft) -> Affine:
-    """E[sum_k x_k (sum_i v_i(k) + worth(k) - outlay(k))]; worth is the designer's."""
-    return draft.expected_choice(draft.welfare)
-
-
 def _objective(draft: Draft, terms: Terms) -> Affine:
-    return expected_welfare(draft)
+    """E[sum_k x_k (sum_i v_i(k) + worth(k) - outlay(k))]; worth is the designer's."""
+    return draft.expected_welfare()
 
 
 GOAL = Goal("welfare", "max", "largest expected welfare", _objective)

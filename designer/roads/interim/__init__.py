@@ -1,0 +1,1 @@
+"""The interim road: decide by interim payments and interim probabilities alone."""

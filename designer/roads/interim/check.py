@@ -1,0 +1,137 @@
+"""Is a reduced proof the scenario's? Small, exact, in blocks, and trusted.
+
+A document of the interim road carries the last master program and the rules behind its share
+columns. The plain checker shows that the master's verdict is right. What is shown here is
+that the verdict carries over to the full program:
+
+1. the demands can be written in interim quantities at all (the road applies);
+2. every listed rule is one the decision demand allows, and its counts are recounted;
+3. the master's rows and columns are those that the scenario and the terms give;
+4. at the stated multipliers no rule whatever does better: the best one is found in one exact
+   pass over all profiles, slice by slice of the lead party's types.
+
+By 3 and the balance lift (`mechanism.py`) a point of the master is a table of the full
+program; by 4 its multipliers are multipliers of the full program.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from designer.demands.formulate import Formulation, amounts_of
+from designer.demands.plain import from_plain
+from designer.demands.terms import Terms
+from designer.engines.watch import Watch
+from designer.program.program import Program
+from designer.proof.compare import same_program
+from designer.roads.interim.blocks import count
+from designer.roads.interim.draft import InterimDraft
+from designer.roads.interim.master import exact_prices, rule_for
+from designer.roads.interim.mechanism import rules_from_plain
+from designer.roads.interim.road import Interim
+from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
+from designer.roads.product import as_independent
+from designer.setting.setting import Setting
+
+
+def check(setting: Setting, document: dict[str, Any], watch: Watch | None = None) -> list[str]:
+    """What keeps the document's verdict from being one about the full program; empty if nothing.
+
+    The document must have passed the plain checker.
+    """
+    watch = watch or Watch()
+    try:
+        terms = from_plain(document["terms"], setting)
+        reduction = document["reduction"]
+        lead, shares = reduction["lead"], reduction["shares"]
+        why = Interim().applies(setting, terms)
+        own = as_independent(setting)
+        if why is not None or own is None:
+            return [f"the interim road does not apply: {why}"]
+        rules = rules_from_plain(reduction["rules"], own)
+        if not (
+            isinstance(lead, int)
+            and 0 <= lead < len(own.parties)
+            and all(0 <= g < own.shape[lead] and 0 <= r < len(rules) for g, r in shares)
+            and [stage["goal"] for stage in document["stages"]] == list(terms.goals)
+        ):
+            return ["the reduction does not fit the scenario"]
+    except (KeyError, TypeError, ValueError) as error:
+        return [f"the reduction cannot be read: {error}"]
+    faults = [fault for rule in rules if (fault := _forbidden(own, terms, rule))]
+    if faults:
+        return faults[:1]
+    counts = [count(own, rule, lead, watch) for rule in rules]
+    program = _program(own, terms, lead, [(g, counts[r]) for g, r in shares])
+    differences = same_program(document, program)
+    if differences:
+        return differences
+    if document["verdict"] == "unbounded" or terms.decision == "table":
+        return []
+    return _better(own, terms, lead, program, _multipliers(document), watch)
+
+
+def _forbidden(setting: Setting, terms: Terms, rule: Rule) -> str | None:
+    """Why the decision demand does not allow a rule."""
+    if terms.decision == "table":
+        return "a rule other than the given table is listed" if rule.indices else None
+    if not rule.indices:
+        return "the given table is listed, but is not what the terms ask for"
+    if terms.decision == "efficient" and not _same(rule.indices[0], welfare_index(setting)):
+        return "a listed rule does not start with welfare"
+    return None
+
+
+def _same(one: Index, two: Index) -> bool:
+    return np.array_equal(one.options, two.options) and all(
+        np.array_equal(a, b) for a, b in zip(one.parties, two.parties, strict=True)
+    )
+
+
+def _program(
+    setting: Setting, terms: Terms, lead: int, columns: list[tuple[int, Counts]]
+) -> Program:
+    """The master that the scenario, the terms and the counts give."""
+    balance = "none" if terms.balance == "none" else "ex-ante"
+    inner = replace(terms, balance=balance, tidy="none")
+    draft = InterimDraft(
+        setting, terms.decision, amounts_of(inner), lead=lead, columns=tuple(columns)
+    )
+    return Formulation(setting, inner, draft=draft).pose(terms.goals[0])
+
+
+def _multipliers(document: dict[str, Any]) -> dict[int, Fraction]:
+    """The multipliers over rows: of the certificate of the only stage, or of impossibility."""
+    vector = document.get("farkas") or document["stages"][0]["dual"]
+    den = _whole(vector["den"])
+    return {
+        row: Fraction(_whole(number), den)
+        for row, number in zip(vector["idx"], vector["num"], strict=True)
+    }
+
+
+def _whole(value: int | str) -> int:
+    return int(value, 16) if isinstance(value, str) else value
+
+
+def _better(
+    setting: Setting,
+    terms: Terms,
+    lead: int,
+    program: Program,
+    multipliers: dict[int, Fraction],
+    watch: Watch,
+) -> list[str]:
+    """A slice in which some rule does better than the multipliers admit."""
+    prices = exact_prices(setting, lead, program, multipliers)
+    first = (welfare_index(setting),) if terms.decision == "efficient" else ()
+    best = count(setting, rule_for(setting, first, prices), lead, watch)
+    return [
+        f"an unlisted rule does better where the lead party has type {a.label}"
+        for g, a in enumerate(setting.parties[lead].types)
+        if prices.worth(best, g) > prices.slices[g]
+    ][:1]

@@ -1,0 +1,201 @@
+"""The answer of the interim road: a rule and payments that are computed when asked for.
+
+With target(theta) the pot that is wanted at theta, D(theta) = target(theta) - sum_j m_j(theta_j)
+and its main effects D_j(a) = E[D | theta_j = a] (E[D] = 0),
+
+    t_i(theta) = m_i(theta_i) + (D(theta) - sum_j D_j(theta_j)) / n
+                 + sum_{j != i} D_j(theta_j) / (n - 1)
+
+has sum_i t_i = target at every profile and E[t_i | theta_i] = m_i(theta_i): balance in every
+case at the price of balance on average (d'Aspremont & Gerard-Varet 1979, Arrow 1979, for the
+expected-externality payments; the general lift is elementary and checked in the tests).
+"""
+
+from __future__ import annotations
+
+import itertools
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from designer.roads.interim.rule import Index, Rule
+from designer.setting.exact import number, text
+from designer.setting.setting import IntArray, Setting, integers
+from designer.table import Table
+
+FORMAT = "designer.table/1"
+
+
+@dataclass(frozen=True, eq=False)
+class Mechanism:
+    """A table on demand.
+
+    mixture   per type of the lead party: (share, rule), shares summing to 1
+    pays_on_average  m_i(a)
+    effects   D_j(a), and the pot wanted over and above the outlay; None where the payments are
+              the interim payments themselves (no balance in every case was asked)
+    """
+
+    setting: Setting
+    lead: int
+    mixture: tuple[tuple[tuple[Fraction, Rule], ...], ...]
+    pays_on_average: tuple[tuple[Fraction, ...], ...]
+    effects: tuple[tuple[Fraction, ...], ...] | None = None
+    pot: Fraction = Fraction(0)
+
+    def decides(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """x_k(theta) at one profile, given by type positions."""
+        at = np.array([types], dtype=np.int64)
+        chances = [Fraction(0)] * len(self.setting.options)
+        for share, rule in self.mixture[types[self.lead]]:
+            taken, den = rule.decides(self.setting, at)
+            for k, part in enumerate(taken[0]):
+                chances[k] += share * int(part) / den
+        return tuple(chances)
+
+    def pays(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """t_i(theta) at one profile, in money units."""
+        own = [table[a] for table, a in zip(self.pays_on_average, types, strict=True)]
+        if self.effects is None:
+            return tuple(own)
+        parties = len(own)
+        outlay = sum(
+            (
+                chance * int(spent) / self.setting.grain
+                for chance, spent in zip(self.decides(types), self.setting.outlay, strict=True)
+            ),
+            Fraction(0),
+        )
+        left = outlay + self.pot - sum(own)
+        effects = [table[a] for table, a in zip(self.effects, types, strict=True)]
+        total = sum(effects, Fraction(0))
+        return tuple(
+            mine + (left - total) / parties + (total - effect) / (parties - 1)
+            for mine, effect in zip(own, effects, strict=True)
+        )
+
+    def table(self) -> Table:
+        """Every profile, for settings small enough to hold."""
+        setting = self.setting
+        types = np.array(list(itertools.product(*map(range, setting.shape))), dtype=np.int64)
+        chances, den = self._chances(types)
+        pays = [
+            np.array([table[a] for a in types[:, i]], dtype=object)
+            for i, table in enumerate(self.pays_on_average)
+        ]
+        if self.effects is not None:
+            parties = len(pays)
+            spent = (chances * setting.outlay.astype(object)).sum(axis=1)
+            left = np.array([Fraction(int(s), den * setting.grain) for s in spent], dtype=object)
+            left = left + self.pot - sum(pays)
+            effects = [
+                np.array([table[a] for a in types[:, i]], dtype=object)
+                for i, table in enumerate(self.effects)
+            ]
+            total = sum(effects)
+            pays = [
+                mine + (left - total) / parties + (total - effect) / (parties - 1)
+                for mine, effect in zip(pays, effects, strict=True)
+            ]
+        common = math.lcm(*{value.denominator for row in pays for value in row})
+        whole = [[int(value * common) for value in row] for row in pays]
+        return Table(integers(chances), den, integers(whole), common)
+
+    def _chances(self, types: IntArray) -> tuple[IntArray, int]:
+        dens = {share.denominator for mix in self.mixture for share, _ in mix}
+        rule_den = self.setting.rule_den if self.setting.rule is not None else 1
+        den = math.lcm(*dens) * rule_den
+        chances = np.zeros((len(types), len(self.setting.options)), dtype=object)
+        for g, mix in enumerate(self.mixture):
+            here = np.flatnonzero(types[:, self.lead] == g)
+            for share, rule in mix:
+                taken, own = rule.decides(self.setting, types[here])
+                chances[here] += taken.astype(object) * int(share * den / own)
+        shared = math.gcd(den, *(int(v) for v in chances.flat))
+        return chances // shared, den // shared
+
+    def plain(self) -> dict[str, Any]:
+        """As the JSON document that `--save` writes as table.json."""
+        return {
+            "format": FORMAT,
+            "scenario": {"title": self.setting.title, "digest": self.setting.digest},
+            "money": self.setting.money,
+            "sign": "pays is paid BY the party; negative amounts are received",
+            "lead": self.lead,
+            "mixture": [
+                [
+                    {"share": text(share), "indices": [index.plain() for index in rule.indices]}
+                    for share, rule in mix
+                ]
+                for mix in self.mixture
+            ],
+            "pays_on_average": _texts(self.pays_on_average),
+            "effects": None if self.effects is None else _texts(self.effects),
+            "pot": text(self.pot),
+        }
+
+
+def _texts(tables: tuple[tuple[Fraction, ...], ...]) -> list[list[str]]:
+    return [[text(value) for value in table] for table in tables]
+
+
+def from_plain(plain: dict[str, Any], setting: Setting) -> Mechanism:
+    """The mechanism that `Mechanism.plain` wrote. Raises ValueError for anything else."""
+    try:
+        if plain["format"] != FORMAT:
+            raise ValueError(f"the format is {plain['format']!r}, not {FORMAT!r}")
+        mixture = tuple(
+            tuple((number(part["share"]), _rule(part["indices"], setting)) for part in mix)
+            for mix in plain["mixture"]
+        )
+        average = _numbers(plain["pays_on_average"], setting)
+        effects = plain["effects"]
+        lead = plain["lead"]
+        if not 0 <= lead < len(setting.parties) or len(mixture) != setting.shape[lead]:
+            raise ValueError("the mixture does not fit the lead party's types")
+        if any(
+            sum(share for share, _ in mix) != 1 or any(s < 0 for s, _ in mix) for mix in mixture
+        ):
+            raise ValueError("shares must be at least 0 and sum to 1")
+        return Mechanism(
+            setting,
+            lead,
+            mixture,
+            average,
+            None if effects is None else _numbers(effects, setting),
+            number(plain["pot"]),
+        )
+    except (KeyError, TypeError, IndexError, AttributeError) as error:
+        raise ValueError(f"not a table document: {error!r}") from None
+
+
+def rules_from_plain(plain: Any, setting: Setting) -> list[Rule]:
+    """Rules from lists of plain indices. Raises ValueError or TypeError for anything else."""
+    return [_rule(indices, setting) for indices in plain]
+
+
+def _numbers(rows: Any, setting: Setting) -> tuple[tuple[Fraction, ...], ...]:
+    tables = tuple(tuple(number(value) for value in row) for row in rows)
+    if tuple(len(table) for table in tables) != setting.shape:
+        raise ValueError("the tables do not fit the parties' types")
+    return tables
+
+
+def _rule(indices: Any, setting: Setting) -> Rule:
+    found = []
+    options = len(setting.options)
+    for index in indices:
+        tables = [
+            np.array([[int(v) for v in row] for row in t], dtype=object) for t in index["parties"]
+        ]
+        row = np.array([int(v) for v in index["options"]], dtype=object)
+        if [t.shape for t in tables] != [(n, options) for n in setting.shape] or len(
+            row
+        ) != options:
+            raise ValueError("an index does not fit the parties' types")
+        found.append(Index(tuple(tables), row))
+    return Rule(tuple(found))
