@@ -10,8 +10,9 @@ may be taken from the parties' own worths. Prices are best for a designer who do
 a worth of hers they are the best of those searched. Indifferent parties agree.
 
 Source: K. M. Hagerty and W. P. Rogerson (1987), Robust trading mechanisms, Journal of Economic
-Theory 42:94-107: for trade, prices posted without regard to the reports, and lotteries over
-them, are all that honesty in dominant strategies, participation and balance in every case leave.
+Theory 42:94-107 (first page looked up): for trade on a continuum, posted prices and lotteries
+over them are all that honesty in dominant strategies, participation and balance in every case
+leave. On a coarse grid of types a little more may be possible; `designer pose` tells.
 """
 
 from __future__ import annotations
@@ -50,7 +51,7 @@ def best_prices(setting: Setting, found: Deal) -> list[Fraction]:
     cost = int(found.cost * den)
     levels = [np.sort(net.num.astype(object) * (den // net.den)) for net in found.net]
     gains = _gains_from(setting, found)
-    best: tuple[int, list[int]] = (0, [0])
+    best: tuple[int, list[int]] | None = None
     n = len(levels)
     for rest in range(n):
         # Everyone else's price at one of her own worths; party `rest` bears what is missing.
@@ -65,11 +66,18 @@ def best_prices(setting: Setting, found: Deal) -> list[Fraction]:
         index.insert(rest, accepts)
         value = gains[tuple(index)]
         at = np.unravel_index(int(value.argmax()), value.shape) if others else ()
-        if int(value[at]) > best[0] or len(best[1]) < n:
+        if best is None or int(value[at]) > best[0]:
             prices = [int(levels[i][grid[at]]) for i, grid in zip(others, grids, strict=True)]
             prices.insert(rest, int(missing[at]))
             best = (int(value[at]), prices)
-    return [Fraction(price, den) for price in best[1]]
+    if best is None:
+        raise AssertionError("a deal has parties")
+    worth, prices = best
+    if worth < 0 and n > 1:
+        # The designer's own worth speaks against every price: ask one more than anyone gives.
+        prices = [int(levels[0][-1]) + den, *[0] * (n - 1)]
+        prices[1] = cost - prices[0]
+    return [Fraction(price, den) for price in prices]
 
 
 def _gains_from(setting: Setting, found: Deal) -> IntArray:
