@@ -8,6 +8,7 @@ import io
 import json
 import os
 import sys
+import threading
 import time
 import traceback
 from collections.abc import Callable, Mapping, Sequence
@@ -26,6 +27,8 @@ WIDEST = 100
 """Columns beyond which lines get hard to read."""
 PATIENCE = 2.0
 """Seconds of work after which progress is shown."""
+TICK = 0.5
+"""Seconds between two looks of a progress line that is written over."""
 EVERY = 5.0
 """Seconds between two progress lines where they cannot be written over."""
 
@@ -171,7 +174,8 @@ class Progress:
     wanted  True: also where stderr is no terminal, a line every few seconds; False: never;
             None: on a terminal only
 
-    Used as the `progress` of `pose`; `close` wipes the line.
+    Used as the `progress` of `pose`; `close`, or the end of a with block, wipes the line. The
+    line has a clock of its own, as an engine may be silent for long.
     """
 
     def __init__(self, wanted: bool | None) -> None:
@@ -179,24 +183,47 @@ class Progress:
         self.stream = sys.stderr
         self.terminal = self.stream.isatty() and os.environ.get("TERM") != "dumb"
         self.shown = wanted if wanted is not None else self.terminal
-        self.last = 0.0
+        self.start = time.monotonic()
+        self.doing, self.steps = "work", 0
         self.width = 0
+        self.over = threading.Event()
+        self.clock = threading.Thread(target=self._tick, daemon=True)
+        if self.shown:
+            self.clock.start()
+
+    def __enter__(self) -> Progress:
+        """Enter a with block that closes the line."""
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        """Close the line."""
+        self.close()
+
+    def close(self) -> None:
+        """Stop the clock and wipe the line."""
+        self.over.set()
+        if self.shown:
+            self.clock.join()
+        if self.width:
+            write(self.stream, f"\r{' ' * self.width}\r")
+            self.width = 0
 
     def __call__(self, doing: str, seconds: float, steps: int) -> None:
-        """Say what is being done, for how long, and how far it is."""
-        if not self.shown or seconds < PATIENCE:
-            return
-        text = f"{doing}: {seconds:.0f} s" + (f", step {steps:,}" if steps else "")
+        """Take note of what is being done and how far it is."""
+        self.doing, self.steps = doing, steps
+
+    def _tick(self) -> None:
+        wait = PATIENCE
+        while not self.over.wait(wait):
+            wait = TICK if self.terminal else EVERY
+            self.draw(time.monotonic() - self.start)
+
+    def draw(self, seconds: float) -> None:
+        """Write the line: what is being done, for how long, how far it is."""
+        text = f"{self.doing}: {seconds:.0f} s" + (f", step {self.steps:,}" if self.steps else "")
         if self.terminal:
             blank = " " * max(0, self.width - len(text))
             self.width = len(text)
             write(self.stream, f"\r{text}{blank}")
-        elif time.monotonic() - self.last >= EVERY:
-            self.last = time.monotonic()
+        else:
             write(self.stream, f"{text}\n")
-
-    def close(self) -> None:
-        """Wipe the line."""
-        if self.width:
-            write(self.stream, f"\r{' ' * self.width}\r")
-            self.width = 0

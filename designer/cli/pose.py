@@ -119,10 +119,8 @@ def _posed(
 ) -> Verdict:
     from designer.posing import pose
 
-    try:
+    with progress:
         return pose(setting, demands, engine=engine, time_limit=time_limit, progress=progress)
-    finally:
-        progress.close()
 
 
 def _save(verdict: Verdict, folder: Path | None, output: Output) -> dict[str, str]:

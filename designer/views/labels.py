@@ -16,6 +16,8 @@ from designer.program.labels import (
     Lottery,
     Pays,
     Pin,
+    Share,
+    Slice,
     TakesPart,
     Unknown,
 )
@@ -44,6 +46,8 @@ def term(label: Label) -> str:
             return f"Pr[{option} | {', '.join(at)}]"
         case ExpectedDecision(party, kind, option):
             return f"Pr[{option} | {party} {kind}]"
+        case Share(kind, rule):
+            return f"[share of rule {rule} | {kind}]"
         case Unknown(name):
             return f"[{name}]"
     return f"[{label}]"
@@ -95,6 +99,10 @@ def axis_name(label: Label) -> str:
 def sentence(label: Label | None, folds: int = 1) -> str:
     """The demand a row stands for; `folds` rows of a family may be folded into one line."""
     match label:
+        case Slice(kind):
+            return f"the shares of the rules where the leading party is {kind} add up to 1"
+        case Share(kind, rule):
+            return f"the share of rule {rule} where the leading party is {kind} is at least 0"
         case None | Lottery():
             return "the chances of the decisions are at least 0 and add up to 1"
         case Honest(party, true, told, at):
