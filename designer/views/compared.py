@@ -27,7 +27,9 @@ def compared(found: Comparison) -> Page:
     page += [heading("Type by type"), _fortunes(found)]
     first = found.names[0]
     page.append(
-        paragraph(f"Expected utility under {first}, and what the others add to it or take away.")
+        paragraph(
+            f"Expected utility, and expected pot, under {first}, and what the others add or take."
+        )
     )
     page += [heading("Who gains, who loses")]
     for at, name in enumerate(found.names[1:], start=1):
@@ -55,14 +57,24 @@ def _fortunes(found: Comparison) -> Grid:
         ]
         return "; ".join(parts)
 
+    pots = [table.expected_pot for table in found.tables]
+    more = [pot - pots[0] for pot in pots[1:]]
+    pot_row = ["the pot", "", cell(pots[0]), *(_signed(cell(gain), gain) for gain in more)]
+    pot_words = f"{found.names[0]} {amount(pots[0], found.setting.money)}" + "".join(
+        f"; {name} {_signed(amount(gain), gain)}"
+        for name, gain in zip(found.names[1:], more, strict=True)
+    )
     return Grid(
         columns=[
             Column("party"),
             Column("type"),
             *(Column(name, right=True) for name in found.names),
         ],
-        rows=[row(change) for change in found.changes],
-        stacked=[(f"{change.party}, {change.type}", sentence(change)) for change in found.changes],
+        rows=[*(row(change) for change in found.changes), pot_row],
+        stacked=[
+            *((f"{change.party}, {change.type}", sentence(change)) for change in found.changes),
+            ("the pot", pot_words),
+        ],
     )
 
 
