@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 
 import numpy as np
@@ -12,17 +13,15 @@ from designer.setting.setting import Setting
 def as_independent(setting: Setting) -> Setting | None:
     """The setting with independent priors, if its joint prior is a product; else None.
 
-    Exact: weight(theta) * total^(n-1) must equal the product of the marginal weights at every
-    profile, in integers.
+    Exact: weight(theta) * prod_i total_i must equal total * prod_i weight_i(theta_i) at every
+    profile, in integers, with total_i the sum of party i's own weights.
     """
     if setting.joint is None:
         return setting
     product = np.ones(1, dtype=object)
     for party in setting.parties:
         product = np.multiply.outer(product, np.array(party.weights, dtype=object)).ravel()
-    scale = 1
-    for _ in setting.parties[1:]:
-        scale *= setting.total_weight
-    if not np.array_equal(setting.joint.astype(object) * scale, product):
+    scale = math.prod(sum(party.weights) for party in setting.parties)
+    if not np.array_equal(setting.joint.astype(object) * scale, product * setting.total_weight):
         return None
     return replace(setting, joint=None, support_only=False)

@@ -213,7 +213,8 @@ class _Pass:
                 rest = np.multiply.outer(rest, own).ravel()
         party = self.inner[place]
         rows = np.moveaxis(grid, place, 0).reshape(self.shape[party], -1)
-        return (rows @ rest).astype(object) * np.array(self.weights[party], dtype=object)
+        totals: IntArray = (rows @ rest).astype(object)
+        return totals * np.array(self.weights[party], dtype=object)
 
 
 def _outer_sum(tables: list[npt.NDArray[np.int64]]) -> npt.NDArray[np.int64]:
@@ -230,9 +231,8 @@ def _at_least(scores: list[list[npt.NDArray[np.int64]]], k: int, other: int) -> 
     for limb in reversed(scores[1:]):
         carry = (limb[k] - limb[other] + carry) >> LIMB
     if len(scores) == 1:
-        mask: Mask = scores[0][k] >= scores[0][other]
-        return mask
-    return (scores[0][k] - scores[0][other] + carry) >= 0
+        return np.asarray(scores[0][k] >= scores[0][other], dtype=bool)
+    return np.asarray((scores[0][k] - scores[0][other] + carry) >= 0, dtype=bool)
 
 
 def _count_table(setting: Setting, lead: int) -> Counts:

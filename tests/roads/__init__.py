@@ -1,0 +1,1 @@
+"""The roads: each against the plain program, by exact value."""
