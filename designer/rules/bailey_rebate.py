@@ -17,19 +17,20 @@ from fractions import Fraction
 from designer.rules import checks
 from designer.rules.amounts import Amounts, total
 from designer.rules.kinds import Built, Rule
-from designer.rules.profiles import TIES, chosen, first_best
+from designer.rules.profiles import TIES, chosen, first_best, total_worth
 from designer.rules.rebates import pivotal_parts, with_rebates
 from designer.rules.shares import absorbed_others
 from designer.setting.setting import Setting
 
 
-def surplus_without(setting: Setting, party: int) -> Amounts:
+def surplus_without(setting: Setting, welfare: Amounts, party: int) -> Amounts:
     """R_-i(theta_-i), the pivotal payments of the others among themselves: (N,)."""
-    choice = first_best(absorbed_others(setting, party))
+    alone = absorbed_others(setting, welfare, party)
+    choice = first_best(alone)
     found = []
     for j in range(len(setting.parties)):
         if j != party:
-            rest = absorbed_others(setting, party, j)
+            rest = absorbed_others(setting, alone, j)
             found.append(Amounts(rest.num.max(axis=1), rest.den) - chosen(rest, choice))
     return total(found)
 
@@ -38,7 +39,8 @@ def build(setting: Setting) -> Built:
     """Build the pivotal rule over equal shares, less the rebates."""
     n = len(setting.parties)
     choice, paid = pivotal_parts(setting)
-    rebates = [surplus_without(setting, i).times(Fraction(1, n)) for i in range(n)]
+    welfare = total_worth(setting)
+    rebates = [surplus_without(setting, welfare, i).times(Fraction(1, n)) for i in range(n)]
     return Built(with_rebates(setting, choice, paid, rebates), (TIES,))
 
 

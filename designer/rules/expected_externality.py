@@ -36,6 +36,7 @@ from designer.rules.profiles import (
     efficient,
     expected_by_type,
     independent,
+    total_worth,
 )
 from designer.rules.shares import absorbed_others, share
 from designer.setting.setting import IntArray, Setting
@@ -44,8 +45,9 @@ from designer.table import Table
 
 def externalities(setting: Setting, choice: IntArray) -> list[Amounts]:
     """Find g_i(a), what a party of type a brings the others on average: (T_i,) each."""
+    welfare = total_worth(setting)
     return [
-        expected_by_type(setting, i, chosen(absorbed_others(setting, i), choice))
+        expected_by_type(setting, i, chosen(absorbed_others(setting, welfare, i), choice))
         for i in range(len(setting.parties))
     ]
 

@@ -95,17 +95,19 @@ def bet(setting: Setting, party: int, gain: Amounts) -> Amounts:
 def build(setting: Setting) -> Built:
     """Build the pivotal rule with the bets that take its gains back."""
     choice = efficient(setting)
-    welfare = chosen(total_worth(setting), choice)
+    welfare = total_worth(setting)
+    reached = chosen(welfare, choice)
     pays, notes = [], [TIES]
     for i, party in enumerate(setting.parties):
-        best = best_without(setting, i)
-        bets = bet(setting, i, welfare - best - outside(setting, i))
+        rest = others(setting, welfare, i)
+        best = best_without(rest)
+        bets = bet(setting, i, reached - best - outside(setting, i))
         size = Fraction(largest(bets.num), bets.den)
         shown = f"{text(size)} " if len(text(size)) < 20 else ""
         notes.append(
             f"{party.name} bets up to {shown}{setting.money} (about {decimal(size)}) on the others."
         )
-        pays.append(best - chosen(others(setting, i), choice) + bets)
+        pays.append(best - chosen(rest, choice) + bets)
     return Built(Table(certain(setting, choice), 1, *stacked(pays)), tuple(notes))
 
 

@@ -11,30 +11,37 @@ Source: T. Groves (1973), Incentives in teams, Econometrica 41:617-631, Theorem 
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable
 
 from designer.rules import checks
 from designer.rules.amounts import Amounts, stacked
 from designer.rules.kinds import Built, Rule
-from designer.rules.profiles import TIES, certain, chosen, efficient, total_worth, worth
+from designer.rules.profiles import TIES, certain, chosen, first_best, total_worth, worth
 from designer.setting.setting import Setting
 from designer.table import Table
 
 
-def others(setting: Setting, party: int) -> Amounts:
-    """W_-i(k, theta), which the party's own type does not move: (N, K)."""
-    return total_worth(setting) - worth(setting, party)
+def others(setting: Setting, welfare: Amounts, party: int) -> Amounts:
+    """W_-i(k, theta), which the party's own type does not move: (N, K).
 
-
-def groves(setting: Setting, offsets: Sequence[Amounts] | None = None) -> Table:
-    """Build the Groves rule of the given offsets h_i, over profiles (N,); none: all 0.
-
-    It is for the caller to see that h_i does not move with the party's own type.
+    welfare  total_worth(setting)
     """
-    choice = efficient(setting)
-    pays = [chosen(others(setting, i), choice).times(-1) for i in range(len(setting.parties))]
-    if offsets is not None:
-        pays = [part + offset for part, offset in zip(pays, offsets, strict=True)]
+    return welfare - worth(setting, party)
+
+
+def groves(setting: Setting, offset: Callable[[int, Amounts], Amounts] | None = None) -> Table:
+    """Build the Groves rule of any offsets.
+
+    offset  h_i over profiles, (N,), from the party and W_-i, (N, K); None: all 0. It is for
+            the caller to see that h_i does not move with the party's own type.
+    """
+    welfare = total_worth(setting)
+    choice = first_best(welfare)
+    pays = []
+    for i in range(len(setting.parties)):
+        rest = others(setting, welfare, i)
+        due = chosen(rest, choice).times(-1)
+        pays.append(due if offset is None else due + offset(i, rest))
     return Table(certain(setting, choice), 1, *stacked(pays))
 
 

@@ -17,7 +17,7 @@ import numpy as np
 
 from designer.rules import checks
 from designer.rules.amounts import Amounts
-from designer.rules.groves import groves, others
+from designer.rules.groves import groves
 from designer.rules.kinds import Built, Refusal, Rule
 from designer.rules.profiles import TIES
 from designer.setting.setting import Setting
@@ -44,11 +44,11 @@ def escapable(setting: Setting) -> Refusal | None:
 
 def build(setting: Setting) -> Built:
     """Build the Groves rule whose offset is the best decision that leaves one out."""
-    offsets = []
-    for i in range(len(setting.parties)):
-        rest = others(setting, i)
-        offsets.append(Amounts(rest.num[:, without(setting, i)].max(axis=1), rest.den))
-    return Built(groves(setting, offsets), (TIES,))
+
+    def best(party: int, rest: Amounts) -> Amounts:
+        return Amounts(rest.num[:, without(setting, party)].max(axis=1), rest.den)
+
+    return Built(groves(setting, best), (TIES,))
 
 
 RULE = Rule(

@@ -14,22 +14,20 @@ from __future__ import annotations
 
 from designer.rules import checks
 from designer.rules.amounts import Amounts
-from designer.rules.groves import groves, others
+from designer.rules.groves import groves
 from designer.rules.kinds import Built, Rule
 from designer.rules.profiles import TIES
 from designer.setting.setting import Setting
 
 
-def best_without(setting: Setting, party: int) -> Amounts:
-    """The most the others, party 0 among them, could have by themselves: (N,)."""
-    rest = others(setting, party)
+def best_without(rest: Amounts) -> Amounts:
+    """The most the others, party 0 among them, could have by themselves: (N,) from (N, K)."""
     return Amounts(rest.num.max(axis=1), rest.den)
 
 
 def build(setting: Setting) -> Built:
     """Build the Groves rule whose offset is what the others could have without one."""
-    offsets = [best_without(setting, i) for i in range(len(setting.parties))]
-    return Built(groves(setting, offsets), (TIES,))
+    return Built(groves(setting, lambda _, rest: best_without(rest)), (TIES,))
 
 
 RULE = Rule(

@@ -16,7 +16,7 @@ from __future__ import annotations
 from designer.rules import checks
 from designer.rules.amounts import Amounts, stacked
 from designer.rules.kinds import Built, Rule
-from designer.rules.profiles import TIES, certain, chosen, efficient
+from designer.rules.profiles import TIES, certain, chosen, efficient, total_worth
 from designer.rules.shares import absorbed_others, share
 from designer.setting.setting import IntArray, Setting
 from designer.table import Table
@@ -24,9 +24,9 @@ from designer.table import Table
 
 def taxes(setting: Setting, choice: IntArray) -> list[Amounts]:
     """What each pays above her share of the outlay, at least 0: (N,) each."""
-    found = []
+    welfare, found = total_worth(setting), []
     for i in range(len(setting.parties)):
-        rest = absorbed_others(setting, i)
+        rest = absorbed_others(setting, welfare, i)
         found.append(Amounts(rest.num.max(axis=1), rest.den) - chosen(rest, choice))
     return found
 

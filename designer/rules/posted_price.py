@@ -49,7 +49,8 @@ def best_prices(setting: Setting, found: Deal) -> list[Fraction]:
     """Find prices that add up to the outlay and yield the most expected worth."""
     den = math.lcm(found.cost.denominator, *(net.den for net in found.net))
     cost = int(found.cost * den)
-    levels = [np.sort(net.num.astype(object) * (den // net.den)) for net in found.net]
+    bound = max(largest(net.num) for net in found.net) * den * len(found.net) + abs(cost)
+    levels = [np.sort(held(net.num, bound) * (den // net.den)) for net in found.net]
     gains = _gains_from(setting, found)
     best: tuple[int, list[int]] | None = None
     n = len(levels)
@@ -58,13 +59,13 @@ def best_prices(setting: Setting, found: Deal) -> list[Fraction]:
         others = [i for i in range(n) if i != rest]
         ranks = [np.unique(levels[i], return_index=True)[1] for i in others]
         grids = np.meshgrid(*ranks, indexing="ij") if others else []
-        missing: IntArray = np.full(grids[0].shape if grids else (), cost, dtype=object)
+        missing: IntArray = np.full(grids[0].shape if grids else (), cost, dtype=levels[0].dtype)
         for i, grid in zip(others, grids, strict=True):
             missing = missing - levels[i][grid]
         accepts = np.searchsorted(levels[rest], missing.ravel()).reshape(missing.shape)
         index: list[IntArray] = list(grids)
-        index.insert(rest, accepts)
-        value = gains[tuple(index)]
+        index.insert(rest, np.minimum(accepts, len(levels[rest]) - 1))
+        value = np.where(accepts < len(levels[rest]), gains[tuple(index)], 0)
         at = np.unravel_index(int(value.argmax()), value.shape) if others else ()
         if best is None or int(value[at]) > best[0]:
             prices = [int(levels[i][grid[at]]) for i, grid in zip(others, grids, strict=True)]
@@ -84,7 +85,7 @@ def _gains_from(setting: Setting, found: Deal) -> IntArray:
     """Sum up, for each rank of acceptance, the expected worth of the deal.
 
     Entry (a_1, ..., a_n) is proportional to the worth when party i accepts from its a_i-th
-    lowest net worth on; rank T_i means never. Shape (T_1 + 1, ..., T_n + 1).
+    lowest net worth on. Shape (T_1, ..., T_n).
     """
     rows, den = nets(setting, found)
     change = Amounts(setting.worth[[found.on]] - setting.worth[[found.off]], setting.grain)
@@ -94,7 +95,7 @@ def _gains_from(setting: Setting, found: Deal) -> IntArray:
     for i, net in enumerate(found.net):
         rising = np.argsort(net.num, kind="stable")
         sums = np.flip(np.flip(sums.take(rising, axis=i), axis=i).cumsum(axis=i), axis=i)
-    return np.pad(sums, [(0, 1)] * sums.ndim)
+    return sums
 
 
 def build(setting: Setting) -> Built:

@@ -13,9 +13,7 @@ from __future__ import annotations
 
 from fractions import Fraction
 
-import numpy as np
-
-from designer.rules.amounts import Amounts, total
+from designer.rules.amounts import Amounts
 from designer.rules.profiles import outlay, worth
 from designer.setting.setting import Setting
 
@@ -30,8 +28,11 @@ def absorbed(setting: Setting, party: int) -> Amounts:
     return worth(setting, party) - share(setting)
 
 
-def absorbed_others(setting: Setting, *without: int) -> Amounts:
-    """Sum up the absorbed worths of the other parties, and the designer's own: (N, K)."""
-    rest = [absorbed(setting, j) for j in range(len(setting.parties)) if j not in without]
-    shape = (setting.profiles, len(setting.options))
-    return total([*rest, Amounts(np.broadcast_to(setting.worth, shape), setting.grain)])
+def absorbed_others(setting: Setting, welfare: Amounts, *without: int) -> Amounts:
+    """Sum up the absorbed worths of the other parties, and the designer's own: (N, K).
+
+    welfare  total_worth(setting), in which the shares add up to the outlay
+    """
+    for party in without:
+        welfare = welfare - absorbed(setting, party)
+    return welfare
