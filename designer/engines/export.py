@@ -15,7 +15,7 @@ from pathlib import Path
 import numpy as np
 
 from designer.engines.floats import FloatProgram
-from designer.engines.highs import load, quiet_highs
+from designer.engines.model import load, quiet_highs
 from designer.engines.report import FloatArray
 from designer.errors import Mistake, UsageError
 from designer.files import write_atomic

@@ -7,28 +7,33 @@ before `output_flag` is off, so the base class is built and silenced first.
 
 from __future__ import annotations
 
-import signal
-import threading
 import time
-from collections.abc import Iterator
-from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
-from types import FrameType
+from math import isfinite
 from typing import Any
 
 import numpy as np
 
 from designer.engines.floats import FloatProgram, floats
-from designer.engines.report import BASIC, LOWER, UPPER, ZERO, Basis, Report, Said
+from designer.engines.listening import Stop, listening
+from designer.engines.model import (
+    bring_back,
+    load,
+    multipliers_of,
+    point_of,
+    presolved,
+    quiet_highs,
+    read_basis,
+    their_basis,
+    word,
+)
+from designer.engines.report import Basis, Report, Said
 from designer.engines.watch import Watch
 from designer.program.linear import LinearProgram
 
 SMALL = 20_000
 """Nonzeros below which a solve takes milliseconds: run it without callbacks."""
-
-EVERY = 0.2
-"""Seconds between two progress reports."""
 
 
 @dataclass(frozen=True)
@@ -75,8 +80,24 @@ class Highs:
         began = time.monotonic()
         if watch.left <= 0:
             return Report("time-limit", self.name, message="no time left to start")
+        mixed, large = bool(program.integer.any()), len(program.data) >= SMALL
         model = quiet_highs()
-        mixed = bool(program.integer.any())
+        self._set(model, watch, tolerance)
+        if not load(model, program):
+            return Report("failed", self.name, message="the model was refused")
+        if mixed:
+            model.setOptionValue("mip_rel_gap", self.gap)
+        if basis is not None:
+            model.setBasis(their_basis(basis))
+        elif large and not mixed:
+            report = self._in_steps(model, program, watch, tolerance, began)
+            if report is not None:
+                return report
+        with listening(model, watch, mixed or large) as stop:
+            model.run()
+        return _report(model, program, self.name, began, stop)
+
+    def _set(self, model: Any, watch: Watch, tolerance: float | None) -> None:
         if watch.limit is not None:
             model.setOptionValue("time_limit", watch.left)
         if self.threads:
@@ -84,15 +105,47 @@ class Highs:
         if tolerance is not None:
             model.setOptionValue("primal_feasibility_tolerance", tolerance)
             model.setOptionValue("dual_feasibility_tolerance", tolerance)
-        if mixed:
-            model.setOptionValue("mip_rel_gap", self.gap)
-        if not load(model, program):
-            return Report("failed", self.name, message="the model was refused")
-        if basis is not None:
-            model.setBasis(_their_basis(basis))
-        with _listening(model, watch, mixed or len(program.data) >= SMALL) as stop:
-            model.run()
-        return _report(model, program, self.name, began, stop)
+
+    def _in_steps(
+        self,
+        model: Any,
+        program: FloatProgram,
+        watch: Watch,
+        tolerance: float | None,
+        began: float,
+    ) -> Report | None:
+        """Presolve, solve what is left, and bring its basis back; None: do it the usual way.
+
+        `run` would then factor the whole basis once more to confirm the answer, which takes
+        most of its time on large programs; here the exact proof is the confirmation. Only
+        the basis is reported: the values HiGHS keeps are not those of its corner.
+        """
+        with listening(model, watch, True) as stop:
+            if watch.progress is not None:
+                watch.progress("presolve", watch.seconds, 0)
+            model.presolve()
+        early = presolved(model)
+        if stop.interrupted:
+            early = "interrupted"
+        if early is not None and early != "reduced":
+            return None if early == "whole" else self._word(early, began)
+        smaller = quiet_highs()
+        self._set(smaller, watch, tolerance)
+        smaller.setOptionValue("presolve", "off")
+        smaller.passModel(model.getPresolvedLp())
+        with listening(smaller, watch, True) as stop:
+            smaller.run()
+        report = _report(smaller, None, self.name, began, stop)
+        if report.status != "optimal":
+            return report
+        bring_back(model, smaller)
+        basis = read_basis(model, program, retained=True)
+        if basis is None:
+            return None
+        return replace(report, basis=basis, seconds=time.monotonic() - began)
+
+    def _word(self, status: Said, began: float) -> Report:
+        return Report(status, self.name, seconds=time.monotonic() - began, message="in presolve")
 
     def cross(self, lp: LinearProgram, report: Report, watch: Watch) -> Report:
         """Make an optimal corner of another engine's optimal point, by HiGHS's crossover."""
@@ -118,72 +171,6 @@ class Highs:
 HIGHS = Highs()
 
 
-def quiet_highs() -> Any:
-    """Make a HiGHS instance that prints nothing, not even its banner."""
-    import highspy
-
-    model = highspy.Highs.__bases__[0]()
-    model.setOptionValue("output_flag", False)
-    model.setOptionValue("small_matrix_value", 1e-12)
-    return model
-
-
-def load(model: Any, program: FloatProgram) -> bool:
-    """Pass the float program to HiGHS; whether all of it arrived."""
-    integer, rows, columns = program.integer, len(program.row_lo), len(program.cost)
-    status = model.passModel(
-        columns,
-        rows,
-        len(program.data),
-        2,  # row-wise
-        1,  # minimise
-        0.0,
-        program.cost,
-        program.col_lo,
-        program.col_hi,
-        program.row_lo,
-        program.row_hi,
-        program.indptr.astype(np.int32),
-        program.indices.astype(np.int32),
-        program.data,
-        integer.astype(np.int32),
-    )
-    return int(status) != -1 and model.getNumCol() == columns and model.getNumRow() == rows
-
-
-def read_basis(model: Any, program: FloatProgram) -> Basis | None:
-    """Return the basis HiGHS ended with, if it has one."""
-    theirs = model.getBasis()
-    if not theirs.valid:
-        return None
-    return Basis(
-        _ours(theirs.col_status, np.isfinite(program.col_lo), np.isfinite(program.col_hi)),
-        _ours(theirs.row_status, np.isfinite(program.row_lo), np.isfinite(program.row_hi)),
-    )
-
-
-def _ours(statuses: list[Any], lo: Any, hi: Any) -> Any:
-    ours = np.array([int(status) for status in statuses], dtype=np.int8)
-    # 'nonbasic' without a side, and sides that have no bound, fall back to the bound there is
-    ours[(ours > ZERO) | ((ours == ZERO) & (lo | hi))] = LOWER
-    ours[(ours == LOWER) & ~lo] = UPPER
-    ours[(ours == UPPER) & ~hi] = LOWER
-    ours[(ours != BASIC) & ~lo & ~hi] = ZERO
-    return ours
-
-
-def _their_basis(basis: Basis) -> Any:
-    import highspy
-
-    words = [highspy.HighsBasisStatus(code) for code in range(4)]
-    theirs = highspy.HighsBasis()
-    theirs.col_status = [words[code] for code in basis.columns.tolist()]
-    theirs.row_status = [words[code] for code in basis.rows.tolist()]
-    theirs.valid = True
-    theirs.alien = True  # HiGHS then repairs a singular or miscounted basis instead of refusing
-    return theirs
-
-
 @cache
 def _version() -> str:
     from importlib.metadata import version
@@ -191,107 +178,32 @@ def _version() -> str:
     return version("highspy")
 
 
-@dataclass
-class _Stop:
-    """Why a running solve was told to stop."""
-
-    interrupted: bool = False
-    error: BaseException | None = None
-
-
-@contextmanager
-def _listening(model: Any, watch: Watch, attached: bool) -> Iterator[_Stop]:
-    """Progress reports and Ctrl-C while HiGHS runs.
-
-    HiGHS calls back between iterations. Ctrl-C only raises a flag there: an exception must
-    not travel through compiled code.
-    """
-    stop = _Stop()
-    if not attached:
-        yield stop
-        return
-    import highspy
-
-    Kind = highspy.cb.HighsCallbackType
-
-    last = time.monotonic()
-
-    def called(kind: Any, message: str, said: Any, answer: Any, data: Any) -> None:
-        nonlocal last
-        if stop.interrupted or stop.error is not None:
-            answer.user_interrupt = True
-            return
-        now = time.monotonic()
-        if watch.progress is None or now - last < EVERY:
-            return
-        last = now
-        try:
-            steps = said.mip_node_count if kind == Kind.kCallbackMipInterrupt else 0
-            watch.progress("solve", watch.seconds, max(steps, said.simplex_iteration_count))
-        except BaseException as error:  # a listener's own failure is raised after the run
-            stop.error = error
-            answer.user_interrupt = True
-
-    def pressed(number: int, frame: FrameType | None) -> None:
-        stop.interrupted = True
-
-    model.setCallback(called, None)
-    for kind in (
-        Kind.kCallbackSimplexInterrupt,
-        Kind.kCallbackIpmInterrupt,
-        Kind.kCallbackMipInterrupt,
-    ):
-        model.startCallback(kind)
-    main = threading.current_thread() is threading.main_thread()
-    before = signal.signal(signal.SIGINT, pressed) if main else None
-    try:
-        yield stop
-    finally:
-        if main:
-            signal.signal(signal.SIGINT, before)
-        model.setCallback(None, None)
-    if isinstance(stop.error, KeyboardInterrupt):
-        stop.interrupted = True
-    elif stop.error is not None:
-        raise stop.error
-
-
-def _report(model: Any, program: FloatProgram, name: str, began: float, stop: _Stop) -> Report:
-    import highspy
-
-    words: dict[Any, Said] = {
-        highspy.HighsModelStatus.kOptimal: "optimal",
-        highspy.HighsModelStatus.kModelEmpty: "optimal",
-        highspy.HighsModelStatus.kInfeasible: "infeasible",
-        highspy.HighsModelStatus.kUnbounded: "unbounded",
-        highspy.HighsModelStatus.kUnboundedOrInfeasible: "unclear",
-        highspy.HighsModelStatus.kTimeLimit: "time-limit",
-        highspy.HighsModelStatus.kInterrupt: "interrupted",
-    }
-    said = model.getModelStatus()
-    status = "interrupted" if stop.interrupted else words.get(said, "failed")
+def _report(
+    model: Any, program: FloatProgram | None, name: str, began: float, stop: Stop
+) -> Report:
+    """Read what a finished run has to say; without `program` only its word and its counts."""
+    status = "interrupted" if stop.interrupted else word(model)
     info = model.getInfo()
-    mixed = bool(program.integer.any())
-    x = y = basis = bound = None
-    solution = model.getSolution()
-    if solution.value_valid and (
-        status == "optimal" or (mixed and info.primal_solution_status == 2)
-    ):
-        x = program.point(np.array(solution.col_value, dtype=np.float64))
-    if solution.dual_valid and status == "optimal" and not mixed:
-        y = program.multipliers(np.array(solution.row_dual, dtype=np.float64))
-    if status in ("optimal", "unbounded") and not mixed:
-        basis = read_basis(model, program)
-    if mixed and np.isfinite(info.mip_dual_bound):
-        bound = float(info.mip_dual_bound) * 2.0 ** (-program.cost_exp)
-    return Report(
+    report = Report(
         status,
         name,
-        x,
-        y,
-        basis,
-        bound,
-        max(0, int(info.simplex_iteration_count)),
-        time.monotonic() - began,
-        str(model.modelStatusToString(said)),
+        iterations=max(0, int(info.simplex_iteration_count)),
+        seconds=time.monotonic() - began,
+        message=str(model.modelStatusToString(model.getModelStatus())),
+    )
+    if program is None:
+        return report
+    if program.integer.any():
+        found = status == "optimal" or info.primal_solution_status == 2
+        bound = float(info.mip_dual_bound) * 2.0 ** (-program.cost_exp)
+        return replace(
+            report,
+            x=point_of(model, program) if found else None,
+            bound=bound if isfinite(bound) else None,
+        )
+    return replace(
+        report,
+        x=point_of(model, program) if status == "optimal" else None,
+        y=multipliers_of(model, program) if status == "optimal" else None,
+        basis=read_basis(model, program) if status in ("optimal", "unbounded") else None,
     )

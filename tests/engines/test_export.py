@@ -12,7 +12,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from designer.engines.export import export, safe_names
-from designer.engines.highs import quiet_highs
+from designer.engines.model import quiet_highs
 from designer.errors import InputError, UsageError
 from designer.program.linear import LinearProgram
 from designer.proof.prove import prove

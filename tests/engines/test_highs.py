@@ -13,10 +13,12 @@ import numpy as np
 import pytest
 
 from designer.engines.floats import floats
-from designer.engines.highs import HIGHS, Highs, load, quiet_highs
+from designer.engines.highs import HIGHS, Highs
+from designer.engines.highs import SMALL as SMALL_SIZE
+from designer.engines.model import load, quiet_highs
 from designer.engines.report import BASIC, LOWER, ZERO
 from designer.engines.watch import Interrupted, TimeUp, Watch
-from designer.program.linear import LinearProgram
+from designer.program.linear import Bound, LinearProgram
 from designer.proof.prove import prove
 from tests.engines.interim import interim_program
 from tests.engines.programs import judge, program
@@ -122,8 +124,8 @@ def test_progress_is_told() -> None:
 
     report = HIGHS.solve(large(), Watch(progress=progress))
     assert report.status == "optimal"
-    assert told
-    assert all(doing == "solve" for doing, _, _ in told)
+    assert told[0] == ("presolve", told[0][1], 0)
+    assert {doing for doing, _, _ in told[1:]} == {"solve"}
     assert told[-1][2] > 0
 
 
@@ -133,6 +135,50 @@ def test_a_listener_that_fails_is_heard() -> None:
 
     with pytest.raises(LookupError, match="the screen is gone"):
         HIGHS.solve(large(), Watch(progress=progress))
+
+
+def test_large_programs_are_solved_in_steps_to_an_exact_optimum() -> None:
+    # above SMALL nonzeros only the basis comes back; the proof is what confirms it
+    rng = np.random.default_rng(3)
+    types = [sorted(rng.choice(300, size=16, replace=False).tolist()) for _ in range(3)]
+    independent = interim_program(types, rng.integers(1, 6, size=(3, 16)).tolist(), 400)
+    for program_ in (large(), independent):
+        assert program_.nonzeros >= SMALL_SIZE
+        report = HIGHS.solve(program_, Watch())
+        assert report.status == "optimal"
+        assert report.basis is not None
+        assert report.x is None
+        basics = (report.basis.columns == BASIC).sum() + (report.basis.rows == BASIC).sum()
+        assert basics == program_.rows
+        outcome = prove(program_)
+        assert outcome.proved
+        assert "repairs" not in outcome.effort
+
+
+@pytest.mark.parametrize("slack", [0, 1])
+def test_large_programs_that_presolve_decides(slack: int) -> None:
+    n = SMALL_SIZE // 2 + 1
+    # x_k >= k for all, the sum of all at most what that leaves, less 1 unless `slack`
+    least = n * (n - 1) // 2
+    lp = LinearProgram(
+        np.concatenate([np.arange(n + 1), [2 * n]]),
+        np.concatenate([np.arange(n), np.arange(n)]),
+        np.ones(2 * n, dtype=np.int64),
+        Bound(np.concatenate([np.arange(n), [0]]), np.array([True] * n + [False])),
+        Bound(
+            np.concatenate([np.zeros(n, np.int64), [least - 1 + slack]]),
+            np.array([False] * n + [True]),
+        ),
+        Bound(np.zeros(n, np.int64), np.zeros(n, dtype=bool)),
+        Bound(np.zeros(n, np.int64), np.zeros(n, dtype=bool)),
+        1,
+        np.ones(n, dtype=np.int64),
+        np.zeros(n, dtype=bool),
+    )
+    outcome = prove(lp)
+    assert outcome.proved
+    assert outcome.status == ("optimal" if slack else "infeasible")
+    assert outcome.value == (least if slack else None)
 
 
 def test_ctrl_c_within_a_solve_gives_an_honest_report() -> None:
