@@ -99,7 +99,7 @@ class Measured:
                 expected = "formulated" if way == "formulate" else self.problem.expected
                 if run.status != expected:
                     found.append(f"{self.problem.name}, {way}: {run.status}, not {expected}")
-                elif way in ("ours", "recheck") and not run.proved:
+                elif way in ("ours", "full", "recheck") and not run.proved:
                     found.append(f"{self.problem.name}, {way}: not proved")
                 elif truth and not _agree(truth[0].value, run.value):
                     found.append(

@@ -12,7 +12,7 @@ from benchmarks.measure import Measured, Series
 from benchmarks.startup import Start
 from benchmarks.targets import Target
 
-BASELINES = ("textbook", "textbook-quick", "linprog", "highs")
+BASELINES = ("full", "textbook", "textbook-quick", "linprog", "highs")
 PARTS = ("read", "formulate", "solve", "prove", "table", "check", "save")
 VERSIONS = ("highspy", "numpy", "scipy", "pulp")
 
@@ -23,6 +23,8 @@ peak of the whole process in MiB, imports included.
 
 - **ours**: `read_scenario` and `pose`, from the file to the checked proof. Saving (tables, their
   audit, verdict, proof) is timed apart: the other ways save nothing.
+- **full**: the same on the plain program; **ours** takes the first road that applies, named
+  beside its answer.
 - **shell**: `designer pose FILE --json`, start-up included.
 - **textbook**: PuLP and HiGHS with a loop per quantifier (`tests/oracles/textbook.py`), from the
   setting in memory to a float answer; **textbook-quick** adds terms up in dictionaries.
@@ -69,22 +71,25 @@ def shares(measured: Sequence[Measured]) -> str:
     """Where our time goes, in percent, saving included."""
     rows = []
     for one in measured:
-        ours = one.series.get("ours")
-        if ours is None or not ours.runs:
-            continue
-        parts = [ours.part(name) for name in PARTS]
-        total = ours.part(*PARTS)
-        sizes = ours.runs[0].sizes
-        rows.append(
-            [
-                one.problem.name,
-                f"{sizes['rows']:,}",
-                f"{sizes['nonzeros']:,}",
-                seconds(total),
-                *(f"{100 * part / total:.0f} %" if total else "–" for part in parts),
-            ]
-        )
-    return table(["problem", "rows", "nonzeros", "seconds", *PARTS], rows)
+        for way in ("ours", "full"):
+            series = one.series.get(way)
+            if series is None or not series.runs:
+                continue
+            run = series.runs[0]
+            if way == "ours" and run.path == "full" and "full" in one.series:
+                continue  # one and the same
+            total = series.part(*PARTS)
+            rows.append(
+                [
+                    one.problem.name,
+                    run.path,
+                    f"{run.sizes['rows']:,}",
+                    f"{run.sizes['nonzeros']:,}",
+                    seconds(total),
+                    *(f"{100 * series.part(part) / total:.0f} %" for part in PARTS),
+                ]
+            )
+    return table(["problem", "road", "rows", "nonzeros", "seconds", *PARTS], rows)
 
 
 def alone(measured: Sequence[Measured]) -> str:
@@ -181,4 +186,5 @@ def _answer(series: Series) -> str:
         return ""
     run = series.runs[0]
     value = run.exact or ("" if run.value is None else f"{run.value:.8g}")
-    return f"{run.status} {value}".strip()
+    road = f" by {run.path}" if run.path else ""
+    return f"{run.status} {value}".strip() + road

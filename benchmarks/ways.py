@@ -22,13 +22,14 @@ from typing import Any
 
 @dataclass(frozen=True)
 class Run:
-    """One answer: wall seconds, status, value of the first goal, seconds by part, sizes."""
+    """One answer: wall seconds, status, value of the first goal, road, seconds by part, sizes."""
 
     seconds: float
     status: str
     value: float | None = None
     exact: str = ""
     proved: bool = False
+    path: str = ""
     parts: dict[str, float] = field(default_factory=dict)
     sizes: dict[str, int] = field(default_factory=dict)
 
@@ -37,14 +38,14 @@ class Run:
         return asdict(self)
 
 
-def ours(path: Path) -> Run:
+def ours(path: Path, road: str | None = None) -> Run:
     """The library call: read the file, pose, prove, check. Saving is a part of its own."""
     from designer import pose, read_scenario
 
     began = time.perf_counter()
     setting = read_scenario(path)
     reading = time.perf_counter() - began
-    verdict = pose(setting)
+    verdict = pose(setting, path=road)
     seconds = time.perf_counter() - began
     began = time.perf_counter()
     _save(verdict)
@@ -58,9 +59,15 @@ def ours(path: Path) -> Run:
         float(value) if value is not None and named else None,
         "" if value is None or not named else _short(str(value)),
         verdict.proved,
+        verdict.path,
         {"read": reading, **verdict.seconds, "save": saving},
         {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros},
     )
+
+
+def full(path: Path) -> Run:
+    """The same, on the plain program that reduces nothing."""
+    return ours(path, "full")
 
 
 def textbook(path: Path, quick: bool = False) -> Run:
@@ -99,7 +106,7 @@ def highs(path: Path) -> Run:
     from designer import Demands, read_scenario
     from designer.demands.formulate import formulate
     from designer.engines.floats import floats
-    from designer.engines.highs import load, quiet_highs
+    from designer.engines.model import load, quiet_highs
 
     setting = read_scenario(path)
     terms = Demands().over(setting)
@@ -156,13 +163,13 @@ def recheck_only(path: Path) -> Run:
         shell = _shell("recheck", str(place))
         if shell is not None:
             parts["shell"] = shell
-    return Run(
-        seconds, status if finding.holds else "rejected", None, "", finding.holds, parts, sizes
-    )
+    said = status if finding.holds else "rejected"
+    return Run(seconds, said, proved=finding.holds, path="full", parts=parts, sizes=sizes)
 
 
 WAYS: dict[str, Callable[[Path], Run]] = {
     "ours": ours,
+    "full": full,
     "textbook": textbook,
     "textbook-quick": textbook_quick,
     "linprog": linprog,
@@ -197,11 +204,11 @@ def _save(verdict: Any) -> None:
 
 @cache
 def _proof(path: Path) -> tuple[str, dict[str, int], bytes]:
-    """Status, sizes and the proof document of a scenario, posed once."""
+    """Status, sizes and the proof document of a scenario, posed once on the full program."""
     from designer import pose
     from designer.proof.document import as_bytes
 
-    verdict = pose(path)
+    verdict = pose(path, path="full")
     matrix = verdict.program.matrix
     raw = as_bytes(verdict.proof)
     sizes = {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros}
