@@ -14,6 +14,8 @@ if TYPE_CHECKING:
     from designer.demands.terms import Demands, Terms
     from designer.posing import pose
     from designer.proof.recheck import recheck
+    from designer.ruling.comparing import compare
+    from designer.ruling.report import RulesReport, rules
     from designer.setting.scenario import parse_scenario, read_scenario
     from designer.setting.setting import Limits, Setting, Side
     from designer.table import Table
@@ -29,29 +31,35 @@ _HOMES = {
     "Table": "designer.table",
     "Terms": "designer.demands.terms",
     "Verdict": "designer.verdict",
+    "RulesReport": "designer.ruling.report",
     "audit": "designer.auditing",
+    "compare": "designer.ruling.comparing",
     "parse_scenario": "designer.setting.scenario",
     "pose": "designer.posing",
     "read_scenario": "designer.setting.scenario",
     "read_table": "designer.tablefile",
     "recheck": "designer.proof.recheck",
+    "rules": "designer.ruling.report",
 }
 
 __all__ = [
     "Audit",
     "Demands",
     "Limits",
+    "RulesReport",
     "Setting",
     "Side",
     "Table",
     "Terms",
     "Verdict",
     "audit",
+    "compare",
     "parse_scenario",
     "pose",
     "read_scenario",
     "read_table",
     "recheck",
+    "rules",
 ]
 
 

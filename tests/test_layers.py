@@ -25,7 +25,7 @@ LAYERS = (
     ("roads",),
     ("verdict",),
     ("posing", "rebuilding"),
-    ("weigh", "rules"),
+    ("weighing", "ruling"),
     ("saving",),
     ("views",),
     ("cli", "__main__"),

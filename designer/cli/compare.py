@@ -35,7 +35,7 @@ def compare(
     quiet: options.Quiet = False,
 ) -> None:
     """Two payment tables or more side by side: what each keeps, and who gains, who loses."""
-    from designer.rules.comparing import compare as set_side_by_side
+    from designer.ruling.comparing import compare as set_side_by_side
     from designer.setting.scenario import read_scenario
 
     setting = read_scenario(scenario)

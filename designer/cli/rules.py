@@ -11,7 +11,7 @@ from designer.cli import options
 from designer.cli.output import POSSIBLE, Output, Progress, command
 
 if TYPE_CHECKING:
-    from designer.rules.report import RulesReport
+    from designer.ruling.report import RulesReport
 
 EPILOG = """\b
 Examples:
@@ -20,7 +20,7 @@ Examples:
 
 
 def _names(incomplete: str) -> list[str]:
-    from designer.rules.registry import RULES
+    from designer.ruling.registry import RULES
 
     return [name for name in RULES if name.startswith(incomplete)]
 
@@ -59,7 +59,7 @@ def rules(
     ] = None,
 ) -> None:
     """Why not simply use the textbook rule? What each classic rule keeps, costs and breaks."""
-    from designer.rules.report import rules as report_on
+    from designer.ruling.report import rules as report_on
     from designer.setting.scenario import read_scenario
 
     setting = read_scenario(scenario)
@@ -107,7 +107,7 @@ def _save(report: RulesReport, folder: Path) -> dict[str, str]:
     import json
 
     from designer.files import Content, write_all
-    from designer.rules.registry import RULES
+    from designer.ruling.registry import RULES
     from designer.tablefile import transfers_csv
     from designer.views.ruled import rules_document
 

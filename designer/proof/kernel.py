@@ -11,6 +11,7 @@ from __future__ import annotations
 import sys
 from collections.abc import Sequence
 from functools import cached_property
+from heapq import heapify, heappop, heappush
 from math import gcd, lcm
 
 import numpy as np
@@ -22,7 +23,7 @@ from designer.setting.setting import IntArray
 
 PEEL = 4_000
 """Kernels up to this size are peeled in Python before anything else."""
-SPARSE = 700
+SPARSE = 4_000
 """Cores up to this size are first tried by elimination in Python ints."""
 WORK = 150_000
 """Entry updates after which elimination gives up: the core fills in."""
@@ -54,6 +55,7 @@ class Kernel:
             raise Singular(f"{matrix.rows} rows against {matrix.columns} columns")
         self.matrix = matrix
         self.watch = watch or Watch()
+        self._crowded = False
 
     @property
     def size(self) -> int:
@@ -74,11 +76,11 @@ class Kernel:
             return np.zeros(self.size, dtype=np.int64), 1
         core = len(self._peeled.core_rows) if self.size <= PEEL else self.size
         sparse = IMPORTED if "scipy.sparse.linalg" in sys.modules else SPARSE
-        if core <= sparse:
+        if core <= sparse and not self._crowded:
             try:
                 return self._peeled.solve(b.tolist(), transposed)
             except Crowded:
-                pass
+                self._crowded = True
         if core <= DENSE:
             return self._peeled.solve(b.tolist(), transposed, dense=True)
         try:
@@ -220,11 +222,16 @@ def eliminate(
         for j in row:
             where[j].add(i)
     alive = set(range(len(rows)))
+    # rows by length; entries whose row has since changed are skipped when they come up
+    queue = [(len(row), i) for i, row in enumerate(rows)]
+    heapify(queue)
     order: list[tuple[int, int]] = []
     while alive:
         watch.check()
-        i = min(alive, key=lambda k: len(rows[k]))
+        length, i = heappop(queue)
         pivot_row = rows[i]
+        if i not in alive or length != len(pivot_row):
+            continue
         if not pivot_row:
             raise Singular("dependent rows")
         j = min(pivot_row, key=lambda k: len(where[k]))
@@ -259,6 +266,7 @@ def eliminate(
                 for k in row:
                     row[k] //= content
                 right[other] //= content
+            heappush(queue, (len(row), other))
         if work < 0:
             raise Crowded
     known: list[Ratio | None] = [None] * len(rows)

@@ -17,7 +17,6 @@ from designer.engines.watch import Watch
 from designer.proof.corner import Corner
 from designer.proof.exact import Exact, Point
 from designer.proof.sparse import narrow
-from designer.proof.sparse import plus, scaled
 from designer.setting.setting import IntArray
 
 

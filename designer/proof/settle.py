@@ -174,9 +174,9 @@ def find_feasible(
         if found is None:
             continue
         if found.corner is not None and dot(wider.cost, found.corner.x.num) == 0:
-            corner = Corner(exact, drop_added(found.corner, lp.columns), watch)
-            if corner.feasible:
-                return Settled(corner=corner)
+            kept = _regular(exact, drop_added(found.corner, lp.columns), watch, effort)
+            if kept is not None and kept.feasible:
+                return Settled(corner=kept)
             continue
         y = found.farkas if found.corner is None else found.corner.y
         if y is not None and exact.proves_infeasible(y):

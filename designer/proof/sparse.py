@@ -19,7 +19,7 @@ ROOM = 2**62
 
 
 def largest(values: IntArray) -> int:
-    """max |v|, 0 for an empty array."""
+    """Max |v|, 0 for an empty array."""
     if len(values) == 0:
         return 0
     if values.dtype == object:
@@ -35,7 +35,7 @@ def narrow(values: IntArray) -> IntArray:
 
 
 def scaled(values: IntArray, factor: int) -> IntArray:
-    """values * factor, exactly."""
+    """Values * factor, exactly."""
     if factor == 1:
         return values
     if values.dtype != object and max(1, largest(values)) * abs(factor) < ROOM:
@@ -57,7 +57,7 @@ def dot(left: IntArray, right: IntArray) -> int:
 
 
 def plus(left: IntArray, right: IntArray) -> IntArray:
-    """left + right, exactly."""
+    """Left + right, exactly."""
     if left.dtype != object and right.dtype != object:
         if largest(left) + largest(right) < ROOM:
             return left + right

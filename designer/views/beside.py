@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from designer.rules.judged import Judged
+from designer.ruling.judged import Judged
 from designer.setting.exact import text
 from designer.views.amounts import amount, cell
 from designer.views.grid import Column, Grid

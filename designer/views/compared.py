@@ -5,7 +5,7 @@ from __future__ import annotations
 from fractions import Fraction
 from typing import Any
 
-from designer.rules.comparing import Change, Comparison
+from designer.ruling.comparing import Change, Comparison
 from designer.setting.exact import text
 from designer.views.amounts import amount, cell
 from designer.views.audited import name_of

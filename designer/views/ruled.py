@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from designer.rules.profiles import TIES
-from designer.rules.report import RuleResult, RulesReport
+from designer.ruling.profiles import TIES
+from designer.ruling.report import RuleResult, RulesReport
 from designer.views.amounts import amount
 from designer.views.audited import name_of
 from designer.views.beside import LEGEND, amounts_of, grid, manners, whose, worst

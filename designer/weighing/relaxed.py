@@ -19,7 +19,6 @@ from fractions import Fraction
 import numpy as np
 
 from designer.demands.formulate import Formulation
-from designer.demands.goals.welfare import expected_welfare
 from designer.demands.terms import Terms
 from designer.engines.report import Engine
 from designer.engines.watch import Watch
@@ -88,7 +87,7 @@ class Relaxed:
         for name in free:
             if name not in ALLOWANCE.values():
                 self.forms[name] = self.draft.allowance(name, Fraction(0))
-        welfare = expected_welfare(self.draft)
+        welfare = self.draft.expected_welfare()
         self.forms["welfare"] = (-welfare).plus(first_best(setting))
         self.forms["pot"] = self.draft.expected_pot()
         self.program = work.program()

@@ -1,0 +1,1 @@
+"""The classic rules, held against what their sources say."""
