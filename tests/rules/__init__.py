@@ -1,1 +1,0 @@
-"""The classic rules, held against what their sources say."""
