@@ -95,7 +95,7 @@ class Highs:
                 return report
         with listening(model, watch, mixed or large) as stop:
             model.run()
-        return _report(model, program, self.name, began, stop)
+        return report_of(model, program, self.name, began, stop)
 
     def _set(self, model: Any, watch: Watch, tolerance: float | None) -> None:
         if watch.limit is not None:
@@ -135,7 +135,7 @@ class Highs:
         smaller.passModel(model.getPresolvedLp())
         with listening(smaller, watch, True) as stop:
             smaller.run()
-        report = _report(smaller, None, self.name, began, stop)
+        report = report_of(smaller, None, self.name, began, stop)
         if report.status != "optimal":
             return report
         bring_back(model, smaller)
@@ -178,7 +178,7 @@ def _version() -> str:
     return version("highspy")
 
 
-def _report(
+def report_of(
     model: Any, program: FloatProgram | None, name: str, began: float, stop: Stop
 ) -> Report:
     """Read what a finished run has to say; without `program` only its word and its counts."""

@@ -129,9 +129,11 @@ def test_progress_is_told() -> None:
     assert told[-1][2] > 0
 
 
-def test_a_listener_that_fails_is_heard() -> None:
+@pytest.mark.parametrize("stage", ["presolve", "solve"])
+def test_a_listener_that_fails_is_heard(stage: str) -> None:
     def progress(doing: str, seconds: float, steps: int) -> None:
-        raise LookupError("the screen is gone")
+        if doing == stage:
+            raise LookupError("the screen is gone")
 
     with pytest.raises(LookupError, match="the screen is gone"):
         HIGHS.solve(large(), Watch(progress=progress))
@@ -181,13 +183,14 @@ def test_large_programs_that_presolve_decides(slack: int) -> None:
     assert outcome.value == (least if slack else None)
 
 
-def test_ctrl_c_within_a_solve_gives_an_honest_report() -> None:
+@pytest.mark.parametrize("stage", ["presolve", "solve"])
+def test_ctrl_c_within_a_solve_gives_an_honest_report(stage: str) -> None:
     before = signal.getsignal(signal.SIGINT)
-    pressed: list[float] = []
+    pressed: list[str] = []
 
     def progress(doing: str, seconds: float, steps: int) -> None:
-        if not pressed:
-            pressed.append(seconds)
+        if doing == stage and not pressed:
+            pressed.append(doing)
             os.kill(os.getpid(), signal.SIGINT)
 
     outcome = prove(large(), watch=Watch(progress=progress))

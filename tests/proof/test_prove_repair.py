@@ -15,6 +15,7 @@ from designer.engines.highs import HIGHS
 from designer.engines.report import BASIC, LOWER, UPPER, ZERO, Basis, Report
 from designer.engines.watch import Watch
 from designer.program.linear import LinearProgram
+from designer.proof import settle
 from designer.proof.corner import Corner
 from designer.proof.elastic import elastic, row_sizes
 from designer.proof.exact import Exact, Point
@@ -256,3 +257,23 @@ def test_certificates_that_do_not_hold_are_refused() -> None:
     with pytest.raises(AssertionError):
         judge(lp, lying)
     assert dense(outcome.dual) == [1]
+
+
+@pytest.mark.parametrize("word", ["optimal", "infeasible", "unbounded", "failed"])
+def test_without_an_exact_proof_the_word_is_the_engines(
+    word: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    lp = program([[1, 1]], [2], [None], [0, 0], [9, 9], [1, 1])
+    said = Report(word, "lone", np.array([2.0, 0.0]), basis=slack_basis(Exact(lp)))  # type: ignore[arg-type]
+    monkeypatch.setattr(settle, "repair", lambda *given: None)
+    monkeypatch.setattr(settle, "_pivoted", lambda *given: None)
+    outcome = prove(lp, engine=Wrong(said))
+    assert outcome.status == ("undecided" if word == "failed" else word)
+    assert not outcome.proved
+    assert not outcome.table_proved
+    assert (outcome.primal, outcome.dual, outcome.farkas, outcome.ray) == (None,) * 4
+    assert outcome.bound == (2.0 if word == "optimal" else None)
+    assert outcome.reason == (
+        f"lone says {word!r} but no exact proof was found; try another engine, or state the "
+        "amounts with smaller denominators"
+    )
