@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any, Protocol
 
 import numpy as np
 
@@ -150,3 +150,19 @@ def _over_one(rows: Sequence[Sequence[Fraction | int]]) -> tuple[IntArray, int]:
     den = math.lcm(*{value.denominator for row in rows for value in row})
     flat = whole([value.numerator * (den // value.denominator) for row in rows for value in row])
     return flat.reshape(len(rows), -1), den
+
+
+class OnDemand(Protocol):
+    """A table that is computed profile by profile; types are positions, one per party."""
+
+    def decides(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """x_k(theta)."""
+
+    def pays(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """t_i(theta), money units, paid BY party i."""
+
+    def table(self) -> Table:
+        """Every profile at once, for settings small enough to hold."""
+
+    def plain(self) -> dict[str, Any]:
+        """The JSON document from which the table follows, format designer.table/1."""

@@ -12,15 +12,19 @@ from designer.demands.terms import Terms
 from designer.program.program import Program
 from designer.proof.derivation import Derivation, derive
 from designer.proof.vector import Vector
-from designer.roads.interim.mechanism import Mechanism
 from designer.roads.settled import GoalResult
 from designer.setting.setting import Setting
-from designer.table import Table
+from designer.table import OnDemand, Table
 
 if TYPE_CHECKING:
     import pandas as pd
 
     from designer.auditing import Audit
+    from designer.auditing.outcome import Standing
+
+
+WRITTEN_OUT = 1_000_000
+"""Profiles up to which a table on demand is made into a frame."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -47,7 +51,7 @@ class Verdict:
     path: str
     program: Program
     table: Table | None = None
-    mechanism: Mechanism | None = None
+    mechanism: OnDemand | None = None
     primal: Vector | None = None
     farkas: Vector | None = None
     ray: Vector | None = None
@@ -86,6 +90,17 @@ class Verdict:
             side=terms.side,
         )
 
+    @cached_property
+    def standings(self) -> tuple[Standing, ...]:
+        """What each type of each party can expect; from the table, or from interim quantities."""
+        if self.audit is not None:
+            return self.audit.standings
+        if self.path == "interim" and self.primal is not None and self.status == "possible":
+            from designer.roads.interim.standing import standings
+
+            return standings(self.setting, self.program, self.primal)
+        return ()
+
     @property
     def subsidy(self) -> Fraction:
         """The outside money of the table: what was asked for, or the least that was found."""
@@ -115,24 +130,34 @@ class Verdict:
         """The table, one row per profile, exact; columns as in transfers.csv.
 
         `type:NAME` per party, `probability`, `decides:OPTION` per option, `pays:NAME` per
-        party (money units, paid BY the party) and `pot`. Empty without a table.
+        party (money units, paid BY the party) and `pot`. Empty without a table. A table on
+        demand is written out here up to 1,000,000 profiles; ValueError beyond: use `pays`.
         """
         import pandas as pd
 
         from designer.tablefile import columns, rows
 
-        if self.table is None:
-            return pd.DataFrame(columns=columns(self.setting))
-        return pd.DataFrame(rows(self.setting, self.table), columns=columns(self.setting))
+        table = self.table
+        if table is None and self.mechanism is not None:
+            if self.setting.profiles > WRITTEN_OUT:
+                raise ValueError(
+                    f"{self.setting.profiles:,} profiles are too many for a frame; "
+                    "pays(profile) computes any of them"
+                )
+            table = self.mechanism.table()
+        found = [] if table is None else rows(self.setting, table)
+        return pd.DataFrame(found, columns=columns(self.setting))
 
     @property
     def interim(self) -> pd.DataFrame:
         """Per party and type: expected payment, utility, gain, closest lie and its margin."""
         import pandas as pd
 
-        if self.audit is None:
-            return pd.DataFrame()
-        return self.audit.interim
+        from designer.auditing.outcome import Standing
+
+        fields = list(Standing.__dataclass_fields__)
+        rows = [[getattr(standing, name) for name in fields] for standing in self.standings]
+        return pd.DataFrame(rows, columns=fields)
 
     @cached_property
     def derivation(self) -> Derivation | None:

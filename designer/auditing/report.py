@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import csv
 import io
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from fractions import Fraction
 from typing import Any
 
-from designer.auditing.outcome import Audit, Finding
+from designer.auditing.outcome import Audit, Finding, Standing
 from designer.setting.exact import decimal, text
 
 FORMAT = "designer.audit/1"
@@ -116,15 +116,15 @@ def as_json(audit: Audit) -> dict[str, Any]:
     }
 
 
-def interim_csv(audit: Audit) -> bytes:
-    """Give the standings as the content of `interim.csv`, a row per party and type, exact.
+def interim_csv(standings: Iterable[Standing]) -> bytes:
+    """Give standings as the content of `interim.csv`, a row per party and type, exact.
 
     The closest lie and its margin are empty for a party of one type.
     """
     lines = io.StringIO(newline="")
     out = csv.writer(lines, lineterminator="\n")
     out.writerow(INTERIM)
-    for row in audit.standings:
+    for row in standings:
         amounts = [text(amount) for amount in (row.pays, row.utility, row.gain)]
         margin = "" if row.margin is None else text(row.margin)
         out.writerow([row.party, row.type, *amounts, row.lie or "", margin])

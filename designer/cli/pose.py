@@ -69,6 +69,18 @@ def pose(
         Path | None,
         typer.Option(metavar="FILE", help="Write the program as well: FILE.mps or FILE.lp."),
     ] = None,
+    path: Annotated[
+        str | None,
+        typer.Option(metavar="NAME", help="Take this road; see --why-path."),
+    ] = None,
+    why_path: Annotated[
+        bool,
+        typer.Option("--why-path", help="List the roads and why each does or does not apply."),
+    ] = False,
+    rows_up_to: Annotated[
+        int,
+        typer.Option(metavar="N", min=0, help="Cases up to which --save writes the table out."),
+    ] = 200_000,
     rows: options.Rows = None,
     json: options.Json = False,
     quiet: options.Quiet = False,
@@ -96,11 +108,13 @@ def pose(
         even_handed=even_handed,
     )
     output = Output(json=json, quiet=quiet)
+    if why_path:
+        _tell_roads(setting, demands, path, output, json)
     if export is not None:
         _export(setting, demands, export)
         output.note(f"Program written to {export}.")
-    verdict = _posed(setting, demands, engine, time_limit, Progress(progress))
-    files = _save(verdict, save, output)
+    verdict = _posed(setting, demands, engine, time_limit, path, Progress(progress))
+    files = _save(verdict, save, rows_up_to, output)
     if json:
         from designer.views.documents import verdict_document
 
@@ -115,15 +129,40 @@ def pose(
 
 
 def _posed(
-    setting: Any, demands: Any, engine: str, time_limit: float | None, progress: Progress
+    setting: Any,
+    demands: Any,
+    engine: str,
+    time_limit: float | None,
+    path: str | None,
+    progress: Progress,
 ) -> Verdict:
     from designer.posing import pose
 
     with progress:
-        return pose(setting, demands, engine=engine, time_limit=time_limit, progress=progress)
+        return pose(
+            setting,
+            demands,
+            engine=engine,
+            time_limit=time_limit,
+            progress=progress,
+            path=path,
+        )
 
 
-def _save(verdict: Verdict, folder: Path | None, output: Output) -> dict[str, str]:
+def _tell_roads(setting: Any, demands: Any, path: str | None, output: Output, json: bool) -> None:
+    """Print the roads and stop: nothing is posed."""
+    from designer.roads.registry import choose
+    from designer.views.roads import roads, roads_document
+
+    choice = choose(setting, demands.over(setting), path)
+    if json:
+        output.document(roads_document(setting, choice))
+    else:
+        output.page(roads(choice))
+    raise typer.Exit(POSSIBLE)
+
+
+def _save(verdict: Verdict, folder: Path | None, rows_up_to: int, output: Output) -> dict[str, str]:
     """Save, unless Ctrl-C cut the work short: then the folder keeps what it had."""
     if folder is None:
         return {}
@@ -133,7 +172,8 @@ def _save(verdict: Verdict, folder: Path | None, output: Output) -> dict[str, st
     from designer.saving import planned, save
     from designer.views.documents import verdict_document
 
-    return save(verdict, folder, verdict_document(verdict, planned(verdict, folder)))
+    files = planned(verdict, folder, rows_up_to)
+    return save(verdict, folder, verdict_document(verdict, files), rows_up_to)
 
 
 def _export(setting: Any, demands: Any, path: Path) -> None:

@@ -8,6 +8,7 @@ from fractions import Fraction
 from typing import Any
 
 from designer.errors import Mistake, UsageError
+from designer.setting.exact import text
 from designer.setting.setting import Limits, Setting, Side
 from designer.setting.vocabulary import CHOICES, GOALS
 
@@ -184,6 +185,16 @@ def _clashes(terms: Terms, setting: Setting) -> list[Mistake]:
                 "'margin' with ic 'none'",
                 "an honesty demand, whose margin is then widened",
                 "Add --ic bayesian or dominant.",
+            )
+        )
+    low, high = terms.limits.pays_at_least, terms.limits.pays_at_most
+    if low is not None and high is not None and low > high:
+        found.append(
+            Mistake(
+                "limits.pays_at_least",
+                f"{text(low)}, above pays_at_most = {text(high)}",
+                "a floor that is not above the cap",
+                "Raise the cap or lower the floor.",
             )
         )
     if (

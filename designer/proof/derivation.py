@@ -22,9 +22,14 @@ from designer.program.labels import (
     Label,
     Lottery,
     Pays,
+    Share,
+    Slice,
 )
 from designer.program.program import Program
 from designer.proof.vector import Vector
+
+STRUCTURE = (Lottery, ExpectedDecision, Decides, Slice, Share)
+"""Rows and columns that only say that decisions are lotteries over the options allowed."""
 
 Form = dict[int, Fraction]
 """Coefficients by column."""
@@ -71,7 +76,7 @@ def derive(program: Program, farkas: Vector) -> Derivation:
     """
     items = [_row(program, row, number, farkas.den) for row, number in _entries(farkas)]
     items += _bounds(program, items)
-    structure = [i for i in items if isinstance(i.label, (Lottery, ExpectedDecision, Decides))]
+    structure = [i for i in items if isinstance(i.label, STRUCTURE)]
     money = [i for i in items if isinstance(i.label, (Balances, ExpectedPay))]
     apart = {id(item) for item in (*structure, *money)}
     rest = [item for item in items if id(item) not in apart]

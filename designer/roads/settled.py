@@ -4,15 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from fractions import Fraction
-from typing import TYPE_CHECKING, Literal
+from typing import Literal
 
 from designer.program.program import Program
 from designer.proof.outcome import Tree
 from designer.proof.vector import Vector
-from designer.table import Table
-
-if TYPE_CHECKING:
-    from designer.roads.interim.mechanism import Mechanism
+from designer.table import OnDemand, Table
 
 Status = Literal["possible", "impossible", "unbounded", "undecided"]
 
@@ -56,7 +53,7 @@ class Settled:
     program: Program
     goals: tuple[GoalResult, ...]
     table: Table | None = None
-    mechanism: Mechanism | None = None
+    mechanism: OnDemand | None = None
     reduction: dict[str, object] | None = None
     primal: Vector | None = None
     farkas: Vector | None = None

@@ -17,9 +17,13 @@ EXACT = r"[+-]?([0-9]+|0x[0-9a-f]+)(/([0-9]+|0x[0-9a-f]+))?"
 _SCHEMA = "https://datapackage.org/profiles/2.0/"
 
 
-def datapackage(setting: Setting) -> bytes:
-    """Describe transfers.csv and interim.csv of a setting: columns, units, keys."""
+def datapackage(setting: Setting, *, transfers: bool = True) -> bytes:
+    """Describe transfers.csv (unless it is not there) and interim.csv: columns, units, keys."""
     money = setting.money
+    resources = [_resource("interim", _interim(money), ["party", "type"])]
+    if transfers:
+        key = [f"type:{party.name}" for party in setting.parties]
+        resources.insert(0, _resource("transfers", _transfers(setting), key))
     document: dict[str, Any] = {
         "$schema": f"{_SCHEMA}datapackage.json",
         "profile": "tabular-data-package",
@@ -29,12 +33,7 @@ def datapackage(setting: Setting) -> bytes:
             "A payment rule for a shared decision, exact. It is analysis under the stated "
             "priors and types, not legal or financial advice."
         ),
-        "resources": [
-            _resource(
-                "transfers", _transfers(setting), [f"type:{p.name}" for p in setting.parties]
-            ),
-            _resource("interim", _interim(money), ["party", "type"]),
-        ],
+        "resources": resources,
     }
     if setting.digest:
         document["scenario_digest"] = f"sha256:{setting.digest}"

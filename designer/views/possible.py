@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from fractions import Fraction
 
 from designer.auditing.outcome import Pot, Standing
 from designer.demands.registry import GOALS
 from designer.roads.settled import GoalResult
 from designer.setting.setting import Setting
-from designer.table import Table
+from designer.table import OnDemand, Table
 from designer.verdict import Verdict
 from designer.views.amounts import ROUNDED, amount, cell
 from designer.views.grid import Column, Grid
@@ -27,11 +28,13 @@ def possible(verdict: Verdict, rows: int | None = None) -> Page:
     page: Page = [heading(f"POSSIBLE, {'proved' if verdict.proved else 'unproved'}.")]
     page += goals(verdict)
     audit = verdict.audit
-    if verdict.table is None or audit is None:
-        return page
-    page += cases(verdict.setting, verdict.table, audit.pot, rows)
-    page += standings(audit.standings, rows)
-    page += pots(verdict.setting, audit.pot)
+    if verdict.table is not None and audit is not None:
+        page += cases(verdict.setting, verdict.table, audit.pot, rows)
+    elif verdict.mechanism is not None:
+        page += on_demand(verdict.setting, verdict.mechanism, rows)
+    page += standings(verdict.standings, rows)
+    if audit is not None:
+        page += pots(verdict.setting, audit.pot)
     page.append(caution())
     return page
 
@@ -42,11 +45,21 @@ def goals(verdict: Verdict) -> Page:
     page: Page = [listed(lines)] if lines else []
     if verdict.proved:
         page.append(paragraph(f"Proved in exact arithmetic: {'; '.join(verdict.claims)}."))
+        page += road(verdict)
     elif verdict.reason:
         page.append(paragraph(f"Unproved: {verdict.reason}"))
     elif verdict.claims:
         page.append(paragraph(f"Proved so far: {'; '.join(verdict.claims)}."))
     return page
+
+
+def road(verdict: Verdict) -> Page:
+    """How it was decided, where that was not the plain program."""
+    if verdict.path == "full":
+        return []
+    joint = verdict.setting.joint is not None and verdict.path == "interim"
+    product = " The joint prior is exactly a product: types count as independent." if joint else ""
+    return [paragraph(f"Decided by the road '{verdict.path}' (--why-path).{product}")]
 
 
 def goal_lines(verdict: Verdict) -> list[tuple[str, str]]:
@@ -107,9 +120,41 @@ def cases(setting: Setting, table: Table, pot: Pot, rows: int | None = None) -> 
     return page
 
 
+def on_demand(setting: Setting, table: OnDemand, rows: int | None = None) -> Page:
+    """The first cases of a table too large to write out, and where the others are."""
+    shown = _shown(setting.profiles, CASES if rows is None else rows)
+    page: Page = [heading("Case by case")]
+    columns = [Column(party.name, group="reported") for party in setting.parties]
+    columns.append(Column("decided"))
+    columns += [Column(party.name, right=True, group="pays") for party in setting.parties]
+    lines, stacked = [], []
+    for profile in range(shown):
+        types = setting.types_at(profile)
+        labels = setting.labels_at(profile)
+        pays = [cell(payment) for payment in table.pays(types)]
+        decided = lottery(setting, table.decides(types))
+        lines.append([*labels, decided, *pays])
+        stacked.append((f"{_paired(setting, labels)}: {decided}", _paired(setting, pays)))
+    if shown:
+        page.append(Grid(columns, lines, stacked))
+    page.append(
+        paragraph(
+            f"… {setting.profiles:,} cases in all, each computed when asked for: --save DIR writes "
+            "table.json, from which every payment follows exactly."
+        )
+    )
+    return page
+
+
 def decision(setting: Setting, table: Table, profile: int) -> str:
     """What is decided at a profile: the option, or the lottery in a few words."""
-    chances = [(table.chance(profile, k), option) for k, option in enumerate(setting.options)]
+    options = range(len(setting.options))
+    return lottery(setting, tuple(table.chance(profile, k) for k in options))
+
+
+def lottery(setting: Setting, found: Sequence[Fraction]) -> str:
+    """The option that is sure, or the lottery in a few words."""
+    chances = list(zip(found, setting.options, strict=True))
     drawn = [(chance, option) for chance, option in chances if chance]
     if len(drawn) == 1 and drawn[0][0] == 1:
         return drawn[0][1]

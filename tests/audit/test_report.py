@@ -58,7 +58,7 @@ def test_the_document_says_everything_exactly() -> None:
 
 def test_the_interim_table_has_a_line_per_type() -> None:
     checked = audit(parse_scenario(TRADE), Table.of(EFFICIENT, SPLIT))
-    lines = interim_csv(checked).decode().splitlines()
+    lines = interim_csv(checked.standings).decode().splitlines()
     assert lines == [
         "party,type,expected payment,expected utility,gain over staying out,closest lie,margin",
         "Buyer,20,5,5,5,100,55",

@@ -396,7 +396,7 @@ def test_the_data_package_describes_the_files_column_by_column(
     table = read_table(put(GOOD), setting).table
     contents: dict[str, Content] = {
         "transfers.csv": transfers_csv(table, setting),
-        "interim.csv": interim_csv(audit(setting, table)),
+        "interim.csv": interim_csv(audit(setting, table).standings),
         "datapackage.json": datapackage(setting),
     }
     write_all(tmp_path / "out", contents)

@@ -1,0 +1,81 @@
+"""What each type can expect, read off interim quantities instead of a table."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+from designer.auditing.outcome import Standing
+from designer.program.labels import ExpectedDecision, ExpectedPay, Share, Slice, Unknown
+from designer.program.program import Program
+from designer.proof.vector import Vector
+from designer.setting.setting import Party, Setting
+
+
+def standings(setting: Setting, program: Program, primal: Vector) -> tuple[Standing, ...]:
+    """Expected payment, worth, utility, gain and closest lie, per party and type.
+
+    With private worths and independent types the worth of a lie is sum_k v_i(k, true) q_i(k, told).
+    """
+    numbers = primal.numerators()
+    pays: dict[tuple[str, str], Fraction] = {}
+    chance: dict[tuple[str, str, str], Fraction] = {}
+    place = 0
+    for block in program.column_axis.blocks:
+        for j in range(block.count):
+            label = block.label(j)
+            if isinstance(label, (Share, Slice, Unknown)):
+                break
+            value = Fraction(numbers[place + j], primal.den)
+            if isinstance(label, ExpectedPay):
+                pays[label.party, label.type] = value
+            elif isinstance(label, ExpectedDecision):
+                chance[label.party, label.type, label.option] = value
+        place += block.count
+    return tuple(
+        standing
+        for party in setting.parties
+        for standing in _of_party(setting, party, pays, chance)
+    )
+
+
+def _of_party(
+    setting: Setting,
+    party: Party,
+    pays: dict[tuple[str, str], Fraction],
+    chance: dict[tuple[str, str, str], Fraction],
+) -> list[Standing]:
+    labels = [type_.label for type_ in party.types]
+
+    def worth(a: int, b: int) -> Fraction:
+        """What the decision is worth to the true type a when it reports b."""
+        return sum(
+            (
+                Fraction(int(party.value[a, k]), setting.grain)
+                * chance[party.name, labels[b], option]
+                for k, option in enumerate(setting.options)
+            ),
+            Fraction(0),
+        )
+
+    found = []
+    for a, label in enumerate(labels):
+        paid = [pays.get((party.name, told), Fraction(0)) for told in labels]
+        utility = worth(a, a) - paid[a]
+        outside = Fraction(int(party.outside[a]), setting.grain)
+        lies = [(utility - worth(a, b) + paid[b], b) for b in range(len(labels)) if b != a]
+        margin, lie = min(lies) if lies else (None, None)
+        found.append(
+            Standing(
+                party=party.name,
+                type=label,
+                probability=party.marginal[a],
+                pays=paid[a],
+                worth=worth(a, a),
+                utility=utility,
+                outside=outside,
+                gain=utility - outside,
+                lie=None if lie is None else labels[lie],
+                margin=margin,
+            )
+        )
+    return found
