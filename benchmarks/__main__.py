@@ -49,7 +49,9 @@ def main(words: list[str] | None = None) -> int:
     faults = [fault for one in measured for fault in one.faults]
     text = report.document(measured, start, targets(measured, start), faults)
     print(text)
-    if asked.write:
+    if asked.write and faults:
+        print("RESULTS.md is not written: see Answers above.", file=sys.stderr)
+    elif asked.write:
         RESULTS.write_text(text, encoding="utf-8")
     return 1 if faults else 0
 
@@ -64,7 +66,9 @@ def _parser() -> argparse.ArgumentParser:
     )
     parser.add_argument("--only", nargs="+", metavar="NAME", help="problems whose name starts so")
     parser.add_argument("--smoke", action="store_true", help="smallest sizes, once each (CI)")
-    parser.add_argument("--write", action="store_true", help="write benchmarks/RESULTS.md as well")
+    parser.add_argument(
+        "--write", action="store_true", help="write benchmarks/RESULTS.md as well, if all is well"
+    )
     parser.add_argument("--list", action="store_true", help="name the problems and stop")
     parser.add_argument("--rounds", type=int, default=3, help="turns per way (default 3)")
     parser.add_argument(

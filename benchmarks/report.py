@@ -13,7 +13,7 @@ from benchmarks.startup import Start
 from benchmarks.targets import Target
 
 BASELINES = ("full", "textbook", "textbook-quick", "linprog", "highs")
-PARTS = ("read", "formulate", "solve", "prove", "table", "check", "save")
+PARTS = ("read", "count", "formulate", "solve", "prove", "table", "check", "save")
 VERSIONS = ("highspy", "numpy", "scipy", "pulp")
 
 NOTES = """\
