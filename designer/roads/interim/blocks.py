@@ -1,8 +1,8 @@
 """One exact pass over all profiles, in blocks: what a rule takes, and with what weight.
 
-The sums of the inner parties' indices are kept as arrays of about 1e5 entries; the outer
-parties' types only add offsets to them. Memory stays flat however many profiles there are,
-and both cores work, each on its own types of the lead party.
+The inner parties' differences between two options are kept as arrays of about 1e5 entries;
+the outer parties' types only move the thresholds they are compared with. Memory stays flat
+however many profiles there are, and both cores work, each on its own types of one party.
 """
 
 from __future__ import annotations
@@ -12,162 +12,162 @@ import math
 from collections.abc import Iterator
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from designer.engines.watch import Watch
-from designer.roads.interim.rule import Counts, Index, Rule
+from designer.roads.interim.additive import Additive, additive, settled, words
+from designer.roads.interim.rule import Counts, Rule
 from designer.setting.setting import IntArray, Setting
 
 INNER = 1 << 17
 """Profiles of the inner parties held at once."""
 
 ROOM = 2**62
-LIMB = 40
-"""Bits per limb where index sums do not fit 64 bits."""
 
 Mask = npt.NDArray[np.bool_]
+Ints = npt.NDArray[Any]
 
 
-def count(setting: Setting, rule: Rule, lead: int, watch: Watch) -> Counts:
-    """The exact counts of a rule, slice by slice of the lead party's types."""
+def work(setting: Setting) -> float:
+    """Seconds that a pass takes, roughly."""
+    options = len(setting.options)
+    even = all(len(set(party.weights)) == 1 for party in setting.parties)
+    each = 4e-10 * options * (options - 1) / 2 + (3e-10 if even else 2e-9) * options
+    return 1e-3 + setting.profiles * each
+
+
+def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Counts:
+    """The exact counts of a rule, slice by slice of the lead party's types (None: one slice)."""
     if not rule.indices:
         return _count_table(setting, lead)
-    work = _Pass.plan(setting, rule, lead)
-    sizes = range(setting.shape[lead])
+    shape = setting.shape
+    own = shape.index(max(shape)) if lead is None else lead
+    plan = _Pass.plan(setting, additive(rule), own)
     done = 0
-    total = setting.profiles
 
     def one(g: int) -> tuple[IntArray, ...]:
         nonlocal done
-        taken = work.slice(g, watch)
-        done += total // setting.shape[lead]
-        watch.tell(f"counting profiles of {total:,}", done)
+        taken = plan.slice(g, watch)
+        done += setting.profiles // shape[own]
+        watch.tell(f"counting {setting.profiles:,} profiles", done)
         return taken
 
-    if total < 4 * INNER:
-        return Counts(tuple(one(g) for g in sizes))
-    with ThreadPoolExecutor(max_workers=2) as pool:
-        return Counts(tuple(pool.map(one, sizes)))
-
-
-def combined(setting: Setting, rule: Rule) -> list[Index]:
-    """The rule's indices as one additive integer index, split into limbs of int64 if it must be.
-
-    A lexicographic pair becomes first * R + second with R above the range of the second.
-    Limb l of a sum is the sum of limbs l; carries are settled when sums are compared.
-    """
-    tables = _tables(rule.indices[0])
-    for index in rule.indices[1:]:
-        lower = _tables(index)
-        span = 2 * sum(int(abs(t).max()) for t in lower) + 1
-        tables = [t * span + u for t, u in zip(tables, lower, strict=True)]
-    shared = math.gcd(*(int(v) for t in tables for v in t.flat)) or 1
-    tables = [t // shared for t in tables]
-    limbs = []
-    if sum(int(abs(t).max()) for t in tables) >= ROOM:
-        while max(int(abs(t).max()) for t in tables) >= 1 << LIMB:
-            limbs.append([t & ((1 << LIMB) - 1) for t in tables])
-            tables = [t >> LIMB for t in tables]
-    limbs.append(tables)
-    return [
-        Index(tuple(t.astype(np.int64) for t in limb[:-1]), limb[-1][0].astype(np.int64))
-        for limb in reversed(limbs)
-    ]
-
-
-def _tables(index: Index) -> list[IntArray]:
-    """Every party's table, then the options' row, relative to the first option."""
-    return [
-        _relative(np.asarray(t, dtype=object)) for t in (*index.parties, index.options[None, :])
-    ]
-
-
-def _relative(table: IntArray) -> IntArray:
-    """The same choices from smaller numbers: only differences between options matter."""
-    return table - table[:, :1]
+    if setting.profiles < 4 * INNER:
+        counts = Counts(tuple(one(g) for g in range(shape[own])))
+    else:
+        with ThreadPoolExecutor(max_workers=2) as pool:
+            counts = Counts(tuple(pool.map(one, range(shape[own]))))
+    return counts.merged() if lead is None else counts
 
 
 @dataclass(frozen=True, eq=False)
 class _Pass:
-    """Everything that one slice needs, prepared once."""
+    """Everything that one slice needs, prepared once.
+
+    differences  per pair of options (k, other), k < other: the inner parties' sums of
+                 index_k - index_other, as limbs, or in one short word where they fit
+    """
 
     shape: tuple[int, ...]
     lead: int
     outer: tuple[int, ...]
     inner: tuple[int, ...]
-    limbs: list[Index]
+    index: Additive
+    reach: int
     weights: tuple[tuple[int, ...], ...]
-    sums: list[list[npt.NDArray[np.int64]]]
-    inner_weight: npt.NDArray[np.float64] | None
+    differences: dict[tuple[int, int], list[Ints]]
+    inner_weight: IntArray | None
+    inner_total: int
     even: int
 
     @staticmethod
-    def plan(setting: Setting, rule: Rule, lead: int) -> _Pass:
+    def plan(setting: Setting, index: Additive, lead: int) -> _Pass:
         """Choose the inner parties and sum their indices."""
         others = [i for i in range(len(setting.shape)) if i != lead]
         inner: list[int] = []
         size = 1
-        for index in sorted(others, key=lambda i: setting.shape[i]):
-            if size * setting.shape[index] <= INNER:
-                inner.append(index)
-                size *= setting.shape[index]
+        for party in sorted(others, key=lambda i: setting.shape[i]):
+            if size * setting.shape[party] <= INNER:
+                inner.append(party)
+                size *= setting.shape[party]
         inner.sort()
-        outer = tuple(i for i in others if i not in inner)
-        limbs = combined(setting, rule)
-        options = len(setting.options)
-        sums = [
-            [_outer_sum([limb.parties[i][:, k] for i in inner]) for k in range(options)]
-            for limb in limbs
-        ]
+        reach = 4 * index.reach + 4
+        short = next((word for word in (np.int16, np.int32) if reach < np.iinfo(word).max), None)
+        differences = {}
+        for k, other in itertools.combinations(range(len(setting.options)), 2):
+            parts = [
+                words(index.parties[i][:, k] - index.parties[i][:, other], reach) for i in inner
+            ]
+            zero = words(np.zeros(1, dtype=object), reach)
+            limbs = settled(
+                [_outer_sum([part[limb] for part in parts]) for limb in range(len(zero))]
+            )
+            differences[k, other] = limbs if short is None else [limbs[0].astype(short)]
         weights = tuple(party.weights for party in setting.parties)
-        product = np.ones(1, dtype=object)
+        product: Ints = np.ones(1, dtype=object)
         for i in inner:
             product = np.multiply.outer(product, np.array(weights[i], dtype=object)).ravel()
-        first = int(product[0])
+        first, total = int(product[0]), int(product.sum())
         even = first if all(int(w) == first for w in product) else 0
-        if not even and int(product.sum()) >= 2**53:
-            raise OverflowError("the weights of the inner parties exceed 53 bits")
         return _Pass(
             setting.shape,
             lead,
-            outer,
+            tuple(i for i in others if i not in inner),
             tuple(inner),
-            limbs,
+            index,
+            reach,
             weights,
-            sums,
-            None if even else product.astype(np.float64),
+            differences,
+            None if even else product.astype(np.int64 if total < ROOM else object),
+            total,
             even,
         )
 
     def slice(self, g: int, watch: Watch) -> tuple[IntArray, ...]:
         """The counts of every party where the lead party has type g."""
-        options = len(self.limbs[0].options)
-        size = len(self.sums[0][0])
-        held = [np.zeros(size, dtype=np.int64 if self._fits() else object) for _ in range(options)]
+        options = len(self.index.options)
+        size = math.prod(self.shape[i] for i in self.inner)
+        kind = self._kind()
+        held = [np.zeros(size, dtype=kind) for _ in range(options - 1)]
         counts = [np.zeros((n, options), dtype=object) for n in self.shape]
         for step, (types, weight) in enumerate(self._outer()):
             if step % 64 == 0:
                 watch.check()
+            left = self.inner_total
             for k, mask in enumerate(self._taken(g, types)):
-                held[k] += mask if weight == 1 else mask * weight
-                total = self._weigh(mask) * weight
-                for party, a in zip(self.outer, types, strict=True):
-                    counts[party][a, k] += total
-                counts[self.lead][g, k] += total
-        inner_shape = tuple(self.shape[i] for i in self.inner)
-        for k in range(options):
-            grid = held[k].reshape(inner_shape)
-            for place, party in enumerate(self.inner):
+                held[k] += mask if weight == 1 else np.multiply(mask, weight, dtype=kind)
+                weighed = self._weigh(mask)
+                left -= weighed
+                self._add(counts, g, types, k, weighed * weight)
+            self._add(counts, g, types, options - 1, left * weight)
+        grids = [part.reshape([self.shape[i] for i in self.inner]) for part in held]
+        spent = math.prod(sum(self.weights[i]) for i in self.outer) * self.inner_total
+        for place, party in enumerate(self.inner):
+            for k, grid in enumerate(grids):
                 counts[party][:, k] += self._marginal(grid, place)
+            each = spent // sum(self.weights[party])
+            for a, own in enumerate(self.weights[party]):
+                counts[party][a, -1] = each * own - sum(counts[party][a, :-1])
         own = self.weights[self.lead][g]
         return tuple(table * own for table in counts)
 
-    def _fits(self) -> bool:
-        """Whether every weight of a slice fits 64 bits."""
-        others = (i for i in range(len(self.shape)) if i != self.lead)
-        return math.prod(sum(self.weights[i]) for i in others) < ROOM
+    def _add(
+        self, counts: list[IntArray], g: int, types: tuple[int, ...], k: int, weight: int
+    ) -> None:
+        counts[self.lead][g, k] += weight
+        for party, a in zip(self.outer, types, strict=True):
+            counts[party][a, k] += weight
+
+    def _kind(self) -> type[np.generic]:
+        """The word that holds the outer weights at one inner profile."""
+        total = math.prod(sum(self.weights[i]) for i in self.outer)
+        for word in (np.uint16, np.uint32, np.int64):
+            if total < np.iinfo(word).max // 2:
+                return word
+        return np.object_
 
     def _outer(self) -> Iterator[tuple[tuple[int, ...], int]]:
         for types in itertools.product(*(range(self.shape[i]) for i in self.outer)):
@@ -175,46 +175,53 @@ class _Pass:
             yield types, weight
 
     def _taken(self, g: int, types: tuple[int, ...]) -> Iterator[Mask]:
-        """Per option, where in the inner block it is taken."""
-        options = len(self.limbs[0].options)
-        scores = []
-        for limb, sums in zip(self.limbs, self.sums, strict=True):
-            offset = limb.options + limb.parties[self.lead][g]
-            for i, a in zip(self.outer, types, strict=True):
-                offset = offset + limb.parties[i][a]
-            scores.append([sums[k] + offset[k] for k in range(options)])
+        """Per option but the last, where in the inner block it is taken."""
+        row = self.index.options + self.index.parties[self.lead][g]
+        for i, a in zip(self.outer, types, strict=True):
+            row = row + self.index.parties[i][a]
+        options = len(row)
         left: Mask | None = None
         for k in range(options - 1):
             mask = left
             for other in range(k + 1, options):
-                beats = _at_least(scores, k, other)
+                beats = self._at_least(k, other, int(row[other] - row[k]))
                 mask = beats if mask is None else mask & beats
             # Ties went to the option listed first: what is taken is out of the running.
             if mask is None:
-                raise AssertionError("a setting has at least one option")
+                raise AssertionError("there is an option after k")
             yield mask
-            left = ~mask if left is None else left & ~mask
-        yield np.ones(len(scores[0][0]), dtype=bool) if left is None else left
+            if k < options - 2:
+                left = ~mask if left is None else left & ~mask
+
+    def _at_least(self, k: int, other: int, threshold: int) -> Mask:
+        """Where index_k - index_other reaches a threshold; limbs decide in order."""
+        limbs = self.differences[k, other]
+        if len(limbs) == 1:
+            return np.asarray(limbs[0] >= limbs[0].dtype.type(threshold))
+        wanted = [
+            int(w[0]) for w in settled(words(np.array([threshold], dtype=object), self.reach))
+        ]
+        last = len(limbs) - 1
+        mask: Mask = np.asarray(limbs[last] >= wanted[last])
+        for limb in reversed(range(last)):
+            above = limbs[limb] > wanted[limb]
+            mask = above | ((limbs[limb] == wanted[limb]) & mask)
+        return mask
 
     def _weigh(self, mask: Mask) -> int:
-        if self.even:
+        if self.inner_weight is None:
             return int(np.count_nonzero(mask)) * self.even
-        weight = self.inner_weight
-        if weight is None:
-            raise AssertionError("uneven weights are always kept")
-        return int((weight * mask).sum())  # no BLAS: its threads would fight ours
+        return int(self.inner_weight[mask].sum()) if mask.any() else 0
 
-    def _marginal(self, grid: IntArray, place: int) -> IntArray:
+    def _marginal(self, grid: Ints, place: int) -> IntArray:
         """Weights of one inner party's types in a block already weighed by the outer ones."""
-        rest = np.ones(1, dtype=grid.dtype)
-        for other, party in enumerate(self.inner):
-            if other != place:
-                own = np.array(self.weights[party], dtype=grid.dtype)
-                rest = np.multiply.outer(rest, own).ravel()
-        party = self.inner[place]
-        rows = np.moveaxis(grid, place, 0).reshape(self.shape[party], -1)
-        totals: IntArray = (rows @ rest).astype(object)
-        return totals * np.array(self.weights[party], dtype=object)
+        total = self.inner_total * math.prod(sum(self.weights[i]) for i in self.outer)
+        whole: Ints = grid.astype(np.int64 if total < ROOM else object)
+        if self.inner_weight is not None:
+            whole = whole * self.inner_weight.reshape(grid.shape)
+        axes = tuple(axis for axis in range(grid.ndim) if axis != place)
+        rows: IntArray = np.asarray(whole.sum(axis=axes)).astype(object)
+        return rows * (self.even or 1)
 
 
 def _outer_sum(tables: list[npt.NDArray[np.int64]]) -> npt.NDArray[np.int64]:
@@ -225,17 +232,7 @@ def _outer_sum(tables: list[npt.NDArray[np.int64]]) -> npt.NDArray[np.int64]:
     return total
 
 
-def _at_least(scores: list[list[npt.NDArray[np.int64]]], k: int, other: int) -> Mask:
-    """Where option k scores at least as much as another; carries settled limb by limb."""
-    carry: npt.NDArray[np.int64] | int = 0
-    for limb in reversed(scores[1:]):
-        carry = (limb[k] - limb[other] + carry) >> LIMB
-    if len(scores) == 1:
-        return np.asarray(scores[0][k] >= scores[0][other], dtype=bool)
-    return np.asarray((scores[0][k] - scores[0][other] + carry) >= 0, dtype=bool)
-
-
-def _count_table(setting: Setting, lead: int) -> Counts:
+def _count_table(setting: Setting, lead: int | None) -> Counts:
     """The counts of the given table."""
     rule = setting.rule
     if rule is None:
@@ -243,13 +240,13 @@ def _count_table(setting: Setting, lead: int) -> Counts:
     weighed = rule.astype(object) * setting.weights.astype(object)[:, None]
     grid = weighed.reshape(*setting.shape, rule.shape[1])
     slices = []
-    for g in range(setting.shape[lead]):
-        part = np.take(grid, [g], axis=lead)
+    for g in [None] if lead is None else range(setting.shape[lead]):
+        part = grid if g is None or lead is None else np.take(grid, [g], axis=lead)
         tables = []
         for party, size in enumerate(setting.shape):
             axes = tuple(axis for axis in range(len(setting.shape)) if axis != party)
             table = part.sum(axis=axes)
-            if party == lead:
+            if g is not None and party == lead:
                 full = np.zeros((size, rule.shape[1]), dtype=object)
                 full[g] = table[0]
                 table = full

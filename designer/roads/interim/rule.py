@@ -69,11 +69,21 @@ class Counts:
     """What a rule does, as exact weights: all that a master program needs to know of it.
 
     taken[g][i]  int, shape (T_i, K): the weight of the profiles with the lead party of type g
-                 and party i of type a at which option k is taken, over `den`
+                 and party i of type a at which option k is taken, over `den`; without a lead
+                 party there is one slice, of all profiles
     """
 
     taken: tuple[tuple[IntArray, ...], ...]
     den: int = 1
+
+    def merged(self) -> Counts:
+        """The same without a lead party."""
+        whole = tuple(sum(parts[1:], parts[0]) for parts in zip(*self.taken, strict=True))
+        return Counts((whole,), self.den)
+
+    def totals(self) -> tuple[int, ...]:
+        """The weight of the profiles at which each option is taken, over `den`."""
+        return tuple(int(v) for v in self.merged().taken[0][0].sum(axis=0))
 
 
 def welfare_index(setting: Setting) -> Index:

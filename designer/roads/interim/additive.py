@@ -1,0 +1,116 @@
+"""A lexicographic rule as one additive integer index, and such sums in machine words.
+
+A lexicographic pair becomes first * R + second with R above the range of the second, so one
+sum per option decides. Where sums do not fit 64 bits they are kept as limbs: limb l of a sum
+is the sum of limbs l, and carries are settled when sums are compared.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from designer.roads.interim.rule import Index, Rule
+from designer.setting.setting import IntArray
+
+ROOM = 2**61
+LIMB = 40
+"""Bits per limb where index sums do not fit 64 bits."""
+
+Words = list[npt.NDArray[np.int64]]
+"""Integers, most significant limb first; one limb where they fit 64 bits."""
+
+
+@dataclass(frozen=True, eq=False)
+class Additive:
+    """The option with the largest options[k] + sum_i parties[i][a_i, k]; ties go to the first.
+
+    parties  per party, Python int, shape (T_i, K), 0 at the first option and at the first type
+    options  Python int, shape (K,), 0 at the first
+    """
+
+    parties: tuple[IntArray, ...]
+    options: IntArray
+
+    @property
+    def reach(self) -> int:
+        """No sum, and no difference of two sums, is larger in absolute value."""
+        return 2 * sum(_largest(table) for table in (*self.parties, self.options))
+
+
+def additive(rule: Rule) -> Additive:
+    """The rule's indices in one. Raises ValueError for the given table, which has none."""
+    if not rule.indices:
+        raise ValueError("the given table has no index")
+    tables: list[IntArray] = []
+    for index in rule.indices:
+        lower = _relative(index)
+        span = 2 * sum(_largest(t) for t in lower) + 1
+        tables = (
+            [t * span + u for t, u in zip(tables, lower, strict=True)] if tables else list(lower)
+        )
+    shared = math.gcd(*(int(v) for t in tables for v in t.flat)) or 1
+    tables = [t // shared for t in tables]
+    return Additive(tuple(tables[:-1]), tables[-1][0])
+
+
+def _relative(index: Index) -> list[IntArray]:
+    """The same choices from smaller numbers: only differences between options matter.
+
+    What a party's first type adds is moved to the options' own row.
+    """
+    options = np.asarray(index.options, dtype=object)[None, :]
+    tables = []
+    for table in index.parties:
+        whole = np.asarray(table, dtype=object)
+        options = options + whole[:1]
+        moved = whole - whole[:1]
+        tables.append(moved - moved[:, :1])
+    return [*tables, options - options[:, :1]]
+
+
+def _largest(table: IntArray) -> int:
+    return max(int(table.max()), -int(table.min()), 0) if table.size else 0
+
+
+def words(values: IntArray, reach: int) -> Words:
+    """Integers of which no sum in sight exceeds `reach`, as limbs."""
+    limbs = []
+    while reach >= ROOM:
+        limbs.append((values & ((1 << LIMB) - 1)).astype(np.int64))
+        values = values >> LIMB
+        reach = reach >> LIMB
+    limbs.append(values.astype(np.int64))
+    return limbs[::-1]
+
+
+def settled(limbs: Words) -> Words:
+    """The same numbers with every limb but the first within 0..2**LIMB - 1."""
+    if len(limbs) == 1:
+        return limbs
+    done: Words = []
+    carry: npt.NDArray[np.int64] | int = 0
+    for limb in reversed(limbs[1:]):
+        limb = limb + carry
+        carry = limb >> LIMB
+        done.append(limb - (carry << LIMB))
+    return [limbs[0] + carry, *reversed(done)]
+
+
+def ranked(parts: Sequence[Words]) -> list[npt.NDArray[np.int64]]:
+    """Several lists of numbers as int64 in the same order, across all of them."""
+    if len(parts[0]) == 1:
+        return [part[0] for part in parts]
+    ready = [settled(part) for part in parts]
+    limbs = [np.concatenate(pieces) for pieces in zip(*ready, strict=True)]
+    order = np.lexsort(limbs[::-1])
+    new = np.zeros(len(order), dtype=bool)
+    for limb in limbs:
+        new[1:] |= np.diff(limb[order]) != 0
+    rank = np.empty(len(order), dtype=np.int64)
+    rank[order] = np.cumsum(new)
+    return np.split(rank, np.cumsum([len(part[0]) for part in parts])[:-1])

@@ -1,0 +1,91 @@
+"""Which way to count what a rule takes: the cheapest of four, all exact.
+
+blocks   a pass over all profiles              any setting
+halves   pairs of half-profiles                two to four options
+sums     distributions of sums                 two options, sums of small range
+items    products of cumulative weights        every option concerns at most one party
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from designer.engines.watch import Stopped, Watch
+from designer.roads.interim import blocks, halves, items, sums
+from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
+from designer.setting.setting import Setting
+
+MOST = 600.0
+"""Seconds that one count may be expected to take."""
+QUICK = 0.01
+"""Seconds below which the two general ways are taken without looking further."""
+SLICED = 3.0
+"""Seconds up to which counts are split by the lead party's types."""
+
+
+class TooMany(Stopped):
+    """No way of counting is quick enough for a rule."""
+
+    reason = "there are too many profiles to count by any of the ways that are known"
+    remedy = "take fewer types, coarser worths or another decision demand"
+
+
+def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Counts:
+    """The exact counts of a rule, slice by slice of the lead party's types (None: one slice).
+
+    Raises TooMany where that would take longer than MOST, and Stopped as `watch` says.
+    """
+    way = _way(setting, rule, lead)
+    if way == "items":
+        return items.count(setting, rule, watch)
+    if way == "sums":
+        return sums.count(setting, rule, watch)
+    if way == "halves":
+        return halves.count(setting, rule, lead, watch)
+    return blocks.count(setting, rule, lead, watch)
+
+
+def _way(setting: Setting, rule: Rule, lead: int | None) -> str:
+    if not rule.indices:
+        return "blocks"
+    ways = {"blocks": blocks.work(setting), "halves": halves.work(setting, lead)}
+    if min(ways.values()) > QUICK and lead is None:
+        ways |= {"sums": sums.work(setting, rule), "items": items.work(setting, rule)}
+    way = min(ways, key=lambda name: ways[name])
+    if ways[way] > MOST:
+        raise TooMany
+    return way
+
+
+def tied(setting: Setting, rule: Rule, counts: Counts, watch: Watch) -> bool:
+    """Whether the rule leaves a tie at some profile that only the order of options settles.
+
+    The same rule with the order reversed takes, at every tied profile, an option that is
+    listed later, and nothing else at any other: the totals agree if and only if no profile
+    is tied.
+    """
+    if not rule.indices:
+        return False
+    options = len(setting.options)
+    nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in setting.shape)
+    later = Rule((*rule.indices, Index(nothing, np.arange(options, dtype=np.int64))))
+    if _way(setting, later, None) == "halves":
+        return halves.totals(setting, later, watch) != counts.totals()
+    return count(setting, later, None, watch).totals() != counts.totals()
+
+
+def lead_party(setting: Setting) -> int | None:
+    """The party whose types split the counts; None where split counts would take long."""
+    lead = setting.shape.index(max(setting.shape))
+    return lead if min(blocks.work(setting), halves.work(setting, lead)) <= SLICED else None
+
+
+def too_many(setting: Setting, decision: str) -> bool:
+    """Whether no way of counting is quick enough, as far as the setting alone tells."""
+    if decision == "table":
+        return False
+    efficient = Rule((welfare_index(setting),))
+    ways = [blocks.work(setting), halves.work(setting, None), items.work(setting, efficient)]
+    if decision == "efficient":
+        ways.append(sums.work(setting, efficient))
+    return min(ways) > MOST
