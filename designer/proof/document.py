@@ -79,15 +79,19 @@ def compose(
     tree: Tree | None = None,
     ray: Sparse | None = None,
     reduction: Mapping[str, object] | None = None,
+    plain: Mapping[str, Any] | None = None,
 ) -> dict[str, Any]:
-    """The proof document made of its parts; `goals` run along the program's stages."""
+    """The proof document made of its parts; `goals` run along the program's stages.
+
+    `plain` is the program as `plain_program` writes it, where that is known already.
+    """
     document: dict[str, Any] = {
         "format": FORMAT,
         "scenario": {"title": scenario["title"], "digest": scenario["digest"]},
         "terms": dict(terms),
         "path": path,
         "verdict": verdict,
-        "program": plain_program(program),
+        "program": plain or plain_program(program),
         "stages": [plain_stage(stage) for stage in program.stages],
     }
     if reduction is not None:
