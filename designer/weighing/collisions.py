@@ -1,10 +1,14 @@
 """All minimal sets of demand groups that collide, and all maximal sets that can hold.
 
 The enumeration follows Liffiton, Previti, Malik & Marques-Silva (2016), "Fast, flexible MUS
-enumeration", Constraints 21:223-250 (MARCO): take an unexplored set of groups, shrink it to
-a minimal collision if it is impossible, grow it to a maximal possible set if not, and mark
-everything above the one, below the other, as explored. Shrinking starts from the groups a
-certificate blames, growing from the table that was found.
+enumeration", Constraints 21:223-250 (MARCO, in its form that looks for collisions first): take
+a largest set not yet explored; if it is impossible, shrink it to a minimal collision; if it is
+possible, nothing larger is. What is unexplored is read off the minimal transversals of the
+collisions known so far (hitting sets: Reiter 1987, Artificial Intelligence 32:57-95; Bailey &
+Stuckey 2005, PADL, LNCS 3350:174-186), kept up to date collision by collision (Berge 1989,
+Hypergraphs, section 2.1): the complement of each is a largest set that contains no known
+collision, so that it is maximal as soon as it is possible. Shrinking starts from the groups
+that a certificate blames.
 """
 
 from __future__ import annotations
@@ -12,11 +16,10 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from designer.demands.terms import Terms
-from designer.weighing.groups import without
-from designer.weighing.oracle import Oracle
+from designer.weighing.mix import Groups, Mix, Unsettled
 
-Groups = frozenset[str]
+MOST = 5_000
+"""Transversals kept at once before giving up: beyond, there is too much to read as well."""
 
 
 @dataclass(frozen=True)
@@ -28,73 +31,50 @@ class GroupSet:
     proved: bool
 
 
-def explore(oracle: Oracle, terms: Terms, groups: tuple[str, ...]) -> Iterator[GroupSet]:
-    """Every minimal collision and every maximal possible set, as they are found."""
-    everything = frozenset(groups)
-    collisions: list[Groups] = []
-    possible: list[Groups] = []
+def explore(mix: Mix) -> Iterator[GroupSet]:
+    """Every minimal collision and every maximal possible set, as they are found.
 
-    def holds(kept: Groups) -> bool:
-        """Whether the kept groups can hold together, by what is known or by posing it."""
-        if any(kept <= known for known in possible):
-            return True
-        if any(known <= kept for known in collisions):
-            return False
-        return oracle.ask(without(terms, everything - kept)).possible
-
-    def proved(kept: Groups) -> bool:
-        return oracle.ask(without(terms, everything - kept)).proved
-
-    while (seed := _unexplored(groups, collisions, possible)) is not None:
-        if holds(seed):
-            grown = seed
-            for group in groups:
-                if group not in grown and holds(grown | {group}):
-                    grown = grown | {group}
-            possible.append(grown)
-            yield GroupSet(False, _ordered(groups, grown), proved(grown))
-            continue
-        core = seed
-        finding = oracle.ask(without(terms, everything - seed))
-        blamed = _chances_as_one(finding.blamed, seed)
-        if not finding.possible and blamed and blamed < core and not holds(blamed):
-            core = blamed
-        for group in groups:
-            if group in core and not holds(core - {group}):
-                core = core - {group}
-        collisions.append(core)
-        yield GroupSet(True, _ordered(groups, core), proved(core))
-
-
-def _ordered(groups: tuple[str, ...], kept: Groups) -> tuple[str, ...]:
-    return tuple(group for group in groups if group in kept)
-
-
-def _chances_as_one(blamed: Groups, seed: Groups) -> Groups:
-    """Side chances are numbered anew when some are dropped: blame all of them or none."""
-    if any(group.startswith("side:chance") for group in blamed):
-        blamed = blamed | {group for group in seed if group.startswith("side:chance")}
-    return blamed & seed
-
-
-def _unexplored(
-    groups: tuple[str, ...], collisions: list[Groups], possible: list[Groups]
-) -> Groups | None:
-    """A largest-first set that contains no known collision and lies in no known possible set.
-
-    Each possible set M asks for one group outside M; each collision C for one group of C left
-    out. Backtracking over the groups, keeping before leaving out.
+    Raises Unsettled where a verdict cannot be had or the sets are too many to list.
     """
+    everything = frozenset(mix.groups)
+    transversals: list[Groups] = [frozenset()]
+    done: set[Groups] = set()
+    while waiting := [left for left in transversals if left not in done]:
+        left = waiting[0]
+        seed = everything - left
+        found = mix.ask(seed)
+        if found in mix.possible:
+            done.add(left)
+            yield _listed(mix, False, seed, found.proved)
+            continue
+        core, proved = _shrunk(mix, found.groups & seed, found.proved)
+        yield _listed(mix, True, core, proved)
+        transversals = _hit(transversals, core)
+        if len(transversals) > MOST:
+            raise Unsettled(f"there are more than {MOST:,} ways to give way: not all are listed")
 
-    def search(place: int, kept: Groups, left: Groups) -> Groups | None:
-        if any(collision <= kept for collision in collisions):
-            return None
-        if any(not (frozenset(groups) - left - known) for known in possible):
-            return None
-        if place == len(groups):
-            return kept
-        group = groups[place]
-        found = search(place + 1, kept | {group}, left)
-        return found if found is not None else search(place + 1, kept, left | {group})
 
-    return search(0, frozenset(), frozenset())
+def _shrunk(mix: Mix, core: Groups, proved: bool) -> tuple[Groups, bool]:
+    """A minimal collision inside one."""
+    for group in mix.groups:
+        if group not in core:
+            continue
+        found = mix.ask(core - {group})
+        if found in mix.collisions:
+            core = found.groups & core
+        proved = proved and found.proved
+    return core, proved
+
+
+def _hit(transversals: list[Groups], core: Groups) -> list[Groups]:
+    """The minimal sets that hit one collision more."""
+    kept = [left for left in transversals if left & core]
+    wider = {left | {group} for left in transversals if not left & core for group in core}
+    return kept + sorted(
+        (left for left in wider if not any(known <= left for known in kept)),
+        key=lambda left: (len(left), sorted(left)),
+    )
+
+
+def _listed(mix: Mix, collides: bool, kept: Groups, proved: bool) -> GroupSet:
+    return GroupSet(collides, tuple(group for group in mix.groups if group in kept), proved)

@@ -3,23 +3,24 @@
 The frontier of a linear program with two criteria is convex and piecewise linear. Its ends
 are the two lexicographic optima; between two neighbours a and b the weighted sum whose level
 line runs through both is minimised: either nothing lies below, and the segment is an edge, or a
-point further out is found, and the recursion goes on at both sides (Aneja & Nair 1979,
-Management Science 25:73-78; Cohon 1978). With three criteria the same idea runs over the
-faces of the lower hull of the corners found so far (Benson 1998, J. Global Optimization 13:1-24,
-in criterion space).
+point further out is found, and the search goes on at both sides (Aneja & Nair 1979,
+Management Science 25:73-78; Cohon 1978, Multiobjective Programming and Planning). With three
+criteria the same idea runs over the faces of the lower hull of the points found so far
+(Benson 1998, Journal of Global Optimization 13:1-24, in the space of the criteria): a face that
+no weighted sum undercuts is a face of the whole.
 """
 
 from __future__ import annotations
 
-import itertools
-from collections.abc import Sequence
+from collections import deque
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
 from designer.demands.terms import Terms
-from designer.weighing.oracle import Oracle
-from designer.weighing.prices import NONNEGATIVE
-from designer.weighing.relaxed import ALLOWANCE, Bounds, Relaxed
+from designer.weighing.hull import LowerHull
+from designer.weighing.relaxed import Answer
+from designer.weighing.surface import Surface
 
 Corner = tuple[Fraction, ...]
 
@@ -29,21 +30,23 @@ PAIRS = (
     ("shortfall", "welfare"),
     ("lies", "money"),
 )
+TRIPLE = ("money", "shortfall", "welfare")
 
 
 @dataclass(frozen=True)
 class Frontier:
     """All corners of the least pairs of two criteria, from the smallest x to the smallest y.
 
-    Every table has criteria on or above the line through the corners, left of the first
+    Every table has its criteria on or above the line through the corners, left of the first
     straight up and right of the last straight across. `corners` is empty when the two
-    together do not help (`reason` says so); `complete` is False when time ran out.
+    together do not help (`reason` says so); `complete` is False while corners may be missing:
+    those listed then can be had, and the frontier lies on or below the line through them.
     """
 
     x: str
     y: str
-    corners: tuple[Corner, ...]
-    proved: bool
+    corners: tuple[Corner, ...] = ()
+    proved: bool = False
     complete: bool = True
     reason: str = ""
 
@@ -52,67 +55,68 @@ class Frontier:
 class CornerList:
     """The extreme points of the least triples of three criteria, in rising order of the first."""
 
-    criteria: tuple[str, str, str]
-    corners: tuple[Corner, ...]
-    proved: bool
+    criteria: tuple[str, ...]
+    corners: tuple[Corner, ...] = ()
+    proved: bool = False
     complete: bool = True
     reason: str = ""
 
 
-def opened(oracle: Oracle, terms: Terms, criteria: Sequence[str]) -> Relaxed:
-    """The demands with the allowances of these criteria freed."""
-    free: dict[str, Bounds] = {
-        ALLOWANCE[name]: NONNEGATIVE for name in criteria if name in ALLOWANCE
-    }
-    if "welfare" in criteria and terms.decision in ("efficient", "table"):
-        terms = replace(terms, decision="randomized")
-    return Relaxed(oracle.setting, terms, free, oracle.engine, oracle.watch)
+def payable(terms: Terms, criterion: str) -> bool:
+    """Whether these terms can be paid for with a criterion."""
+    if terms.decision == "deterministic":
+        return False  # whole numbers: what is possible has holes, and no convex frontier
+    asked = {"money": terms.balance, "shortfall": terms.ir, "lies": terms.ic}
+    return asked.get(criterion) != "none"
 
 
-def applies(terms: Terms, criteria: Sequence[str]) -> bool:
-    """Whether every criterion is one that these terms can pay with."""
-    return not (
-        ("money" in criteria and terms.balance == "none")
-        or ("shortfall" in criteria and terms.ir == "none")
-        or ("lies" in criteria and terms.ic == "none")
-        or terms.decision == "deterministic"  # whole numbers: no convex frontier
-    )
-
-
-def frontier(oracle: Oracle, terms: Terms, x: str, y: str) -> Frontier:
-    """Every corner between the least x and the least y."""
-    relaxed = opened(oracle, terms, (x, y))
-    ends = []
+def trace(surface: Surface, x: str, y: str) -> Iterator[Frontier]:
+    """The frontier of two criteria, each time it is known better; the last is complete."""
+    pair = (x, y)
+    surface.watch(pair)
+    ends: list[Corner] = []
     proved = True
-    for first, second in ((x, y), (y, x)):
-        answer = relaxed.minimise({first: Fraction(1)}, then={second: Fraction(1)})
+    for first in (True, False):
+        end = (Fraction(first), Fraction(not first))
+        answer = surface.least(pair, end, then=True)
         if answer.status != "optimal" or answer.at is None:
-            return Frontier(
-                x, y, (), answer.proved, reason=f"{answer.status} {answer.reason}".strip()
-            )
+            yield Frontier(x, y, (), answer.proved, reason=_refused(answer))
+            return
         proved = proved and answer.proved
         ends.append((answer.at[x], answer.at[y]))
-    corners = [ends[0]]
-    if ends[0] != ends[1]:
-        waiting = [(ends[0], ends[1])]
-        while waiting:
-            left, right = waiting.pop()
-            weight = {x: left[1] - right[1], y: right[0] - left[0]}
-            answer = relaxed.minimise(weight)
-            if answer.status != "optimal" or answer.at is None or answer.value is None:
-                return Frontier(x, y, tuple(corners), False, complete=False, reason=answer.reason)
-            proved = proved and answer.proved
-            if answer.value == weight[x] * left[0] + weight[y] * left[1]:
-                corners.append(right)
-            else:
-                middle = (answer.at[x], answer.at[y])
-                waiting += [(middle, right), (left, middle)]
-    return Frontier(x, y, tuple(_bends(corners)), proved)
+        yield Frontier(x, y, tuple(ends), proved, complete=False)
+    points = set(ends)
+    waiting = deque([(ends[0], ends[1])] if ends[0] != ends[1] else [])
+    while waiting:
+        left, right = waiting.popleft()
+        weights = (left[1] - right[1], right[0] - left[0])
+        level = weights[0] * left[0] + weights[1] * left[1]
+        known = surface.bound(pair, weights)
+        if known is not None and known[0] >= level:
+            proved = proved and known[1]
+            continue
+        answer = surface.least(pair, weights)
+        if answer.status != "optimal" or answer.at is None or answer.value is None:
+            yield _drawn(x, y, points, False, complete=False, reason=_refused(answer))
+            return
+        proved = proved and answer.proved
+        if answer.value < level:
+            middle = (answer.at[x], answer.at[y])
+            points.add(middle)
+            waiting += [(left, middle), (middle, right)]
+            yield _drawn(x, y, points, proved, complete=False)
+    yield _drawn(x, y, points, proved, complete=True)
 
 
-def _bends(corners: Sequence[tuple[Fraction, Fraction]]) -> list[tuple[Fraction, Fraction]]:
-    """The corners at which the line really bends."""
-    kept: list[tuple[Fraction, Fraction]] = []
+def _drawn(
+    x: str, y: str, points: Iterable[Corner], proved: bool, complete: bool, reason: str = ""
+) -> Frontier:
+    return Frontier(x, y, tuple(bends(sorted(points))), proved, complete, reason)
+
+
+def bends(corners: Sequence[Corner]) -> list[Corner]:
+    """The corners at which the line really bends, its ends included."""
+    kept: list[Corner] = []
     for corner in corners:
         while len(kept) > 1 and _straight(kept[-2], kept[-1], corner):
             kept.pop()
@@ -124,81 +128,54 @@ def _straight(a: Corner, b: Corner, c: Corner) -> bool:
     return (b[0] - a[0]) * (c[1] - a[1]) == (c[0] - a[0]) * (b[1] - a[1])
 
 
+def _refused(answer: Answer) -> str:
+    if answer.status == "infeasible":
+        return "the two together do not make the demands possible"
+    return answer.reason or answer.status
+
+
 def corner_list(
-    oracle: Oracle, terms: Terms, criteria: tuple[str, str, str] = ("money", "shortfall", "welfare")
-) -> CornerList:
-    """Every extreme point of the least triples, each proved by the weights that single it out."""
-    relaxed = opened(oracle, terms, criteria)
-    points: set[Corner] = set()
+    surface: Surface, known: Iterable[Corner] = (), criteria: tuple[str, ...] = TRIPLE
+) -> Iterator[CornerList]:
+    """Every extreme point of the least triples, each time more is known; the last is complete.
+
+    `known` are triples that can be had, to start from.
+    """
+    surface.watch(criteria)
+    found = CornerList(criteria, complete=False)
+    hull: LowerHull | None = None
     proved = True
-    seen: set[Corner] = set()
-    unit = [tuple(Fraction(int(i == j)) for j in range(3)) for i in range(3)]
-    waiting: list[Corner] = [*unit, (Fraction(1), Fraction(1), Fraction(1))]
-    while waiting:
-        for weights in waiting:
-            seen.add(weights)
-            least = min((_dot(weights, p) for p in points), default=None)
-            then = {name: Fraction(1) for name in criteria}
-            answer = relaxed.minimise(dict(zip(criteria, weights, strict=True)), then=then)
+    for place in range(3):
+        weights = tuple(Fraction(int(k == place)) for k in range(3))
+        answer = surface.least(criteria, weights, then=True)
+        if answer.status != "optimal" or answer.at is None:
+            yield replace(found, proved=answer.proved, complete=True, reason=_refused(answer))
+            return
+        proved = proved and answer.proved
+        point = tuple(answer.at[name] for name in criteria)
+        if hull is None:
+            hull = LowerHull(point)
+        else:
+            hull.add(point)
+    if hull is None:
+        raise AssertionError("three criteria have three ends")
+    for point in known:
+        hull.add(point)
+    settled: set[tuple[int, ...]] = set()
+    while open_faces := [face for face in hull.faces if face.row not in settled]:
+        face = open_faces[0]
+        bound = surface.bound(criteria, face.weights)
+        if bound is None or bound[0] < face.level:
+            answer = surface.least(criteria, face.weights, then=not all(face.weights))
             if answer.status != "optimal" or answer.at is None or answer.value is None:
-                return CornerList(
-                    criteria, tuple(sorted(points)), answer.proved, False, answer.reason
-                )
-            proved = proved and answer.proved
-            if least is None or answer.value < least or weights in unit:
-                points.add(tuple(answer.at[name] for name in criteria))
-        waiting = [w for w in _facets(points, unit) if w not in seen]
-    return CornerList(criteria, tuple(sorted(_extreme(points, unit))), proved)
-
-
-def _dot(weights: Corner, point: Corner) -> Fraction:
-    return sum((w * p for w, p in zip(weights, point, strict=True)), Fraction(0))
-
-
-def _facets(points: set[Corner], rays: list[Corner]) -> list[Corner]:
-    """The weights, none negative, of the faces of the lower hull of points plus rays."""
-    found: dict[Corner, None] = {}
-    for base, *others in _triples(points, rays):
-        edges = [
-            tuple(a - b for a, b in zip(other, base, strict=True)) if is_point else other
-            for other, is_point in others
-        ]
-        normal = _cross(edges[0], edges[1])
-        if all(part <= 0 for part in normal):
-            normal = tuple(-part for part in normal)
-        if any(part < 0 for part in normal) or not any(normal):
-            continue
-        level = _dot(normal, base)
-        if all(_dot(normal, point) >= level for point in points):
-            total = sum(normal)
-            found[tuple(part / total for part in normal)] = None
-    return list(found)
-
-
-def _triples(points: set[Corner], rays: list[Corner]):  # type: ignore[no-untyped-def]
-    ordered = sorted(points)
-    tagged = [(point, True) for point in ordered] + [(ray, False) for ray in rays]
-    for i, base in enumerate(ordered):
-        for two in itertools.combinations(tagged[i + 1 :], 2):
-            yield (base, *two)
-
-
-def _cross(a: Corner, b: Corner) -> Corner:
-    return (
-        a[1] * b[2] - a[2] * b[1],
-        a[2] * b[0] - a[0] * b[2],
-        a[0] * b[1] - a[1] * b[0],
-    )
-
-
-def _extreme(points: set[Corner], rays: list[Corner]) -> list[Corner]:
-    """The points that are corners: on at least three faces with independent weights."""
-    if len(points) <= 1:
-        return list(points)
-    facets = [*_facets(points, rays), *rays]
-    kept = []
-    for point in points:
-        tight = [w for w in facets if _dot(w, point) == min(_dot(w, other) for other in points)]
-        if any(_dot(a, _cross(b, c)) != 0 for a, b, c in itertools.combinations(tight, 3)):
-            kept.append(point)
-    return kept
+                yield replace(found, reason=_refused(answer))
+                return
+            bound = answer.value, answer.proved
+            if answer.value < face.level:
+                hull.add(tuple(answer.at[name] for name in criteria))
+                found = replace(found, corners=tuple(sorted(hull.points)), proved=proved)
+                yield found
+                continue
+        proved = proved and bound[1]
+        settled.add(face.row)
+    yield CornerList(criteria, tuple(hull.corners()), proved)

@@ -3,28 +3,22 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from fractions import Fraction
 
 from designer.demands.terms import Terms
 from designer.engines.report import Engine
 from designer.engines.watch import Watch
 from designer.setting.setting import Setting
-from designer.table import Table
-from designer.weighing.groups import group_of
-from designer.weighing.relaxed import Answer, Relaxed
+from designer.weighing.mix import Unsettled
+from designer.weighing.relaxed import Relaxed
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True)
 class Finding:
-    """Whether terms can be met, proved or not; the groups blamed, or a table that meets them."""
+    """Whether terms can be met, and whether that is proved."""
 
     possible: bool
     proved: bool
-    blamed: frozenset[str] = frozenset()
-    table: Table | None = None
-
-
-class Unsettled(Exception):  # noqa: N818 - the engine gave up: no mistake of anyone's
-    """Neither possible nor impossible could be shown."""
 
 
 @dataclass
@@ -37,37 +31,37 @@ class Oracle:
     known: dict[Terms, Finding] = field(default_factory=dict)
     posed: int = 0
 
+    def learn(self, terms: Terms, possible: bool, proved: bool) -> None:
+        """Take in what was found elsewhere."""
+        self.known[plain(terms, self.setting)] = Finding(possible, proved)
+
     def ask(self, terms: Terms) -> Finding:
-        """Whether a table meets the terms. Raises Unsettled if that could not be decided."""
-        terms = replace(terms, goals=("any",), tidy="none", blend=())
+        """Whether a table meets the terms.
+
+        Raises Unsettled if that could not be decided and Stopped if it was not to be.
+        """
+        terms = plain(terms, self.setting)
         if terms not in self.known:
             self.watch.check()
             self.posed += 1
-            relaxed = Relaxed(self.setting, terms, {}, self.engine, self.watch)
-            answer = relaxed.feasible()
+            answer = Relaxed(self.setting, terms, {}, self.engine, self.watch).minimise({})
             if answer.status not in ("optimal", "infeasible"):
-                self.watch.check()
                 raise Unsettled(answer.reason)
-            self.known[terms] = Finding(
-                answer.status == "optimal",
-                answer.proved,
-                _blamed(relaxed, answer),
-                relaxed.table(answer),
-            )
+            self.known[terms] = Finding(answer.status == "optimal", answer.proved)
         return self.known[terms]
 
 
-def _blamed(relaxed: Relaxed, answer: Answer) -> frozenset[str]:
-    """The groups whose rows or bounds the certificate of impossibility uses."""
-    if answer.farkas is None:
-        return frozenset()
-    groups = {group_of(relaxed.row_axis.label(row)) for row in answer.farkas.idx}
-    found = {group for group in groups if group is not None}
-    terms = relaxed.terms
-    # Bounds on payments have no row: a certificate that leaves a payment over uses one.
-    for key in ("pays_at_most", "pays_at_least"):
-        if getattr(terms.limits, key) is not None:
-            found.add(f"limit:{key}")
-    if terms.decision != "randomized":
-        found.add("decision")
-    return frozenset(found)
+def plain(terms: Terms, setting: Setting) -> Terms:
+    """The same demands without goals, and written alike wherever they mean the same."""
+    names = {party.name for party in setting.parties}
+    if names <= terms.trusted:
+        terms = replace(terms, ic="none")
+    if names <= terms.compelled:
+        terms = replace(terms, ir="none")
+    if terms.ic == "none":
+        terms = replace(terms, trusted=frozenset(), slack=Fraction(0))
+    if terms.ir == "none":
+        terms = replace(terms, compelled=frozenset(), shortfall=Fraction(0))
+    if terms.balance == "none":
+        terms = replace(terms, budget="exact", subsidy=Fraction(0))
+    return replace(terms, goals=("any",), tidy="none", blend=())

@@ -3,20 +3,21 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator, Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
 
 import numpy as np
 
 from designer.demands.terms import Terms
-from designer.program.draft import Draft
 from designer.setting.setting import Setting
-from designer.table import Table
-from designer.weighing.oracle import Oracle
-from designer.weighing.relaxed import Answer, Bounds, Relaxed
+from designer.weighing.groups import CAPS, FLOORS, may_free_decision
+from designer.weighing.mix import Mix
+from designer.weighing.relaxed import Answer, Freedom, Relaxed
 
-NONNEGATIVE: Bounds = (Fraction(0), None)
+ONE = Fraction(1)
+
+Changes = tuple[tuple[tuple[str, ...], tuple[tuple[str, Fraction], ...]], ...]
 
 
 @dataclass(frozen=True)
@@ -25,61 +26,175 @@ class Price:
 
     relax    the way out, in a stable word: "outside-money", "outside-money-on-average",
              "shortfall", "shortfall:NAME", "compel", "lies", "welfare", "limit:KEY", "side:KEY"
-    amount   exact money (0: nothing has to give); None: this way alone does not help
+    amount   how much more must be allowed than the terms do, or how much is given up: exact
+             money (0: nothing has to give), for "compel" the number of parties; None: this way
+             alone does not help
+    asked, becomes   what the terms allow, and what they would have to (for "welfare": the
+             expected welfare of the demanded decision, and the most that can be had)
     parties  for "compel": the parties to compel
-    buys     what a first unit of another allowance would take off the price, by allowance
-    changes  for "welfare": profiles whose decision differs from the efficient one, and
-             the decision there (option, probability)
+    buys     (criterion, amount): of how much of another allowance one unit of this one, the
+             last that is needed, is worth: the exact one-sided rate
+    idle     criteria of which a little would take nothing off this price
+    changes  for "welfare": profiles whose decision differs from the demanded one, and
+             the decision there (option, probability), in one table that gives up least
     """
 
     relax: str
     amount: Fraction | None
     proved: bool
+    asked: Fraction | None = None
+    becomes: Fraction | None = None
     parties: tuple[str, ...] = ()
     buys: tuple[tuple[str, Fraction], ...] = ()
-    changes: tuple[tuple[tuple[str, ...], tuple[tuple[str, Fraction], ...]], ...] = ()
+    idle: tuple[str, ...] = ()
+    changes: Changes = ()
     reason: str = ""
 
 
-def ways_out(oracle: Oracle, terms: Terms) -> Iterator[Price]:
-    """Every way out in turn, cheapest questions first."""
+class Prices:
+    """Every way out in turn, the programs shared between them."""
+
+    def __init__(self, mix: Mix) -> None:
+        """Nothing is priced yet."""
+        self.mix, self.terms, self.setting = mix, mix.terms, mix.setting
+
+    def __iter__(self) -> Iterator[Price]:
+        """The prices, cheapest questions first. Raises Stopped and Unsettled."""
+        terms = self.terms
+        whole = allowed(self.mix, terms)
+        if "money" in whole.columns:
+            yield self._single(whole, "outside-money", "money")
+            if terms.balance == "ex-post":
+                average = allowed(self.mix, replace(terms, balance="ex-ante"))
+                yield self._single(average, "outside-money-on-average", "money")
+        if "shortfall" in whole.columns:
+            yield self._single(whole, "shortfall", "shortfall")
+            for party in self._invited():
+                name = f"shortfall:{party}"
+                yield self._single(self._freed(terms, {name: self._above(name)}), name, name)
+            yield from self._compelled()
+        if "lies" in whole.columns:
+            yield self._single(whole, "lies", "lies")
+        if terms.decision in ("efficient", "table") and may_free_decision(terms):
+            yield self._second_best()
+        for kind, keys in (("limit", CAPS), ("side", FLOORS)):
+            part = terms.limits if kind == "limit" else terms.side
+            for key in keys:
+                if getattr(part, key) is not None:
+                    yield self._given_way(kind, key)
+
+    def _invited(self) -> list[str]:
+        return [p.name for p in self.setting.parties if p.name not in self.terms.compelled]
+
+    def _freed(self, terms: Terms, free: Mapping[str, Freedom]) -> Relaxed:
+        """The demands with an allowance freed, and outside money beside it to compare."""
+        beside: dict[str, Freedom] = {}
+        if terms.balance != "none":
+            beside["subsidy"] = (terms.subsidy, None)
+        return Relaxed(self.setting, terms, {**free, **beside}, self.mix.engine, self.mix.watch)
+
+    def _above(self, name: str) -> Freedom:
+        return (self.terms.shortfall, None) if name.startswith("shortfall") else (None, None)
+
+    def _single(self, relaxed: Relaxed, relax: str, criterion: str) -> Price:
+        """The least of one allowance, all others closed."""
+        closed = [name for name in relaxed.columns if name != criterion]
+        answer = relaxed.minimise({criterion: ONE}, closed=closed)
+        if answer.status != "optimal" or answer.at is None:
+            return _no_price(relax, answer)
+        asked = relaxed.asked(criterion)
+        found = Price(
+            relax, answer.at[criterion] - asked, answer.proved, asked, answer.at[criterion]
+        )
+        return _with_rates(found, relaxed, answer, closed)
+
+    def _second_best(self) -> Price:
+        """The welfare given up when the decision may differ from the demanded one."""
+        freed = self._freed(replace(self.terms, decision="randomized"), {})
+        closed = list(freed.columns)
+        answer = freed.minimise({"welfare": ONE}, closed=closed)
+        if answer.status != "optimal" or answer.at is None:
+            return _no_price("welfare", answer)
+        asked = _welfare_as_asked(self.setting, self.terms, freed)
+        lost = answer.at["welfare"]
+        becomes = freed.first_best - lost
+        changes = _changed(self.setting, self.terms, freed, answer)
+        found = Price("welfare", lost, answer.proved, asked, becomes, changes=changes)
+        return _with_rates(found, freed, answer, closed)
+
+    def _given_way(self, kind: str, key: str) -> Price:
+        """How far a cap must rise, or a floor fall."""
+        name = f"{kind}:{key}"
+        if self.terms.limits.only_when_served and key == "pays_at_most":
+            return Price(
+                name,
+                None,
+                False,
+                reason="the cap also bounds what is collected upon service: not priced apart",
+            )
+        up = key == "pays_at_most"
+        given: Fraction = getattr(self.terms.limits if kind == "limit" else self.terms.side, key)
+        free: Freedom = (given, None) if up else (None, given)
+        relaxed = self._freed(self.terms, {key: free})
+        closed = [other for other in relaxed.columns if other != key]
+        answer = relaxed.minimise({key: Fraction(1 if up else -1)}, closed=closed)
+        if answer.status != "optimal" or answer.at is None:
+            return _no_price(name, answer)
+        moved = abs(answer.at[key] - given)
+        found = Price(name, moved, answer.proved, given, answer.at[key])
+        return _with_rates(found, relaxed, answer, closed)
+
+    def _compelled(self) -> Iterator[Price]:
+        """The smallest sets of parties to compel, all of them.
+
+        A set cures only if it hits every known collision through the participation in it
+        (implicit hitting sets: Moreno-Centeno & Karp 2013, Operations Research 61:453-468).
+        """
+        mix, free = self.mix, self._invited()
+        everything = frozenset(mix.groups)
+        invited = {name: f"ir:{name}" for name in free}
+        found = mix.ask(everything - frozenset(invited.values()))
+        if found in mix.collisions:
+            yield Price("compel", None, found.proved)
+            return
+        for size in range(len(free) + 1):
+            cured = False
+            for chosen in itertools.combinations(free, size):
+                kept = everything - {invited[name] for name in chosen}
+                found = mix.ask(kept)
+                if found in mix.possible:
+                    cured = True
+                    yield Price("compel", Fraction(size), found.proved, parties=chosen)
+            if cured:
+                return  # larger sets are not smallest
+
+
+def allowed(mix: Mix, terms: Terms, decision: str | None = None) -> Relaxed:
+    """The terms with every allowance freed that they can pay with, from what they allow up."""
+    free: dict[str, Freedom] = {}
     if terms.balance != "none":
-        yield _single(oracle, terms, "outside-money", "subsidy", "money")
-        if terms.balance == "ex-post":
-            on_average = replace(terms, balance="ex-ante")
-            yield _single(oracle, on_average, "outside-money-on-average", "subsidy", "money")
-    if terms.ir != "none":
-        yield _single(oracle, terms, "shortfall", "shortfall", "shortfall")
-        for party in oracle.setting.parties:
-            if party.name not in terms.compelled:
-                name = f"shortfall:{party.name}"
-                yield _single(oracle, terms, name, name, name)
-        yield from _compelled(oracle, terms)
+        free["subsidy"] = (terms.subsidy, None)
+    if terms.ir != "none" and len(terms.compelled) < len(mix.setting.parties):
+        free["shortfall"] = (terms.shortfall, None)
     if terms.ic != "none":
-        yield _single(oracle, terms, "lies", "slack", "lies")
-    if terms.decision in ("efficient", "table"):
-        yield _second_best(oracle, terms)
-    for key in ("pays_at_most", "pays_at_least"):
-        if getattr(terms.limits, key) is not None:
-            yield _given_way(oracle, terms, "limit", key)
-    for key in ("welfare_at_least", "revenue_at_least"):
-        if getattr(terms.side, key) is not None:
-            yield _given_way(oracle, terms, "side", key)
+        free["slack"] = (terms.slack, None)
+    if decision is not None:
+        terms = replace(terms, decision=decision)
+    return Relaxed(mix.setting, terms, free, mix.engine, mix.watch)
 
 
-def _single(oracle: Oracle, terms: Terms, relax: str, allowance: str, criterion: str) -> Price:
-    """The least of one allowance, and what the others would take off it."""
-    free = {allowance: NONNEGATIVE}
-    relaxed = Relaxed(oracle.setting, terms, free, oracle.engine, oracle.watch)
-    answer = relaxed.minimise({criterion: Fraction(1)})
-    if answer.status != "optimal" or answer.at is None:
-        return _no_price(relax, answer)
-    buys = []
-    for other in ("shortfall", "lies"):
-        worth = relaxed.worth_of(answer, other)
-        if worth > 0 and not criterion.startswith(other):
-            buys.append((other, worth))
-    return Price(relax, answer.at[criterion], answer.proved, buys=tuple(buys))
+def _with_rates(price: Price, relaxed: Relaxed, answer: Answer, partners: Collection[str]) -> Price:
+    """The price with what a unit of it is worth of every closed allowance."""
+    if answer.lp.integer.any() or not price.amount:
+        return price
+    buys, idle = [], []
+    for partner in partners:
+        rate = relaxed.rate(answer, partner, partners)
+        if rate > 0:
+            buys.append((partner, 1 / rate))
+        else:
+            idle.append(partner)
+    return replace(price, buys=tuple(buys), idle=tuple(idle))
 
 
 def _no_price(relax: str, answer: Answer) -> Price:
@@ -87,65 +202,33 @@ def _no_price(relax: str, answer: Answer) -> Price:
     return Price(relax, None, proved, reason=answer.reason)
 
 
-def _second_best(oracle: Oracle, terms: Terms) -> Price:
-    """The welfare given up when the decision may differ from the efficient one."""
-    freed = replace(terms, decision="randomized")
-    relaxed = Relaxed(oracle.setting, freed, {}, oracle.engine, oracle.watch)
-    answer = relaxed.minimise({"welfare": Fraction(1)})
-    if answer.status != "optimal" or answer.at is None:
-        return _no_price("welfare", answer)
-    table = relaxed.table(answer)
-    changes = () if table is None else _changed(oracle.setting, table)
-    return Price("welfare", answer.at["welfare"], answer.proved, changes=changes)
+def _welfare_as_asked(setting: Setting, terms: Terms, freed: Relaxed) -> Fraction:
+    """Expected welfare of the demanded decision."""
+    if terms.decision != "table" or setting.rule is None:
+        return freed.first_best
+    weights = setting.weights.astype(object)
+    worth = (setting.rule.astype(object) * freed.draft.welfare.astype(object)).sum(axis=1)
+    total = int((worth * weights).sum())
+    return Fraction(total, setting.total_weight * setting.grain * setting.rule_den)
 
 
-def _changed(
-    setting: Setting, table: Table
-) -> tuple[tuple[tuple[str, ...], tuple[tuple[str, Fraction], ...]], ...]:
-    """The profiles at which a table decides otherwise than efficiently."""
-    welfare = Draft(setting, "randomized").welfare
-    efficient = welfare == welfare.max(axis=1, keepdims=True)
-    elsewhere = ((table.decides != 0) & ~efficient).any(axis=1)
+def _changed(setting: Setting, terms: Terms, freed: Relaxed, answer: Answer) -> Changes:
+    """The profiles at which the answer decides otherwise than demanded."""
+    chances, den = freed.decisions(answer)
+    if terms.decision == "table" and setting.rule is not None:
+        other = (chances * setting.rule_den != setting.rule.astype(object) * den).any(axis=1)
+    else:
+        welfare = freed.draft.welfare
+        efficient = welfare == welfare.max(axis=1, keepdims=True)
+        other = ((chances != 0) & ~efficient).any(axis=1)
     return tuple(
         (
             setting.labels_at(int(profile)),
             tuple(
-                (option, table.chance(int(profile), k))
+                (option, Fraction(int(chances[profile, k]), den))
                 for k, option in enumerate(setting.options)
-                if table.decides[profile, k]
+                if chances[profile, k]
             ),
         )
-        for profile in np.flatnonzero(elsewhere)
+        for profile in np.flatnonzero(other)
     )
-
-
-def _given_way(oracle: Oracle, terms: Terms, kind: str, key: str) -> Price:
-    """How far a cap must rise, or a floor fall."""
-    given = getattr(terms.limits if kind == "limit" else terms.side, key)
-    relaxed = Relaxed(oracle.setting, terms, {key: (None, None)}, oracle.engine, oracle.watch)
-    up = key == "pays_at_most"
-    answer = relaxed.minimise({key: Fraction(1 if up else -1)})
-    name = f"{kind}:{key}"
-    if answer.status != "optimal" or answer.at is None:
-        return _no_price(name, answer)
-    moved = (answer.at[key] - given) if up else (given - answer.at[key])
-    return Price(name, max(moved, Fraction(0)), answer.proved)
-
-
-def _compelled(oracle: Oracle, terms: Terms) -> Iterator[Price]:
-    """The smallest sets of parties to compel: all minimal ones, by size."""
-    free = [p.name for p in oracle.setting.parties if p.name not in terms.compelled]
-    everyone = replace(terms, compelled=terms.compelled | frozenset(free))
-    finding = oracle.ask(everyone)
-    if not finding.possible:
-        yield Price("compel", None, finding.proved)
-        return
-    cures: list[frozenset[str]] = []
-    for size in range(len(free) + 1):
-        if cures and size > len(cures[0]):
-            return  # larger sets are not smallest
-        for chosen in itertools.combinations(free, size):
-            finding = oracle.ask(replace(terms, compelled=terms.compelled | frozenset(chosen)))
-            if finding.possible:
-                cures.append(frozenset(chosen))
-                yield Price("compel", Fraction(size), finding.proved, parties=chosen)

@@ -2,45 +2,53 @@
 
 Criteria are what a mix can pay with, each to be made small:
 
-    money      outside money, in every case the same (or on average, if balance is)
+    money      outside money, the same in every case (or on average, if balance is)
     shortfall  how far any type of any party may fall below its outside option
     lies       the gain from a lie that is tolerated
     welfare    expected welfare given up against the efficient decision
 
-Every answer is exact and has passed the proof checker.
+An allowance that is freed and not in play is *closed*: held at what the terms allow. Every
+answer is exact and has passed the proof checker.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
+from typing import Any
 
 import numpy as np
 
-from designer.demands.formulate import Formulation
+from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.terms import Terms
+from designer.engines.highs import HIGHS
+from designer.engines.hot import HotHighs
 from designer.engines.report import Engine
-from designer.engines.watch import Watch
+from designer.engines.watch import Interrupted, Watch
 from designer.program.affine import Affine
-from designer.program.labels import Honest, TakesPart
-from designer.program.program import Axis, Program, Stage
-from designer.proof.document import compose
+from designer.program.draft import Draft
+from designer.program.linear import LinearProgram
+from designer.program.program import Stage
+from designer.proof.document import compose, plain_program
 from designer.proof.face import Settled as Faced
 from designer.proof.face import face, reduced_costs
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.recheck import recheck
 from designer.proof.vector import Vector
-from designer.roads.full import table_of
 from designer.roads.settled import GoalResult
-from designer.setting.setting import Setting
-from designer.table import Table
+from designer.setting.setting import IntArray, Setting
+from designer.weighing.averages import AverageDraft, on_average
+from designer.weighing.bounds import holding, tangent
 
 ALLOWANCE = {"money": "subsidy", "shortfall": "shortfall", "lies": "slack"}
 """The allowance behind each criterion that is a single unknown."""
 
-Bounds = tuple[Fraction | None, Fraction | None]
+Freedom = tuple[Fraction | None, Fraction | None]
+"""Lower and upper bound of a freed allowance; None: none."""
+
+ONE = Fraction(1)
 
 
 @dataclass(frozen=True, eq=False)
@@ -49,12 +57,13 @@ class Answer:
 
     status  "optimal", "infeasible", "unbounded" or "undecided"; proved by the checker
     at      the value of every criterion at the optimum
-    dual    multipliers over rows, in the minimising form
-    groups  for "infeasible": the labels of the rows in the certificate
+    dual    multipliers over rows, in the minimising form; `farkas` for "infeasible"
+    lp      the program that was answered
     """
 
     status: str
     proved: bool
+    lp: LinearProgram
     value: Fraction | None = None
     at: Mapping[str, Fraction] | None = None
     primal: Vector | None = None
@@ -64,129 +73,151 @@ class Answer:
 
 
 class Relaxed:
-    """One program with allowances freed; `criteria` gives each criterion as a form."""
+    """One program with allowances freed; `forms` gives each criterion as a form."""
 
     def __init__(
         self,
         setting: Setting,
         terms: Terms,
-        free: Mapping[str, Bounds],
+        free: Mapping[str, Freedom],
         engine: Engine,
         watch: Watch,
     ) -> None:
-        """Write the demands once; `free` names allowances and their bounds."""
-        self.setting, self.terms = setting, terms
-        self.engine, self.watch = engine, watch
-        work = Formulation(setting, terms, free)
+        """Write the demands once; `free` names allowances and their bounds.
+
+        The program is written on averages where those decide (`averages`).
+        """
+        self.terms, self.watch = terms, watch
+        self.engine: Engine = HotHighs() if engine is HIGHS else engine
+        reduced = on_average(setting, terms)
+        self.averaged = reduced is not None
+        draft: Draft | None = None
+        if reduced is not None:
+            setting, terms = reduced
+            draft = AverageDraft(setting, terms.decision, amounts_of(terms))
+        self.setting = setting
+        work = Formulation(setting, terms, free, draft)
         self.draft = work.draft
+        criterion = {allowance: name for name, allowance in ALLOWANCE.items()}
         self.forms: dict[str, Affine] = {
-            name: self.draft.allowance(allowance, Fraction(0))
-            for name, allowance in ALLOWANCE.items()
-            if allowance in free
+            criterion.get(name, name): self.draft.allowance(*_allowance(name)) for name in free
         }
-        for name in free:
-            if name not in ALLOWANCE.values():
-                self.forms[name] = self.draft.allowance(name, Fraction(0))
-        welfare = self.draft.expected_welfare()
-        self.forms["welfare"] = (-welfare).plus(first_best(setting))
+        self.columns = {name: int(form.col[0]) for name, form in self.forms.items()}
+        self.first_best = _first_best(self.draft)
+        self.forms["welfare"] = (-self.draft.expected_welfare()).plus(self.first_best)
         self.forms["pot"] = self.draft.expected_pot()
         self.program = work.program()
+        self.matrix = self.program.matrix
+        self._closed: dict[frozenset[str], LinearProgram] = {}
+        self._plain: tuple[object, dict[str, Any]] = (None, {})
+
+    # -- questions -------------------------------------------------------------------------
 
     def minimise(
-        self, weights: Mapping[str, Fraction], then: Mapping[str, Fraction] | None = None
+        self,
+        weights: Mapping[str, Fraction],
+        then: Mapping[str, Fraction] | None = None,
+        closed: Collection[str] = (),
     ) -> Answer:
-        """The least weighted sum of criteria; `then` breaks ties by a second one."""
-        program = self._posed(weights)
-        lp = program.stage(0)
-        outcome = prove(lp, engine=self.engine, watch=self.watch)
-        answer = self._judged(program, outcome)
-        if then is None or answer.status != "optimal" or outcome.dual is None:
-            return answer
-        second = self._posed(then)
-        faced = Faced(outcome.dual, reduced_costs(lp, outcome.dual), None, Fraction(1))
-        outcome = prove(face(second.stage(0), [faced]), engine=self.engine, watch=self.watch)
-        if outcome.status != "optimal" or outcome.primal is None:
-            return answer
-        at = self._values(outcome.primal)
-        return replace(
-            answer, at=at, primal=outcome.primal, proved=answer.proved and outcome.proved
-        )
+        """The least weighted sum of criteria; `then` breaks ties by a second one.
 
-    def feasible(self) -> Answer:
-        """Whether the demands can be met at all, allowances at their best."""
-        return self.minimise({})
-
-    def table(self, answer: Answer) -> Table | None:
-        """The table behind an optimum."""
-        return None if answer.primal is None else table_of(self.draft, answer.primal)
-
-    def worth_of(self, answer: Answer, name: str) -> Fraction:
-        """By how much the optimum falls per unit of an allowance nearby (the dual).
-
-        For "shortfall" and "lies": the natural multipliers of the participation rows, of the
-        lie rows. One-sided: what a first small unit buys, at most.
+        `closed` allowances are held at what the terms allow.
         """
-        if answer.dual is None:
-            return Fraction(0)
-        kind = {"shortfall": TakesPart, "lies": Honest}[name]
-        total = Fraction(0)
-        num, den = self.program.row_scale
-        for row, number in zip(answer.dual.idx, answer.dual.num, strict=True):
-            if isinstance(self.program.row_axis.label(row), kind):
-                total += Fraction(number * int(num[row]), answer.dual.den * int(den[row]))
-        return total
+        matrix = self.closed(closed)
+        answer = self.solve(self._posed(matrix, weights))
+        if then is None or answer.status != "optimal" or answer.dual is None:
+            return answer
+        faced = Faced(answer.dual, reduced_costs(answer.lp, answer.dual), None, ONE)
+        second = self.solve(face(self._posed(matrix, then), [faced]))
+        if second.status != "optimal":
+            return replace(answer, proved=False)
+        proved = answer.proved and second.proved
+        return replace(answer, at=second.at, primal=second.primal, proved=proved)
 
-    def _posed(self, weights: Mapping[str, Fraction]) -> Program:
+    def rate(self, answer: Answer, partner: str, closed: Collection[str]) -> Fraction:
+        """By how much the optimum falls per unit of a closed allowance, for a first small unit.
+
+        The slope to the right of the optimal value as a function of the allowance: the least
+        cost of a direction that respects every row and bound tight at the optimum, with one
+        unit of the allowance. This is the largest dual price on the optimal dual face, not
+        just the one that the optimal basis happens to give. NaN-free: 0 if it does not help.
+        """
+        if answer.primal is None:
+            return Fraction(0)
+        column = self.columns[partner]
+        others = [self.columns[name] for name in closed if name != partner]
+        lp = tangent(answer.lp, answer.primal, {column: 1, **dict.fromkeys(others, 0)})
+        slope = self.solve(lp)
+        return Fraction(0) if slope.value is None or not slope.proved else -slope.value
+
+    def closed(self, names: Collection[str]) -> LinearProgram:
+        """The program with these allowances held at what the terms allow."""
+        key = frozenset(names)
+        if key not in self._closed:
+            held = {self.columns[name]: self.asked(name) for name in key}
+            self._closed[key] = holding(self.matrix, held) if held else self.matrix
+        return self._closed[key]
+
+    def asked(self, name: str) -> Fraction:
+        """What the terms allow of an allowance."""
+        word = ALLOWANCE.get(name, name).partition(":")[0]
+        for part in (self.terms, self.terms.limits, self.terms.side):
+            if hasattr(part, word):
+                value: Fraction | None = getattr(part, word)
+                return value if value is not None else Fraction(0)
+        raise KeyError(name)
+
+    def decisions(self, answer: Answer) -> tuple[IntArray, int]:
+        """The chance of every option at every profile, int (N, K), and the denominator."""
+        draft, primal = self.draft, answer.primal
+        if primal is None:
+            raise ValueError("no optimum, no decisions")
+        columns = draft.chance_col
+        chances = draft.chance.astype(object) * primal.den
+        free = columns >= 0
+        numbers = np.array([*primal.numerators(), 0], dtype=object)
+        chances[free] = numbers[columns[free]] * draft.chance_den
+        return chances, primal.den * draft.chance_den
+
+    # -- one program -------------------------------------------------------------------------
+
+    def _posed(self, matrix: LinearProgram, weights: Mapping[str, Fraction]) -> LinearProgram:
         cost = np.zeros(self.draft.columns, dtype=object)
-        den, const = 1, Fraction(0)
-        form = None
+        den, const, form = 1, Fraction(0), None
         for name, weight in weights.items():
-            part = self.forms[name].times(weight)
-            form = part if form is None else form + part
+            if weight:
+                part = _wide(self.forms[name]).times(weight)
+                form = part if form is None else form + part
         if form is not None:
             den = int(form.den[0])
-            np.add.at(cost, form.col, form.num.astype(object))
+            np.add.at(cost, form.col, form.num)
             const = Fraction(int(form.const[0]), den)
-        stage = Stage(
-            "weighted sum", "min", self.draft.columns, self.program.matrix.rows, cost, den, const
-        )
-        return replace(self.program, stages=(stage,))
+            if max(abs(int(c)) for c in cost) < 2**62:
+                cost = cost.astype(np.int64)
+        else:
+            cost = cost.astype(np.int64)
+        return replace(matrix, cost=cost, cost_den=den, cost_const=const, sense="min")
 
-    def _values(self, primal: Vector) -> dict[str, Fraction]:
-        numbers = primal.numerators()
-        values = {}
-        for name, form in self.forms.items():
-            total = int(form.const[0]) * primal.den + sum(
-                int(num) * numbers[int(col)] for num, col in zip(form.num, form.col, strict=True)
-            )
-            values[name] = Fraction(total, int(form.den[0]) * primal.den)
-        return values
+    def solve(self, lp: LinearProgram) -> Answer:
+        """The exact answer to a program over these columns, as the checker sees it.
 
-    def _judged(self, program: Program, outcome: Outcome) -> Answer:
-        """What the checker says of the certificates."""
-        status = outcome.status
-        if status == "undecided" or (status in ("infeasible", "unbounded") and not outcome.proved):
-            return Answer("undecided", False, reason=outcome.reason)
-        stage = program.stages[0]
-        verdict = {"optimal": "possible", "infeasible": "impossible"}.get(status, "unbounded")
-        goal = GoalResult(
-            stage.goal, outcome.value, outcome.proved, dual=outcome.dual, tree=outcome.tree
-        )
-        document = compose(
-            program,
-            verdict=verdict,
-            scenario={"title": self.setting.title, "digest": self.setting.digest},
-            terms={},
-            goals=(goal,),
-            primal=outcome.primal,
-            farkas=outcome.farkas,
-            tree=outcome.tree if verdict == "impossible" else None,
-            ray=outcome.ray,
-        )
-        holds = recheck(document).holds
+        Raises Stopped at the time limit and after Ctrl-C.
+        """
+        outcome = prove(lp, engine=self.engine, watch=self.watch)
+        if outcome.status == "undecided":
+            self.watch.check()
+            if outcome.reason.startswith(Interrupted.reason):
+                raise Interrupted
+            return Answer("undecided", False, lp, reason=outcome.reason)
+        if outcome.status in ("infeasible", "unbounded") and not outcome.proved:
+            return Answer("undecided", False, lp, reason=outcome.reason)
+        holds = outcome.proved and recheck(self._document(lp, outcome)).holds
+        if outcome.status != "optimal" and not holds:
+            return Answer("undecided", False, lp, reason="the checker rejects the certificate")
         return Answer(
-            status,
-            holds and outcome.proved,
+            outcome.status,
+            holds,
+            lp,
             outcome.value,
             self._values(outcome.primal) if outcome.primal is not None else None,
             outcome.primal,
@@ -195,17 +226,70 @@ class Relaxed:
             outcome.reason,
         )
 
-    @property
-    def row_axis(self) -> Axis:
-        """The labels of the rows."""
-        return self.program.row_axis
+    def _document(self, lp: LinearProgram, outcome: Outcome) -> dict[str, Any]:
+        stage = Stage(
+            "weighted sum", "min", lp.columns, lp.rows, lp.cost, lp.cost_den, lp.cost_const
+        )
+        program = replace(self.program, matrix=lp, stages=(stage,))
+        bounds = (lp.row_lo, lp.row_hi, lp.col_lo, lp.col_hi)
+        key, plain = self._plain
+        if not isinstance(key, tuple) or any(a is not b for a, b in zip(key, bounds, strict=True)):
+            plain = plain_program(program)
+            self._plain = bounds, plain
+        verdict = {"optimal": "possible", "infeasible": "impossible"}.get(
+            outcome.status, "unbounded"
+        )
+        return compose(
+            program,
+            verdict=verdict,
+            scenario={"title": self.setting.title, "digest": self.setting.digest},
+            terms={},
+            goals=(
+                GoalResult(
+                    stage.goal,
+                    outcome.value,
+                    outcome.proved,
+                    dual=outcome.dual,
+                    tree=outcome.tree,
+                ),
+            ),
+            primal=outcome.primal,
+            farkas=outcome.farkas,
+            tree=outcome.tree if verdict == "impossible" else None,
+            ray=outcome.ray,
+            plain=plain,
+        )
+
+    def _values(self, primal: Vector) -> dict[str, Fraction]:
+        numbers = np.array(primal.numerators(), dtype=object)
+        return {
+            name: Fraction(
+                int(form.const[0]) * primal.den + int((form.num * numbers[form.col]).sum()),
+                int(form.den[0]) * primal.den,
+            )
+            for name, form in self.forms.items()
+        }
 
 
-def first_best(setting: Setting) -> Fraction:
+def _allowance(name: str) -> tuple[str, Fraction, str]:
+    """The arguments of `Draft.allowance` for an allowance that is free."""
+    word, _, party = name.partition(":")
+    return word, Fraction(0), party
+
+
+def _wide(form: Affine) -> Affine:
+    """The form in Python integers: weights may carry numbers of any length."""
+    return Affine(
+        form.row,
+        form.col,
+        form.num.astype(object),
+        form.const.astype(object),
+        form.den.astype(object),
+    )
+
+
+def _first_best(draft: Draft) -> Fraction:
     """E[max_k total worth net of outlay]: expected welfare of an efficient decision."""
-    from designer.program.draft import Draft
-
-    draft = Draft(setting, "randomized")
     best = draft.welfare.max(axis=1).astype(object)
     total = int((best * draft.weights.astype(object)).sum())
-    return Fraction(total, setting.total_weight * setting.grain)
+    return Fraction(total, draft.setting.total_weight * draft.setting.grain)

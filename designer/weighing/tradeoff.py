@@ -3,39 +3,33 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from fractions import Fraction
-from typing import Any
 
-from designer.demands.plain import as_plain
 from designer.demands.terms import Terms
-from designer.setting.exact import decimal, text
 from designer.setting.setting import Setting
 from designer.weighing.collisions import GroupSet
 from designer.weighing.frontier import CornerList, Frontier
 from designer.weighing.ladders import Ladder, Step
 from designer.weighing.ledger import Ledger
 from designer.weighing.prices import Price
+from designer.weighing.room import Room
 
-
-@dataclass(frozen=True)
-class Room:
-    """How far one direction can be pushed while the mix stays possible (None: for ever).
-
-    kind  "hand-back" money that could be handed back, "floor" by how much every type could
-          be lifted above staying out, "margin" what every lie could be made to cost
-    """
-
-    kind: str
-    amount: Fraction | None
-    proved: bool
-    reason: str = ""
+PARTS = ("prices", "ledger", "ladders", "collisions", "frontiers")
+"""The parts of the page of an impossible mix, in the order in which they are worked out."""
 
 
 @dataclass(frozen=True, eq=False)
 class Tradeoff:
-    """Everything `weigh` found; `complete` is False when it was stopped on the way.
+    """Everything `weigh` found.
 
-    status  "possible" or "impossible" as posed; "undecided" if not even that was settled
+    status      "possible" or "impossible" as posed; "undecided" if not even that was settled
+    proved      whether the status is
+    groups      the demand groups of the mix, in reading order
+    sets        its minimal collisions and maximal possible sets
+    room        for a possible mix: how far each direction can be pushed; `ladders` and `steps`
+                then lead up instead of down
+    complete    False when it was stopped on the way, or a part could not be settled
+    reasons     what is missing, and why, by part
+    seconds     wall time by part
     """
 
     setting: Setting
@@ -52,7 +46,7 @@ class Tradeoff:
     ledger: Ledger | None = None
     room: tuple[Room, ...] = ()
     complete: bool = True
-    reason: str = ""
+    reasons: dict[str, str] = field(default_factory=dict)
     seconds: dict[str, float] = field(default_factory=dict)
 
     @property
@@ -65,101 +59,6 @@ class Tradeoff:
         """The maximal sets of groups that can."""
         return tuple(found for found in self.sets if not found.collides)
 
-
-def _amount(value: Fraction | None) -> dict[str, Any]:
-    if value is None:
-        return {"amount": None, "approx": None}
-    return {"amount": text(value), "approx": decimal(value)}
-
-
-def as_json(found: Tradeoff) -> dict[str, Any]:
-    """The document `weigh --json` prints, format designer.tradeoff/1."""
-    unit = found.setting.money
-    document: dict[str, Any] = {
-        "format": "designer.tradeoff/1",
-        "scenario": {"title": found.setting.title, "digest": found.setting.digest},
-        "demands": as_plain(found.terms),
-        "verdict": found.status,
-        "proved": found.proved,
-        "complete": found.complete,
-        "reason": found.reason,
-        "groups": list(found.groups),
-        "collisions": [
-            {"groups": list(one.groups), "proved": one.proved} for one in found.collisions
-        ],
-        "possible_sets": [
-            {"groups": list(one.groups), "proved": one.proved} for one in found.possible_sets
-        ],
-        "ladders": [
-            {
-                "demand": one.demand,
-                "asked": one.asked,
-                "settles_at": one.cured_by,
-                "tried": [{"form": form, "possible": held} for form, held in one.tried],
-                "proved": one.proved,
-            }
-            for one in found.ladders
-        ],
-        "steps": [{"forms": dict(one.forms), "proved": one.proved} for one in found.steps],
-        "ways_out": [_price(one, unit) for one in found.prices],
-        "frontiers": [
-            {
-                "x": one.x,
-                "y": one.y,
-                "corners": [[text(part) for part in corner] for corner in one.corners],
-                "unit": unit,
-                "proved": one.proved,
-                "complete": one.complete,
-                "reason": one.reason,
-            }
-            for one in found.frontiers
-        ],
-        "room": [
-            {"kind": one.kind, **_amount(one.amount), "proved": one.proved} for one in found.room
-        ],
-        "seconds": found.seconds,
-    }
-    if found.corners is not None:
-        document["corners"] = {
-            "criteria": list(found.corners.criteria),
-            "corners": [[text(part) for part in corner] for corner in found.corners.corners],
-            "proved": found.corners.proved,
-            "complete": found.corners.complete,
-        }
-    if found.ledger is not None:
-        document["ledger"] = {
-            "entries": [
-                {
-                    "kind": entry.kind,
-                    "party": entry.party,
-                    "type": entry.type,
-                    "probability": text(entry.chance),
-                    "each": text(entry.each),
-                    "amount": text(entry.amount),
-                }
-                for entry in found.ledger.entries
-            ],
-            "allowed": text(found.ledger.allowed),
-            "gap": text(found.ledger.gap),
-            "unit": unit,
-            "proved": found.ledger.proved,
-            "reason": found.ledger.reason,
-        }
-    return document
-
-
-def _price(price: Price, unit: str) -> dict[str, Any]:
-    parties = price.relax == "compel"
-    return {
-        "relax": price.relax,
-        **_amount(price.amount),
-        "unit": "parties" if parties else unit,
-        "parties": list(price.parties),
-        "buys": {name: text(worth) for name, worth in price.buys},
-        "changes": [
-            {"at": list(at), "decides": {option: text(chance) for option, chance in lottery}}
-            for at, lottery in price.changes
-        ],
-        "proved": price.proved,
-        "reason": price.reason,
-    }
+    def price(self, relax: str) -> Price | None:
+        """The first price of a way out, by its word."""
+        return next((price for price in self.prices if price.relax == relax), None)
