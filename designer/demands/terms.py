@@ -8,11 +8,13 @@ from fractions import Fraction
 from typing import Any
 
 from designer.errors import Mistake, UsageError
-from designer.setting.exact import text
+from designer.setting.exact import number, text
 from designer.setting.setting import Limits, Setting, Side
 from designer.setting.vocabulary import CHOICES, GOALS
 
 Amount = Fraction | int | str
+SHOWN = 60
+"""Characters of a mistaken word that are repeated to whoever wrote it."""
 
 
 @dataclass(frozen=True)
@@ -104,7 +106,7 @@ def _settle(chosen: dict[str, Any], setting: Setting, mistakes: list[Mistake]) -
         if key in CHOICES:
             if value not in (*CHOICES[key], *(("auto",) if key == "tidy" else ())):
                 mistakes.append(
-                    Mistake(place, repr(value), f"one of {', '.join(CHOICES[key])}", "Pick one.")
+                    Mistake(place, _brief(value), f"one of {', '.join(CHOICES[key])}", "Pick one.")
                 )
             settled[key] = value
         elif key == "goal":
@@ -113,6 +115,8 @@ def _settle(chosen: dict[str, Any], setting: Setting, mistakes: list[Mistake]) -
             mistakes.extend(_goal_mistakes(settled["goals"]))
         elif key in ("subsidy", "slack"):
             settled[key] = _amount(value, place, mistakes)
+        elif key == "compelled":
+            settled[key] = frozenset((value,) if isinstance(value, str) else value)
         elif key == "blend":
             settled[key] = tuple(
                 (name, _amount(weight, f"goal.blend.{name}", mistakes))
@@ -126,30 +130,40 @@ def _settle(chosen: dict[str, Any], setting: Setting, mistakes: list[Mistake]) -
 def _goal_mistakes(goals: tuple[str, ...]) -> list[Mistake]:
     mistakes = [
         Mistake(
-            "demands.goal", repr(name), f"names among {', '.join(GOALS)}", "Pick from the list."
+            "demands.goal", _brief(name), f"names among {', '.join(GOALS)}", "Pick from the list."
         )
         for name in goals
         if name not in GOALS
     ]
     if len(set(goals)) < len(goals):
         mistakes.append(
-            Mistake("demands.goal", ",".join(goals), "each goal once", "Drop the repeated goal.")
+            Mistake(
+                "demands.goal", _brief(",".join(goals)), "each goal once", "Drop the repeated goal."
+            )
         )
     if not goals:
         mistakes.append(Mistake("demands.goal", "an empty list", "a goal", 'Write "any".'))
     return mistakes
 
 
+def _brief(value: object) -> str:
+    """What was found, as written, cut where it gets long."""
+    found = repr(value)
+    return found if len(found) <= SHOWN else f"{found[:SHOWN]}…"
+
+
 def _amount(value: object, place: str, mistakes: list[Mistake]) -> Fraction:
-    if isinstance(value, (int, str, Fraction)) and not isinstance(value, bool):
-        try:
-            return Fraction(value)
-        except (ValueError, ZeroDivisionError):
+    if isinstance(value, (int, Fraction)) and not isinstance(value, bool):
+        return Fraction(value)
+    if isinstance(value, str):  # by the scenario's own reader: Fraction alone would sit
+        try:  # for hours over "1e999999999"
+            return number(value)
+        except ValueError:
             pass
     mistakes.append(
         Mistake(
             place,
-            repr(value),
+            _brief(value),
             "an exact amount: an integer, a decimal or a fraction as text",
             'Write 3, "0.25" or "1/4"; a Python float is not exact.',
         )
