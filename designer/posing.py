@@ -12,7 +12,7 @@ from designer.engines.choose import engine_named
 from designer.engines.watch import Progress, Watch
 from designer.proof.document import build
 from designer.proof.recheck import recheck
-from designer.roads.interim.check import check
+from designer.roads.checking import CLAIMS, check
 from designer.roads.registry import choose
 from designer.roads.settled import Settled
 from designer.setting.setting import Setting
@@ -86,7 +86,7 @@ def judge(setting: Setting, terms: Terms, settled: Settled, watch: Watch) -> Ver
         if holds and "reduction" in document:
             faults = tuple(check(setting, document, watch))
             holds = not faults
-            claims = (*claims, "no rule that is not listed does better")
+            claims = (*claims, CLAIMS[settled.path])
     goals = settled.goals
     reason = settled.reason
     status = settled.status

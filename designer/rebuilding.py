@@ -11,7 +11,7 @@ from typing import Any
 from designer.demands.plain import from_plain
 from designer.errors import ProofError
 from designer.proof import compare
-from designer.roads.interim.check import check
+from designer.roads.checking import check
 from designer.setting.setting import Setting
 
 

@@ -61,6 +61,17 @@ class Share(Label):
 
 
 @dataclass(frozen=True)
+class OnAverage(Label):
+    """An expectation over all profiles: what a party "pays", or a worth that the rule fixes.
+
+    what  "pays" or "worth" (of a party), "outlay" or "designer's worth"
+    """
+
+    what: str
+    party: str | None = None
+
+
+@dataclass(frozen=True)
 class Unknown(Label):
     """A scalar unknown: outside money, a floor, the largest payment, a margin."""
 
@@ -87,6 +98,13 @@ class TakesPart(Label):
     party: str
     type: str | None = None
     at: tuple[str, ...] | None = None
+
+
+@dataclass(frozen=True)
+class AtMost(Label):
+    """Honesty and participation together bound what a party can pay on average."""
+
+    party: str
 
 
 @dataclass(frozen=True)

@@ -12,6 +12,7 @@ from designer.roads import full
 from designer.roads.interim.road import Interim
 from designer.roads.road import Road
 from designer.roads.settled import Settled
+from designer.roads.typegraph.road import TypeGraph
 from designer.setting.setting import Setting
 
 
@@ -32,7 +33,7 @@ class Full:
         return full.travel(setting, terms, engine, watch)
 
 
-ROADS: tuple[Road, ...] = (Interim(), Full())
+ROADS: tuple[Road, ...] = (Interim(), TypeGraph(), Full())
 
 
 @dataclass(frozen=True)

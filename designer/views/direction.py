@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from fractions import Fraction
 
-from designer.program.labels import Pays, Unknown
+from designer.program.labels import OnAverage, Pays, Unknown
 from designer.program.program import Program
 from designer.proof.vector import Vector
 from designer.setting.setting import Setting
@@ -52,6 +52,7 @@ def direction(program: Program, ray: Vector, setting: Setting) -> Direction:
         raise ValueError("the goal does not move along the ray")
     scale = abs(Fraction(stage.cost_den) / gain)
     moved: dict[str, dict[int, Fraction]] = {}
+    always: dict[str, Fraction] = {}
     unknowns: list[tuple[str, Fraction]] = []
     positions = [{kind.label: a for a, kind in enumerate(party.types)} for party in setting.parties]
     for column, value in entries.items():
@@ -59,12 +60,17 @@ def direction(program: Program, ray: Vector, setting: Setting) -> Direction:
         if isinstance(label, Pays):
             at = tuple(known[kind] for known, kind in zip(positions, label.at, strict=True))
             moved.setdefault(label.party, {})[setting.profile_of(at)] = value * scale
+        elif isinstance(label, OnAverage) and label.what == "pays":
+            always[str(label.party)] = value * scale
         elif isinstance(label, Unknown):
             unknowns.append((label.name, value * scale))
+    first = setting.labels_at(0)
     changes = [
         _change(setting, party.name, moved[party.name])
-        for party in setting.parties
         if party.name in moved
+        else Change(party.name, *(always[party.name],) * 3, first, first)
+        for party in setting.parties
+        if party.name in moved or party.name in always
     ]
     return Direction(stage.goal, tuple(changes), tuple(unknowns))
 

@@ -6,6 +6,7 @@ from collections.abc import Iterable, Sequence
 from fractions import Fraction
 
 from designer.program.labels import (
+    AtMost,
     Balances,
     Clause,
     Decides,
@@ -14,6 +15,7 @@ from designer.program.labels import (
     Honest,
     Label,
     Lottery,
+    OnAverage,
     Pays,
     Pin,
     Share,
@@ -48,6 +50,10 @@ def term(label: Label) -> str:
             return f"Pr[{option} | {party} {kind}]"
         case Share(kind, rule):
             return f"[share of rule {rule} | {kind}]"
+        case OnAverage(what, None):
+            return f"E[{what}]"
+        case OnAverage(what, party):
+            return f"E[{party} pays]" if what == "pays" else f"E[{what} of {party}]"
         case Unknown(name):
             return f"[{name}]"
     return f"[{label}]"
@@ -120,6 +126,10 @@ def sentence(label: Label | None, folds: int = 1) -> str:
             return f"the pot balances{_where(at)}"
         case Clause(group, key, party, at):
             return f"{_clause(group, key, party)}{_where(at)}"
+        case AtMost(party):
+            return f"what {party} pays on average is bounded by honesty and participation"
+        case OnAverage():
+            return f"the rule fixes {term(label)}"
         case Pin(goal):
             return f"the goal {goal} keeps its value"
         case ExpectedPay(party, kind):
@@ -138,6 +148,10 @@ def family(label: Label | None) -> str:
             return "honesty"
         case TakesPart():
             return "taking part"
+        case AtMost():
+            return "honesty and taking part together"
+        case OnAverage():
+            return "the decision rule"
         case Balances():
             return "the pot"
         case Clause("limit"):

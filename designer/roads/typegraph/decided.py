@@ -1,0 +1,141 @@
+"""The settled decision rule, profile by profile, and the profiles where efficiency is torn.
+
+One pass in blocks: the inner parties' worths are summed once, the outer parties' types add
+their worths to them. A profile where several options are equally efficient is *tied*; there
+a choice among them is a parameter of the rule.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from designer.engines.watch import Watch
+from designer.setting.setting import IntArray, Setting
+
+INNER = 1 << 16
+"""Profiles of the inner parties held at once."""
+ROOM = 2**61
+
+Indices = npt.NDArray[np.int64]
+Mask = npt.NDArray[np.bool_]
+
+
+@dataclass(frozen=True, eq=False)
+class Decided:
+    """What is decided at every profile.
+
+    palette  int, shape (P, K): the lotteries in use, numerators over `den`
+    at       int, shape (N,): which of them, by profile
+    tied     int, shape (M,): the tied profiles, ascending
+    torn     bool, shape (M, K): the options that are efficient there
+    """
+
+    palette: IntArray
+    den: int
+    at: IntArray
+    tied: Indices
+    torn: Mask
+
+    @property
+    def choices(self) -> IntArray:
+        """The option taken at each tied profile, int (M,)."""
+        return self.at[self.tied]
+
+    def choosing(self, choices: IntArray) -> Decided:
+        """The same rule with other choices at the tied profiles.
+
+        Raises ValueError for a choice that is not efficient there.
+        """
+        rows = np.arange(len(self.tied))
+        if choices.shape != self.tied.shape or not self.torn[rows, choices].all():
+            raise ValueError("a choice at a tied profile is not efficient there")
+        at = self.at.copy()
+        at[self.tied] = choices
+        return Decided(self.palette, self.den, at, self.tied, self.torn)
+
+
+def decide(setting: Setting, decision: str, watch: Watch) -> Decided:
+    """The given table, or the efficient rule that takes the first option listed where tied."""
+    if decision == "table":
+        return _given(setting)
+    options, total = len(setting.options), setting.profiles
+    at = np.zeros(total, dtype=np.min_scalar_type(options))
+    tied: list[Indices] = []
+    torn: list[Mask] = []
+    for start, worth in _worths(setting, watch):
+        best, pick = worth[0].copy(), np.zeros(len(worth[0]), dtype=at.dtype)
+        torn_here = np.zeros(len(best), dtype=bool)
+        for k in range(1, options):
+            more, same = worth[k] > best, worth[k] == best
+            pick[more] = k
+            torn_here &= ~more
+            torn_here |= same
+            np.maximum(best, worth[k], out=best)
+        at[start : start + len(pick)] = pick
+        here = np.flatnonzero(torn_here)
+        if len(here):
+            tied.append(here.astype(np.int64) + start)
+            torn.append(np.stack([w[here] == best[here] for w in worth], axis=1).astype(bool))
+    return Decided(
+        np.eye(options, dtype=np.int64),
+        1,
+        at,
+        np.concatenate(tied) if tied else np.zeros(0, dtype=np.int64),
+        np.concatenate(torn) if torn else np.zeros((0, options), dtype=bool),
+    )
+
+
+def _given(setting: Setting) -> Decided:
+    if setting.rule is None:
+        raise ValueError("the setting gives no decision rule")
+    key = np.zeros(setting.profiles, dtype=np.int64)
+    for column in setting.rule.T:
+        values, place = np.unique(column, return_inverse=True)
+        _, key = np.unique(key * len(values) + place, return_inverse=True)
+    _, first = np.unique(key, return_index=True)
+    return Decided(
+        setting.rule[first],
+        setting.rule_den,
+        key.astype(np.min_scalar_type(len(first))),
+        np.zeros(0, dtype=np.int64),
+        np.zeros((0, len(setting.options)), dtype=bool),
+    )
+
+
+def _worths(setting: Setting, watch: Watch) -> Any:
+    """Per block of consecutive profiles: the first profile, and total worth by option."""
+    shape, options = setting.shape, len(setting.options)
+    split, size = len(shape), 1
+    while split and (size * shape[split - 1] <= INNER or split == len(shape)):
+        split -= 1
+        size *= shape[split]
+    private = {i: p.value - p.value[:, :1] for i, p in enumerate(setting.parties) if not p.depends}
+    shared = [p.value - p.value[:, :1] for p in setting.parties if p.depends]
+    own = setting.worth - setting.outlay
+    reach = sum(int(abs(v).max()) for v in (*private.values(), *shared, own - own[0]))
+    dtype = np.int64 if reach < ROOM else object
+    inner = []
+    for k in range(options):
+        total = np.full(1, own[k] - own[0], dtype=dtype)
+        for i in range(split, len(shape)):
+            add = private[i][:, k] if i in private else np.zeros(shape[i], dtype=np.int64)
+            total = np.add.outer(total, add.astype(dtype)).ravel()
+        inner.append(total)
+    for block in range(math.prod(shape[:split])):
+        start, rest = block * size, block
+        offset = [0] * options
+        for i in range(split - 1, -1, -1):
+            rest, a = divmod(rest, shape[i])
+            if i in private:
+                offset = [o + int(v) for o, v in zip(offset, private[i][a], strict=True)]
+        worth = [total + add for total, add in zip(inner, offset, strict=True)]
+        for value in shared:
+            part = value[start : start + size].astype(dtype)
+            worth = [total + part[:, k] for k, total in enumerate(worth)]
+        watch.tell(f"deciding {setting.profiles:,} profiles", start)
+        yield start, worth

@@ -1,0 +1,81 @@
+"""A party's base as JSON values, and back: trees in a short list, runs of which is whose."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from designer.roads.typegraph.bases import OWN, ZERO, Base, Flow, Root
+from designer.roads.typegraph.decided import Indices
+from designer.roads.typegraph.fibers import Fibers
+from designer.roads.typegraph.mechanism import runs, unrolled
+from designer.setting.exact import number, text
+
+
+@dataclass(frozen=True, eq=False)
+class Claim:
+    """What a document says of a party: trees, or payments with a flow."""
+
+    root: Root
+    tree: Indices | None
+    pays: tuple[tuple[Fraction, ...], ...] = ()
+    flow: Flow | None = None
+
+
+def plain_base(found: Base) -> dict[str, Any]:
+    """The paths behind a table; or the table and the flow that bounds it."""
+    if found.tree is not None:
+        trees, of = np.unique(found.tree, axis=0, return_inverse=True)
+        return {"root": found.root, "trees": trees.tolist(), "of": runs(of.ravel())}
+    if found.flow is None:
+        raise AssertionError("a table without paths has a flow")
+    return {
+        "pays": [[text(Fraction(value)) for value in row] for row in found.pays],
+        "den": text(found.flow.den),
+        "roots": [text(share) for share in found.flow.roots],
+        "lies": [[*lie[:3], text(lie[3])] for lie in found.flow.lies],
+    }
+
+
+def read_claim(plain: Any, work: Fibers) -> Claim:
+    """The claim about one party. Raises ValueError or TypeError for anything else."""
+    classes, types = work.classes, work.types
+    if "trees" in plain:
+        trees = np.array(plain["trees"], dtype=np.int64)
+        if trees.ndim != 2 or trees.shape[1] != types:
+            raise ValueError("the trees do not fit the party's types")
+        if trees.min() < 0 or trees.max() >= types:
+            raise ValueError("a tree names a type that is not there")
+        of = unrolled(plain["of"], classes)
+        if of.max() >= len(trees):
+            raise ValueError("a class names a tree that is not there")
+        root = plain["root"]
+        if root not in (OWN, ZERO) and not (type(root) is int and 0 <= root < types):
+            raise ValueError("the trees have no root")
+        return Claim(root, trees[of])
+    pays = tuple(tuple(number(value) for value in row) for row in plain["pays"])
+    if len(pays) != classes or any(len(row) != types for row in pays):
+        raise ValueError("the payments do not fit the party's types")
+    lies = []
+    for g, true, told, amount in plain["lies"]:
+        places = (g, true, told)
+        if any(type(place) is not int for place in places) or not (
+            0 <= g < classes and 0 <= true < types and 0 <= told < types
+        ):
+            raise ValueError("a lie names a type that is not there")
+        lies.append((g, true, told, _whole(amount)))
+    roots = tuple(_whole(share) for share in plain["roots"])
+    flow = Flow(_whole(plain["den"]), roots, tuple(lies))
+    if flow.den < 1 or len(roots) != types or min(roots) < 0 or any(a < 0 for *_, a in lies):
+        raise ValueError("the multipliers do not fit")
+    return Claim(0, None, pays, flow)
+
+
+def _whole(written: Any) -> int:
+    value = number(written)
+    if value.denominator != 1:
+        raise ValueError("a multiplier is no integer")
+    return value.numerator

@@ -1,0 +1,142 @@
+"""The table on demand: a rule, classes of others' profiles, and payments by class and type."""
+
+from __future__ import annotations
+
+import itertools
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from designer.demands.terms import Terms
+from designer.engines.watch import Watch
+from designer.roads.typegraph.decided import Decided, decide
+from designer.roads.typegraph.fibers import Fibers, fibers
+from designer.setting.exact import number, text
+from designer.setting.profiles import strides
+from designer.setting.setting import IntArray, Setting, integers
+from designer.table import Table
+
+FORMAT = "designer.table/1"
+
+
+@dataclass(frozen=True, eq=False)
+class GraphMechanism:
+    """t_i(theta) = pays_i[class of theta_-i, theta_i] / den + shift_i.
+
+    works  per party its classes      pays  per party (G, T), whole or Fractions
+    """
+
+    setting: Setting
+    decided: Decided
+    works: tuple[Fibers, ...]
+    pays_by_class: tuple[IntArray, ...]
+    den: int
+    shifts: tuple[Fraction, ...]
+
+    def decides(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """x_k(theta) at one profile, given by type positions."""
+        row = self.decided.palette[self.decided.at[self.setting.profile_of(tuple(types))]]
+        return tuple(Fraction(int(part), self.decided.den) for part in row)
+
+    def pays(self, types: Sequence[int]) -> tuple[Fraction, ...]:
+        """t_i(theta) at one profile, in money units."""
+        profile = self.setting.profile_of(tuple(types))
+        found = []
+        for i, (work, pays, a) in enumerate(
+            zip(self.works, self.pays_by_class, types, strict=True)
+        ):
+            step = strides(self.setting.shape)[i]
+            other = profile // (step * work.types) * step + profile % step
+            value = pays[work.of[other], a]
+            held = value if isinstance(value, Fraction) else int(value)
+            found.append(Fraction(held) / self.den + self.shifts[i])
+        return tuple(found)
+
+    def table(self) -> Table:
+        """Every profile, for settings small enough to hold."""
+        setting, decided = self.setting, self.decided
+        dens = {shift.denominator for shift in self.shifts}
+        dens |= {v.denominator for pays in self.pays_by_class for v in _fractions(pays)}
+        common = math.lcm(self.den, *(self.den * d for d in dens))
+        rows = []
+        for i, (work, pays) in enumerate(zip(self.works, self.pays_by_class, strict=True)):
+            scale, shift = common // self.den, self.shifts[i] * common
+            whole = np.array([[int(v * scale + shift) for v in row] for row in pays], dtype=object)
+            others = [n for j, n in enumerate(setting.shape) if j != i]
+            grid = whole[work.of].reshape(*others, work.types)
+            rows.append(np.moveaxis(grid, -1, i).ravel())
+        pays = integers(np.stack(rows))
+        shared = math.gcd(common, *{int(v) for v in pays.flat})
+        chances = decided.palette[decided.at]
+        return Table(integers(chances), decided.den, pays // shared, common // shared)
+
+    def plain(self) -> dict[str, Any]:
+        """As the JSON document that `--save` writes as table.json."""
+        return {
+            "format": FORMAT,
+            "kind": "type-graph",
+            "scenario": {"title": self.setting.title, "digest": self.setting.digest},
+            "money": self.setting.money,
+            "sign": "pays is paid BY the party; negative amounts are received",
+            "decision": self.works[0].terms.decision,
+            "ties": runs(self.decided.choices),
+            "den": self.den,
+            "pays": [[[text(Fraction(v)) for v in row] for row in p] for p in self._lists()],
+            "shifts": [text(shift) for shift in self.shifts],
+        }
+
+    def _lists(self) -> list[list[list[Any]]]:
+        return [pays.tolist() for pays in self.pays_by_class]
+
+
+def _fractions(pays: IntArray) -> list[Fraction]:
+    if pays.dtype != np.dtype(object):
+        return []
+    return [v for v in pays.flat if isinstance(v, Fraction)]
+
+
+def from_plain(plain: dict[str, Any], setting: Setting) -> GraphMechanism:
+    """The mechanism that `GraphMechanism.plain` wrote. Raises ValueError for anything else."""
+    try:
+        if plain["format"] != FORMAT or plain["kind"] != "type-graph":
+            raise ValueError("not a table of type graphs")
+        terms = Terms(decision=str(plain["decision"]))
+        if terms.decision not in ("efficient", "table"):
+            raise ValueError("the decision must be 'efficient' or 'table'")
+        decided = decide(setting, terms.decision, Watch())
+        decided = decided.choosing(unrolled(plain["ties"], len(decided.tied)))
+        works = tuple(fibers(setting, terms, decided, i) for i in range(len(setting.parties)))
+        pays = tuple(
+            np.array([[number(v) for v in row] for row in table], dtype=object)
+            for table in plain["pays"]
+        )
+        shifts = tuple(number(shift) for shift in plain["shifts"])
+        if [p.shape for p in pays] != [w.rows.shape for w in works] or len(shifts) != len(works):
+            raise ValueError("the payments do not fit the parties' types")
+        return GraphMechanism(setting, decided, works, pays, int(plain["den"]), shifts)
+    except (KeyError, TypeError, IndexError, AttributeError) as error:
+        raise ValueError(f"not a table document: {error!r}") from None
+
+
+def runs(values: IntArray) -> list[list[int]]:
+    """Equal neighbours as [value, count]."""
+    listed = values.tolist()
+    return [[int(v), len(list(group))] for v, group in itertools.groupby(listed)]
+
+
+def unrolled(pairs: Any, size: int) -> IntArray:
+    """The values behind `runs`. Raises ValueError unless there are `size` of them."""
+    found: list[int] = []
+    for value, count in pairs:
+        if not (isinstance(value, int) and isinstance(count, int)):
+            raise TypeError("a run is two integers")
+        if value < 0 or count < 1 or len(found) + count > size:
+            raise ValueError("the runs do not fit")
+        found += [value] * count
+    if len(found) != size:
+        raise ValueError("the runs do not fit")
+    return np.array(found, dtype=np.int64)
