@@ -10,6 +10,8 @@ SHORT = 24
 """Characters up to which an exact number is written out in a sentence."""
 CELL = 8
 """Characters up to which an exact number is written out in a table."""
+WHOLE = 10**12
+"""Size below which a number keeps all digits before its decimal point: money reads badly as 6e5."""
 ROUNDED = "~"
 """Stands before a number that was rounded for a table."""
 
@@ -33,22 +35,29 @@ def amount(value: Fraction, unit: str = "") -> str:
 def cell(value: Fraction) -> str:
     """The number for a table: exact if short, else rounded and marked so.
 
-    >>> cell(Fraction(-13, 4)), cell(Fraction(123456789, 1000007))
-    ('-13/4', '~123.46')
+    >>> cell(Fraction(-13, 4)), cell(Fraction(123456789, 1000007)), cell(Fraction(1234567, 2))
+    ('-13/4', '~123.46', '617283.5')
     """
-    written = exact.text(value)
-    return written if len(written) <= CELL else f"{ROUNDED}{approximate(value, 5)}"
+    for written in (exact.text(value), terminating(value)):
+        if written is not None and len(written) <= CELL:
+            return written
+    if value.denominator == 1 and abs(value) < WHOLE:
+        return exact.text(value)
+    return f"{ROUNDED}{approximate(value, 5)}"
 
 
 def approximate(value: Fraction, places: int = 6) -> str:
-    """So many significant digits; the power of ten where a float cannot hold the number.
+    """So many significant digits, more where the whole part has more; powers of ten are "e30".
 
-    >>> approximate(Fraction(1, 7)), approximate(Fraction(1, 10**400))
-    ('0.142857', '1e-400')
+    >>> approximate(Fraction(1, 7)), approximate(Fraction(10**9, 7)), approximate(Fraction(10**30))
+    ('0.142857', '142857143', '1e30')
     """
     size = abs(value)
     if not size or Fraction(1, 10**300) < size < 10**300:
-        return exact.decimal(value, places)
+        if 10 ** (places - 1) <= size < WHOLE:
+            return str(round(value))
+        head, mark, exponent = exact.decimal(value, places).partition("e")
+        return f"{head}e{int(exponent)}" if mark else head
     # Two whole digits of the logarithm's neighbourhood are enough: 10**power <= size.
     power = (size.numerator.bit_length() - size.denominator.bit_length()) * 1233 // 4096
     while Fraction(10) ** power > size:
@@ -74,9 +83,21 @@ def terminating(value: Fraction, places: int = 6) -> str | None:
 
 
 def digits(value: Fraction) -> int:
-    """About how many decimal digits the exact number has."""
-    bits = value.numerator.bit_length() + value.denominator.bit_length()
-    return max(1, bits * 1233 // 4096)
+    """How many decimal digits the exact number is written with.
+
+    >>> digits(Fraction(10**30)), digits(Fraction(-999, 1000))
+    (31, 7)
+    """
+    parts = [abs(value.numerator), value.denominator]
+    return sum(_length(part) for part in parts[: 1 if value.denominator == 1 else 2])
+
+
+def _length(whole: int) -> int:
+    """The number of decimal digits; Python refuses to write long numbers only to count."""
+    length = max(0, whole.bit_length() - 1) * 1233 // 4096 + 1  # 1233/4096 < log10(2)
+    while 10**length <= whole:
+        length += 1
+    return length
 
 
 def counted(count: int, noun: str, plural: str | None = None) -> str:

@@ -13,6 +13,7 @@ from designer import Demands, pose, read_scenario
 from designer.errors import Mistake
 from designer.program import labels
 from designer.program.labels import (
+    AtMost,
     Balances,
     Clause,
     Decides,
@@ -21,6 +22,7 @@ from designer.program.labels import (
     Honest,
     Label,
     Lottery,
+    OnAverage,
     Pays,
     Pin,
     Share,
@@ -58,11 +60,28 @@ def test_examples_in_docstrings(module: object) -> None:
         ("-1/8", "-1/8 = -0.125 crowns"),
         ("1/3", "1/3 ≈ 0.333333 crowns"),
         ("1/128", "1/128 ≈ 0.0078125 crowns"),
-        (str(10**30), "≈ 1e+30 crowns (exact: 30 digits)"),
+        ("12345678/7", "12345678/7 ≈ 1763668 crowns"),
+        (str(10**30), "≈ 1e30 crowns (exact: 31 digits)"),
     ],
 )
 def test_amounts(value: str, written: str) -> None:
     assert amount(Fraction(value), "crowns") == written
+
+
+@pytest.mark.parametrize(
+    ("value", "written"),
+    [
+        ("-12345678", "-12345678"),  # exact, so no mark, however long
+        ("1234567/2", "617283.5"),
+        ("999999999/10", "~100000000"),
+        ("12345678/7", "~1763668"),
+        ("-100001/3000", "~-33.334"),
+        ("1/123456789", "~8.1e-9"),
+        (str(10**15), "~1e15"),
+    ],
+)
+def test_cells(value: str, written: str) -> None:
+    assert cell(Fraction(value)) == written
 
 
 def test_numbers_beyond_floats_keep_their_size() -> None:
@@ -99,6 +118,9 @@ EVERY_LABEL = (
     Pin("floor"),
     Slice("20"),
     Share("20", 3),
+    AtMost("Suth"),
+    OnAverage("pays", "Suth"),
+    OnAverage("outlay"),
 )
 
 
