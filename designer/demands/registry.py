@@ -25,6 +25,7 @@ from designer.demands.goals import (
     margin,
     outside_money,
     parties,
+    returned_share,
     revenue,
     swing,
     welfare,
@@ -61,6 +62,7 @@ GOALS: dict[str, Goal] = {
         swing.GOAL,
         margin.GOAL,
         worst_pot.GOAL,
+        returned_share.GOAL,
         blend.GOAL,
     )
 }

@@ -18,6 +18,7 @@ GOALS = (
     "swing",
     "margin",
     "worst-pot",
+    "returned-share",
     "blend",
 )
 CHOICES: dict[str, tuple[str, ...]] = {

@@ -6,6 +6,7 @@ from fractions import Fraction
 
 from designer.auditing import Audit
 from designer.demands.terms import Demands
+from tests.oracles.brute import net_worth, worth
 
 
 def demanded(demands: Demands) -> list[str]:
@@ -52,6 +53,8 @@ def achieved(audit: Audit, goal: str) -> Fraction:
         return min(standing.gain for standing in audit.standings)
     if goal == "worst-pot":
         return _least_in_scope(audit)
+    if goal == "returned-share":
+        return _returned(audit)
     if goal == "swing":
         return abs(audit.largest.amount)
     raise NotImplementedError(goal)
@@ -65,3 +68,21 @@ def _least_in_scope(audit: Audit) -> Fraction:
         for p in range(setting.profiles)
         if not setting.support_only or setting.probability(p)
     )
+
+
+def _returned(audit: Audit) -> Fraction:
+    """The least share handed back of what the pivotal rule takes, where it takes anything."""
+    setting = audit.setting
+    shares = []
+    for p in range(setting.profiles):
+        if setting.support_only and not setting.probability(p):
+            continue
+        worths = [net_worth(setting, k, p) for k in range(len(setting.options))]
+        best = worths.index(max(worths))
+        takings = Fraction(0)
+        for i in range(len(setting.parties)):
+            others = [total - worth(setting, i, k, p) for k, total in enumerate(worths)]
+            takings += max(others) - others[best]
+        if takings:
+            shares.append(1 - audit.pot[p] / takings)
+    return min(shares)

@@ -83,6 +83,15 @@ class Plain:
         best = max(worths)
         return [k for k, w in enumerate(worths) if w >= best - 1e-9 * max(1.0, abs(best))]
 
+    def takings(self, p: Profile) -> float:
+        """What the pivotal rule collects: everyone's harm to the others, the designer included."""
+        options, first = range(len(self.setting.options)), self.efficient(p)[0]
+        total = 0.0
+        for i in range(len(self.setting.parties)):
+            others = [self.net_worth(k, p) - self.worth(i, k, p) for k in options]
+            total += max(others) - others[first]
+        return total if total > 1e-9 else 0.0
+
     def others(self, i: int) -> list[Profile]:
         """The profiles with party i's place held at 0: one per profile of the others."""
         return [p for p in self.profiles if p[i] == 0]
@@ -307,6 +316,12 @@ class Textbook:
         if name == "worst-pot":
             for p in self.plain.asked_at:
                 self.problem += self.total(self.pot(p, 1.0)) >= bound
+            return 1, bound
+        if name == "returned-share":
+            for p in self.plain.asked_at:
+                takings = self.plain.takings(p)
+                if takings > NEVER:
+                    self.problem += self.total(self.pot(p, 1.0)) <= takings * (1 - bound)
             return 1, bound
         raise ValueError(name)
 

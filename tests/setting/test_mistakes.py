@@ -465,7 +465,7 @@ CASES: list[tuple[str, str, str, str]] = [
         'goal = "flor"',
         (
             "demands.goal: found 'flor'; expected one of any, outside-money, revenue, welfare, "
-            "parties, floor, swing, margin, worst-pot, blend.\n"
+            "parties, floor, swing, margin, worst-pot, returned-share, blend.\n"
             "    Did you mean 'floor'?"
         ),
     ),
