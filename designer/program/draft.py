@@ -215,6 +215,11 @@ class Draft:
         """Weights of a party's types, int (T_i,)."""
         return np.array(self.setting.parties[index].weights, dtype=self.dtype)
 
+    def lies(self, index: int) -> tuple[IndexArray, IndexArray]:
+        """The lies that a party must not gain by, given its type: (true, told), all of them."""
+        true, told = np.nonzero(~np.eye(self.setting.shape[index], dtype=bool))
+        return true.astype(np.int64), told.astype(np.int64)
+
     # -- forms at profiles ---------------------------------------------------------------
 
     def pays(self, index: int, profiles: IndexArray) -> Affine:

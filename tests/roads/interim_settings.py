@@ -190,3 +190,60 @@ def counted(setting: Setting, rule: Rule, lead: int | None) -> list[list[list[li
         for party, a in enumerate(types):
             tables[place][party][a][best[0]] += weight
     return tables
+
+
+@st.composite
+def lines(draw: st.DrawFn) -> tuple[Setting, Terms]:
+    """One-dimensional types, a free rule and a known worst-off type, and what to ask of them."""
+    count = draw(st.integers(1, 3))
+    options = draw(st.integers(2, 4 if count > 1 else 3))
+    form = draw(st.sampled_from(("item", "any")))
+    parties = []
+    for i in range(count):
+        size = draw(st.integers(1, 4 if count < 3 else 3))
+        thetas = draw(st.lists(st.integers(-3, 9), min_size=size, max_size=size, unique=True))
+        slopes = [draw(st.integers(0, 2)) for _ in range(options)]
+        if form == "item":
+            slopes = [int(k == i + 1) for k in range(options)]
+        turn = draw(st.sampled_from((1, -1)))
+        base = [draw(st.integers(-2, 2)) for _ in range(options)]
+        rows = [
+            [turn * slope * theta + b for slope, b in zip(slopes, base, strict=True)]
+            for theta in thetas
+        ]
+        level = draw(st.integers(-2, 2))
+        # Staying out is worth a constant, or as much as the best option brings.
+        best = turn * (max(slopes) if draw(st.booleans()) else 0)
+        parties.append(
+            Party(
+                name=NAMES[i],
+                types=tuple(Type(f"t{a}") for a in range(size)),
+                weights=tuple(draw(st.integers(1, 5)) for _ in range(size)),
+                value=integers(rows, (size, options)),
+                outside=integers([best * theta + level for theta in thetas]),
+            )
+        )
+    setting = Setting(
+        title="Drawn",
+        options=tuple(f"k{k}" for k in range(options)),
+        parties=tuple(parties),
+        outlay=integers([draw(st.integers(0, 6)) for _ in range(options)]),
+        worth=integers([draw(st.integers(0, 3)) for _ in range(options)]),
+        grain=draw(st.sampled_from((1, 2))),
+        digest="0" * 64,
+    )
+    goal = draw(
+        st.sampled_from(("welfare", "welfare", "welfare", "revenue", "outside-money", "any"))
+    )
+    balances = ["ex-ante", *(["ex-post"] if count > 1 else [])]
+    balances += ["none"] if goal != "outside-money" else []
+    terms = Terms(
+        decision="randomized",
+        balance=draw(st.sampled_from(balances)),
+        budget=draw(st.sampled_from(("exact", "no-deficit"))),
+        goals=(goal,),
+        subsidy=draw(amounts(-3, 6)),
+        shortfall=draw(amounts(0, 2)),
+        tidy="none",
+    )
+    return setting, terms

@@ -10,7 +10,6 @@ from __future__ import annotations
 import itertools
 import math
 from collections.abc import Iterator
-from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 from typing import Any
 
@@ -19,6 +18,7 @@ import numpy.typing as npt
 
 from designer.engines.watch import Watch
 from designer.roads.interim.additive import Additive, additive, settled, words
+from designer.roads.interim.cores import on_cores
 from designer.roads.interim.rule import Counts, Rule
 from designer.setting.setting import IntArray, Setting
 
@@ -46,20 +46,13 @@ def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Count
     shape = setting.shape
     own = shape.index(max(shape)) if lead is None else lead
     plan = _Pass.plan(setting, additive(rule), own)
-    done = 0
-
-    def one(g: int) -> tuple[IntArray, ...]:
-        nonlocal done
-        taken = plan.slice(g, watch)
-        done += setting.profiles // shape[own]
-        watch.tell(f"counting {setting.profiles:,} profiles", done)
-        return taken
-
     if setting.profiles < 4 * INNER:
-        counts = Counts(tuple(one(g) for g in range(shape[own])))
+        counts = Counts(tuple(plan.slice(g, watch) for g in range(shape[own])))
     else:
-        with ThreadPoolExecutor(max_workers=2) as pool:
-            counts = Counts(tuple(pool.map(one, range(shape[own]))))
+        each = setting.profiles // shape[own]
+        counts = Counts(
+            tuple(on_cores(plan.slice, shape[own], watch, "counting every profile", each))
+        )
     return counts.merged() if lead is None else counts
 
 

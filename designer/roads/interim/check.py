@@ -16,7 +16,6 @@ program; by 4 its multipliers are multipliers of the full program.
 
 from __future__ import annotations
 
-from dataclasses import replace
 from fractions import Fraction
 from typing import Any
 
@@ -28,9 +27,11 @@ from designer.demands.terms import Terms
 from designer.engines.watch import Watch
 from designer.program.program import Program
 from designer.proof.compare import same_program
-from designer.roads.interim.blocks import count
-from designer.roads.interim.draft import InterimDraft
-from designer.roads.interim.master import exact_prices, rule_for
+from designer.proof.vector import Vector
+from designer.roads.interim.counting import count, tied
+from designer.roads.interim.draft import InterimDraft, Lies
+from designer.roads.interim.lies import broken
+from designer.roads.interim.master import averaged, exact_prices, rule_for
 from designer.roads.interim.mechanism import rules_from_plain
 from designer.roads.interim.road import Interim
 from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
@@ -53,10 +54,13 @@ def check(setting: Setting, document: dict[str, Any], watch: Watch | None = None
         if why is not None or own is None:
             return [f"the interim road does not apply: {why}"]
         rules = rules_from_plain(reduction["rules"], own)
+        lies = _read_lies(reduction["lies"], own)
         if not (
-            isinstance(lead, int)
-            and 0 <= lead < len(own.parties)
-            and all(0 <= g < own.shape[lead] and 0 <= r < len(rules) for g, r in shares)
+            (lead is None or (type(lead) is int and 0 <= lead < len(own.parties)))
+            and all(
+                0 <= g < (1 if lead is None else own.shape[lead]) and 0 <= r < len(rules)
+                for g, r in shares
+            )
             and [stage["goal"] for stage in document["stages"]] == list(terms.goals)
         ):
             return ["the reduction does not fit the scenario"]
@@ -66,13 +70,50 @@ def check(setting: Setting, document: dict[str, Any], watch: Watch | None = None
     if faults:
         return faults[:1]
     counts = [count(own, rule, lead, watch) for rule in rules]
-    program = _program(own, terms, lead, [(g, counts[r]) for g, r in shares])
+    draft, program = _program(own, terms, lead, lies, [(g, counts[r]) for g, r in shares])
     differences = same_program(document, program)
     if differences:
         return differences
+    if document["verdict"] != "impossible":
+        for key, ray in (("primal", False), ("ray", True)):
+            if key in document and any(_told(own, terms, draft, document[key], program, ray)):
+                return ["a lie that is not written gains more than the terms allow"]
     if document["verdict"] == "unbounded" or terms.decision == "table":
         return []
+    if terms.decision == "efficient" and lead is None and len(rules) == 1:
+        plain = Rule((welfare_index(own),))
+        whole = counts[0] if len(rules[0].indices) == 1 else count(own, plain, None, watch)
+        if not tied(own, plain, whole, watch):
+            return []  # no other rule is efficient
     return _better(own, terms, lead, program, _multipliers(document), watch)
+
+
+def _read_lies(plain: Any, setting: Setting) -> Lies | None:
+    """The lies that are written, of a reduction. Raises ValueError or TypeError."""
+    if plain is None:
+        return None
+    lies = tuple(tuple((true, told) for true, told in pairs) for pairs in plain)
+    if len(lies) != len(setting.parties):
+        raise ValueError("the lies do not fit the parties")
+    for party, pairs in zip(setting.parties, lies, strict=True):
+        whole = all(type(a) is int and 0 <= a < party.size for pair in pairs for a in pair)
+        if not whole or len(set(pairs)) != len(pairs) or any(a == b for a, b in pairs):
+            raise ValueError("a lie is not one of a party's")
+    return lies
+
+
+def _told(
+    setting: Setting,
+    terms: Terms,
+    draft: InterimDraft,
+    vector: dict[str, Any],
+    program: Program,
+    ray: bool,
+) -> Lies:
+    """The lies that gain at a point or a ray of the document."""
+    numbers = tuple(_whole(number) for number in vector["num"])
+    x = Vector(_whole(vector["den"]), tuple(vector["idx"]), numbers, program.matrix.columns)
+    return broken(setting, averaged(terms), draft, x, ray)
 
 
 def _forbidden(setting: Setting, terms: Terms, rule: Rule) -> str | None:
@@ -93,15 +134,18 @@ def _same(one: Index, two: Index) -> bool:
 
 
 def _program(
-    setting: Setting, terms: Terms, lead: int, columns: list[tuple[int, Counts]]
-) -> Program:
+    setting: Setting,
+    terms: Terms,
+    lead: int | None,
+    lies: Lies | None,
+    columns: list[tuple[int, Counts]],
+) -> tuple[InterimDraft, Program]:
     """The master that the scenario, the terms and the counts give."""
-    balance = "none" if terms.balance == "none" else "ex-ante"
-    inner = replace(terms, balance=balance, tidy="none")
+    inner = averaged(terms)
     draft = InterimDraft(
-        setting, terms.decision, amounts_of(inner), lead=lead, columns=tuple(columns)
+        setting, terms.decision, amounts_of(inner), lead=lead, columns=tuple(columns), lies=lies
     )
-    return Formulation(setting, inner, draft=draft).pose(terms.goals[0])
+    return draft, Formulation(setting, inner, draft=draft).pose(terms.goals[0])
 
 
 def _multipliers(document: dict[str, Any]) -> dict[int, Fraction]:
@@ -121,7 +165,7 @@ def _whole(value: int | str) -> int:
 def _better(
     setting: Setting,
     terms: Terms,
-    lead: int,
+    lead: int | None,
     program: Program,
     multipliers: dict[int, Fraction],
     watch: Watch,
@@ -129,9 +173,10 @@ def _better(
     """A slice in which some rule does better than the multipliers admit."""
     prices = exact_prices(setting, lead, program, multipliers)
     first = (welfare_index(setting),) if terms.decision == "efficient" else ()
-    best = count(setting, rule_for(setting, first, prices), lead, watch)
+    best = count(setting, rule_for(setting, first, prices.parties), lead, watch)
     return [
-        f"an unlisted rule does better where the lead party has type {a.label}"
-        for g, a in enumerate(setting.parties[lead].types)
+        "an unlisted rule does better"
+        + ("" if lead is None else f" where {party.name} has type {party.types[g].label}")
+        for g, party in enumerate([setting.parties[lead or 0]] * len(best.taken))
         if prices.worth(best, g) > prices.slices[g]
     ][:1]

@@ -18,11 +18,18 @@ from designer.program.linear import IndexArray
 from designer.roads.interim.rule import Counts
 from designer.setting.setting import IntArray, Setting
 
+Lies = tuple[tuple[tuple[int, int], ...], ...]
+"""Per party, pairs of positions (true, told)."""
+
+ANY = "any type"
+"""What the one slice is called where there is no lead party."""
+
 
 class InterimDraft(Draft):
     """Columns m_i(a), q_i(k, a) and the shares of the rules that q mixes.
 
-    The shares lambda_{g,r} >= 0 sum to one over r for every type g of the lead party:
+    The shares lambda_{g,r} >= 0 sum to one over r for every type g of the lead party (or once,
+    without a lead party):
 
         q_i(k, a) = sum_{g,r} lambda_{g,r} * taken_r[g][i][a, k] / weight(theta_i = a).
     """
@@ -33,11 +40,15 @@ class InterimDraft(Draft):
         decision: str,
         amounts: tuple[Fraction, ...] = (),
         *,
-        lead: int = 0,
+        lead: int | None = None,
         columns: tuple[tuple[int, Counts], ...] = (),
+        lies: Lies | None = None,
     ) -> None:
-        """`columns` lists (g, counts of the rule) per share column."""
-        self.lead, self.shares = lead, columns
+        """`columns` lists (g, counts of the rule) per share column.
+
+        `lies` lists the pairs (true, told) to be written per party; None writes all.
+        """
+        self.lead, self.shares, self.written = lead, columns, lies
         super().__init__(setting, decision, amounts)
 
     def _lay_out(self) -> None:
@@ -48,7 +59,7 @@ class InterimDraft(Draft):
         self.share_columns = self.add_columns(
             "share", count, lambda j: Share(self._lead_type(self.shares[j][0]), j), Fraction(0)
         )
-        size = setting.shape[self.lead]
+        size = 1 if self.lead is None else setting.shape[self.lead]
         of = np.array([g for g, _ in self.shares], dtype=np.int64)
         whole = Affine(
             of,
@@ -62,6 +73,8 @@ class InterimDraft(Draft):
             self._define(index)
 
     def _lead_type(self, g: int) -> str:
+        if self.lead is None:
+            return ANY
         return self.setting.parties[self.lead].types[g].label
 
     def _define(self, index: int) -> None:
@@ -94,6 +107,13 @@ class InterimDraft(Draft):
             weight * self.chances_den,
         )
         self.require(form - of_columns(columns, self.dtype), "=", "expected decision", label)
+
+    def lies(self, index: int) -> tuple[IndexArray, IndexArray]:
+        """The lies that are written; the others are for the road to watch."""
+        if self.written is None:
+            return super().lies(index)
+        pairs = np.array(self.written[index], dtype=np.int64).reshape(-1, 2)
+        return pairs[:, 0], pairs[:, 1]
 
     @property
     def chances_den(self) -> int:

@@ -9,7 +9,6 @@ profiles cost about sqrt(N) * log(N)**(K - 2), not N.
 from __future__ import annotations
 
 import math
-from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,6 +16,7 @@ import numpy.typing as npt
 
 from designer.engines.watch import Watch
 from designer.roads.interim.additive import Additive, Words, additive, ranked, words
+from designer.roads.interim.cores import on_cores
 from designer.roads.interim.dominance import dominance
 from designer.roads.interim.rule import Counts, Rule
 from designer.setting.setting import IntArray, Setting
@@ -145,25 +145,22 @@ class _Halves:
         place = None if self.lead is None else self.left.parties.index(self.lead)
         tasks: list[tuple[int, int]] = [(k, -1) for k in range(options - 1)]
         tasks += [(k, g) for k in range(options - 1) for g in range(slices)]
-        done = 0
 
-        def one(task: tuple[int, int]) -> None:
-            nonlocal done
-            k, g = task
-            watch.tell(f"counting {setting.profiles:,} profiles by halves, part", done)
+        def one(number: int, guard: Watch) -> None:
+            guard.check()
+            k, g = tasks[number]
             if g < 0:
                 self._spread(self._reached(self.left, self.right, k), self.left, k, tables, None)
             else:
                 part = self.left if place is None else self.left.only(place, g)
                 self._spread(self._reached(self.right, part, k), self.right, k, tables, g)
-            done += 1
 
         if self.left.size + self.right.size < 1 << 14:
-            for task in tasks:
-                one(task)
+            for number in range(len(tasks)):
+                one(number, watch)
         else:
-            with ThreadPoolExecutor(max_workers=2) as pool:
-                list(pool.map(one, tasks))
+            doing, each = "counting by halves", setting.profiles // len(tasks)
+            on_cores(one, len(tasks), watch, doing, each)
         self._last(tables)
         return Counts(tuple(tables))
 

@@ -3,35 +3,26 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 import numpy as np
 
 from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.terms import Terms
-from designer.engines.report import Report
 from designer.engines.watch import Watch
 from designer.program.program import Program
-from designer.roads.interim.blocks import count
-from designer.roads.interim.draft import InterimDraft
-from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
+from designer.roads.interim.counting import count
+from designer.roads.interim.draft import InterimDraft, Lies
+from designer.roads.interim.live import Duals, Floats
+from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
 from designer.setting.setting import IntArray, Setting
 
-PRECISION = 1 << 40
-"""Float duals become integer indices of about this size: a rule must be exact to be listed."""
-
-
-@dataclass(frozen=True, eq=False)
-class Listed:
-    """A rule with its exact counts."""
-
-    rule: Rule
-    counts: Counts
-
+COARSE = 24
+"""Bits of the integer indices that float multipliers become: short words count fastest."""
 
 Column = tuple[int, int]
-"""(type of the lead party, position in the list of rules)."""
+"""(slice, position in the list of rules)."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,23 +48,35 @@ class Prices:
 class Master:
     """The growing list of rules, and the programs over them."""
 
-    def __init__(self, setting: Setting, terms: Terms, lead: int, watch: Watch) -> None:
-        """Start without rules."""
-        self.setting, self.terms, self.lead, self.watch = setting, terms, lead, watch
+    def __init__(
+        self, setting: Setting, terms: Terms, lead: int | None, lies: Lies | None, watch: Watch
+    ) -> None:
+        """Start without rules; `terms` ask for balance on average at most."""
+        self.setting, self.terms, self.watch = setting, terms, watch
+        self.lead, self.lies = lead, lies
         self.listed: list[Listed] = []
         self.columns: list[Column] = []
+
+    @property
+    def slices(self) -> int:
+        """The number of slices that profiles are split into."""
+        return 1 if self.lead is None else self.setting.shape[self.lead]
 
     def first(self) -> tuple[Index, ...]:
         """The indices that every rule must start with: welfare where efficiency is demanded."""
         return (welfare_index(self.setting),) if self.terms.decision == "efficient" else ()
 
-    def add(self, rule: Rule) -> Counts:
-        """List a rule for every slice."""
-        counts = count(self.setting, rule, self.lead, self.watch)
-        self.listed.append(Listed(rule, counts))
-        place = len(self.listed) - 1
-        self.columns += [(g, place) for g in range(self.setting.shape[self.lead])]
-        return counts
+    def count(self, rule: Rule) -> Counts:
+        """The exact counts of a rule."""
+        return count(self.setting, rule, self.lead, self.watch)
+
+    def add(self, listed: Listed, slices: list[int] | None = None) -> list[int]:
+        """List a rule for some slices (None: all); the numbers of its columns."""
+        self.listed.append(listed)
+        place, first = len(self.listed) - 1, len(self.columns)
+        chosen = range(self.slices) if slices is None else slices
+        self.columns += [(g, place) for g in chosen]
+        return list(range(first, len(self.columns)))
 
     def formulation(self, columns: list[Column] | None = None) -> Formulation:
         """The demands over the listed columns; no goal yet."""
@@ -84,75 +87,95 @@ class Master:
             amounts_of(self.terms),
             lead=self.lead,
             columns=tuple((g, self.listed[r].counts) for g, r in chosen),
+            lies=self.lies,
         )
         return Formulation(self.setting, self.terms, draft=draft)
 
-    def program(self, goal: str, columns: list[Column] | None = None) -> Program:
-        """The program of one goal over the listed columns."""
-        return self.formulation(columns).pose(goal)
+    def program(self, columns: list[Column] | None = None) -> tuple[InterimDraft, Program]:
+        """The draft and the program of the first goal over the listed columns."""
+        work = self.formulation(columns)
+        program = work.pose(self.terms.goals[0])
+        if not isinstance(work.draft, InterimDraft):
+            raise AssertionError("the master writes on an interim draft")
+        return work.draft, program
+
+
+def averaged(terms: Terms) -> Terms:
+    """The terms with balance on average: balance in every case follows by the lift."""
+    balance = "none" if terms.balance == "none" else "ex-ante"
+    return replace(terms, balance=balance, tidy="none")
 
 
 def exact_prices(
-    setting: Setting, lead: int, program: Program, dual: dict[int, Fraction]
+    setting: Setting, lead: int | None, program: Program, dual: dict[int, Fraction]
 ) -> Prices:
-    """The index that exact multipliers of the minimising form give to every decision."""
-    tables, slices = _read(setting, lead, program, dual)
-    den = math.lcm(*(v.denominator for table in tables for row in table for v in row))
-    whole = tuple(
-        np.array([[int(v * den) for v in row] for row in table], dtype=object) for table in tables
-    )
-    return Prices(whole, tuple(slices), den)
+    """The index that exact multipliers of the minimising form give to every decision.
 
-
-def rough_prices(setting: Setting, lead: int, program: Program, report: Report) -> Prices | None:
-    """The same from an engine's floats, rounded to integers: good enough to look for rules."""
-    if report.y is None:
-        return None
-    values = {
-        int(row): Fraction(float(report.y[row]) / program.stages[-1].cost_den)
-        for row in np.flatnonzero(report.y)
-    }
-    tables, slices = _read(setting, lead, program, values)
-    top = max((abs(v) for table in tables for row in table for v in row), default=Fraction(0))
-    if not top:
-        return None
-    scale = Fraction(PRECISION) / top
-    whole = tuple(
-        np.array([[round(v * scale) for v in row] for row in table], dtype=object)
-        for table in tables
-    )
-    return Prices(whole, tuple(s * scale for s in slices), 1)
-
-
-def _read(
-    setting: Setting, lead: int, program: Program, dual: dict[int, Fraction]
-) -> tuple[list[list[list[Fraction]]], list[Fraction]]:
-    """Natural multipliers: q_i(k, a) is defined with weight(theta_i = a) in the denominator."""
+    q_i(k, a) is defined with weight(theta_i = a) in the denominator, so a unit of weight at
+    which k is taken is worth the row's natural multiplier over that weight.
+    """
     options, total = len(setting.options), setting.total_weight
     num, den = program.row_scale
+
+    def natural(row: int) -> Fraction:
+        return dual.get(row, Fraction(0)) * int(num[row]) / int(den[row])
+
     start = program.row_axis.start("slice")
-    slices = [
-        -dual.get(start + g, Fraction(0)) * int(num[start + g]) / int(den[start + g])
-        for g in range(setting.shape[lead])
-    ]
+    size = 1 if lead is None else setting.shape[lead]
+    slices = tuple(-natural(start + g) for g in range(size))
+    place = start + size
     tables = []
-    place = start + setting.shape[lead]
     for party in setting.parties:
-        own_total = sum(party.weights)
-        table = []
-        for own in party.weights:
-            weight = Fraction(total // own_total * own)
-            row = []
-            for _ in range(options):
-                natural = dual.get(place, Fraction(0)) * int(num[place]) / int(den[place])
-                row.append(natural / weight)
-                place += 1
-            table.append(row)
-        tables.append(table)
-    return tables, slices
+        each = total // sum(party.weights)
+        tables.append(
+            [
+                [natural(place + a * options + k) / (each * own) for k in range(options)]
+                for a, own in enumerate(party.weights)
+            ]
+        )
+        place += party.size * options
+    common = math.lcm(*(v.denominator for table in tables for row in table for v in row))
+    whole = tuple(
+        np.array([[int(v * common) for v in row] for row in table], dtype=object)
+        for table in tables
+    )
+    return Prices(whole, slices, common)
 
 
-def rule_for(setting: Setting, first: tuple[Index, ...], prices: Prices) -> Rule:
+def rule_for(setting: Setting, first: tuple[Index, ...], parties: tuple[IntArray, ...]) -> Rule:
     """The rule that is best at some prices."""
     zero = np.zeros(len(setting.options), dtype=object)
-    return Rule((*first, Index(prices.parties, zero)))
+    return Rule((*first, Index(parties, zero)))
+
+
+def rough_rule(setting: Setting, first: tuple[Index, ...], duals: Duals, bits: int) -> Rule:
+    """The rule that is best at float multipliers, rounded to integers of some bits."""
+    level = [table - table[:, :1] for table in duals.parties]
+    level = [table - table[:1] for table in level]
+    top = max((float(np.abs(table).max()) for table in level), default=0.0)
+    scale = 2.0**bits / top if top else 0.0
+    # What is the same for all of a party's types is kept, too: it decides between options.
+    common = sum(
+        ((table - table[:, :1])[0] for table in duals.parties), np.zeros(len(setting.options))
+    )
+    options = np.array([round(v * scale) for v in common], dtype=object)
+    parties = tuple(np.rint(table * scale).astype(np.int64).astype(object) for table in level)
+    return Rule((*first, Index(parties, options)))
+
+
+def rough_worth(setting: Setting, duals: Duals, counts: Counts) -> Floats:
+    """Per slice the index sum of a rule, over the total weight."""
+    total = setting.total_weight * counts.den
+    return np.array(
+        [
+            sum(
+                float((table * _shares(taken, total)).sum())
+                for table, taken in zip(duals.parties, row, strict=True)
+            )
+            for row in counts.taken
+        ]
+    )
+
+
+def _shares(taken: IntArray, total: int) -> Floats:
+    return np.array([[int(v) / total for v in row] for row in taken])

@@ -34,14 +34,14 @@ FORMAT = "designer.table/1"
 class Mechanism:
     """A table on demand.
 
-    mixture   per type of the lead party: (share, rule), shares summing to 1
+    mixture   per type of the lead party (once without one): (share, rule), shares summing to 1
     pays_on_average  m_i(a)
     effects   D_j(a), and the pot wanted over and above the outlay; None where the payments are
               the interim payments themselves (no balance in every case was asked)
     """
 
     setting: Setting
-    lead: int
+    lead: int | None
     mixture: tuple[tuple[tuple[Fraction, Rule], ...], ...]
     pays_on_average: tuple[tuple[Fraction, ...], ...]
     effects: tuple[tuple[Fraction, ...], ...] | None = None
@@ -51,7 +51,7 @@ class Mechanism:
         """x_k(theta) at one profile, given by type positions."""
         at = np.array([types], dtype=np.int64)
         chances = [Fraction(0)] * len(self.setting.options)
-        for share, rule in self.mixture[types[self.lead]]:
+        for share, rule in self.mixture[0 if self.lead is None else types[self.lead]]:
             taken, den = rule.decides(self.setting, at)
             for k, part in enumerate(taken[0]):
                 chances[k] += share * int(part) / den
@@ -111,7 +111,9 @@ class Mechanism:
         den = math.lcm(*dens) * rule_den
         chances = np.zeros((len(types), len(self.setting.options)), dtype=object)
         for g, mix in enumerate(self.mixture):
-            here = np.flatnonzero(types[:, self.lead] == g)
+            here = np.arange(len(types))
+            if self.lead is not None:
+                here = np.flatnonzero(types[:, self.lead] == g)
             for share, rule in mix:
                 taken, own = rule.decides(self.setting, types[here])
                 chances[here] += taken.astype(object) * int(share * den / own)
@@ -155,7 +157,9 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> Mechanism:
         average = _numbers(plain["pays_on_average"], setting)
         effects = plain["effects"]
         lead = plain["lead"]
-        if not 0 <= lead < len(setting.parties) or len(mixture) != setting.shape[lead]:
+        if lead is not None and not 0 <= lead < len(setting.parties):
+            raise ValueError("there is no such lead party")
+        if len(mixture) != (1 if lead is None else setting.shape[lead]):
             raise ValueError("the mixture does not fit the lead party's types")
         if any(
             sum(share for share, _ in mix) != 1 or any(s < 0 for s, _ in mix) for mix in mixture

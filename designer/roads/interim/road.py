@@ -9,6 +9,8 @@ last master with the rules it lists.
 from __future__ import annotations
 
 import time
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import replace
 from fractions import Fraction
 
@@ -21,23 +23,20 @@ from designer.program.program import Program
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
+from designer.roads.interim.certificate import outcome_of
+from designer.roads.interim.counting import lead_party, tied, too_many
 from designer.roads.interim.draft import InterimDraft
-from designer.roads.interim.master import (
-    Master,
-    Prices,
-    exact_prices,
-    rough_prices,
-    rule_for,
-)
+from designer.roads.interim.lies import broken, first_lies, with_more
+from designer.roads.interim.master import Master, Prices, averaged, exact_prices, rule_for
 from designer.roads.interim.mechanism import Mechanism
-from designer.roads.interim.rule import Index, Rule, welfare_index
+from designer.roads.interim.multiplier import optimum, sides
+from designer.roads.interim.rule import Index, Listed, Rule, welfare_index
+from designer.roads.interim.search import Search
 from designer.roads.product import as_independent
-from designer.roads.settled import GoalResult, Settled
+from designer.roads.settled import GoalResult, Settled, Status
 from designer.setting.setting import Setting
 
 GOALS = ("any", "outside-money", "revenue", "welfare", "parties", "floor", "margin", "blend")
-MOST = 20_000_000_000
-"""Profiles that a pass may be asked to count: a few minutes."""
 TABLE_UP_TO = 200_000
 """Profiles up to which the whole table is made at once."""
 
@@ -69,8 +68,8 @@ class Interim:
             return "a tidy table is asked, profile by profile"
         if len(setting.parties) == 1 and terms.balance == "ex-post":
             return "one party has no one to share with"
-        if setting.profiles > MOST:
-            return f"there are more than {MOST:,} profiles to count"
+        if too_many(setting, terms.decision):
+            return "there are too many profiles to count what a rule takes"
         if as_independent(setting) is None:
             return "the types are correlated"
         return None
@@ -86,111 +85,133 @@ class Interim:
 class _Walk:
     def __init__(self, setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> None:
         self.setting, self.asked, self.engine, self.watch = setting, terms, engine, watch
-        balance = "none" if terms.balance == "none" else "ex-ante"
-        self.terms = replace(terms, balance=balance, tidy="none")
-        sizes = setting.shape
-        self.lead = sizes.index(max(sizes))
-        self.master = Master(setting, self.terms, self.lead, watch)
+        self.terms = averaged(terms)
+        self.master = Master(setting, self.terms, None, first_lies(setting), watch)
         self.goal = terms.goals[0]
         self.seconds: dict[str, float] = {}
+        self.search: Search | None = None
+        self.wanted: set[int] = set()  # columns that an exact look asked for
+        self.only = False  # whether no other rule than the listed one is allowed
 
     def walk(self) -> Settled:
         """Find rules until none improves."""
         try:
-            self._start()
+            with self._spending("count"):
+                best = self._start()
+            if best is not None:
+                return self._back(*best)
             while True:
-                program, outcome = self._exact()
-                if outcome.status == "undecided" or not outcome.proved:
-                    return self._undecided(program, outcome.reason)
-                certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
-                if outcome.status == "unbounded" or certificate is None:
-                    return self._back(program, outcome)
-                prices = exact_prices(self.setting, self.lead, program, certificate.fractions())
-                if self.terms.decision == "table" or not self._improve(prices):
-                    return self._back(program, outcome)
-                if outcome.status == "optimal":
-                    self._search()
+                chosen = list(range(len(self.master.columns)))
+                if not self.only:
+                    with self._spending("search"):
+                        self.search = self.search or Search(self.master, self.watch)
+                        chosen = sorted({*self.search.run(), *self.wanted})
+                step = self._exact(chosen)
+                if step is not None:
+                    return step
         except Stopped as stop:
-            program = self.master.program(self.goal)
-            return self._undecided(program, f"{stop.reason}; {stop.remedy}")
+            return self._undecided(f"{stop.reason}; {stop.remedy}")
+        except KeyboardInterrupt:
+            return self._undecided("interrupted; run it again to go on")
 
-    def _start(self) -> None:
-        """A first list of rules: the given table, the efficient rule, every constant one."""
-        since = time.perf_counter()
+    def _start(self) -> tuple[InterimDraft, Program, Outcome, list[int]] | None:
+        """A first list of rules; the whole answer where one multiplier finds it."""
+        setting, master = self.setting, self.master
         if self.terms.decision == "table":
-            self.master.add(Rule(()))
-        else:
-            options = len(self.setting.options)
-            nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in self.setting.shape)
-            efficient = self.master.first()
-            if efficient:
-                self.master.add(Rule(efficient))
-            else:
-                self.master.add(Rule((welfare_index(self.setting),)))
-                for k in range(options):
-                    row = np.zeros(options, dtype=np.int64)
-                    row[k] = 1
-                    self.master.add(Rule((Index(nothing, row),)))
-        self._spent("count", since)
+            self.only = True
+            self._list(Rule(()))
+            return None
+        if self.terms.decision == "efficient":
+            rule = Rule(master.first())
+            counts = master.count(rule)
+            self.only = not tied(setting, rule, counts, self.watch)
+            if self.only:
+                master.add(Listed(rule, counts))
+                return None
+            master.lead = lead_party(setting)
+            self._list(rule)
+            return None
+        found = sides(setting, self.terms)
+        if found is not None:
+            best = optimum(setting, self.terms, found, master.count)
+            columns = [master.add(listed)[0] for _, listed in best.shares]
+            draft, program = master.program()
+            outcome = outcome_of(setting, self.terms, found, best, draft, program)
+            return draft, program, outcome, columns
+        master.lead = lead_party(setting)
+        options = len(setting.options)
+        nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in setting.shape)
+        self._list(Rule((welfare_index(setting),)))
+        for k in range(options):
+            row = np.zeros(options, dtype=np.int64)
+            row[k] = 1
+            self._list(Rule((Index(nothing, row),)))
+        return None
 
-    def _exact(self) -> tuple[Program, Outcome]:
-        since = time.perf_counter()
-        program = self.master.program(self.goal)
-        self._spent("formulate", since)
+    def _list(self, rule: Rule) -> None:
+        self.master.add(Listed(rule, self.master.count(rule)))
+
+    def _exact(self, chosen: list[int]) -> Settled | None:
+        """Settle the master over chosen columns exactly; None if rules or lies came to light."""
+        master = self.master
+        with self._spending("formulate"):
+            draft, program = master.program([master.columns[j] for j in chosen])
         outcome = prove(program.stage(0), engine=self.engine, watch=self.watch)
         for part, seconds in outcome.seconds.items():
             self.seconds[part] = self.seconds.get(part, 0.0) + seconds
-        return program, outcome
+        if outcome.status == "undecided" or not outcome.proved:
+            return self._undecided(outcome.reason)
+        with self._spending("count"):
+            if self._told(draft, outcome):
+                return None
+            certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
+            if outcome.status != "unbounded" and certificate is not None and not self.only:
+                prices = exact_prices(self.setting, master.lead, program, certificate.fractions())
+                if self._improve(prices):
+                    return None
+        return self._back(draft, program, outcome, chosen)
+
+    def _told(self, draft: InterimDraft, outcome: Outcome) -> bool:
+        """Write lies that the point tells although they are not written yet; whether any."""
+        master = self.master
+        if master.lies is None or outcome.status == "infeasible":
+            return False
+        found = [
+            broken(self.setting, self.terms, draft, vector, ray)
+            for vector, ray in ((outcome.primal, False), (outcome.ray, True))
+            if vector is not None
+        ]
+        if not any(pairs for lies in found for pairs in lies):
+            return False
+        self.search = None  # its rows are out of date
+        for lies in found:
+            master.lies = with_more(master.lies, lies)
+        return True
 
     def _improve(self, prices: Prices) -> bool:
-        """List the best rule at some prices if it improves in any slice."""
-        since = time.perf_counter()
-        rule = rule_for(self.setting, self.master.first(), prices)
-        counts = self.master.add(rule)
-        better = [
-            g
-            for g in range(self.setting.shape[self.lead])
-            if prices.worth(counts, g) > prices.slices[g]
-        ]
-        place = len(self.master.listed) - 1
-        self.master.columns = [
-            column for column in self.master.columns if column[1] != place or column[0] in better
-        ]
-        if not better:
-            self.master.listed.pop()
-        self._spent("count", since)
+        """List the best rule at some prices where it improves; whether it does."""
+        master = self.master
+        rule = rule_for(self.setting, master.first(), prices.parties)
+        counts = master.count(rule)
+        worth = [prices.worth(counts, g) for g in range(master.slices)]
+        better = [g for g in range(master.slices) if worth[g] > prices.slices[g]]
+        if better:
+            self.wanted.update(master.add(Listed(rule, counts), better))
         return bool(better)
 
-    def _search(self) -> None:
-        """Look for rules with an engine's floats until it finds none."""
-        while True:
-            self.watch.check()
-            since = time.perf_counter()
-            program = self.master.program(self.goal)
-            self._spent("formulate", since)
-            since = time.perf_counter()
-            report = self.engine.solve(program.stage(0), self.watch)
-            self._spent("solve", since)
-            if report.status != "optimal":
-                return
-            prices = rough_prices(self.setting, self.lead, program, report)
-            if prices is None:
-                return
-            # A rounding error must not look like an improvement for ever.
-            noise = Fraction(max((abs(s) for s in prices.slices), default=Fraction(0))) / 2**30 + 1
-            eased = replace(prices, slices=tuple(s + noise for s in prices.slices))
-            if not self._improve(eased):
-                return
-
-    def _back(self, program: Program, outcome: Outcome) -> Settled:
+    def _back(
+        self, draft: InterimDraft, program: Program, outcome: Outcome, chosen: list[int]
+    ) -> Settled:
         """The answer on the full program: a mechanism, and the master that proves it."""
-        status = {"optimal": "possible", "infeasible": "impossible"}.get(
-            outcome.status, "unbounded"
-        )
-        keep, primal, ray = self._kept(program, outcome)
-        final = self.master.program(self.goal, [self.master.columns[j] for j in keep])
+        words: dict[str, Status] = {"optimal": "possible", "infeasible": "impossible"}
+        status = words.get(outcome.status, "unbounded")
+        keep, primal, ray = self._kept(outcome, chosen)
+        final = program
+        if len(keep) < len(chosen):
+            with self._spending("formulate"):
+                draft, final = self.master.program([self.master.columns[j] for j in keep])
         settled = Settled(
-            status=status,  # type: ignore[arg-type]
+            status=status,
             path="interim",
             program=final,
             goals=(
@@ -210,24 +231,22 @@ class _Walk:
         )
         if status != "possible" or primal is None:
             return settled
-        since = time.perf_counter()
-        mechanism = self._mechanism(final, primal, keep)
-        table = mechanism.table() if self.setting.profiles <= TABLE_UP_TO else None
-        self._spent("table", since)
+        with self._spending("table"):
+            mechanism = self._mechanism(draft, primal, keep)
+            table = mechanism.table() if self.setting.profiles <= TABLE_UP_TO else None
         return replace(settled, mechanism=mechanism, table=table)
 
     def _kept(
-        self, program: Program, outcome: Outcome
+        self, outcome: Outcome, chosen: list[int]
     ) -> tuple[list[int], Vector | None, Vector | None]:
         """The share columns the answer needs, and its vectors over those alone."""
-        count = len(self.master.columns)
-        used = {j for j in outcome.primal.idx if j < count} if outcome.primal else set()
-        if outcome.ray is not None:
-            used |= {j for j in outcome.ray.idx if j < count}
-        for g in range(self.setting.shape[self.lead]):
-            mine = [j for j, column in enumerate(self.master.columns) if column[0] == g]
-            if not used & set(mine):
-                used.add(mine[0])  # an empty slice would contradict itself
+        count = len(chosen)
+        used: set[int] = set()
+        for vector in (outcome.primal, outcome.ray):
+            used |= {j for j in vector.idx if j < count} if vector is not None else set()
+        slices = [self.master.columns[j][0] for j in chosen]
+        for g in set(slices) - {slices[j] for j in used}:
+            used.add(slices.index(g))  # an empty slice would contradict itself
         keep = sorted(used)
         place = {j: new for new, j in enumerate(keep)}
         dropped = count - len(keep)
@@ -238,7 +257,7 @@ class _Walk:
             idx = tuple(place[j] if j < count else j - dropped for j in vector.idx)
             return Vector(vector.den, idx, vector.num, vector.size - dropped)
 
-        return keep, over(outcome.primal), over(outcome.ray)
+        return [chosen[j] for j in keep], over(outcome.primal), over(outcome.ray)
 
     def _reduction(self, keep: list[int]) -> dict[str, object]:
         """What the document says of the rules behind its share columns."""
@@ -246,29 +265,27 @@ class _Walk:
         place = {r: new for new, r in enumerate(used)}
         return {
             "road": "interim",
-            "lead": self.lead,
+            "lead": self.master.lead,
             "rules": [
                 [index.plain() for index in self.master.listed[r].rule.indices] for r in used
             ],
             "shares": [[self.master.columns[j][0], place[self.master.columns[j][1]]] for j in keep],
+            "lies": None
+            if self.master.lies is None
+            else [[list(pair) for pair in pairs] for pairs in self.master.lies],
         }
 
-    def _mechanism(self, program: Program, primal: Vector, keep: list[int]) -> Mechanism:
-        setting = self.setting
+    def _mechanism(self, draft: InterimDraft, primal: Vector, keep: list[int]) -> Mechanism:
+        setting, master = self.setting, self.master
         values = primal.fractions()
         mixture = []
-        for g in range(setting.shape[self.lead]):
+        for g in range(master.slices):
             parts = [
-                (values.get(new, Fraction(0)), self.master.listed[self.master.columns[j][1]].rule)
+                (values.get(new, Fraction(0)), master.listed[master.columns[j][1]].rule)
                 for new, j in enumerate(keep)
-                if self.master.columns[j][0] == g
+                if master.columns[j][0] == g
             ]
             mixture.append(tuple((share, rule) for share, rule in parts if share))
-        work = self.master.formulation([self.master.columns[j] for j in keep])
-        work.pose(self.goal)
-        draft = work.draft
-        if not isinstance(draft, InterimDraft):
-            raise AssertionError("the master writes on an interim draft")
         pays = []
         known = draft.pays_columns
         for index, party in enumerate(setting.parties):
@@ -286,12 +303,13 @@ class _Walk:
             ]
             for index in range(len(setting.parties))
         ]
-        mechanism = Mechanism(setting, self.lead, tuple(mixture), tuple(pays))
+        mechanism = Mechanism(setting, master.lead, tuple(mixture), tuple(pays))
         if self.asked.balance != "ex-post":
             return mechanism
         return _balanced(mechanism, chances)
 
-    def _undecided(self, program: Program, reason: str) -> Settled:
+    def _undecided(self, reason: str) -> Settled:
+        _, program = self.master.program([])
         return Settled(
             status="undecided",
             path="interim",
@@ -301,8 +319,13 @@ class _Walk:
             seconds=self.seconds,
         )
 
-    def _spent(self, part: str, since: float) -> None:
-        self.seconds[part] = self.seconds.get(part, 0.0) + time.perf_counter() - since
+    @contextmanager
+    def _spending(self, part: str) -> Iterator[None]:
+        since = time.perf_counter()
+        try:
+            yield
+        finally:
+            self.seconds[part] = self.seconds.get(part, 0.0) + time.perf_counter() - since
 
 
 def _restored(dual: Vector | None, old: Program, new: Program) -> Vector | None:

@@ -86,6 +86,14 @@ class Counts:
         return tuple(int(v) for v in self.merged().taken[0][0].sum(axis=0))
 
 
+@dataclass(frozen=True, eq=False)
+class Listed:
+    """A rule with its exact counts."""
+
+    rule: Rule
+    counts: Counts
+
+
 def welfare_index(setting: Setting) -> Index:
     """The efficient rule's index: total worth net of outlay, in units of 1/grain."""
     return Index(tuple(party.value for party in setting.parties), setting.worth - setting.outlay)
