@@ -21,6 +21,8 @@ if TYPE_CHECKING:
     from designer.table import Table
     from designer.tablefile import read_table
     from designer.verdict import Verdict
+    from designer.weighing.tradeoff import Tradeoff
+    from designer.weighing.weigh import weigh
 
 _HOMES = {
     "Audit": "designer.auditing",
@@ -30,6 +32,7 @@ _HOMES = {
     "Side": "designer.setting.setting",
     "Table": "designer.table",
     "Terms": "designer.demands.terms",
+    "Tradeoff": "designer.weighing.tradeoff",
     "Verdict": "designer.verdict",
     "RulesReport": "designer.ruling.report",
     "audit": "designer.auditing",
@@ -40,6 +43,7 @@ _HOMES = {
     "read_table": "designer.tablefile",
     "recheck": "designer.proof.recheck",
     "rules": "designer.ruling.report",
+    "weigh": "designer.weighing.weigh",
 }
 
 __all__ = [
@@ -51,6 +55,7 @@ __all__ = [
     "Side",
     "Table",
     "Terms",
+    "Tradeoff",
     "Verdict",
     "audit",
     "compare",
@@ -60,6 +65,7 @@ __all__ = [
     "read_table",
     "recheck",
     "rules",
+    "weigh",
 ]
 
 

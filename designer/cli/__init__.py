@@ -8,7 +8,7 @@ from typing import Any
 
 import typer
 
-from designer.cli import audit, compare, pose, recheck, rules
+from designer.cli import audit, compare, pose, recheck, rules, weigh
 from designer.cli.output import Output, stop_for
 
 app = typer.Typer(
@@ -21,7 +21,7 @@ app = typer.Typer(
     context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
 )
 
-for command in (pose, audit, rules, compare, recheck):
+for command in (pose, weigh, audit, rules, compare, recheck):
     command.register(app)
 
 

@@ -212,6 +212,12 @@ class Progress:
         """Take note of what is being done and how far it is."""
         self.doing, self.steps = doing, steps
 
+    def say(self, text: str) -> None:
+        """Write a line that stays, above the progress line."""
+        blank = f"\r{' ' * self.width}\r" if self.width else ""
+        self.width = 0
+        write(self.stream, f"{blank}{text}\n")
+
     def _tick(self) -> None:
         wait = PATIENCE
         while not self.over.wait(wait):

@@ -30,13 +30,13 @@ RUNGS: dict[str, tuple[str, ...]] = {
 class Ladder:
     """One demand alone: what is asked, and the strongest weaker form that cures the mix.
 
-    cured_by  None if no weaker form of this demand alone is enough
+    settled  None if no weaker form of this demand alone is enough
     tried     the forms that were posed, with whether each cures
     """
 
     demand: str
     asked: str
-    cured_by: str | None
+    settled: str | None
     tried: tuple[tuple[str, bool], ...]
     proved: bool
 

@@ -83,10 +83,10 @@ class _Page:
         self.oracle = Oracle(mix.setting, mix.engine, mix.watch)
         self.tradeoff = Tradeoff(mix.setting, mix.terms, "undecided", False, groups=mix.groups)
 
-    def grow(self, quietly: bool = False, **more: object) -> None:
-        """Add to the page; `quietly`: without telling who listens."""
+    def grow(self, **more: object) -> None:
+        """Add to the page and tell who listens."""
         self.tradeoff = replace(self.tradeoff, **more)  # type: ignore[arg-type]
-        if self.found is not None and not quietly:
+        if self.found is not None:
             self.found(self.tradeoff)
 
     def fill(self) -> None:
@@ -173,12 +173,12 @@ class _Page:
                 continue
             surface = self._surface(surfaces, (x, y))
             for known in trace(surface, x, y):
-                self.grow(frontiers=(*done, known), quietly=not known.complete)
+                self.grow(frontiers=(*done, known))
             done.append(self.tradeoff.frontiers[-1])
         if all(payable(self.terms, criterion) for criterion in TRIPLE):
             start = _embedded(done, self.terms)
             for triple in corner_list(self._surface(surfaces, TRIPLE), start):
-                self.grow(corners=triple, quietly=not triple.complete)
+                self.grow(corners=triple)
 
     def _surface(self, surfaces: dict[str, Surface], criteria: Sequence[str]) -> Surface:
         """The program with these criteria: its decision free where welfare is among them."""
