@@ -187,9 +187,9 @@ def plain_tree(tree: Tree, bound: str) -> list[dict[str, Any]]:
     return nodes
 
 
-def _numbers(values: Iterable[int]) -> list[int | str]:
+def _numbers(values: list[int] | Iterable[int]) -> list[int | str]:
     """Integers, as hexadecimal text where decimal text would be too long."""
-    listed = [int(value) for value in values]
+    listed = values if isinstance(values, list) else [int(value) for value in values]
     if max(map(int.bit_length, listed), default=0) < _DECIMAL_BITS:
         return list(listed)
     return [v if v.bit_length() < _DECIMAL_BITS else hex(v) for v in listed]

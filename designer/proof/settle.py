@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import threading
 from collections import Counter
 from dataclasses import dataclass, field, replace
+from importlib import import_module
 
 from designer.engines.highs import HIGHS
 from designer.engines.report import Basis, Engine, Report
@@ -12,7 +14,7 @@ from designer.program.linear import LinearProgram
 from designer.proof.corner import Corner
 from designer.proof.elastic import directions, elastic
 from designer.proof.exact import Exact, Point
-from designer.proof.kernel import Singular
+from designer.proof.kernel import PEEL, Singular
 from designer.proof.magnify import magnified
 from designer.proof.pivot import drop_added, pivot, slack_basis
 from designer.proof.sparse import dot
@@ -83,6 +85,9 @@ def settle(
     scale: IntArray | None = None,
 ) -> Settled:
     """Decide a continuous program exactly, as far as it goes. Raises Stopped."""
+    if lp.rows > PEEL:
+        # The kernel will need a sparse factorisation: load it while the engine works.
+        threading.Thread(target=import_module, args=("scipy.sparse.linalg",), daemon=True).start()
     return conclude(lp, effort.note(engine.solve(lp, watch)), watch, effort, scale)
 
 
