@@ -13,6 +13,7 @@ import numpy as np
 
 from designer.demands.terms import Terms
 from designer.engines.watch import Watch
+from designer.roads.product import as_independent
 from designer.roads.typegraph.decided import Decided, decide
 from designer.roads.typegraph.fibers import Fibers, fibers
 from designer.setting.exact import number, text
@@ -65,7 +66,10 @@ class GraphMechanism:
         rows = []
         for i, (work, pays) in enumerate(zip(self.works, self.pays_by_class, strict=True)):
             scale, shift = common // self.den, self.shifts[i] * common
-            whole = np.array([[int(v * scale + shift) for v in row] for row in pays], dtype=object)
+            listed = pays.tolist()  # Python integers or fractions, of any size
+            whole = np.array(
+                [[int(v * scale + shift) for v in row] for row in listed], dtype=object
+            )
             others = [n for j, n in enumerate(setting.shape) if j != i]
             grid = whole[work.of].reshape(*others, work.types)
             rows.append(np.moveaxis(grid, -1, i).ravel())
@@ -107,6 +111,7 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> GraphMechanism:
         terms = Terms(decision=str(plain["decision"]))
         if terms.decision not in ("efficient", "table"):
             raise ValueError("the decision must be 'efficient' or 'table'")
+        setting = as_independent(setting) or setting
         decided = decide(setting, terms.decision, Watch())
         decided = decided.choosing(unrolled(plain["ties"], len(decided.tied)))
         works = tuple(fibers(setting, terms, decided, i) for i in range(len(setting.parties)))

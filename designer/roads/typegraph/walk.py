@@ -72,7 +72,7 @@ class Walk:
             decided = decide(self.setting, self.terms.decision, self.watch)
             self._spent("decide", since)
             for _ in range(ROUNDS):
-                found = self._try(decided)
+                found = self.attempt(decided)
                 if found.settled is not None:
                     return found.settled
                 if found.choices is None:
@@ -84,7 +84,8 @@ class Walk:
         except Stopped as stop:
             return self._undecided(f"{stop.reason}; {stop.remedy}")
 
-    def _try(self, decided: Decided) -> Found:
+    def attempt(self, decided: Decided) -> Found:
+        """What one choice at the tied profiles leads to."""
         since = time.perf_counter()
         works = [
             fibers(self.setting, self.terms, decided, i) for i in range(len(self.setting.parties))
