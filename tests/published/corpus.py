@@ -26,7 +26,7 @@ from designer.setting.setting import Party, Setting, Side, Type, integers
 
 FOLDER = Path(__file__).parent
 PARTIES = ("Aster", "Briar", "Clover", "Dock", "Elder", "Fern", "Gorse", "Heath")
-"""Names for the parties of an instance, which the sources only number."""
+"""Names for the first parties of an instance, which the sources only number."""
 
 
 @dataclass(frozen=True)
@@ -130,7 +130,7 @@ def as_setting(data: dict[str, Any], title: str = "", side: Side | None = None) 
     ]
     parties = tuple(
         Party(
-            name=PARTIES[i],
+            name=PARTIES[i] if i < len(PARTIES) else f"Party {i + 1}",
             types=tuple(as_type(label) for label in agent["types"]),
             weights=tuple(as_weights(priors[i])),
             value=integers([scaled(row, grain) for row in values[i]], (shape[i], len(options))),

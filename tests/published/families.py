@@ -5,6 +5,7 @@ Each function returns instance data as `corpus.as_setting` reads it.
 
 from __future__ import annotations
 
+import itertools
 from fractions import Fraction
 from typing import Any
 
@@ -77,6 +78,56 @@ def market(buyers: int, grid: list[Fraction]) -> Data:
             agent(grid, [-1] * buyers + [0], prior),
         ],
         "decisions": [*(f"buyer {i + 1}" for i in range(buyers)), "seller"],
+    }
+
+
+def units(parties: int, count: int, grid: list[Fraction]) -> Data:
+    """So many identical units, one to a party, all uniform; an option per set that is served."""
+    sets = list(itertools.combinations(range(parties), count))
+    return {
+        "agents": [
+            agent(grid, [int(i in served) for served in sets], even(len(grid)))
+            for i in range(parties)
+        ],
+        "decisions": [f"to {' '.join(str(i + 1) for i in served)}" for served in sets],
+    }
+
+
+def exchange(buyers: int, sellers: int, grid: list[Fraction]) -> Data:
+    """Buyers without a unit and sellers with one, all uniform; an option per set of owners."""
+    parties = buyers + sellers
+    owners = list(itertools.combinations(range(parties), sellers))
+    prior = even(len(grid))
+    return {
+        "agents": [
+            agent(grid, [int(i in own) - int(i >= buyers) for own in owners], prior)
+            for i in range(parties)
+        ],
+        "decisions": [f"owned by {' '.join(str(i + 1) for i in own)}" for own in owners],
+    }
+
+
+def project(parties: int, share: Fraction) -> Data:
+    """A joint project worth 0 or 1 to each at even odds, at a cost of `share` a head."""
+    return {
+        "agents": [agent([Fraction(0), Fraction(1)], [0, 1], even(2)) for _ in range(parties)],
+        "decisions": ["leave", "build"],
+        "decision_cost": ["0", str(share * parties)],
+    }
+
+
+def qualities(grid: list[Fraction], prior: list[Fraction], offered: list[Fraction]) -> Data:
+    """One buyer, a quality q worth type * q to him and costing q**2 / 2."""
+    return {
+        "agents": [
+            {
+                "types": [str(v) for v in grid],
+                "values": [[str(v * q) for q in offered] for v in grid],
+                "prior": [str(p) for p in prior],
+            }
+        ],
+        "decisions": [str(q) for q in offered],
+        "decision_cost": [str(q * q / 2) for q in offered],
     }
 
 

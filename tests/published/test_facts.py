@@ -142,6 +142,16 @@ def test_largest_revenue_from_two_bidders_at_larger_sizes(tag: str) -> None:
     assert settle(one_item([grid, grid]), demands).goal_value == beyond("U01", tag)
 
 
+def test_largest_revenue_from_two_bidders_of_a_hundred_points() -> None:
+    """Entry U01 again: 10,000 profiles in interim quantities."""
+    grid = midpoints(100)
+    demands = Demands(decision="randomized", balance="none", goal="revenue", tidy="none")
+    verdict = pose(as_setting(one_item([grid, grid])), demands, path="interim")
+    assert verdict.proved
+    assert recheck(verdict.proof).holds
+    assert verdict.goal_value == beyond("U01", "n2_mid100")
+
+
 # -- Arrow 1979; d'Aspremont and Gerard-Varet 1979, J. Public Economics 11:25-45
 
 
@@ -268,17 +278,6 @@ def test_one_owner_is_the_seller_of_a_trade() -> None:
     assert value == Fraction(-5, 216)
 
 
-@pytest.mark.parametrize("size", [6, 8, 10, 12])
-def test_the_largest_share_that_dissolves(size: int) -> None:
-    """Entry P01: possible at the published share, impossible a thousandth above it."""
-    share = beyond("P01", f"maxshare_mid{size}")
-    for above, status in ((Fraction(0), "possible"), (Fraction(1, 1000), "impossible")):
-        shares = [share + above, 1 - share - above]
-        data = partnership(midpoints(size), even(size), shares)
-        demands = Demands(balance="ex-ante", budget="no-deficit", goal="any")
-        assert settle(data, demands).status == status
-
-
 # -- Border 1991, Econometrica 59:1175-1187 (looked up): entry U09
 
 
@@ -296,6 +295,52 @@ def test_interim_chances_that_one_item_can_bear(item: dict[str, str]) -> None:
         Side(chances=interim_chances(count, chances_asked)),
     )
     assert verdict.status == {"feasible": "possible", "infeasible": "impossible"}[item["value"]]
+    # The source's own inequalities, worked out apart from any program.
+    slack = worst_border_slack(count, chances_asked)
+    assert slack == Fraction(item["slack"])
+    assert (verdict.status == "possible") == (slack >= 0)
+
+
+def worst_border_slack(count: int, wins: list[Fraction]) -> Fraction:
+    """Least 1 - (1 - P(A))^n - n sum over A of p_a q_a, over sets A of equally likely types.
+
+    n parties win with a type in A at most as often as any of them has one.
+    """
+    size, slacks = len(wins), []
+    for some in range(1, size + 1):
+        for chosen in itertools.combinations(wins, some):
+            nobody = Fraction(size - some, size) ** count
+            slacks.append(1 - nobody - count * sum(chosen, Fraction(0)) / size)
+    return min(slacks)
+
+
+@pytest.mark.parametrize("item", entries()["U09"]["beyond"], ids=lambda item: item["tag"])
+def test_chances_lowered_by_the_slack_are_just_bearable(item: dict[str, str]) -> None:
+    """The slack priced in the program: take it off the chances where it binds, and no less.
+
+    The top types' chances of winning, lowered by the shortage over their mass, become possible;
+    lowered by a millionth less they remain impossible (raised beyond, become so).
+    """
+    parties, *wins = item["tag"].split("_")
+    count, slack = int(parties.removeprefix("n")), Fraction(item["slack"])
+    asked = [Fraction(win) for win in wins]
+    size = len(asked)
+    binding = next(
+        some
+        for some in range(1, size + 1)
+        if 1 - Fraction(size - some, size) ** count - count * sum(asked[-some:]) / size == slack
+    )
+    step = slack * size / (count * binding)
+    # Lowering all chances in the binding set leaves every smaller set with room to spare.
+    for more, status in ((Fraction(0), "possible"), (Fraction(1, 10**6), "impossible")):
+        moved = [q + (step + more) * (a >= size - binding) for a, q in enumerate(asked)]
+        assert (worst_border_slack(count, moved) >= 0) == (status == "possible")
+        verdict = settle(
+            one_item([[Fraction(a) for a in range(size)]] * count),
+            Demands(decision="randomized", ic="none", ir="none", balance="none", goal="any"),
+            Side(chances=interim_chances(count, moved)),
+        )
+        assert verdict.status == status
 
 
 # -- Rochet 1987, J. Mathematical Economics 16:191-200 (from memory): entry S06
