@@ -21,6 +21,9 @@ ROOM = 2**61
 LIMB = 40
 """Bits per limb where index sums do not fit 64 bits."""
 
+TOP = 60
+"""Bits of the first limb there."""
+
 Words = list[npt.NDArray[np.int64]]
 """Integers, most significant limb first; one limb where they fit 64 bits."""
 
@@ -78,12 +81,20 @@ def _largest(table: IntArray) -> int:
 
 
 def words(values: IntArray, reach: int) -> Words:
-    """Integers of which no sum in sight exceeds `reach`, as limbs."""
+    """Integers of which no sum in sight exceeds `reach`, as limbs.
+
+    Where there are several, all are shifted alike so that the first limb has 60 bits: it
+    decides nearly every comparison.
+    """
+    if reach < ROOM:
+        return [values.astype(np.int64)]
+    bits = reach.bit_length()
+    lower = -(-(bits - TOP) // LIMB)
+    values = values << (TOP + LIMB * lower - bits)
     limbs = []
-    while reach >= ROOM:
+    for _ in range(lower):
         limbs.append((values & ((1 << LIMB) - 1)).astype(np.int64))
         values = values >> LIMB
-        reach = reach >> LIMB
     limbs.append(values.astype(np.int64))
     return limbs[::-1]
 
@@ -107,10 +118,40 @@ def ranked(parts: Sequence[Words]) -> list[npt.NDArray[np.int64]]:
         return [part[0] for part in parts]
     ready = [settled(part) for part in parts]
     limbs = [np.concatenate(pieces) for pieces in zip(*ready, strict=True)]
-    order = np.lexsort(limbs[::-1])
-    new = np.zeros(len(order), dtype=bool)
-    for limb in limbs:
-        new[1:] |= np.diff(limb[order]) != 0
-    rank = np.empty(len(order), dtype=np.int64)
-    rank[order] = np.cumsum(new)
+    rank = _dense(limbs[0])
+    for limb in limbs[1:]:
+        # Only numbers that agree so far need the next limb.
+        size = np.bincount(rank)
+        again = np.flatnonzero(size[rank] > 1)
+        if not len(again):
+            break
+        step = size - 1
+        start = np.cumsum(step) - step + np.arange(len(size))  # ranks with room for each group
+        rank = start[rank]
+        inner = _dense_pairs(rank[again], limb[again])
+        rank[again] += inner
     return np.split(rank, np.cumsum([len(part[0]) for part in parts])[:-1])
+
+
+def _dense(values: npt.NDArray[np.int64]) -> npt.NDArray[np.int64]:
+    """Ranks from 0, the same for equal values."""
+    order = np.argsort(values)
+    ordered = values[order]
+    rank = np.empty(len(values), dtype=np.int64)
+    rank[order] = np.cumsum(np.concatenate([[False], ordered[1:] != ordered[:-1]]))
+    return rank
+
+
+def _dense_pairs(
+    groups: npt.NDArray[np.int64], values: npt.NDArray[np.int64]
+) -> npt.NDArray[np.int64]:
+    """Ranks from 0 within each group."""
+    order = np.lexsort((values, groups))
+    group, value = groups[order], values[order]
+    first = np.concatenate([[True], group[1:] != group[:-1]])
+    new = first | np.concatenate([[True], value[1:] != value[:-1]])
+    count = np.cumsum(new)
+    base = np.maximum.accumulate(np.where(first, count, 0))
+    rank = np.empty(len(values), dtype=np.int64)
+    rank[order] = count - base
+    return rank

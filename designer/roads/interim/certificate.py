@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from fractions import Fraction
 
 import numpy as np
@@ -13,7 +14,7 @@ from designer.proof.outcome import Outcome
 from designer.proof.vector import Vector
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.multiplier import Optimum, Side, utilities
-from designer.setting.setting import Setting
+from designer.setting.setting import IntArray, Setting
 
 Rows = dict[int, Fraction]
 
@@ -113,15 +114,15 @@ def _multipliers(
     place = starts["expected decision"][0]
     total = setting.total_weight
     for index, (side, flow) in enumerate(zip(found, best.flows, strict=True)):
-        tables = _weights(setting, side, best, index)
+        table, den = _weights(setting, side, best, index)
         each = total // sum(side.party.weights)
-        for a, row in enumerate(tables):
+        taken = best.shares[0][1].counts.taken[0][index]
+        for a, row in enumerate(table):
             mass = each * side.party.weights[a]
-            for k, weight in enumerate(row):
-                rows[place] = weight
-                place += 1
-                taken = int(best.shares[0][1].counts.taken[0][index][a, k])
-                slices += weight * taken / mass
+            slices += Fraction(int((row * taken[a]).sum()), mass * den)
+            for k in np.flatnonzero(row):
+                rows[place + int(k)] = Fraction(int(row[k]), den)
+            place += len(row)
         if side.party.size > 1:
             start = starts["honest"].pop(0)
             for offset, pair in enumerate(_pairs(program, side, start)):
@@ -136,28 +137,29 @@ def _multipliers(
     return {row: value for row, value in rows.items() if value}
 
 
-def _weights(setting: Setting, side: Side, best: Optimum, index: int) -> list[list[Fraction]]:
-    """The weight of q_i(k, a) in the objective and all rows, money units."""
+def _weights(setting: Setting, side: Side, best: Optimum, index: int) -> tuple[IntArray, int]:
+    """The weight of q_i(k, a) in the objective and all rows, money units: integers, over one."""
     party, flow = side.party, best.flows[index]
     value = party.value.astype(object)
-    own = [best.alpha * p for p in party.marginal]
-    own[side.order[-1]] += best.pi
-    against: list[dict[int, Fraction]] = [{} for _ in own]
+    total = sum(party.weights)
+    den = total * math.lcm(
+        best.alpha.denominator,
+        best.pi.denominator,
+        *(multiplier.denominator for multiplier in flow.lies.values()),
+    )
+    own = [int(best.alpha * den) // total * weight for weight in party.weights]
+    own[side.order[-1]] += int(best.pi * den)
+    table = np.zeros(value.shape, dtype=object)
     for (a, b), multiplier in flow.lies.items():
-        own[a] += multiplier
-        against[b][a] = multiplier
-    tables = []
-    for a, p in enumerate(party.marginal):
-        row = []
-        for k in range(len(setting.options)):
-            weight = own[a] * int(value[a, k])
-            weight -= sum((m * int(value[c, k]) for c, m in against[a].items()), Fraction(0))
-            if not index:
-                gain = best.alpha * int(setting.worth[k])
-                weight += p * (gain - (best.alpha + best.pi) * int(setting.outlay[k]))
-            row.append(weight / setting.grain)
-        tables.append(row)
-    return tables
+        whole = multiplier.numerator * (den // multiplier.denominator)
+        own[a] += whole
+        table[b] -= value[a] * whole
+    table += value * np.array(own, dtype=object)[:, None]
+    if not index:
+        alpha, both = int(best.alpha * den) // total, int((best.alpha + best.pi) * den) // total
+        row = setting.worth.astype(object) * alpha - setting.outlay.astype(object) * both
+        table += np.multiply.outer(np.array(party.weights, dtype=object), row)
+    return table, den * setting.grain
 
 
 def _starts(program: Program) -> dict[str, list[int]]:

@@ -12,6 +12,7 @@ import numpy as np
 
 from designer.engines.watch import Stopped, Watch
 from designer.roads.interim import blocks, halves, items, sums
+from designer.roads.interim.additive import additive, words
 from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
 from designer.setting.setting import Setting
 
@@ -19,7 +20,7 @@ MOST = 600.0
 """Seconds that one count may be expected to take."""
 QUICK = 0.01
 """Seconds below which the two general ways are taken without looking further."""
-SLICED = 3.0
+SLICED = 0.5
 """Seconds up to which counts are split by the lead party's types."""
 
 
@@ -49,6 +50,8 @@ def _way(setting: Setting, rule: Rule, lead: int | None) -> str:
     if not rule.indices:
         return "blocks"
     ways = {"blocks": blocks.work(setting), "halves": halves.work(setting, lead)}
+    if ways["blocks"] > QUICK:
+        ways["blocks"] *= 3 * len(words(np.zeros(1, dtype=object), additive(rule).reach)) - 2
     if min(ways.values()) > QUICK and lead is None:
         ways |= {"sums": sums.work(setting, rule), "items": items.work(setting, rule)}
     way = min(ways, key=lambda name: ways[name])

@@ -9,8 +9,10 @@ parties. Every product is exact.
 from __future__ import annotations
 
 import math
+import operator
 from bisect import bisect_left, bisect_right
 from dataclasses import dataclass
+from itertools import accumulate
 
 import numpy as np
 
@@ -36,19 +38,16 @@ def concerned(tables: tuple[IntArray, ...]) -> list[int | None] | None:
     options = tables[0].shape[1]
     owner: list[int | None] = [None] * options
     for party, table in enumerate(tables):
-        if (table == table[:, :1]).all():
+        level = table[:, 0]
+        if options > 2 and not ((level == table[:, 1]).all() or (level == table[:, 2]).all()):
+            level = table[:, 1]
+        own = np.flatnonzero((table != level[:, None]).any(axis=0))
+        if not len(own):
             continue
-        own = [k for k in range(options) if owner[k] is None and _level(table, k)]
-        if not own:
+        if len(own) > 1 or owner[own[0]] is not None:
             return None
-        owner[own[0]] = party
+        owner[int(own[0])] = party
     return owner
-
-
-def _level(table: IntArray, k: int) -> bool:
-    """Whether all options but k have the same entry in every row."""
-    rest = np.delete(table, k, axis=1)
-    return bool((rest == rest[:, :1]).all()) if rest.shape[1] else True
 
 
 def work(setting: Setting, rule: Rule) -> float:
@@ -124,31 +123,33 @@ def _take(
     others = [j for j in range(len(scores)) if j != k]
     silenced = [i for i in range(len(setting.parties)) if all(p.party != i for p in scores)]
     # Per type of k's own party: what each other option contributes, and all of them together.
-    rows = [[below[j].beaten(score, j < k) for j in others] for score in scores[k].scores]
     total = 0
-    for a, row in enumerate(rows):
-        product = math.prod(row) * weights[k][a] * silent
+    beaten = [(scores[j].party, j > k, scores[j].scores, weights[j]) for j in others]
+    for score, weight in zip(scores[k].scores, weights[k], strict=True):
+        row = [below[j].beaten(score, j < k) for j in others]
+        rests = _without_each(row, weight * silent)
+        product = rests[0] * row[0] if row else weight * silent
         total += product
-        own = scores[k].party
-        if own is not None:
-            tables[own][a, k] = product
-    for place, j in enumerate(others):
-        party = scores[j].party
-        if party is None:
-            continue
-        for a, score in enumerate(scores[k].scores):
-            rest = _without(rows[a], place) * weights[k][a] * silent
-            if not rest:
+        for rest, (party, equal, theirs, masses) in zip(rests, beaten, strict=True):
+            if party is None or not rest:
                 continue
-            for b, other in enumerate(scores[j].scores):
-                if other < score or (other == score and j > k):
-                    tables[party][b, k] += rest * weights[j][b]
+            column = tables[party]
+            for b, other in enumerate(theirs):
+                if other < score or (equal and other == score):
+                    column[b, k] += rest * masses[b]
+    own = scores[k].party
+    if own is not None:
+        for a, score in enumerate(scores[k].scores):
+            row = [below[j].beaten(score, j < k) for j in others]
+            tables[own][a, k] = math.prod(row) * weights[k][a] * silent
     for i in silenced:
         whole = sum(setting.parties[i].weights)
         for b, weight in enumerate(setting.parties[i].weights):
             tables[i][b, k] = total // whole * weight
 
 
-def _without(row: list[int], place: int) -> int:
-    """The product of all entries but one."""
-    return math.prod(row[:place]) * math.prod(row[place + 1 :])
+def _without_each(row: list[int], factor: int) -> list[int]:
+    """The product of all entries but one, times a factor, for each."""
+    before = list(accumulate(row, operator.mul, initial=factor))
+    after = list(accumulate(reversed(row), operator.mul, initial=1))[::-1]
+    return [one * two for one, two in zip(before[:-1], after[1:], strict=True)]

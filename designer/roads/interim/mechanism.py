@@ -83,27 +83,37 @@ class Mechanism:
         setting = self.setting
         types = np.array(list(itertools.product(*map(range, setting.shape))), dtype=np.int64)
         chances, den = self._chances(types)
-        pays = [
-            np.array([table[a] for a in types[:, i]], dtype=object)
-            for i, table in enumerate(self.pays_on_average)
+        rows = [*self.pays_on_average, *(self.effects or ())]
+        common = math.lcm(
+            self.pot.denominator, *(value.denominator for row in rows for value in row)
+        )
+        parties = len(self.pays_on_average)
+        if self.effects is None:
+            whole = self._at(types, self.pays_on_average, common)
+            return Table(integers(chances), den, *_lowest(whole, common))
+        # Everything over `unit`, so that the divisions by n and n - 1 come out whole.
+        unit = math.lcm(common, den * setting.grain) * parties * (parties - 1)
+        own = self._at(types, self.pays_on_average, unit)
+        effects = self._at(types, self.effects, unit)
+        outlay = setting.outlay.astype(object)
+        spent: IntArray = (chances.astype(object) * outlay).sum(axis=1)
+        left = spent * (unit // (den * setting.grain)) + int(self.pot * unit) - sum(own)
+        total = sum(effects)
+        whole = [
+            mine + (left - total) // parties + (total - effect) // (parties - 1)
+            for mine, effect in zip(own, effects, strict=True)
         ]
-        if self.effects is not None:
-            parties = len(pays)
-            spent = (chances * setting.outlay.astype(object)).sum(axis=1)
-            left = np.array([Fraction(int(s), den * setting.grain) for s in spent], dtype=object)
-            left = left + self.pot - sum(pays)
-            effects = [
-                np.array([table[a] for a in types[:, i]], dtype=object)
-                for i, table in enumerate(self.effects)
-            ]
-            total = sum(effects)
-            pays = [
-                mine + (left - total) / parties + (total - effect) / (parties - 1)
-                for mine, effect in zip(pays, effects, strict=True)
-            ]
-        common = math.lcm(*{value.denominator for row in pays for value in row})
-        whole = [[int(value * common) for value in row] for row in pays]
-        return Table(integers(chances), den, integers(whole), common)
+        return Table(integers(chances), den, *_lowest(whole, unit))
+
+    def _at(
+        self, types: IntArray, tables: tuple[tuple[Fraction, ...], ...], unit: int
+    ) -> list[IntArray]:
+        """Every party's amounts at the profiles, in units of 1/unit."""
+        found = []
+        for i, table in enumerate(tables):
+            whole = np.array([int(value * unit) for value in table], dtype=object)
+            found.append(whole[types[:, i]])
+        return found
 
     def _chances(self, types: IntArray) -> tuple[IntArray, int]:
         dens = {share.denominator for mix in self.mixture for share, _ in mix}
@@ -117,7 +127,7 @@ class Mechanism:
             for share, rule in mix:
                 taken, own = rule.decides(self.setting, types[here])
                 chances[here] += taken.astype(object) * int(share * den / own)
-        shared = math.gcd(den, *(int(v) for v in chances.flat))
+        shared = math.gcd(den, int(np.gcd.reduce(chances, axis=None)))
         return chances // shared, den // shared
 
     def plain(self) -> dict[str, Any]:
@@ -139,6 +149,14 @@ class Mechanism:
             "effects": None if self.effects is None else _texts(self.effects),
             "pot": text(self.pot),
         }
+
+
+def _lowest(rows: list[IntArray], den: int) -> tuple[IntArray, int]:
+    """The rows over the least common denominator."""
+    shared = den
+    for row in rows:
+        shared = math.gcd(shared, int(np.gcd.reduce(row)))
+    return integers([row // shared for row in rows]), den // shared
 
 
 def _texts(tables: tuple[tuple[Fraction, ...], ...]) -> list[list[str]]:

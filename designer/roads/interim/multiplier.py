@@ -21,6 +21,7 @@ from fractions import Fraction
 from itertools import pairwise
 
 import numpy as np
+import numpy.typing as npt
 
 from designer.demands.terms import Terms
 from designer.roads.interim.lies import Line, line
@@ -29,6 +30,8 @@ from designer.setting.setting import IntArray, Party, Setting
 
 GOALS = ("any", "welfare", "revenue", "outside-money")
 ROUNDS = 500
+BITS = 40
+"""Bits of the indices of rules that only steer the search."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -117,60 +120,109 @@ def flow(side: Side, alpha: Fraction, pi: Fraction) -> Flow:
     claim to be; what it would gain there counts against the decisions taken there.
     """
     theta, weights, total = side.line.theta, side.party.weights, sum(side.party.weights)
-    raw = [(alpha + pi) * int(value) for value in theta]
+    virtual, raw, unit = _virtual(side, alpha, pi)
     lies: dict[tuple[int, int], Fraction] = {}
     passing = 0
     for a, b in pairwise(side.order):
         passing += weights[a]
         lies[a, b] = pi * Fraction(passing, total)
-        raw[b] -= pi * passing * int(theta[a] - theta[b]) / weights[b]
-    rising = side.line.order
-    ironed = _ironed([(weights[a], raw[a]) for a in rising])
-    virtual = dict(zip(rising, ironed, strict=True))
     over = Fraction(0)
-    for a, b in pairwise(rising):
-        over += (raw[a] - virtual[a]) * weights[a] / total
+    for a, b in pairwise(side.line.order):
+        over += (Fraction(raw[a], unit) - virtual[a]) * weights[a] / total
         if over:
             # Lies both ways between pooled neighbours lift the lower one's virtual type.
             each = over / int(theta[b] - theta[a])
             for pair in ((a, b), (b, a)):
                 lies[pair] = lies.get(pair, Fraction(0)) + each
-    kept = {pair: value for pair, value in lies.items() if value}
-    return Flow(kept, tuple(virtual[a] for a in range(len(weights))))
+    return Flow({pair: value for pair, value in lies.items() if value}, tuple(virtual))
 
 
-def _ironed(pairs: list[tuple[int, Fraction]]) -> list[Fraction]:
-    """Pool neighbours until values rise strictly from pool to pool; one mean per entry."""
-    pools: list[tuple[int, Fraction, int]] = []
-    for weight, value in pairs:
-        mass, total, size = weight, value * weight, 1
+def _virtual(side: Side, alpha: Fraction, pi: Fraction) -> tuple[list[Fraction], list[int], int]:
+    """Ironed virtual types; and before ironing, as integers over a unit."""
+    weights = side.party.weights
+    den, scale = math.lcm(alpha.denominator, pi.denominator), math.lcm(*weights)
+    theta = [int(value) for value in side.line.theta]
+    both, push = int((alpha + pi) * den) * scale, int(pi * den)
+    raw = [both * value for value in theta]
+    passing = 0
+    for a, b in pairwise(side.order):
+        passing += weights[a]
+        raw[b] -= push * passing * (theta[a] - theta[b]) * (scale // weights[b])
+    unit = den * scale
+    pools: list[tuple[int, int, list[int]]] = []
+    for a in side.line.order:
+        mass, total, members = weights[a], raw[a] * weights[a], [a]
+        # Neighbours are pooled until means rise strictly from pool to pool.
         while pools and pools[-1][1] * mass >= total * pools[-1][0]:
             before = pools.pop()
-            mass, total, size = mass + before[0], total + before[1], size + before[2]
-        pools.append((mass, total, size))
-    return [total / mass for mass, total, size in pools for _ in range(size)]
+            mass, total, members = mass + before[0], total + before[1], before[2] + members
+        pools.append((mass, total, members))
+    virtual = [Fraction(0)] * len(theta)
+    for mass, total, members in pools:
+        value = Fraction(total, mass * unit)
+        for a in members:
+            virtual[a] = value
+    return virtual, raw, unit
 
 
 def rule_at(setting: Setting, found: tuple[Side, ...], alpha: Fraction, pi: Fraction) -> Rule:
     """The rule that is best at two weights."""
     both = alpha + pi
-    shifts = [
-        [virtual - both * int(place) for virtual, place in zip(own, side.line.theta, strict=True)]
-        for side in found
-        for own in [flow(side, alpha, pi).virtual]
-    ]
+    ironed = [_virtual(side, alpha, pi)[0] for side in found]
     den = math.lcm(
         alpha.denominator,
         pi.denominator,
-        *(shift.denominator for row in shifts for shift in row),
+        *{value.denominator for row in ironed for value in row},
     )
+    scale = int(both * den)
     tables = []
-    for side, row in zip(found, shifts, strict=True):
-        whole = np.array([int(shift * den) for shift in row], dtype=object)
-        value = side.party.value.astype(object) * int(both * den)
-        tables.append(value + np.multiply.outer(whole, side.line.slope))
+    for side, row in zip(found, ironed, strict=True):
+        shift = [
+            v.numerator * (den // v.denominator) - scale * int(place)
+            for v, place in zip(row, side.line.theta, strict=True)
+        ]
+        value = side.party.value.astype(object) * scale
+        tables.append(value + np.multiply.outer(np.array(shift, dtype=object), side.line.slope))
     worth, outlay = setting.worth.astype(object), setting.outlay.astype(object)
-    return Rule((Index(tuple(tables), worth * int(alpha * den) - outlay * int(both * den)),))
+    return Rule((Index(tuple(tables), worth * int(alpha * den) - outlay * scale),))
+
+
+def rough_rule_at(setting: Setting, found: tuple[Side, ...], mu: float) -> Rule:
+    """Nearly the best rule at welfare's weight 1 and the pot's mu, from floats."""
+    tables = []
+    for side in found:
+        weights = np.array(side.party.weights, dtype=np.float64)
+        theta = side.line.theta.astype(np.float64)
+        order = np.array(side.order)
+        tail = np.cumsum(weights[order])[:-1]
+        raw = (1 + mu) * theta
+        raw[order[1:]] -= mu * tail * (theta[order[:-1]] - theta[order[1:]]) / weights[order[1:]]
+        virtual = _rough_ironed(raw, weights, side.line.order)
+        shift = virtual - (1 + mu) * theta
+        value = side.party.value.astype(np.float64) * (1 + mu)
+        tables.append(value + np.multiply.outer(shift, side.line.slope.astype(np.float64)))
+    options = setting.worth.astype(np.float64) - (1 + mu) * setting.outlay.astype(np.float64)
+    tables.append(options[None, :])
+    tables = [table - table[:, :1] for table in tables]
+    top = max(float(np.abs(table).max()) for table in tables) or 1.0
+    whole = [np.rint(t * (2.0**BITS / top)).astype(np.int64).astype(object) for t in tables]
+    return Rule((Index(tuple(whole[:-1]), whole[-1][0]),))
+
+
+def _rough_ironed(
+    raw: npt.NDArray[np.float64], weights: npt.NDArray[np.float64], order: tuple[int, ...]
+) -> npt.NDArray[np.float64]:
+    pools: list[tuple[float, float, list[int]]] = []
+    for a in order:
+        mass, total, members = float(weights[a]), float(raw[a] * weights[a]), [a]
+        while pools and pools[-1][1] * mass >= total * pools[-1][0]:
+            before = pools.pop()
+            mass, total, members = mass + before[0], total + before[1], before[2] + members
+        pools.append((mass, total, members))
+    virtual = np.empty(len(raw))
+    for mass, total, members in pools:
+        virtual[members] = total / mass
+    return virtual
 
 
 def utilities(side: Side, chances: list[list[Fraction]]) -> list[Fraction]:
@@ -211,15 +263,50 @@ def values(setting: Setting, found: tuple[Side, ...], counts: Counts) -> tuple[F
 def _left(side: Side, table: IntArray, masses: list[int]) -> Fraction:
     """Sum over types of mass times utility, as `utilities` says, from weights.
 
+    Masses are the weights times a constant, so better-off mass over own mass needs only them.
     Whatever a type gains at the next worse-off one's decisions is left to all better-off ones.
     """
     value = side.party.value.astype(object)
-    whole = int(side.party.outside[side.order[-1]]) * Fraction(sum(masses))
-    better = 0
-    for a, b in pairwise(side.order):
-        better += masses[a]
-        whole += Fraction(int(((value[a] - value[b]) * table[b]).sum()) * better, masses[b])
-    return whole
+    scale = math.lcm(*side.party.weights)
+    order = np.array(side.order)
+    better = np.cumsum(np.array([side.party.weights[a] for a in side.order], dtype=object))
+    gains = ((value[order[:-1]] - value[order[1:]]) * table[order[1:]]).sum(axis=1)
+    shares = np.array([scale // side.party.weights[b] for b in side.order[1:]], dtype=object)
+    gained = int((gains * better[:-1] * shares).sum()) if len(gains) else 0
+    return int(side.party.outside[side.order[-1]]) * Fraction(sum(masses)) + Fraction(gained, scale)
+
+
+Valued = tuple[Listed, Fraction, Fraction]
+"""A rule, its expected welfare and its largest expected pot."""
+
+
+def _steered(
+    setting: Setting,
+    found: tuple[Side, ...],
+    count: Callable[[Rule], Counts],
+    low: Valued,
+    high: Valued,
+    wanted: Fraction,
+    gift: Fraction,
+) -> tuple[Valued, Valued] | None:
+    """Two rules near the crossing, found with rounded numbers; None if they are no start."""
+    for _ in range(ROUNDS):
+        mu = float((low[1] - high[1]) / (high[2] - low[2]))
+        rule = rough_rule_at(setting, found, mu)
+        counts = count(rule)
+        welfare, pot = values(setting, found, counts)
+        middle = Listed(rule, counts), welfare, pot + gift
+        line = float(low[1]) + mu * float(low[2])
+        gain = float(middle[1]) + mu * float(middle[2]) - line
+        if gain <= 1e-13 * (1 + abs(line)):
+            break
+        if middle[2] >= wanted:
+            high = middle
+        else:
+            low = middle
+        if low[1] < high[1]:
+            return None
+    return low, high
 
 
 def optimum(
@@ -232,7 +319,7 @@ def optimum(
     zero, one = Fraction(0), Fraction(1)
     gift = terms.shortfall * len(found)
 
-    def at(alpha: Fraction, pi: Fraction) -> tuple[Listed, Fraction, Fraction]:
+    def at(alpha: Fraction, pi: Fraction) -> Valued:
         rule = rule_at(setting, found, alpha, pi)
         counts = count(rule)
         welfare, pot = values(setting, found, counts)
@@ -258,6 +345,9 @@ def optimum(
     enough = not bounded or goal == "outside-money" or high[2] >= wanted
     if goal != "welfare" or not enough:
         return ended(((one, high[0]),), zero, one, high[2], enough)
+    steered = _steered(setting, found, count, low, high, wanted, gift)
+    if steered is not None:
+        low, high = steered
     for _ in range(ROUNDS):
         mu = (low[1] - high[1]) / (high[2] - low[2])
         middle = at(one, mu)
