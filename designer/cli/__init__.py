@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import contextlib
+import os
 import sys
 from collections.abc import Sequence
 from typing import Any
@@ -57,4 +59,17 @@ def main(arguments: Sequence[str] | None = None) -> None:
         if isinstance(error, SystemExit):
             raise
         code = stop_for(error, "--json" in words)
-    sys.exit(code if isinstance(code, int) else 0)
+    code = code if isinstance(code, int) else 0
+    if arguments is None:
+        _leave_at_once(code)
+    sys.exit(code)
+
+
+def _leave_at_once(code: int) -> None:
+    """End the process even if an engine was left behind that does not stop when told."""
+    apart = sys.modules.get("designer.engines.apart")
+    if apart is not None and apart.left_behind():
+        for stream in (sys.stdout, sys.stderr):
+            with contextlib.suppress(OSError, ValueError):
+                stream.flush()
+        os._exit(code)

@@ -15,6 +15,7 @@ from typing import Any
 
 import numpy as np
 
+from designer.engines.apart import Best, run_apart
 from designer.engines.floats import FloatProgram, floats
 from designer.engines.listening import Stop, listening
 from designer.engines.model import (
@@ -87,13 +88,14 @@ class Highs:
             return Report("failed", self.name, message="the model was refused")
         if mixed:
             model.setOptionValue("mip_rel_gap", self.gap)
+            return self._apart(model, program, watch, began)
         if basis is not None:
             model.setBasis(their_basis(basis))
-        elif large and not mixed:
+        elif large:
             report = self._in_steps(model, program, watch, tolerance, began)
             if report is not None:
                 return report
-        with listening(model, watch, mixed or large) as stop:
+        with listening(model, watch, large) as stop:
             model.run()
         return report_of(model, program, self.name, began, stop)
 
@@ -105,6 +107,23 @@ class Highs:
         if tolerance is not None:
             model.setOptionValue("primal_feasibility_tolerance", tolerance)
             model.setOptionValue("dual_feasibility_tolerance", tolerance)
+
+    def _apart(self, model: Any, program: FloatProgram, watch: Watch, began: float) -> Report:
+        """Solve with integers, in a thread that is not waited for beyond the time limit."""
+        best = Best()
+        with listening(model, watch, True, best.see) as stop:
+            finished = run_apart(model, watch, stop)
+        if finished:
+            return report_of(model, program, self.name, began, stop)
+        bound = best.bound * 2.0 ** (-program.cost_exp)
+        return Report(
+            "interrupted" if stop.interrupted else "time-limit",
+            self.name,
+            x=None if best.x is None else program.point(best.x),
+            bound=bound if isfinite(bound) else None,
+            seconds=time.monotonic() - began,
+            message="left behind",
+        )
 
     def _in_steps(
         self,

@@ -5,7 +5,7 @@ from __future__ import annotations
 import signal
 import threading
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
 from types import FrameType
@@ -19,18 +19,27 @@ EVERY = 0.2
 
 @dataclass
 class Stop:
-    """Why a running solve was told to stop."""
+    """Why a running solve was told to stop; `left` once nobody waits for it any more."""
 
     interrupted: bool = False
     error: BaseException | None = None
+    left: bool = False
+
+    @property
+    def asked(self) -> bool:
+        """Whether the solve is to stop."""
+        return self.interrupted or self.left or self.error is not None
 
 
 @contextmanager
-def listening(model: Any, watch: Watch, attached: bool) -> Iterator[Stop]:
+def listening(
+    model: Any, watch: Watch, attached: bool, shown: Callable[[Any, bool], None] | None = None
+) -> Iterator[Stop]:
     """Progress reports and Ctrl-C while HiGHS runs.
 
     HiGHS calls back between iterations. Ctrl-C only raises a flag there: an exception must
-    not travel through compiled code.
+    not travel through compiled code. `shown` is given what HiGHS says at each node of a
+    mixed-integer solve, and whether that comes with a better point.
     """
     stop = Stop()
     if not attached:
@@ -40,11 +49,14 @@ def listening(model: Any, watch: Watch, attached: bool) -> Iterator[Stop]:
 
     Kind = highspy.cb.HighsCallbackType
 
+    of_mip = (Kind.kCallbackMipInterrupt, Kind.kCallbackMipImprovingSolution)
     last = time.monotonic()
 
     def called(kind: Any, message: str, said: Any, answer: Any, data: Any) -> None:
         nonlocal last
-        if stop.interrupted or stop.error is not None:
+        if shown is not None and kind in of_mip:
+            shown(said, kind == Kind.kCallbackMipImprovingSolution)
+        if stop.asked:
             answer.user_interrupt = True
             return
         now = time.monotonic()
@@ -62,11 +74,14 @@ def listening(model: Any, watch: Watch, attached: bool) -> Iterator[Stop]:
         stop.interrupted = True
 
     model.setCallback(called, None)
-    for kind in (
+    kinds = [
         Kind.kCallbackSimplexInterrupt,
         Kind.kCallbackIpmInterrupt,
         Kind.kCallbackMipInterrupt,
-    ):
+    ]
+    if shown is not None:
+        kinds.append(Kind.kCallbackMipImprovingSolution)
+    for kind in kinds:
         model.startCallback(kind)
     main = threading.current_thread() is threading.main_thread()
     before = signal.signal(signal.SIGINT, pressed) if main else None
@@ -75,7 +90,8 @@ def listening(model: Any, watch: Watch, attached: bool) -> Iterator[Stop]:
     finally:
         if main:
             signal.signal(signal.SIGINT, before)
-        model.setCallback(None, None)
+        if not stop.left:
+            model.setCallback(None, None)
     if isinstance(stop.error, KeyboardInterrupt):
         stop.interrupted = True
     elif stop.error is not None:
