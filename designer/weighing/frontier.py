@@ -38,7 +38,8 @@ class Frontier:
     """All corners of the least pairs of two criteria, from the smallest x to the smallest y.
 
     Every table has its criteria on or above the line through the corners, left of the first
-    straight up and right of the last straight across. `corners` is empty when the two
+    straight up and right of the last straight across (where more of x is allowed than helps,
+    it need not be used). `corners` is empty when the two
     together do not help (`reason` says so); `complete` is False while corners may be missing:
     those listed then can be had, and the frontier lies on or below the line through them.
     """
