@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import assume, given, settings
+from hypothesis import HealthCheck, assume, given, settings
 from hypothesis import strategies as st
 
 from designer import Demands, parse_scenario, pose
@@ -25,11 +25,12 @@ from designer.proof.recheck import recheck
 from designer.rebuilding import rebuild
 from designer.roads.product import as_independent
 from designer.roads.registry import choose
+from designer.roads.settled import Settled
+from designer.roads.typegraph import walk
 from designer.roads.typegraph.check import check
 from designer.roads.typegraph.decided import decide
 from designer.roads.typegraph.mechanism import from_plain
 from designer.roads.typegraph.road import TypeGraph
-from designer.roads.typegraph.walk import Walk
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
 from tests.roads.typegraph_settings import designs, lifted
@@ -114,18 +115,30 @@ def test_payments_on_demand_are_the_table_and_survive_their_file(design: Design)
 # -- ties --------------------------------------------------------------------------------
 
 
-@settings(max_examples=300, deadline=None, derandomize=True)
+def stubborn(design: Design, picks: list[int]) -> Settled | None:
+    """What the road brings home if it takes some choices for the best and asks no further."""
+    setting, terms = design
+    own = as_independent(setting) or setting
+    decided = decide(own, "efficient", Watch()).choosing(np.array(picks))
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "better", lambda decided, priced: decided.choices)
+        return walk.Walk(own, setting, terms, HIGHS, Watch()).attempt(decided).settled
+
+
+@settings(
+    max_examples=300,
+    deadline=None,
+    derandomize=True,
+    suppress_health_check=[HealthCheck.filter_too_much],  # many settings have no ties
+)
 @given(designs(decision="efficient", bounded=True), st.randoms(use_true_random=False))
 def test_no_choice_at_ties_passes_the_check_unless_it_is_best(design: Design, draw: Any) -> None:
     setting, terms = design
-    own = as_independent(setting) or setting
-    decided = decide(own, "efficient", Watch())
-    assume(len(decided.tied) > 0)
-    picks = [draw.choice(np.flatnonzero(row).tolist()) for row in decided.torn]
-    walk = Walk(own, setting, terms, HIGHS, Watch())
-    settled = walk.attempt(decided.choosing(np.array(picks))).settled
-    if settled is None:
-        return
+    torn = decide(as_independent(setting) or setting, "efficient", Watch()).torn
+    assume(len(torn) > 0)
+    settled = stubborn(design, [draw.choice(np.flatnonzero(row).tolist()) for row in torn])
+    assume(settled is not None)
+    assert settled is not None
     document = build(setting, as_plain(terms), settled)
     assert recheck(document).holds
     plain = pose_terms(setting, terms, path="full")
@@ -165,6 +178,16 @@ def test_ties_are_settled_by_their_prices() -> None:
     assert ours.proof["reduction"]["ties"] == [[1, 4]]  # leave, at all four ties
 
 
+def test_a_flawless_proof_of_a_worse_choice_is_rejected() -> None:
+    setting = parse_scenario(TIED)
+    terms = CASES.over(setting)
+    settled = stubborn((setting, terms), [0, 0, 0, 0])
+    assert settled is not None
+    document = build(setting, as_plain(terms), settled)
+    assert recheck(document).holds
+    assert check(setting, document) == ["another choice at a tied profile may do better"]
+
+
 # -- attacks -----------------------------------------------------------------------------
 
 
@@ -185,8 +208,8 @@ POTS = replace(CASES, balance="ex-post", budget="no-deficit")
 @pytest.mark.parametrize(
     ("demands", "spoil", "says"),
     [
-        (CASES, lambda r: r.update(ties=[[0, 4]]), "gains by a lie"),
-        (CASES, lambda r: r.update(ties=[[0, 1], [1, 3]]), "gains by a lie"),
+        (CASES, lambda r: r.update(ties=[[0, 4]]), "differs"),
+        (CASES, lambda r: r.update(ties=[[0, 1], [1, 3]]), "differs"),
         (CASES, lambda r: r.update(ties=[[1, 3]]), "the runs do not fit"),
         (CASES, lambda r: r.update(ties=[[7, 4]]), "cannot be read"),
         (CASES, lambda r: r.pop("parties"), "cannot be read"),

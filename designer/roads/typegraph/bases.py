@@ -21,9 +21,9 @@ from fractions import Fraction
 import numpy as np
 
 from designer.engines.watch import Watch
-from designer.roads.typegraph.decided import Indices
-from designer.roads.typegraph.fibers import Fibers
-from designer.roads.typegraph.paths import loop, shorten
+from designer.roads.typegraph.decided import Indices, Mask
+from designer.roads.typegraph.fibers import Fibers, Lengths
+from designer.roads.typegraph.paths import along, loop, shorten
 from designer.setting.setting import IntArray
 
 OWN, ZERO = "own", "zero"
@@ -107,10 +107,7 @@ def distances(work: Fibers, root: Root, watch: Watch) -> Base | Cycle:
     for start, lengths in work.blocks():
         watch.tell(f"paths of {work.setting.parties[work.party].name}", start)
         stop = start + len(lengths.room)
-        begin = lengths.room.copy() if root == OWN else np.zeros_like(lengths.room)
-        if lengths.scope is not None:
-            begin[~lengths.scope] = work.far
-        dist, paths, bad = shorten(lengths.cost, begin)
+        dist, paths, bad = trees(work, start, lengths, root)
         if bad.any():
             return cycle(work, start + int(np.flatnonzero(bad)[0]))
         if lengths.scope is not None:
@@ -123,6 +120,33 @@ def distances(work: Fibers, root: Root, watch: Watch) -> Base | Cycle:
     average, mean = Fraction(total, den), Fraction(room, den)
     most = {"free": None, "mean": mean}.get(kind(work), average)
     return Base(pays, average, most, root, tree, None, Fraction(worth, den), mean)
+
+
+def trees(work: Fibers, start: int, lengths: Lengths, root: Root) -> tuple[IntArray, Indices, Mask]:
+    """Distances and trees of a block; at ties the trees that leaning choices leave shortest."""
+    lean = work.leaning
+    begin = _begin(work, lengths, root)
+    if lean is not None:
+        leant = lean.lengths(start, start + len(lengths.room))
+        _, paths, bad = shorten(leant.cost, _begin(lean, leant, root))
+        if not bad.any():
+            dist, _ = along(lengths.cost, paths, begin)
+            return dist, paths, bad
+    return shorten(lengths.cost, begin)
+
+
+def _begin(work: Fibers, lengths: Lengths, root: Root) -> IntArray:
+    """What the paths' roots start from."""
+    if root == OWN:
+        begin = lengths.room.copy()
+    elif root == ZERO:
+        begin = np.zeros_like(lengths.room)
+    else:
+        begin = np.full(lengths.room.shape, work.far, dtype=work.dtype)
+        begin[:, int(root)] = 0
+    if lengths.scope is not None:
+        begin[~lengths.scope] = work.far
+    return begin
 
 
 def outside_scope(dist: IntArray, cost: IntArray, scope: IntArray, far: int) -> None:

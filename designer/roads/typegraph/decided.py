@@ -8,7 +8,7 @@ a choice among them is a parameter of the rule.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -29,10 +29,12 @@ Mask = npt.NDArray[np.bool_]
 class Decided:
     """What is decided at every profile.
 
-    palette  int, shape (P, K): the lotteries in use, numerators over `den`
+    palette  int, shape (P, K): the lotteries in use, numerators over `den`; a choice at a tie
+             has an entry of its own, by what else is efficient there
     at       int, shape (N,): which of them, by profile
     tied     int, shape (M,): the tied profiles, ascending
     torn     bool, shape (M, K): the options that are efficient there
+    choices  int, shape (M,): the option taken there
     """
 
     palette: IntArray
@@ -40,11 +42,7 @@ class Decided:
     at: IntArray
     tied: Indices
     torn: Mask
-
-    @property
-    def choices(self) -> IntArray:
-        """The option taken at each tied profile, int (M,)."""
-        return self.at[self.tied]
+    choices: Indices
 
     def choosing(self, choices: IntArray) -> Decided:
         """The same rule with other choices at the tied profiles.
@@ -54,9 +52,37 @@ class Decided:
         rows = np.arange(len(self.tied))
         if choices.shape != self.tied.shape or not self.torn[rows, choices].all():
             raise ValueError("a choice at a tied profile is not efficient there")
-        at = self.at.copy()
-        at[self.tied] = choices
-        return Decided(self.palette, self.den, at, self.tied, self.torn)
+        if not len(rows):
+            return self
+        options = self.torn.shape[1]
+        kinds, place = np.unique(
+            np.column_stack([choices, self.torn]).astype(np.int64), axis=0, return_inverse=True
+        )
+        certain = np.eye(options, dtype=np.int64)
+        at = self.at.astype(np.min_scalar_type(options + len(kinds)))
+        at[self.tied] = options + place.ravel()
+        palette = np.concatenate([certain, certain[kinds[:, 0]]])
+        return Decided(palette, 1, at, self.tied, self.torn, choices.astype(np.int64))
+
+    def leaning(self, part: int) -> Decided:
+        """One part in `part` of every choice at a tie given to the other options there.
+
+        Shortest paths under it are shortest paths under the rule itself once `part` is large,
+        and among those the ones that stay shortest when choices give way: the paths whose
+        multipliers can prove a choice best.
+        """
+        options = self.torn.shape[1]
+        kinds, first = np.unique(self.at[self.tied], return_index=True)
+        counts = self.torn[first].sum(axis=1).astype(np.int64) - 1
+        shared = math.lcm(*(int(count) for count in counts))
+        den = part * shared
+        palette = self.palette.astype(object) * den
+        for kind, row, count in zip(kinds, first, counts, strict=True):
+            others = np.flatnonzero(self.torn[row])
+            palette[kind] = np.zeros(options, dtype=object)
+            palette[kind, others] = shared // int(count)
+            palette[kind, int(self.choices[row])] = den - shared
+        return replace(self, palette=palette, den=den)
 
 
 def decide(setting: Setting, decision: str, watch: Watch) -> Decided:
@@ -81,13 +107,16 @@ def decide(setting: Setting, decision: str, watch: Watch) -> Decided:
         if len(here):
             tied.append(here.astype(np.int64) + start)
             torn.append(np.stack([w[here] == best[here] for w in worth], axis=1).astype(bool))
-    return Decided(
+    where = np.concatenate(tied) if tied else np.zeros(0, dtype=np.int64)
+    decided = Decided(
         np.eye(options, dtype=np.int64),
         1,
         at,
-        np.concatenate(tied) if tied else np.zeros(0, dtype=np.int64),
+        where,
         np.concatenate(torn) if torn else np.zeros((0, options), dtype=bool),
+        at[where].astype(np.int64),
     )
+    return decided.choosing(decided.choices) if len(where) else decided
 
 
 def _given(setting: Setting) -> Decided:
@@ -104,6 +133,7 @@ def _given(setting: Setting) -> Decided:
         key.astype(np.min_scalar_type(len(first))),
         np.zeros(0, dtype=np.int64),
         np.zeros((0, len(setting.options)), dtype=bool),
+        np.zeros(0, dtype=np.int64),
     )
 
 

@@ -16,7 +16,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -124,6 +124,13 @@ class Fibers:
             party.value.astype(self.dtype) @ decided.palette.T.astype(self.dtype)
         ) * scale
         return table
+
+    @cached_property
+    def leaning(self) -> Fibers | None:
+        """The same classes under a rule that leans towards the other choices at ties."""
+        if not len(self.decided.tied):
+            return None
+        return replace(self, decided=self.decided.leaning(4 * self.reach))
 
     def blocks(self) -> Iterator[tuple[int, Lengths]]:
         """All classes, block by block: the first class, and the graphs."""

@@ -63,20 +63,20 @@ class GraphMechanism:
         dens = {shift.denominator for shift in self.shifts}
         dens |= {v.denominator for pays in self.pays_by_class for v in _fractions(pays)}
         common = math.lcm(self.den, *(self.den * d for d in dens))
+        tables = []
+        for pays, shift in zip(self.pays_by_class, self.shifts, strict=True):
+            scale, more = common // self.den, shift * common
+            # Python integers or fractions, of any size.
+            tables.append([[int(v * scale + more) for v in row] for row in pays.tolist()])
+        shared = math.gcd(common, *(v for whole in tables for row in whole for v in row))
         rows = []
-        for i, (work, pays) in enumerate(zip(self.works, self.pays_by_class, strict=True)):
-            scale, shift = common // self.den, self.shifts[i] * common
-            listed = pays.tolist()  # Python integers or fractions, of any size
-            whole = np.array(
-                [[int(v * scale + shift) for v in row] for row in listed], dtype=object
-            )
+        for i, (work, whole) in enumerate(zip(self.works, tables, strict=True)):
             others = [n for j, n in enumerate(setting.shape) if j != i]
-            grid = whole[work.of].reshape(*others, work.types)
+            held = integers([[v // shared for v in row] for row in whole])
+            grid = held[work.of].reshape(*others, work.types)
             rows.append(np.moveaxis(grid, -1, i).ravel())
-        pays = integers(np.stack(rows))
-        shared = math.gcd(common, *{int(v) for v in pays.flat})
-        chances = decided.palette[decided.at]
-        return Table(integers(chances), decided.den, pays // shared, common // shared)
+        chances = integers(decided.palette)[decided.at]
+        return Table(chances, decided.den, np.stack(rows), common // shared)
 
     def plain(self) -> dict[str, Any]:
         """As the JSON document that `--save` writes as table.json."""

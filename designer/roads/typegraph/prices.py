@@ -169,4 +169,4 @@ def better(decided: Decided, priced: IntArray) -> IntArray:
     out = np.where(decided.torn, priced, priced.max() + 1)
     cheapest = out.min(axis=1)
     keep = out[rows, decided.choices] == cheapest
-    return np.where(keep, decided.choices, out.argmin(axis=1)).astype(decided.at.dtype)
+    return np.where(keep, decided.choices, out.argmin(axis=1)).astype(np.int64)

@@ -71,14 +71,16 @@ class Walk:
             since = time.perf_counter()
             decided = decide(self.setting, self.terms.decision, self.watch)
             self._spent("decide", since)
-            for _ in range(ROUNDS):
+            seen: set[bytes] = set()
+            while len(seen) < ROUNDS and decided.choices.tobytes() not in seen:
+                seen.add(decided.choices.tobytes())
                 found = self.attempt(decided)
                 if found.settled is not None:
                     return found.settled
                 if found.choices is None:
                     break
                 decided = found.choices
-            raise Torn("other choices where several options are efficient may do better")
+            raise Torn("lotteries where several options are efficient may do better")
         except (Torn, TooBig) as reason:
             return self._elsewhere(str(reason))
         except Stopped as stop:

@@ -17,10 +17,9 @@ from designer.engines.watch import Stopped, Watch
 from designer.program.linear import Bound, LinearProgram
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
-from designer.roads.typegraph.bases import Base, Cycle, Flow, TooBig, cycle
+from designer.roads.typegraph.bases import Base, Cycle, Flow, TooBig, cycle, trees
 from designer.roads.typegraph.decided import Indices
 from designer.roads.typegraph.fibers import Fibers
-from designer.roads.typegraph.paths import shorten
 from designer.setting.setting import IntArray
 
 CELLS = 60_000
@@ -43,20 +42,20 @@ def by_types(work: Fibers, watch: Watch) -> Base | Cycle:
     mass = work.total // int(work.own.sum())
     den = work.den * work.total
     means = Fraction(worth, den), Fraction(room, den)
-    trees = []
+    found_trees = []
     for w in range(types):
         found = _from(work, w, watch)
         if isinstance(found, Cycle):
             return found
         pays, tree, sums = found
-        trees.append(tree)
+        found_trees.append(tree)
         # In units of 1 / (den * mass): what each type pays on average, once w is at its room.
         if all(s + rooms[w] <= r for s, r in zip(sums, rooms, strict=True)):
             total = sum(int(o) * (s + rooms[w]) for o, s in zip(work.own, sums, strict=True))
             lift = Fraction(rooms[w], work.den * mass)
             most = Fraction(total, den)
             return Base(pays, most - lift, most, w, tree, None, *means)
-    return _mixed(work, rooms, trees, means, watch)
+    return _mixed(work, rooms, found_trees, means, watch)
 
 
 def _from(work: Fibers, w: int, watch: Watch) -> tuple[IntArray, Indices, list[int]] | Cycle:
@@ -67,9 +66,7 @@ def _from(work: Fibers, w: int, watch: Watch) -> tuple[IntArray, Indices, list[i
     for start, lengths in work.blocks():
         watch.tell(f"paths of {work.setting.parties[work.party].name}", start)
         stop = start + len(lengths.room)
-        begin = np.full(lengths.room.shape, work.far, dtype=work.dtype)
-        begin[:, w] = 0
-        dist, paths, bad = shorten(lengths.cost, begin)
+        dist, paths, bad = trees(work, start, lengths, w)
         if bad.any():
             return cycle(work, start + int(np.flatnonzero(bad)[0]))
         pays[start:stop], tree[start:stop] = dist, paths
@@ -81,7 +78,7 @@ def _from(work: Fibers, w: int, watch: Watch) -> tuple[IntArray, Indices, list[i
 def _mixed(
     work: Fibers,
     rooms: list[int],
-    trees: list[Indices],
+    known: list[Indices],
     means: tuple[Fraction, Fraction],
     watch: Watch,
 ) -> Base:
@@ -93,7 +90,7 @@ def _mixed(
     lies = sorted(
         {
             (g, a, int(tree[g, a]))
-            for tree in trees
+            for tree in known
             for g in range(work.classes)
             for a in range(work.types)
             if int(tree[g, a]) != a
