@@ -11,7 +11,7 @@ from typing import Any
 import typer
 
 from designer.cli import audit, compare, pose, recheck, rules, weigh
-from designer.cli.output import Output, stop_for
+from designer.cli.output import Output, open_streams, stop_for
 
 app = typer.Typer(
     name="designer",
@@ -48,6 +48,7 @@ def main(arguments: Sequence[str] | None = None) -> None:
     Usage errors found by the option parser are said like any other: in words on stderr, and
     as an error document on stdout under --json.
     """
+    open_streams()
     words = list(sys.argv[1:] if arguments is None else arguments)
     usage_error: Any = typer.BadParameter.__mro__[2]  # the parser's ClickException
     code: Any

@@ -44,11 +44,11 @@ class Output:
         """Choose the streams; `quiet` leaves out what is meant for people, errors apart."""
         self.json = json
         self.quiet = quiet
-        self.people: IO[str] = sys.stderr if json or to_stderr else sys.stdout
+        self.people: IO[str] | None = sys.stderr if json or to_stderr else sys.stdout
 
     def page(self, page: Page) -> None:
         """Print a screen for people."""
-        if self.quiet:
+        if self.quiet or self.people is None:
             return
         from designer.views.page import printed
 
@@ -80,18 +80,48 @@ def console(stream: IO[str]) -> Console:
     return found
 
 
-def write(stream: IO[str], text: str) -> None:
-    """Write and flush; a reader who has gone away is no error, and stays gone."""
+def write(stream: IO[str] | None, text: str) -> None:
+    """Write and flush; a reader who has gone away is no error, and stays gone.
+
+    Raises InputError where the results cannot be written: a full disk behind stdout. Where
+    stderr cannot be written there is nobody left to tell. `stream` is None where it was
+    closed before we were started.
+    """
+    if stream is None:
+        return
     try:
         if isinstance(stream, io.TextIOWrapper):  # some terminals cannot show every letter
             stream.reconfigure(errors="backslashreplace")
         stream.write(text)
         stream.flush()
-    except BrokenPipeError:
-        with contextlib.suppress(OSError, ValueError):
-            gone = os.open(os.devnull, os.O_WRONLY)
-            os.dup2(gone, stream.fileno())
-            os.close(gone)
+    except OSError as error:
+        with contextlib.suppress(OSError, ValueError):  # later writes and the last flush succeed
+            nowhere = os.open(os.devnull, os.O_WRONLY)
+            os.dup2(nowhere, stream.fileno())
+            os.close(nowhere)
+        if not isinstance(error, BrokenPipeError) and stream is not sys.stderr:
+            raise InputError([_refused(error, "stdout")]) from error
+
+
+def _refused(error: OSError, place: str) -> Mistake:
+    return Mistake(
+        place,
+        f"'{error.strerror or error}' from the operating system",
+        "a place that can be read and written",
+        "Free some space there, or choose another place.",
+    )
+
+
+def open_streams() -> None:
+    """Give stdin, stdout and stderr a number each, even if we were started without them.
+
+    A file opened later would otherwise take the number of stdout, and be written over.
+    """
+    for number in range(3):
+        try:
+            os.fstat(number)
+        except OSError:
+            os.open(os.devnull, os.O_RDWR)  # takes the lowest number that is free
 
 
 # --- errors -----------------------------------------------------------------------------------
@@ -142,6 +172,9 @@ def _described(error: BaseException) -> tuple[str, int, str, Sequence[Mistake]]:
     if isinstance(error, MemoryError):
         text = "UNDECIDED: this machine's memory is too small for the problem; use fewer types."
         return "memory", UNDECIDED, text, ()
+    if isinstance(error, OSError) and error.errno is not None:  # the place, not the program
+        told = InputError([_refused(error, str(error.filename or "stdout"))])
+        return "input", BAD_INPUT, told.report(), told.mistakes
     if hasattr(error, "format_message") and not isinstance(error, DesignerError):
         return "usage", BAD_INPUT, _usage(error), ()
     what = f"{type(error).__name__}: {error}".replace("\n", " ")[:200]
@@ -181,8 +214,9 @@ class Progress:
     def __init__(self, wanted: bool | None) -> None:
         """Look at stderr once."""
         self.stream = sys.stderr
-        self.terminal = self.stream.isatty() and os.environ.get("TERM") != "dumb"
-        self.shown = wanted if wanted is not None else self.terminal
+        told = self.stream is not None  # it may have been closed before we were started
+        self.terminal = told and self.stream.isatty() and os.environ.get("TERM") != "dumb"
+        self.shown = told and (wanted if wanted is not None else self.terminal)
         self.start = time.monotonic()
         self.doing, self.steps = "work", 0
         self.width = 0

@@ -5,6 +5,9 @@ from __future__ import annotations
 import time
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from math import isnan
+
+from designer.errors import Mistake, UsageError
 
 Progress = Callable[[str, float, int], None]
 """Called with what is being done, the seconds since the start and a step count."""
@@ -42,6 +45,20 @@ class Watch:
     limit: float | None = None
     progress: Progress | None = None
     start: float = field(default_factory=time.monotonic)
+
+    def __post_init__(self) -> None:
+        """Raise UsageError for a limit that is no number of seconds: it would never pass."""
+        if self.limit is not None and isnan(self.limit):
+            raise UsageError(
+                [
+                    Mistake(
+                        "--time-limit",
+                        repr(self.limit),
+                        "a number of seconds",
+                        "Leave it out to wait as long as it takes.",
+                    )
+                ]
+            )
 
     @property
     def seconds(self) -> float:

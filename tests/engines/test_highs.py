@@ -18,6 +18,7 @@ from designer.engines.highs import SMALL as SMALL_SIZE
 from designer.engines.model import load, quiet_highs
 from designer.engines.report import BASIC, LOWER, ZERO
 from designer.engines.watch import Interrupted, TimeUp, Watch
+from designer.errors import UsageError
 from designer.program.linear import Bound, LinearProgram
 from designer.proof.prove import prove
 from tests.engines.interim import interim_program
@@ -231,6 +232,8 @@ def test_watches() -> None:
     Watch(progress=lambda doing, seconds, steps: heard.append(doing)).tell("work", 3)
     assert heard == ["work"]
     assert Interrupted.reason == "interrupted"
+    with pytest.raises(UsageError, match="--time-limit: found nan; expected a number of seconds"):
+        Watch(limit=float("nan"))
 
 
 def test_floats_of_huge_and_tiny_numbers() -> None:
