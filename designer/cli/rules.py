@@ -30,7 +30,11 @@ def rules(
     scenario: options.Scenario,
     only: Annotated[
         list[str] | None,
-        typer.Option(metavar="NAME", help="This rule; repeat for more.", autocompletion=_names),
+        typer.Option(
+            metavar="NAME[,NAME…]",
+            help="These rules; may be repeated.",
+            autocompletion=_names,
+        ),
     ] = None,
     decision: options.Decision = None,
     ic: options.Ic = None,
@@ -80,7 +84,7 @@ def rules(
     try:
         report = report_on(
             setting,
-            only or None,
+            [name.strip() for names in only for name in names.split(",")] if only else None,
             demands,
             optimum=optimum,
             time_limit=time_limit,

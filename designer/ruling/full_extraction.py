@@ -11,7 +11,7 @@ dwarf the gains they take: their size is shown, and interim participation is all
 
 Source: J. Cremer and R. P. McLean (1988), Full extraction of the surplus in Bayesian and dominant
 strategy auctions, Econometrica 56:1247-1257, Theorem 1 (from memory). Their Theorem 2 asks less
-(no belief in the cone of the others) for Bayesian honesty; no closed form decides that.
+for Bayesian honesty: bayesian_full_extraction.py.
 """
 
 from __future__ import annotations
@@ -68,7 +68,7 @@ def spanning(setting: Setting) -> Refusal | None:
                 "Independent types never meet it: use optimal-auction or "
                 "revenue-greatest-efficient."
                 if independent(setting)
-                else "Ask `designer pose --goal revenue` how much can be had all the same.",
+                else "Use bayesian-full-extraction, which asks less of the beliefs.",
             )
     return None
 
@@ -92,6 +92,15 @@ def bet(setting: Setting, party: int, gain: Amounts) -> Amounts:
     return Amounts(over_all, y.den * gain.den).lowest()
 
 
+def sized(setting: Setting, party: str, bets: Amounts) -> str:
+    """Say how large a party's bets are."""
+    size = Fraction(largest(bets.num), bets.den)
+    if len(text(size)) >= 20:
+        return f"{party} bets up to about {decimal(size)} {setting.money} on the others."
+    beside = "" if size.denominator == 1 else f" (about {decimal(size)})"
+    return f"{party} bets up to {text(size)} {setting.money}{beside} on the others."
+
+
 def build(setting: Setting) -> Built:
     """Build the pivotal rule with the bets that take its gains back."""
     choice = efficient(setting)
@@ -102,11 +111,7 @@ def build(setting: Setting) -> Built:
         rest = others(setting, welfare, i)
         best = best_without(rest)
         bets = bet(setting, i, reached - best - outside(setting, i))
-        size = Fraction(largest(bets.num), bets.den)
-        shown = f"{text(size)} " if len(text(size)) < 20 else ""
-        notes.append(
-            f"{party.name} bets up to {shown}{setting.money} (about {decimal(size)}) on the others."
-        )
+        notes.append(sized(setting, party.name, bets))
         pays.append(best - chosen(rest, choice) + bets)
     return Built(Table(certain(setting, choice), 1, *stacked(pays)), tuple(notes))
 

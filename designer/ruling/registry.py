@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from designer.ruling import (
     bailey_rebate,
+    bayesian_full_extraction,
     cavallo_rebate,
     equal_shares_with_unanimity,
     expected_externality,
@@ -46,6 +47,7 @@ RULES: dict[str, Rule] = {
         posted_price_sale.RULE,
         optimal_auction.RULE,
         full_extraction.RULE,
+        bayesian_full_extraction.RULE,
         partnership_split.RULE,
     )
 }

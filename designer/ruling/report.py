@@ -85,8 +85,8 @@ def rules(
     demands   overrides of the scenario's own demands, for judging and for the optimum
     optimum   whether to pose the scenario as well; `time_limit` and `progress` go to `pose`
 
-    Raises UsageError for a name that is no rule, and for a rule asked for by name whose
-    assumptions fail here (place, found, expected, remedy).
+    Raises UsageError for names that are no rules, and for rules asked for by name whose
+    assumptions fail here, all at once (place, found, expected, remedy).
 
     >>> rules("scenarios/lock-sale.toml", ["posted-price"], optimum=False).results[0].notes
     ('Prices of the deal: Guild 50, Mill -50.',)
@@ -96,20 +96,20 @@ def rules(
 
         setting = read_scenario(setting)
     terms = (demands or Demands()).over(setting)
-    chosen = _chosen(only)
+    chosen = [rule for name, rule in RULES.items() if only is None or name in set(only)]
     tell = progress or _silent
     results: list[RuleResult] = []
-    mistakes: list[Mistake] = []
+    mistakes = _unknown(only or ())
     for step, rule in enumerate(chosen):
         tell(f"building {rule.name}", 0.0, step)
         refusal = rule.applies(setting)
-        if refusal is None:
+        if refusal is None and not mistakes:
             built = rule.build(setting)
             found = judged(setting, built.table, terms)
             results.append(RuleResult(rule, None, found, built.notes))
             continue
         results.append(RuleResult(rule, refusal))
-        if only is not None:
+        if only is not None and refusal is not None:
             mistakes.append(
                 Mistake(f"rule {rule.name}", refusal.found, refusal.needs, refusal.remedy)
             )
@@ -125,18 +125,19 @@ def rules(
     return RulesReport(setting, terms, tuple(results), verdict, beside)
 
 
-def _chosen(only: Sequence[str] | None) -> list[Rule]:
-    if only is None:
-        return list(RULES.values())
-    unknown = sorted(set(only) - set(RULES))
-    if unknown:
-        raise UsageError(
-            [
-                Mistake("rules", repr(name), f"one of {', '.join(RULES)}", "Pick from the list.")
-                for name in unknown
-            ]
+def _unknown(names: Sequence[str]) -> list[Mistake]:
+    """A mistake for every name that is no rule."""
+    from designer.setting.reading import suggestion
+
+    return [
+        Mistake(
+            "rules",
+            repr(name),
+            f"one of {', '.join(RULES)}",
+            suggestion(name, RULES) or "Pick from the list.",
         )
-    return [rule for name, rule in RULES.items() if name in set(only)]
+        for name in sorted(set(names) - set(RULES))
+    ]
 
 
 def _silent(doing: str, seconds: float, steps: int) -> None:

@@ -39,10 +39,19 @@ def ruled(report: RulesReport) -> Page:
     refused = [result for result in report.results if not result.applies]
     if refused:
         page.append(heading("Rules that do not apply here"))
-    for result in refused:
-        page += [paragraph(_title(result)), paragraph(str(result.why_not), 2 * INDENT)]
+    for reason, results in _by_reason(refused).items():
+        titles = ", ".join(_title(result) for result in results)
+        page += [paragraph(titles), paragraph(reason, 2 * INDENT)]
     page.append(caution())
     return page
+
+
+def _by_reason(refused: list[RuleResult]) -> dict[str, list[RuleResult]]:
+    """Rules that fail for the same reason together, so that it is said once."""
+    found: dict[str, list[RuleResult]] = {}
+    for result in refused:
+        found.setdefault(str(result.why_not), []).append(result)
+    return found
 
 
 def _title(result: RuleResult) -> str:

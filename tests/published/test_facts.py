@@ -190,7 +190,7 @@ def test_without_participation_efficiency_and_balance_always_go_together(data: D
     assert settle(data, demands).status == "possible"
 
 
-# -- Cremer and McLean 1988, Econometrica 56:1247-1257, Theorem 2 (from memory)
+# -- Cremer and McLean 1988, Econometrica 56:1247-1257, Theorems 1 and 2 (from memory)
 
 
 @st.composite

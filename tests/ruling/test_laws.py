@@ -9,15 +9,16 @@ from fractions import Fraction
 from hypothesis import HealthCheck, assume, given, settings
 from hypothesis import strategies as st
 
-from designer import Demands, audit, pose
+from designer import Demands, Table, audit, pose
 from designer.ruling import one_way
+from designer.ruling.bayesian_full_extraction import bets, paid_before
 from designer.ruling.deal import deal
 from designer.ruling.kinds import Refusal
 from designer.ruling.profiles import independent
 from designer.ruling.registry import RULES
 from designer.setting.setting import Setting
-from tests.oracles.brute import net_worth
-from tests.ruling.helpers import audit_of, table_of, with_rule
+from tests.oracles.brute import net_worth, outside
+from tests.ruling.helpers import audit_of, expect, table_of, with_rule
 from tests.strategies import small_settings
 
 Property = Callable[[Setting], None]
@@ -208,6 +209,67 @@ def test_bets_take_everything_where_beliefs_span(setting: Setting) -> None:
     found = audit_of("full-extraction", setting)
     assert found.worst["ic-dominant"].violation == 0
     assert all(standing.gain == 0 for standing in found.standings)
+
+
+correlated = small_settings(interdependent=False, compelled=False, correlated=True)
+
+
+@laws(80)
+@given(correlated)
+def test_bets_that_follow_the_report_take_everything_where_any_can(setting: Setting) -> None:
+    """Cremer and McLean 1988, Theorem 2, and its converse for the worths at hand.
+
+    Where the rule applies nobody keeps anything and honesty pays; where it does not, the program
+    with the same decisions finds no table that takes everything.
+    """
+    pivotal = table_of("pivotal", setting)
+    everything = audit(setting, pivotal).decisions.welfare - sum(
+        (
+            setting.probability(p) * (outside(setting, i, p))
+            for p in range(setting.profiles)
+            for i in range(len(setting.parties))
+        ),
+        expect(setting, [designers_worth(setting, pivotal, p) for p in range(setting.profiles)]),
+    )
+    demands = Demands(
+        decision="table", ic="bayesian", ir="interim", balance="none", goal="revenue", tidy="none"
+    )
+    most = pose(with_rule(setting, pivotal), demands).goal_value
+    assert most is not None
+    if RULES["bayesian-full-extraction"].applies(setting) is not None:
+        assert most < everything
+        return
+    assert most == everything
+    found = audit_of("bayesian-full-extraction", setting)
+    assert found.worst["ic-bayesian"].violation == 0
+    assert all(standing.gain == 0 for standing in found.standings)
+    assert found.pot.expected == everything
+
+
+def designers_worth(setting: Setting, table: Table, p: int) -> Fraction:
+    """What the designer herself has from the decision: worth that is no money."""
+    chances = (Fraction(int(x), table.decides_den) for x in table.decides[p])
+    worths = (Fraction(int(w), setting.grain) for w in setting.worth)
+    return sum((x * w for x, w in zip(chances, worths, strict=True)), Fraction(0))
+
+
+@laws(40)
+@given(correlated)
+def test_bets_that_follow_the_report_are_the_smallest(setting: Setting) -> None:
+    """Where beliefs span, the dominant bets would do as well: they are never smaller in squares."""
+    assume(RULES["full-extraction"].applies(setting) is None)
+    choice, paid = paid_before(setting)
+    base = table_of("pivotal", setting)
+    dominant = table_of("full-extraction", setting)
+    for i, amounts in enumerate(paid):
+        mine = bets(setting, i, choice, amounts)
+        for a in range(setting.shape[i]):
+            at = [p for p in range(setting.profiles) if setting.types_at(p)[i] == a]
+            squares = sum((mine.at(p) ** 2 for p in at), Fraction(0))
+            theirs = sum(
+                ((dominant.payment(i, p) - base.payment(i, p)) ** 2 for p in at), Fraction(0)
+            )
+            assert squares <= theirs
 
 
 # -- the search for prices, by brute force

@@ -8,12 +8,14 @@ from __future__ import annotations
 
 from fractions import Fraction
 from math import comb
+from pathlib import Path
 
 import pytest
 
+from designer import pose
 from designer.ruling.registry import RULES
 from designer.ruling.worst_case_linear_rebate import coefficients, share
-from designer.setting.scenario import parse_scenario
+from designer.setting.scenario import parse_scenario, read_scenario
 from tests.published.corpus import Query, entries, queries, setting_of
 from tests.published.families import endpoints, even, midpoints, one_item, partnership, trade
 from tests.ruling.helpers import (
@@ -28,6 +30,7 @@ from tests.ruling.helpers import (
 )
 
 HALF = Fraction(1, 2)
+SCENARIOS = Path(__file__).parents[2] / "scenarios"
 
 
 def named(query: Query) -> str:
@@ -167,6 +170,35 @@ def test_full_extraction_is_the_posed_optimum(query: Query) -> None:
     assert found.holds["ir-interim"]
     assert all(standing.gain == 0 for standing in found.standings)
     assert found.pot.expected == query.value
+
+
+ON_AVERAGE = [
+    query
+    for query in queries()
+    if asks(query, balance="none", goal="revenue", ir="interim", ic="bayesian")
+    and query.demands.decision != "table"
+    and RULES["bayesian-full-extraction"].applies(setting_of(query.instance)) is None
+]
+
+
+@pytest.mark.parametrize("query", ON_AVERAGE, ids=named)
+def test_bayesian_full_extraction_is_the_posed_optimum(query: Query) -> None:
+    """Cremer and McLean 1988, Theorem 2 (from memory): entries U07, A04."""
+    found = audit_of("bayesian-full-extraction", setting_of(query.instance))
+    assert found.holds["ic-bayesian"]
+    assert all(standing.gain == 0 for standing in found.standings)
+    assert found.pot.expected == query.value
+
+
+def test_bets_reach_the_optimum_where_beliefs_do_not_span() -> None:
+    """Three types of one crew, two of the other: rank 2 at most, and still nothing is left."""
+    setting = read_scenario(SCENARIOS / "wreck.toml")
+    assert RULES["full-extraction"].applies(setting) is not None
+    found = audit_of("bayesian-full-extraction", setting)
+    assert found.holds["ic-bayesian"]
+    assert not found.holds["ic-dominant"]
+    assert all(standing.gain == 0 for standing in found.standings)
+    assert found.pot.expected == found.decisions.welfare == pose(setting).goal_value
 
 
 def test_the_example_of_ten_and_a_hundred() -> None:

@@ -21,6 +21,7 @@ SCENARIOS = Path(__file__).parents[2] / "scenarios"
 BREAKWATER = str(SCENARIOS / "breakwater.toml")
 LOCK = str(SCENARIOS / "lock-sale.toml")
 BERTH = str(SCENARIOS / "dawn-berth.toml")
+REEF = str(SCENARIOS / "reef.toml")
 KEYS = [
     "name",
     "applies",
@@ -167,9 +168,27 @@ def test_a_rule_asked_for_by_name_must_apply(capsys: pytest.CaptureFixture[str])
     assert (code, out) == (2, "")
     assert "rule full-extraction: found Norhaven's, of rank 1 for 3 types" in err
     assert "optimal-auction" in err
+    code, out, err = run(capsys, "rules", BREAKWATER, "--only", "pivotl,full-extraction,pivotal")
+    assert (code, out) == (2, "")
+    assert "rules: found 'pivotl'" in err
+    assert "Did you mean 'pivotal'?" in err
+    assert "rule full-extraction: found" in err
     code, out, err = run(capsys, "rules", LOCK, "--only", "guesswork", "--json")
     assert code == 2
     assert json.loads(out)["mistakes"][0]["found"] == "'guesswork'"
+
+
+def test_several_names_in_one_option(capsys: pytest.CaptureFixture[str]) -> None:
+    found = document(capsys, "rules", LOCK, "--only", "posted-price, pivotal", "--only", "groves")
+    assert [entry["name"] for entry in found["rules"]] == ["pivotal", "groves", "posted-price"]
+
+
+def test_rules_that_fail_alike_are_told_why_once(capsys: pytest.CaptureFixture[str]) -> None:
+    """Interdependent worths stop every rule, for one reason."""
+    code, out, _ = run(capsys, "rules", REEF)
+    assert code == 0
+    assert "full-extraction (Cremer and McLean 1988)" in " ".join(out.split())
+    assert out.count("It needs private worths") == 1
 
 
 def test_saved_tables_audit_and_compare(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
