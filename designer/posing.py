@@ -10,11 +10,10 @@ from designer.demands.plain import as_plain
 from designer.demands.terms import Demands, Terms
 from designer.engines.choose import engine_named
 from designer.engines.watch import Progress, Watch
-from designer.proof.document import build
 from designer.proof.recheck import recheck
 from designer.roads.checking import CLAIMS, check
 from designer.roads.registry import choose
-from designer.roads.settled import Settled
+from designer.roads.settled import Settled, build
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
 

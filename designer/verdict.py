@@ -11,8 +11,8 @@ from typing import TYPE_CHECKING, Any
 from designer.demands.terms import Terms
 from designer.program.program import Program
 from designer.proof.derivation import Derivation, derive
+from designer.proof.outcome import GoalResult
 from designer.proof.vector import Vector
-from designer.roads.settled import GoalResult
 from designer.setting.setting import Setting
 from designer.table import OnDemand, Table
 

@@ -13,9 +13,8 @@ from designer.setting.exact import text
 if TYPE_CHECKING:  # numpy stays out of `designer recheck`
     from designer.program.linear import Bound
     from designer.program.program import Axis, Program, Stage
-    from designer.proof.outcome import Tree
-    from designer.roads.settled import GoalResult, Settled
-    from designer.setting.setting import IntArray, Setting
+    from designer.proof.outcome import GoalResult, Tree
+    from designer.setting.setting import IntArray
 
 FORMAT = "designer.proof/1"
 MAX_BYTES = 1 << 30
@@ -43,27 +42,6 @@ class Sparse(Protocol):
 
 
 # -- writing -----------------------------------------------------------------------------
-
-
-def build(setting: Setting, terms: Mapping[str, object], settled: Settled) -> dict[str, Any]:
-    """The proof document of what a road brought home.
-
-    `terms` are the settled terms as plain values. A goal that is not proved is written as
-    open: its value without a certificate. Raises ValueError for an undecided road.
-    """
-    return compose(
-        settled.program,
-        verdict=settled.status,
-        scenario={"title": setting.title, "digest": setting.digest},
-        terms=terms,
-        path=settled.path,
-        goals=settled.goals,
-        primal=settled.primal,
-        farkas=settled.farkas,
-        tree=settled.tree,
-        ray=settled.ray,
-        reduction=settled.reduction,
-    )
 
 
 def compose(

@@ -83,3 +83,26 @@ class Outcome:
     engine: str = ""
     seconds: Mapping[str, float] = field(default_factory=lambda: MappingProxyType({}))
     effort: Mapping[str, int] = field(default_factory=lambda: MappingProxyType({}))
+
+
+@dataclass(frozen=True, eq=False)
+class GoalResult:
+    """One settled goal.
+
+    value   what the table reaches, exact; None if the goal was not settled
+    proved  whether exact arithmetic confirmed that nothing better exists
+    bound   an engine's word on what is best, where `proved` is False
+    dual, tree   the certificate, over the rows of the goal's stage (minimising form)
+    pin     the row that keeps the value in later stages, or None
+    tidy    whether this is the closing tidy stage rather than a goal that was asked for
+    """
+
+    goal: str
+    value: Fraction | None
+    proved: bool
+    bound: Fraction | float | None = None
+    dual: Vector | None = None
+    tree: Tree | None = None
+    pin: int | None = None
+    tidy: bool = False
+    reason: str = ""

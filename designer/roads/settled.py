@@ -2,39 +2,20 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, field
-from fractions import Fraction
-from typing import Literal
+from typing import Any, Literal
 
 from designer.program.program import Program
-from designer.proof.outcome import Tree
+from designer.proof.document import compose
+from designer.proof.outcome import GoalResult, Tree
 from designer.proof.vector import Vector
+from designer.setting.setting import Setting
 from designer.table import OnDemand, Table
 
+__all__ = ["GoalResult", "Settled", "Status", "build"]
+
 Status = Literal["possible", "impossible", "unbounded", "undecided"]
-
-
-@dataclass(frozen=True, eq=False)
-class GoalResult:
-    """One settled goal.
-
-    value   what the table reaches, exact; None if the goal was not settled
-    proved  whether exact arithmetic confirmed that nothing better exists
-    bound   an engine's word on what is best, where `proved` is False
-    dual, tree   the certificate, over the rows of the goal's stage (minimising form)
-    pin     the row that keeps the value in later stages, or None
-    tidy    whether this is the closing tidy stage rather than a goal that was asked for
-    """
-
-    goal: str
-    value: Fraction | None
-    proved: bool
-    bound: Fraction | float | None = None
-    dual: Vector | None = None
-    tree: Tree | None = None
-    pin: int | None = None
-    tidy: bool = False
-    reason: str = ""
 
 
 @dataclass(frozen=True, eq=False)
@@ -62,3 +43,24 @@ class Settled:
     reason: str = ""
     engine: str = ""
     seconds: dict[str, float] = field(default_factory=dict)
+
+
+def build(setting: Setting, terms: Mapping[str, object], settled: Settled) -> dict[str, Any]:
+    """The proof document of what a road brought home.
+
+    `terms` are the settled terms as plain values. A goal that is not proved is written as
+    open: its value without a certificate. Raises ValueError for an undecided road.
+    """
+    return compose(
+        settled.program,
+        verdict=settled.status,
+        scenario={"title": setting.title, "digest": setting.digest},
+        terms=terms,
+        path=settled.path,
+        goals=settled.goals,
+        primal=settled.primal,
+        farkas=settled.farkas,
+        tree=settled.tree,
+        ray=settled.ray,
+        reduction=settled.reduction,
+    )

@@ -7,7 +7,7 @@ from fractions import Fraction
 
 from designer.auditing.outcome import Pot, Standing
 from designer.demands.registry import GOALS
-from designer.roads.settled import GoalResult
+from designer.proof.outcome import GoalResult
 from designer.setting.setting import Setting
 from designer.table import OnDemand, Table
 from designer.verdict import Verdict

@@ -27,10 +27,9 @@ from designer.proof.document import (
     plain_tree,
     plain_vector,
 )
-from designer.proof.outcome import Branch, Leaf
+from designer.proof.outcome import Branch, GoalResult, Leaf
 from designer.proof.recheck import recheck
 from designer.proof.vector import Vector
-from designer.roads.settled import GoalResult
 from designer.setting.scenario import parse_scenario
 from designer.setting.setting import IntArray
 from tests.attacks import handmade

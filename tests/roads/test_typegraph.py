@@ -20,12 +20,11 @@ from designer.engines.highs import HIGHS
 from designer.engines.watch import Watch
 from designer.posing import pose_terms
 from designer.proof.compare import same_program
-from designer.proof.document import build
 from designer.proof.recheck import recheck
 from designer.rebuilding import rebuild
 from designer.roads.product import as_independent
 from designer.roads.registry import choose
-from designer.roads.settled import Settled
+from designer.roads.settled import Settled, build
 from designer.roads.typegraph import walk
 from designer.roads.typegraph.check import check
 from designer.roads.typegraph.decided import decide
