@@ -4,57 +4,94 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Sequence
+from dataclasses import dataclass
 from fractions import Fraction
+from typing import TYPE_CHECKING
+
+from rich.text import Text
 
 from designer.views.amounts import approximate
+from designer.views.page import INDENT
+
+if TYPE_CHECKING:
+    from rich.console import Console, ConsoleOptions, RenderResult
 
 WIDE, HIGH = 56, 12
-"""Columns and rows of the plotting area."""
+"""Columns and rows of the plotting area where there is room."""
+STRAIGHT = 5
+"""Rows of a chart that shows one straight line."""
+NARROW = 16
+"""Columns below which no chart is drawn."""
 CORNER, LINE = "o", "."
+MARKED = 12
+"""Corners up to which each is marked."""
+WORD = "can be had"
+
+Corners = Sequence[tuple[Fraction, ...]]
 
 
-def chart(
-    corners: Sequence[tuple[Fraction, ...]],
-    x: str,
-    y: str,
-    wide: int = WIDE,
-    high: int = HIGH,
-) -> list[str]:
+@dataclass(frozen=True)
+class Chart:
+    """The chart of a frontier, as wide as the screen lets it be; for rich to print."""
+
+    corners: Corners
+    x: str
+    y: str
+
+    def __rich_console__(self, console: Console, options: ConsoleOptions) -> RenderResult:
+        """A blank line and the chart, or nothing where it would say nothing."""
+        high = HIGH if len(self.corners) > 2 else STRAIGHT
+        labels = max((len(approximate(corner[1], 4)) for corner in self.corners), default=0)
+        wide = min(WIDE, options.max_width - INDENT - labels - 2)
+        lines = chart(self.corners, self.x, self.y, wide, high)
+        if lines:
+            yield Text("")
+        for line in lines:
+            yield Text(" " * INDENT + line, no_wrap=True)
+
+
+def chart(corners: Corners, x: str, y: str, wide: int = WIDE, high: int = HIGH) -> list[str]:
     r"""The lines of a chart: y up, x to the right, both from 0; none if there is no extent.
 
-    What lies on the line or above and to the right of it can be had.
+    What lies on the line, or above and to the right of it, can be had.
 
-    >>> print("\n".join(chart([(0, 2), (4, 0)], "money", "floor", 9, 3)))   # doctest: +SKIP
+    >>> half = Fraction(1, 2)
+    >>> print("\n".join(chart([(0 * half, half), (3 * half, 0 * half)], "money", "floor", 16, 3)))
+        floor
+    0.5 |o...
+        |    ........
+        |            ...o
+      0 +----------------
+         0            1.5
+                    money
     """
     most_x = max((corner[0] for corner in corners), default=Fraction(0))
     most_y = max((corner[1] for corner in corners), default=Fraction(0))
-    if most_x <= 0 or most_y <= 0 or min(min(corner) for corner in corners) < 0:
+    if wide < NARROW or most_x <= 0 or most_y <= 0 or min(map(min, corners)) < 0:
         return []
     cells = [[" "] * wide for _ in range(high)]
-    places = [
-        (int(cx * (wide - 1) / most_x + Fraction(1, 2)), _row(cy, most_y, high))
-        for cx, cy in corners
-    ]
+    places = [(_place(cx, most_x, wide), high - 1 - _place(cy, most_y, high)) for cx, cy in corners]
     for (left, top), (right, bottom) in itertools.pairwise(places):
         _draw(cells, left, top, right, bottom)
-    for column, row in places:
+    for column, row in places if len(places) <= MARKED else [places[0], places[-1]]:
         cells[row][column] = CORNER
-    _write(cells, "can be had")
-    labels = [approximate(most_y, 4), "0"]
-    margin = max(map(len, labels))
+    _write(cells)
+    labels = [approximate(most_y, 4), *[""] * (high - 1)]
+    margin = len(labels[0])
     lines = [f"{'':{margin}} {y}"]
-    for row, line in enumerate(cells):
-        label = labels[0] if row == 0 else ""
-        lines.append(f"{label:>{margin}} |{''.join(line)}".rstrip())
+    lines += [
+        f"{label:>{margin}} |{''.join(line)}".rstrip()
+        for label, line in zip(labels, cells, strict=True)
+    ]
     lines.append(f"{'0':>{margin}} +{'-' * wide}")
-    end = approximate(most_x, 4)
-    lines.append(f"{'':{margin}}  0{end:>{wide - 1}}")
+    lines.append(f"{'':{margin}}  0{approximate(most_x, 4):>{wide - 1}}")
     lines.append(f"{'':{margin}}  {x:>{wide}}")
     return lines
 
 
-def _row(value: Fraction, most: Fraction, high: int) -> int:
-    return high - 1 - int(value * (high - 1) / most + Fraction(1, 2))
+def _place(value: Fraction, most: Fraction, size: int) -> int:
+    """The nearest of `size` places from 0 to `most`."""
+    return int(value * (size - 1) / most + Fraction(1, 2))
 
 
 def _draw(cells: list[list[str]], left: int, top: int, right: int, bottom: int) -> None:
@@ -66,10 +103,10 @@ def _draw(cells: list[list[str]], left: int, top: int, right: int, bottom: int) 
         cells[row][column] = LINE
 
 
-def _write(cells: list[list[str]], text: str) -> None:
+def _write(cells: list[list[str]]) -> None:
     """A word in the upper right, where there is room for it."""
-    start = len(cells[0]) - len(text) - 1
+    start = len(cells[0]) - len(WORD) - 1
     for line in cells[1:4]:
         if start > 0 and all(cell == " " for cell in line[start - 1 :]):
-            line[start : start + len(text)] = text
+            line[start : start + len(WORD)] = WORD
             return

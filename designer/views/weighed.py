@@ -5,11 +5,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from fractions import Fraction
 
-from rich.padding import Padding
-from rich.text import Text
-
 from designer.views.amounts import amount, cell, counted
-from designer.views.chart import HIGH, chart
+from designer.views.chart import Chart
 from designer.views.grid import Column, Grid
 from designer.views.page import INDENT, Page, caution, heading, listed, paragraph
 from designer.views.posed import posed
@@ -33,8 +30,6 @@ SETS = 12
 """Collisions, and possible sets, that are listed."""
 CORNERS = 8
 """Corners of one frontier that are listed."""
-STRAIGHT = 5
-"""Rows of a chart that shows one straight line."""
 RENTS = 12
 """Lines of the ledger on single types that are listed one by one."""
 STOPPED = {
@@ -77,12 +72,12 @@ def _missing(found: Tradeoff) -> str:
 def _collisions(found: Tradeoff, most: int) -> Page:
     if not found.sets:
         return []
-    setting, names = found.setting, found.groups
+    names = found.groups
     page: Page = [heading("What collides")]
     collisions, possible = found.collisions, found.possible_sets
     for one in collisions[:most]:
         lead = "All of these together" if len(collisions) == 1 else "Together impossible"
-        page.append(paragraph(f"{lead}: {groups(one.groups, setting, names)}.{_doubt(one.proved)}"))
+        page.append(paragraph(f"{lead}: {groups(one.groups, found)}.{_doubt(one.proved)}"))
     page += _more(len(collisions) - most, "collision")
     gives = [
         [name for name in names if name not in one.groups] for one in possible if one.proved
@@ -95,14 +90,14 @@ def _collisions(found: Tradeoff, most: int) -> Page:
         )
     several = [give for give in gives if len(give) > 1]
     for give in several[:most]:
-        page.append(paragraph(f"Or drop together: {groups(give, setting, names)}."))
+        page.append(paragraph(f"Or drop together: {groups(give, found)}."))
     page += _more(len(several) - most, "way to give way")
     return page
 
 
 def groups_apart(names: Sequence[str], found: Tradeoff) -> str:
     """Groups as alternatives, one by one."""
-    return joined([groups([name], found.setting, found.groups) for name in names], "or")
+    return joined([groups([name], found) for name in names], "or")
 
 
 def _more(left: int, noun: str) -> Page:
@@ -249,11 +244,7 @@ def _frontiers(found: Tradeoff, most: int, plots: bool) -> Page:
         page.append(heading(f"{_axis(one.x)} against {CRITERIA[one.y]}, in {money}"))
         page += _frontier(one, most)
         if plots and len(one.corners) > 1:
-            high = HIGH if len(one.corners) > 2 else STRAIGHT
-            lines = chart(one.corners, CRITERIA[one.x], CRITERIA[one.y], high=high)
-            if lines:
-                drawn = Text("\n".join(lines), no_wrap=True)
-                page.append(Padding(drawn, (1, 0, 0, INDENT)))
+            page.append(Chart(one.corners, CRITERIA[one.x], CRITERIA[one.y]))
     if found.corners is not None:
         page += _triples(found.corners, most, money)
     return page
@@ -279,9 +270,9 @@ def _frontier(one: Frontier, most: int) -> Page:
         Column("one more unit saves", right=True),
     ]
     lines = [[cell(x), cell(y), _saves(one, place)] for place, (x, y) in enumerate(one.corners)]
-    shown = lines if len(lines) <= most + 2 else [*lines[: most - 1], lines[-1]]
+    shown = [lines[place] for place in _spread(len(lines), most)]
     stacked = [(f"{line[0]}, {line[1]}:", f"one more unit saves {line[2]}") for line in shown]
-    page: Page = [Grid(columns, shown, stacked)]
+    page: Page = [Grid(columns, shown, stacked)] if shown else []
     notes = [f"{counted(len(one.corners), 'corner')}"]
     if len(shown) < len(lines):
         notes[0] += f", {len(lines) - len(shown):,} between not shown (--rows, --save)"
@@ -289,6 +280,15 @@ def _frontier(one: Frontier, most: int) -> Page:
         notes.append("~ marks a rounded number")
     notes.append("exact, complete, proved" if one.complete and one.proved else _weak(one))
     return [*page, paragraph("; ".join(notes) + ".")]
+
+
+def _spread(count: int, most: int) -> list[int]:
+    """Places of at most so many of `count`, evenly spread, both ends among them; 0: none."""
+    if count <= most + 2 and most:
+        return list(range(count))
+    if most < 2:
+        return []
+    return [place * (count - 1) // (most - 1) for place in range(most)]
 
 
 def _weak(one: Frontier | CornerList) -> str:
@@ -310,15 +310,17 @@ def _triples(found: CornerList, most: int, money: str) -> Page:
     page: Page = [heading(f"{_axis(found.criteria[0])}, {names[1]} and {names[2]}, in {money}")]
     if not found.corners:
         return [*page, paragraph(f"{found.reason or 'nothing was found'}.")]
-    shown = found.corners if len(found.corners) <= most + 2 else found.corners[:most]
+    shown = [found.corners[place] for place in _spread(len(found.corners), most)]
     columns = [Column(name, right=True) for name in names]
     lines = [[cell(part) for part in corner] for corner in shown]
     stacked = [(", ".join(line), "") for line in lines]
     notes = [counted(len(found.corners), "corner")]
     if len(shown) < len(found.corners):
-        notes[0] += f", the first {len(shown)} shown (--rows, --save)"
+        notes[0] += f", {len(found.corners) - len(shown):,} between not shown (--rows, --save)"
     notes.append("exact, complete, proved" if found.complete and found.proved else _weak(found))
-    return [*page, Grid(columns, lines, stacked), paragraph("; ".join(notes) + ".")]
+    if shown:
+        page.append(Grid(columns, lines, stacked))
+    return [*page, paragraph("; ".join(notes) + ".")]
 
 
 # -- the reverse -----------------------------------------------------------------------------

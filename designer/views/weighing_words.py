@@ -5,11 +5,12 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from fractions import Fraction
 
-from designer.setting.setting import Setting
+from designer.setting.setting import Setting, Side
 from designer.views.amounts import amount, cell, counted
 from designer.weighing.groups import CLAUSES
 from designer.weighing.prices import Price
 from designer.weighing.room import Room
+from designer.weighing.tradeoff import Tradeoff
 
 LIMITS = {
     "pays_at_most": "the cap on payments",
@@ -63,12 +64,8 @@ CASES = 4
 """Changed cases of a second best that are written out."""
 
 
-def group(name: str, setting: Setting) -> str:
-    """A demand group in words.
-
-    >>> group("ic:Suth", setting)                                       # doctest: +SKIP
-    'honesty of Suth'
-    """
+def group(name: str, setting: Setting, side: Side) -> str:
+    """A demand group in words; `side` holds the side demands by number."""
     kind, _, key = name.partition(":")
     if kind == "ic":
         return f"honesty of {key}"
@@ -77,21 +74,24 @@ def group(name: str, setting: Setting) -> str:
     if kind == "limit" or key in LIMITS:
         return LIMITS[key]
     if kind == "side":
-        chance = int(key.removeprefix("chance[").removesuffix("]"))
-        return f"side chance {chance + 1}"
+        chance = side.chances[int(key.removeprefix("chance[").removesuffix("]"))]
+        party = setting.parties[chance.party]
+        kind, option = party.types[chance.type].label, setting.options[chance.option]
+        return f"the chance of {option} for {party.name} being {kind}"
     return {"decision": "the decision", "balance": "the pot"}.get(name, name)
 
 
-def groups(names: Sequence[str], setting: Setting, all_names: Sequence[str]) -> str:
+def groups(names: Sequence[str], found: Tradeoff) -> str:
     """Several groups in words, with 'everyone's honesty' where all of a kind are there."""
     words, left = [], list(names)
     for kind, everyone in (("ic:", "everyone's honesty"), ("ir:", "everyone taking part")):
-        every = [name for name in all_names if name.startswith(kind)]
+        every = [name for name in found.groups if name.startswith(kind)]
         if len(every) > 1 and set(every) <= set(left):
             place = left.index(every[0])
             left = [name for name in left if name not in every[1:]]
             left[place] = everyone
-    words = [name if " " in name else group(name, setting) for name in left]
+    known = set(found.groups)
+    words = [group(n, found.setting, found.terms.side) if n in known else n for n in left]
     return joined(words, "and")
 
 
