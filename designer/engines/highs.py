@@ -176,6 +176,7 @@ class Highs:
         model = quiet_highs()
         if not load(model, program):
             return Report("failed", self.name, message="the model was refused")
+        quiet_highs().run()  # starts HiGHS's threads, without which its crossover crashes
         point = highspy.HighsSolution()
         point.col_value = np.clip(program.scaled(report.x), program.col_lo, program.col_hi).tolist()
         point.value_valid = True

@@ -49,6 +49,17 @@ def test_nothing_heavy_is_imported(words: tuple[str, ...], absent: tuple[str, ..
     assert not loaded & set(absent)
 
 
+@pytest.mark.parametrize("engine", ["pulp:PULP_CBC_CMD", "pulp:HiGHS"])
+def test_another_engine_in_a_fresh_process(engine: str) -> None:
+    """HiGHS makes the corner of an engine without bases before it has solved anything."""
+    done = spawn("pose", "scenarios/reef.toml", "--engine", engine, "--json")
+    assert (done.code, done.err) == (0, "")
+    verdict = json.loads(done.out)
+    assert verdict["proved"]
+    assert verdict["goal"]["value"] == "165/4"
+    assert verdict["engine"].startswith(engine)
+
+
 def test_the_recheck_runs_without_any_engine() -> None:
     code = (
         "import sys\n"
