@@ -172,14 +172,15 @@ def test_second_best_provision(parties: int, share: Fraction) -> None:
     assert built == chance
 
 
-@pytest.mark.parametrize("tag", ["c1over4_n20_prob", "c2over5_n20_prob"])
-def test_second_best_provision_among_twenty(tag: str) -> None:
-    """2**20 profiles in interim quantities; with a balanced pot payments give the chance away."""
+@pytest.mark.parametrize("tag", stored("G01"))
+def test_second_best_provision_among_many(tag: str) -> None:
+    """Up to 2**100 profiles in interim quantities; a balanced pot's payments tell the chance."""
     share = Fraction(1, 4) if "1over4" in tag else Fraction(2, 5)
-    verdict = settle(project(20, share), SECOND_BEST, "interim")
-    assert verdict.goal_value == provision(20, share)[0]
+    parties = int(tag.split("_")[1].removeprefix("n"))
+    verdict = settle(project(parties, share), SECOND_BEST, "interim")
+    assert verdict.goal_value == provision(parties, share)[0]
     paid = sum((s.probability * s.pays for s in verdict.standings), Fraction(0))
-    assert paid / (20 * share) == stored("G01")[tag]
+    assert paid / (parties * share) == stored("G01")[tag]
 
 
 # -- bilateral trade: sources as in entries B02, B05, B09 and B12
