@@ -238,7 +238,7 @@ def lines(draw: st.DrawFn) -> tuple[Setting, Terms]:
     balances = ["ex-ante", *(["ex-post"] if count > 1 else [])]
     balances += ["none"] if goal != "outside-money" else []
     terms = Terms(
-        decision="randomized",
+        decision=draw(st.sampled_from(("randomized", "randomized", "efficient"))),
         balance=draw(st.sampled_from(balances)),
         budget=draw(st.sampled_from(("exact", "no-deficit"))),
         goals=(goal,),

@@ -22,6 +22,8 @@ QUICK = 0.01
 """Seconds below which the two general ways are taken without looking further."""
 SLICED = 0.5
 """Seconds up to which counts are split by the lead party's types."""
+CELLS = 50_000
+"""Numbers that the split counts of one rule may have."""
 
 
 class TooMany(Stopped):
@@ -80,7 +82,9 @@ def tied(setting: Setting, rule: Rule, counts: Counts, watch: Watch) -> bool:
 def lead_party(setting: Setting) -> int | None:
     """The party whose types split the counts; None where split counts would take long."""
     lead = setting.shape.index(max(setting.shape))
-    return lead if min(blocks.work(setting), halves.work(setting, lead)) <= SLICED else None
+    cells = setting.shape[lead] * sum(setting.shape) * len(setting.options)
+    quick = min(blocks.work(setting), halves.work(setting, lead)) <= SLICED
+    return lead if quick and cells <= CELLS else None
 
 
 def too_many(setting: Setting, decision: str) -> bool:
@@ -89,6 +93,5 @@ def too_many(setting: Setting, decision: str) -> bool:
         return False
     efficient = Rule((welfare_index(setting),))
     ways = [blocks.work(setting), halves.work(setting, None), items.work(setting, efficient)]
-    if decision == "efficient":
-        ways.append(sums.work(setting, efficient))
+    ways.append(sums.work(setting, efficient))
     return min(ways) > MOST

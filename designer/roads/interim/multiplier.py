@@ -1,4 +1,4 @@
-"""One-dimensional types, a free rule and a known worst-off type: one multiplier decides.
+"""One-dimensional types and a known worst-off type: one multiplier decides.
 
 alpha * welfare + pi * (the largest pot that honesty and participation leave) is maximised
 profile by profile: by the option k with the largest sum over parties of
@@ -8,7 +8,8 @@ profile by profile: by the option k with the largest sum over parties of
 less (alpha + pi) outlay(k), plus alpha worth(k). Here z_i is the virtual type (Myerson 1981) and
 zbar_i its ironing, the slopes of the greatest convex minorant of its sums. For welfare under
 a balance demand (alpha, pi) = (1, mu), and the best mu is where the lines of two rules cross:
-found by intersecting lines, in rationals. The multipliers of lie, participation and balance
+found by intersecting lines, in rationals. Where efficiency is demanded, the pot's weights
+break ties. The multipliers of lie, participation and balance
 rows follow in closed form; `certificate.py` writes them down.
 """
 
@@ -25,7 +26,7 @@ import numpy.typing as npt
 
 from designer.demands.terms import Terms
 from designer.roads.interim.lies import Line, line
-from designer.roads.interim.rule import Counts, Index, Listed, Rule
+from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
 from designer.setting.setting import IntArray, Party, Setting
 
 GOALS = ("any", "welfare", "revenue", "outside-money")
@@ -75,7 +76,8 @@ class Optimum:
 def sides(setting: Setting, terms: Terms) -> tuple[Side, ...] | None:
     """Every party's line and the direction of its lies, if one multiplier decides; else None."""
     goal, side = terms.goals[0], terms.side
-    asked = (terms.decision, terms.ic, terms.ir) == ("randomized", "bayesian", "interim")
+    free = terms.decision in ("randomized", "efficient")
+    asked = free and (terms.ic, terms.ir) == ("bayesian", "interim")
     floors = side.welfare_at_least is None and side.revenue_at_least is None
     if not asked or goal not in GOALS or side.chances or not floors:
         return None
@@ -113,14 +115,14 @@ def _order(party: Party, own: Line) -> tuple[int, ...] | None:
     return None
 
 
-def flow(side: Side, alpha: Fraction, pi: Fraction) -> Flow:
-    """The lies' multipliers and the ironed virtual types.
+def flow(side: Side, alpha: Fraction, pi: Fraction, pooled: bool = True) -> Flow:
+    """The lies' multipliers and the ironed virtual types (not `pooled`: before ironing).
 
     Every type passes pi times its probability on to the next worse-off type, which it could
     claim to be; what it would gain there counts against the decisions taken there.
     """
     theta, weights, total = side.line.theta, side.party.weights, sum(side.party.weights)
-    virtual, raw, unit = _virtual(side, alpha, pi)
+    virtual, raw, unit = _virtual(side, alpha, pi, pooled)
     lies: dict[tuple[int, int], Fraction] = {}
     passing = 0
     for a, b in pairwise(side.order):
@@ -137,7 +139,9 @@ def flow(side: Side, alpha: Fraction, pi: Fraction) -> Flow:
     return Flow({pair: value for pair, value in lies.items() if value}, tuple(virtual))
 
 
-def _virtual(side: Side, alpha: Fraction, pi: Fraction) -> tuple[list[Fraction], list[int], int]:
+def _virtual(
+    side: Side, alpha: Fraction, pi: Fraction, pooled: bool
+) -> tuple[list[Fraction], list[int], int]:
     """Ironed virtual types; and before ironing, as integers over a unit."""
     weights = side.party.weights
     den, scale = math.lcm(alpha.denominator, pi.denominator), math.lcm(*weights)
@@ -149,6 +153,8 @@ def _virtual(side: Side, alpha: Fraction, pi: Fraction) -> tuple[list[Fraction],
         passing += weights[a]
         raw[b] -= push * passing * (theta[a] - theta[b]) * (scale // weights[b])
     unit = den * scale
+    if not pooled:
+        return [Fraction(value, unit) for value in raw], raw, unit
     pools: list[tuple[int, int, list[int]]] = []
     for a in side.line.order:
         mass, total, members = weights[a], raw[a] * weights[a], [a]
@@ -165,10 +171,20 @@ def _virtual(side: Side, alpha: Fraction, pi: Fraction) -> tuple[list[Fraction],
     return virtual, raw, unit
 
 
-def rule_at(setting: Setting, found: tuple[Side, ...], alpha: Fraction, pi: Fraction) -> Rule:
-    """The rule that is best at two weights."""
+def rule_at(
+    setting: Setting,
+    found: tuple[Side, ...],
+    alpha: Fraction,
+    pi: Fraction,
+    first: tuple[Index, ...] = (),
+) -> Rule:
+    """The rule that is best at two weights, among those that start with some indices.
+
+    Efficient rules decide no less for a higher type however they break ties: nothing is to be
+    ironed then.
+    """
     both = alpha + pi
-    ironed = [_virtual(side, alpha, pi)[0] for side in found]
+    ironed = [_virtual(side, alpha, pi, not first)[0] for side in found]
     den = math.lcm(
         alpha.denominator,
         pi.denominator,
@@ -184,7 +200,7 @@ def rule_at(setting: Setting, found: tuple[Side, ...], alpha: Fraction, pi: Frac
         value = side.party.value.astype(object) * scale
         tables.append(value + np.multiply.outer(np.array(shift, dtype=object), side.line.slope))
     worth, outlay = setting.worth.astype(object), setting.outlay.astype(object)
-    return Rule((Index(tuple(tables), worth * int(alpha * den) - outlay * scale),))
+    return Rule((*first, Index(tuple(tables), worth * int(alpha * den) - outlay * scale)))
 
 
 def rough_rule_at(setting: Setting, found: tuple[Side, ...], mu: float) -> Rule:
@@ -317,10 +333,11 @@ def optimum(
 ) -> Optimum:
     """The best mixture and the weights that prove it."""
     zero, one = Fraction(0), Fraction(1)
+    first = (welfare_index(setting),) if terms.decision == "efficient" else ()
     gift = terms.shortfall * len(found)
 
     def at(alpha: Fraction, pi: Fraction) -> Valued:
-        rule = rule_at(setting, found, alpha, pi)
+        rule = rule_at(setting, found, alpha, pi, first)
         counts = count(rule)
         welfare, pot = values(setting, found, counts)
         return Listed(rule, counts), welfare, pot + gift
@@ -332,17 +349,19 @@ def optimum(
         pot: Fraction,
         possible: bool = True,
     ) -> Optimum:
-        flows = tuple(flow(side, alpha, pi) for side in found)
+        flows = tuple(flow(side, alpha, pi, not first) for side in found)
         return Optimum(shares, alpha, pi, pot, flows, possible)
 
     goal, bounded = terms.goals[0], terms.balance != "none"
     wanted = -terms.subsidy
-    if goal in ("welfare", "any"):
+    if goal in ("welfare", "any") and not first:
         low = at(one, zero)
         if not bounded or low[2] >= wanted:
             return ended(((one, low[0]),), one, zero, low[2])
     high = at(zero, one)
     enough = not bounded or goal == "outside-money" or high[2] >= wanted
+    if first and enough and goal in ("welfare", "any"):
+        return ended(((one, high[0]),), one, zero, high[2])
     if goal != "welfare" or not enough:
         return ended(((one, high[0]),), zero, one, high[2], enough)
     steered = _steered(setting, found, count, low, high, wanted, gift)

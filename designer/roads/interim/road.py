@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import replace
 from fractions import Fraction
 
@@ -24,7 +24,7 @@ from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
 from designer.roads.interim.certificate import outcome_of
-from designer.roads.interim.counting import lead_party, tied, too_many
+from designer.roads.interim.counting import TooMany, lead_party, tied, too_many
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.lies import broken, first_lies, with_more
 from designer.roads.interim.master import Master, Prices, averaged, exact_prices, rule_for
@@ -37,7 +37,7 @@ from designer.roads.settled import GoalResult, Settled, Status
 from designer.setting.setting import Setting
 
 GOALS = ("any", "outside-money", "revenue", "welfare", "parties", "floor", "margin", "blend")
-TABLE_UP_TO = 200_000
+TABLE_UP_TO = 10_000
 """Profiles up to which the whole table is made at once."""
 
 
@@ -121,6 +121,14 @@ class _Walk:
             self.only = True
             self._list(Rule(()))
             return None
+        found = sides(setting, self.terms)
+        if found is not None:
+            with suppress(TooMany):
+                best = optimum(setting, self.terms, found, master.count)
+                columns = [master.add(listed)[0] for _, listed in best.shares]
+                draft, program = master.program()
+                outcome = outcome_of(setting, self.terms, found, best, draft, program)
+                return draft, program, outcome, columns
         if self.terms.decision == "efficient":
             rule = Rule(master.first())
             counts = master.count(rule)
@@ -131,13 +139,6 @@ class _Walk:
             master.lead = lead_party(setting)
             self._list(rule)
             return None
-        found = sides(setting, self.terms)
-        if found is not None:
-            best = optimum(setting, self.terms, found, master.count)
-            columns = [master.add(listed)[0] for _, listed in best.shares]
-            draft, program = master.program()
-            outcome = outcome_of(setting, self.terms, found, best, draft, program)
-            return draft, program, outcome, columns
         master.lead = lead_party(setting)
         options = len(setting.options)
         nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in setting.shape)

@@ -27,8 +27,15 @@ Ints = npt.NDArray[np.int64]
 
 def span(setting: Setting, rule: Rule) -> int:
     """How many different sums there may be: the length of the longest array."""
-    index = additive(rule)
-    return 1 + sum(int(t[:, 1].max()) - int(t[:, 1].min()) for t in index.parties)
+    columns, _ = _steps(additive(rule))
+    return 1 + sum(max(column) - min(column) for column in columns)
+
+
+def _steps(index: Additive) -> tuple[list[list[int]], int]:
+    """Every party's d_i in common steps, and what their sum must exceed in such steps."""
+    columns = [[int(d) for d in table[:, 1]] for table in index.parties]
+    step = math.gcd(*(d for column in columns for d in column)) or 1
+    return [[d // step for d in column] for column in columns], -int(index.options[1]) // step
 
 
 def work(setting: Setting, rule: Rule) -> float:
@@ -46,7 +53,11 @@ def count(setting: Setting, rule: Rule, watch: Watch) -> Counts:
     """The exact counts of a rule, in one slice."""
     index = additive(rule)
     primes = _primes(setting.total_weight)
-    parts = [_Sums.of(index, setting, i) for i in range(len(setting.parties))]
+    columns, least = _steps(index)
+    parts = [
+        _Sums.of(column, party.weights)
+        for column, party in zip(columns, setting.parties, strict=True)
+    ]
     before = [_Sums.nothing(len(primes))]
     for i, part in enumerate(parts):
         watch.tell(f"adding the sums of {len(parts)} parties", i)
@@ -56,10 +67,7 @@ def count(setting: Setting, rule: Rule, watch: Watch) -> Counts:
     for i in reversed(range(len(parts))):
         watch.check()
         others = before[i]
-        taken = [
-            _above(others, after, -int(index.options[1]) - int(d), primes)
-            for d in index.parties[i][:, 1]
-        ]
+        taken = [_above(others, after, least - d, primes) for d in columns[i]]
         table = np.zeros((setting.shape[i], 2), dtype=object)
         party = setting.parties[i]
         each = setting.total_weight // sum(party.weights)
@@ -86,10 +94,9 @@ class _Sums:
         return _Sums(0, np.ones((primes, 1), dtype=np.int64))
 
     @staticmethod
-    def of(index: Additive, setting: Setting, party: int) -> _Sums:
-        column = [int(d) for d in index.parties[party][:, 1]]
+    def of(column: list[int], weights: tuple[int, ...]) -> _Sums:
         merged: dict[int, int] = {}
-        for d, weight in zip(column, setting.parties[party].weights, strict=True):
+        for d, weight in zip(column, weights, strict=True):
             merged[d] = merged.get(d, 0) + weight
         return _Sums(min(column), np.zeros((0, 0), dtype=np.int64), tuple(sorted(merged.items())))
 
