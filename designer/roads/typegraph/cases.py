@@ -37,6 +37,14 @@ class Cases:
     takes: tuple[tuple[int, int], ...] = ()
     pots: tuple[int, ...] = ()
 
+    def and_also(self, more: Cases) -> Cases:
+        """These rows and more, each once."""
+        return Cases(
+            tuple(sorted({*self.lies, *more.lies})),
+            tuple(sorted({*self.takes, *more.takes})),
+            tuple(sorted({*self.pots, *more.pots})),
+        )
+
     def profiles(self) -> list[int]:
         """Every profile that some row mentions."""
         found = {p for _, true, told in self.lies for p in (true, told)}

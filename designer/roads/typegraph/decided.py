@@ -35,6 +35,8 @@ class Decided:
     tied     int, shape (M,): the tied profiles, ascending
     torn     bool, shape (M, K): the options that are efficient there
     choices  int, shape (M,): the option taken there
+    kinds    int, shape (P - K, 1 + K): behind the palette's entries for ties, the option taken
+             and which are efficient
     """
 
     palette: IntArray
@@ -43,6 +45,7 @@ class Decided:
     tied: Indices
     torn: Mask
     choices: Indices
+    kinds: Indices
 
     def choosing(self, choices: IntArray) -> Decided:
         """The same rule with other choices at the tied profiles.
@@ -55,14 +58,12 @@ class Decided:
         if not len(rows):
             return self
         options = self.torn.shape[1]
-        kinds, place = np.unique(
-            np.column_stack([choices, self.torn]).astype(np.int64), axis=0, return_inverse=True
-        )
+        kinds, place = distinct(np.column_stack([choices, self.torn]).astype(np.int64), options + 1)
         certain = np.eye(options, dtype=np.int64)
         at = self.at.astype(np.min_scalar_type(options + len(kinds)))
         at[self.tied] = options + place.ravel()
         palette = np.concatenate([certain, certain[kinds[:, 0]]])
-        return Decided(palette, 1, at, self.tied, self.torn, choices.astype(np.int64))
+        return Decided(palette, 1, at, self.tied, self.torn, choices.astype(np.int64), kinds)
 
     def leaning(self, part: int) -> Decided:
         """One part in `part` of every choice at a tie given to the other options there.
@@ -72,16 +73,16 @@ class Decided:
         multipliers can prove a choice best.
         """
         options = self.torn.shape[1]
-        kinds, first = np.unique(self.at[self.tied], return_index=True)
-        counts = self.torn[first].sum(axis=1).astype(np.int64) - 1
+        torn = self.kinds[:, 1:]
+        counts = torn.sum(axis=1) - 1
         shared = math.lcm(*(int(count) for count in counts))
         den = part * shared
         palette = self.palette.astype(object) * den
-        for kind, row, count in zip(kinds, first, counts, strict=True):
-            others = np.flatnonzero(self.torn[row])
-            palette[kind] = np.zeros(options, dtype=object)
-            palette[kind, others] = shared // int(count)
-            palette[kind, int(self.choices[row])] = den - shared
+        for j, count in enumerate(counts):
+            row = np.zeros(options, dtype=object)
+            row[np.flatnonzero(torn[j])] = shared // int(count)
+            row[int(self.kinds[j, 0])] = den - shared
+            palette[options + j] = row
         return replace(self, palette=palette, den=den)
 
 
@@ -115,6 +116,7 @@ def decide(setting: Setting, decision: str, watch: Watch) -> Decided:
         where,
         np.concatenate(torn) if torn else np.zeros((0, options), dtype=bool),
         at[where].astype(np.int64),
+        np.zeros((0, options + 1), dtype=np.int64),
     )
     return decided.choosing(decided.choices) if len(where) else decided
 
@@ -134,7 +136,23 @@ def _given(setting: Setting) -> Decided:
         np.zeros(0, dtype=np.int64),
         np.zeros((0, len(setting.options)), dtype=bool),
         np.zeros(0, dtype=np.int64),
+        np.zeros((0, len(setting.options) + 1), dtype=np.int64),
     )
+
+
+def distinct(rows: Indices, base: int) -> tuple[Indices, Indices]:
+    """The distinct rows of small numbers, ascending, and which of them each row is.
+
+    base  more than any entry: rows are read as numbers in it where these stay below 2**62
+    """
+    if base ** rows.shape[1] >= 2**62:
+        found, place = np.unique(rows, axis=0, return_inverse=True)
+        return found, place.ravel()
+    key = np.zeros(len(rows), dtype=np.int64)
+    for column in rows.T:
+        key = key * base + column
+    _, first, place = np.unique(key, return_index=True, return_inverse=True)
+    return rows[first], place
 
 
 def _worths(setting: Setting, watch: Watch) -> Any:

@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from designer.roads.typegraph.bases import OWN, ZERO, Base, Flow, Root
-from designer.roads.typegraph.decided import Indices
+from designer.roads.typegraph.decided import Indices, distinct
 from designer.roads.typegraph.fibers import Fibers
 from designer.roads.typegraph.mechanism import runs, unrolled
 from designer.setting.exact import number, text
@@ -28,8 +28,8 @@ class Claim:
 def plain_base(found: Base) -> dict[str, Any]:
     """The paths behind a table; or the table and the flow that bounds it."""
     if found.tree is not None:
-        trees, of = np.unique(found.tree, axis=0, return_inverse=True)
-        return {"root": found.root, "trees": trees.tolist(), "of": runs(of.ravel())}
+        trees, of = distinct(found.tree, found.tree.shape[1])
+        return {"root": found.root, "trees": trees.tolist(), "of": runs(of)}
     if found.flow is None:
         raise AssertionError("a table without paths has a flow")
     return {

@@ -63,6 +63,7 @@ class Walk:
         self.setting, self.asked, self.terms = own, asked, terms
         self.engine, self.watch = engine, watch
         self.goal = terms.goals[0]
+        self.cases = Cases(())
         self.seconds: dict[str, float] = {}
 
     def walk(self) -> Settled:
@@ -158,7 +159,8 @@ class Walk:
         least: Fraction,
     ) -> Found:
         """The pot at its least favourable profile, and the paths that bound it there."""
-        cases = _paths_to(self.setting, works, bases, profile)
+        # Rows of earlier choices stay: together they keep the choices from going in circles.
+        cases = self.cases = self.cases.and_also(_paths_to(self.setting, works, bases, profile))
         goal = self.goal if self.goal in ("outside-money", "worst-pot") else "any"
         program = cases_program(self.setting, self.terms, cases, goal)
         outcome = self._prove(program)
