@@ -93,7 +93,7 @@ def audit(
         findings += judge_limits(view, table, limits, party, tolerance)
         findings += judge_side(setting, index, side, view, table, chance_tolerance)
 
-    pots = _pot(table, setting)
+    pots = _pot(table, setting, support)
     findings += _balance(pots, setting, support, tolerance, subsidy)
     decisions = judge_decisions(setting, table, tolerance, chance_tolerance)
     floors = {
@@ -231,11 +231,13 @@ def _participation(
     return found
 
 
-def _pot(table: Table, setting: Setting) -> Pot:
+def _pot(table: Table, setting: Setting, support: Bools | None) -> Pot:
+    """Add up the pot; least and most are over the cases in which demands are to hold."""
     num, den = pot(table, setting)
+    where = np.arange(setting.profiles) if support is None else np.flatnonzero(support)
     bound = (largest(num) + 1) * setting.total_weight
     mean = (held(num, bound) * held(setting.weights, bound)).sum()
-    low, high = int(num.argmin()), int(num.argmax())
+    low, high = int(where[num[where].argmin()]), int(where[num[where].argmax()])
     return Pot(
         num=num,
         den=den,

@@ -87,7 +87,10 @@ class Payment:
 
 @dataclass(frozen=True, eq=False)
 class Pot:
-    """The pot by profile (convention 1): num / den, money left over where positive."""
+    """The pot by profile (convention 1): num / den, money left over where positive.
+
+    `least` and `most` leave out the profiles that convention 5 lets a scenario leave out.
+    """
 
     num: IntArray
     den: int

@@ -198,8 +198,9 @@ def standings(found: Sequence[Standing], rows: int | None = None, saved: bool = 
 
 def pots(setting: Setting, pot: Pot) -> Page:
     """The pot in a sentence: what is left over when the outlay is paid."""
+    cases = "every case that can occur" if setting.support_only else "every case"
     if pot.least == pot.most:
-        return [heading("Pot"), paragraph(f"{amount(pot.least, setting.money)} in every case.")]
+        return [heading("Pot"), paragraph(f"{amount(pot.least, setting.money)} in {cases}.")]
     rows = [
         ("least", f"{amount(pot.least, setting.money)}, at {_at(pot.least_at)}"),
         ("most", f"{amount(pot.most, setting.money)}, at {_at(pot.most_at)}"),

@@ -425,6 +425,9 @@ weight = 1
     assert supported.worst["ic-dominant"].margin == 0
     assert everywhere.worst["balance-ex-post-exact"].margin == -7
     assert supported.worst["balance-ex-post-exact"].margin == 0
+    assert everywhere.pot.most == 7
+    assert everywhere.pot.most_at == {"P": "0", "Q": "1"}
+    assert {supported.pot.least, supported.pot.most} == {0}
     assert supported.holds["ic-bayesian"]
 
 

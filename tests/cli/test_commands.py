@@ -330,6 +330,46 @@ def test_audit_takes_the_outside_money_that_a_goal_left_open(
     assert run(capsys, "audit", scenario, folder / "transfers.csv", "--subsidy", "2").code == 1
 
 
+def test_outside_money_counts_only_cases_that_can_occur(capsys: Capsys, tmp_path: Path) -> None:
+    """Off the support the pot may be anything: it is no outside money that is needed."""
+    scenario = tmp_path / "support.toml"
+    scenario.write_text(
+        """
+title = "Two crews who see the same"
+profiles = "support"
+decisions.options = ["go", "stay", "survey"]
+designer.outlay = { go = 3, survey = 9 }
+party = [
+  { name = "Ann", types = [1, 5], value = { go = "type", stay = 2, survey = 0 } },
+  { name = "Ben", types = [1, 5], value = { go = "type", stay = 0, survey = 0 } },
+]
+joint = [
+  { at = { Ann = 1, Ben = 1 }, weight = 1 },
+  { at = { Ann = 5, Ben = 5 }, weight = 1 },
+]
+rule = [
+  { at = { Ann = 1, Ben = 1 }, take = "stay" },
+  { at = { Ann = 5, Ben = 5 }, take = "go" },
+  { take = "survey" },
+]
+[limits]
+pays_at_most = 1
+[demands]
+decision = "table"
+goal = "outside-money"
+""",
+        encoding="utf-8",
+    )
+    folder = tmp_path / "out"
+    posed = run(capsys, "pose", scenario, "--save", folder)
+    assert posed.code == 0
+    assert "The least outside money needed is 1 money units." in posed.out
+    assert "-1 money units in every case that can occur." in posed.out
+    found = run(capsys, "audit", scenario, folder / "transfers.csv")
+    assert (found.code, found.err) == (0, "")
+    assert "Outside money: 1 money units." in found.out
+
+
 def test_recheck_of_the_shipped_proof(capsys: Capsys, tmp_path: Path) -> None:
     proof = SCENARIOS / "lock-sale-proof.json"
     assert run(capsys, "recheck", proof, "--scenario", LOCK).code == 0
