@@ -14,6 +14,20 @@ from designer.views.possible import goals
 if TYPE_CHECKING:
     from designer.verdict import Verdict
 
+MISSING = (
+    "A demand is missing that holds the payments: participation (--ir), a balance "
+    "(--balance), or pays_at_most and pays_at_least under [limits] in the scenario."
+)
+NO_LIE = (
+    "No party has a second type, so there is no lie whose loss could be widened: leave out the "
+    "goal margin."
+)
+UNKNOWNS = {
+    "slack": "tolerated gain",
+    "subsidy": "outside money",
+    "shortfall": "tolerated loss",
+}
+"""What the program's free allowances are called on screen."""
 SHOWN = 12
 """Parties whose changes are written out."""
 
@@ -34,19 +48,20 @@ def unbounded(verdict: Verdict) -> Page:
             )
         )
         rows = [(change.party, _in_words(change)) for change in found.changes[:SHOWN]]
-        rows += [(f"[{name}]", _more(value)) for name, value in found.unknowns]
+        rows += [(UNKNOWNS.get(name, name), _more(value)) for name, value in found.unknowns]
         page.append(listed(rows, indent=4))
         left = len(found.changes) - SHOWN
         if left > 0:
             page.append(paragraph(f"… and {left} more: --save DIR writes the ray to proof.json."))
     page.append(heading("What now"))
-    page.append(
-        paragraph(
-            "A demand is missing that holds the payments: participation (--ir), a balance "
-            "(--balance), or pays_at_most and pays_at_least under [limits] in the scenario."
-        )
-    )
+    single = all(party.size == 1 for party in verdict.setting.parties)
+    page.append(paragraph(NO_LIE if single and _goal(verdict) == "margin" else MISSING))
     return page
+
+
+def _goal(verdict: Verdict) -> str:
+    """The goal that grows for ever."""
+    return verdict.program.stages[-1].goal
 
 
 def _in_words(change: Change) -> str:

@@ -232,6 +232,20 @@ def test_what_grows_for_ever() -> None:
     assert "participation (--ir), a balance (--balance)" in text
 
 
+def test_a_margin_without_lies() -> None:
+    setting = parse_scenario(
+        """
+title = "One kind of each"
+decisions.options = ["go"]
+party = [{ name = "Ann", types = [1], weights = [1], value = { go = 3 } }]
+"""
+    )
+    text = " ".join(" ".join(shown(pose(setting, Demands(goal="margin")))).split())
+    assert "UNBOUNDED, proved." in text
+    assert "again and again: tolerated gain 1 less" in text
+    assert text.endswith("leave out the goal margin.")
+
+
 def test_undecided_says_why_and_what_to_try() -> None:
     lines = shown(pose(scenario("breakwater"), time_limit=0))
     assert "UNDECIDED." in lines
