@@ -99,6 +99,12 @@ class Verdict:
             from designer.roads.interim.standing import standings
 
             return standings(self.setting, self.program, self.primal)
+        if self.path == "type-graph" and self.mechanism is not None:
+            from designer.roads.typegraph import standing
+            from designer.roads.typegraph.mechanism import GraphMechanism
+
+            if isinstance(self.mechanism, GraphMechanism):
+                return standing.standings(self.mechanism)
         return ()
 
     @property

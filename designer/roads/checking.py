@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from designer.engines.watch import Watch
+from designer.engines.watch import Stopped, Watch
 from designer.setting.setting import Setting
 
 CLAIMS = {
@@ -19,6 +19,13 @@ def check(setting: Setting, document: dict[str, Any], watch: Watch | None = None
 
     The document must have passed the plain checker and have a `reduction`.
     """
+    try:
+        return _checked(setting, document, watch)
+    except Stopped as stop:
+        return [f"the check was not finished: {stop.reason}; {stop.remedy}"]
+
+
+def _checked(setting: Setting, document: dict[str, Any], watch: Watch | None) -> list[str]:
     road = document["path"]
     if road == "interim":
         from designer.roads.interim import check as interim

@@ -28,8 +28,9 @@ from designer.roads.settled import Settled, build
 from designer.roads.typegraph import walk
 from designer.roads.typegraph.check import check
 from designer.roads.typegraph.decided import decide
-from designer.roads.typegraph.mechanism import from_plain
+from designer.roads.typegraph.mechanism import GraphMechanism, from_plain
 from designer.roads.typegraph.road import TypeGraph
+from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
 from tests.roads.typegraph_settings import designs, lifted
@@ -109,6 +110,9 @@ def test_payments_on_demand_are_the_table_and_survive_their_file(design: Design)
         chances = tuple(verdict.table.chance(profile, k) for k in range(len(setting.options)))
         assert verdict.mechanism.pays(types) == pays == back.pays(types)
         assert verdict.mechanism.decides(types) == chances == back.decides(types)
+    assert isinstance(verdict.mechanism, GraphMechanism)
+    assert verdict.audit is not None
+    assert standings(verdict.mechanism) == verdict.audit.standings
 
 
 # -- ties --------------------------------------------------------------------------------
@@ -347,6 +351,8 @@ def test_a_million_profiles_are_decided_and_proved() -> None:
     assert verdict.mechanism is not None
     types = (3, 9, 2, 7, 7, 4)
     assert len(verdict.pays([str(a) for a in types])) == 6
+    assert len(verdict.standings) == 60
+    assert all(standing.gain >= 0 for standing in verdict.standings)
 
 
 # -- where it goes -----------------------------------------------------------------------

@@ -138,27 +138,37 @@ class Fibers:
         for start in range(0, self.classes, size):
             yield start, self.lengths(start, min(start + size, self.classes))
 
+    def worths(self, start: int, stop: int) -> IntArray:
+        """Worth by class, true type and told type, (B, T, T), in units of 1 / den."""
+        party = self.setting.parties[self.party]
+        rows = self.rows[start:stop]
+        if not party.depends:
+            return np.ascontiguousarray(np.moveaxis(self._values[:, rows], 0, 1))
+        scale = self.den // (self.setting.grain * self.decided.den)
+        value = party.value.astype(self.dtype)[self.apart[start:stop]]
+        taken = self.decided.palette.astype(self.dtype)[rows]
+        found: IntArray = np.matmul(value, taken.transpose(0, 2, 1)) * scale
+        return found
+
+    def outsides(self, start: int, stop: int) -> IntArray:
+        """The outside option by class and type, (B, T), in units of 1 / den."""
+        party = self.setting.parties[self.party]
+        outside: IntArray = party.outside.astype(self.dtype) * (self.den // self.setting.grain)
+        if party.outside_depends:
+            return outside[self.apart[start:stop]]
+        return np.broadcast_to(outside, (stop - start, self.types))
+
     def lengths(self, start: int, stop: int) -> Lengths:
         """The graphs of the classes start <= g < stop."""
         setting, terms = self.setting, self.terms
-        party = setting.parties[self.party]
-        rows = self.rows[start:stop]
-        if party.depends:
-            scale = self.den // (setting.grain * self.decided.den)
-            value = party.value.astype(self.dtype)[self.apart[start:stop]]
-            taken = self.decided.palette.astype(self.dtype)[rows]
-            worth = np.matmul(value, taken.transpose(0, 2, 1)) * scale
-        else:
-            worth = np.ascontiguousarray(np.moveaxis(self._values[:, rows], 0, 1))
+        worth = self.worths(start, stop)
         diagonal = np.arange(self.types)
         honest = worth[:, diagonal, diagonal]
         cost = honest[:, :, None] - worth + int(terms.slack * self.den)
-        if party.name in terms.trusted:
+        if setting.parties[self.party].name in terms.trusted:
             cost[:] = self.far * 2
         cost[:, diagonal, diagonal] = 0
-        outside = party.outside.astype(self.dtype) * (self.den // setting.grain)
-        outside = outside[self.apart[start:stop]] if party.outside_depends else outside[None, :]
-        room = honest - outside + int(terms.shortfall * self.den)
+        room = honest - self.outsides(start, stop) + int(terms.shortfall * self.den)
         sinks = self.sinks(start, stop)
         scope = None
         if setting.support_only and setting.joint is not None:
