@@ -53,6 +53,7 @@ MONEY = _asks("efficient", "bayesian", "interim", "ex-post", "exact", "outside-m
 WHOLE = _asks("efficient", "bayesian", "interim", "ex-post", "exact", "any")
 DEFAULT = _asks("efficient", "bayesian", "none", "ex-post", "exact", "floor", tidy="")
 CERTAIN = _asks("efficient", "dominant", "ex-post", "ex-post", "no-deficit", "outside-money")
+MEAN = _asks("efficient", "dominant", "interim", "ex-ante", "exact", "outside-money")
 SECOND = _asks("randomized", "bayesian", "interim", "ex-post", "exact", "welfare")
 POSTED = _asks("randomized", "dominant", "ex-post", "ex-post", "exact", "welfare")
 PICKED = _asks("deterministic", "dominant", "ex-post", "ex-post", "exact", "welfare")
@@ -113,6 +114,24 @@ PROBLEMS: tuple[Problem, ...] = (
         "certain-3x4", "joint project, honest in every case", _project(3, 4, CERTAIN), small=True
     ),
     Problem("certain-3x9", "joint project, honest in every case", _project(3, 9, CERTAIN)),
+    Problem(
+        "certain-4x12",
+        "joint project, honest in every case",
+        _project(4, 12, CERTAIN),
+        ways=("ours", "highs"),
+    ),
+    Problem(
+        "mean-4x12",
+        "honest in every case, taking part and balance on average",
+        _project(4, 12, MEAN),
+        ways=("ours", "highs"),
+    ),
+    Problem(
+        "mean-6x10",
+        "a million cases, honest in every one",
+        _project(6, 10, MEAN),
+        ways=("ours",),
+    ),
     Problem("second-4", "sale, best lottery", _trade(4, SECOND), small=True),
     Problem("second-30", "sale, best lottery", _trade(30, SECOND)),
     Problem("posted-4", "sale, honest in every case", _trade(4, POSTED), small=True),

@@ -47,7 +47,7 @@ def both(design: Design) -> tuple[Verdict, Verdict]:
     )
 
 
-@settings(max_examples=500, deadline=None, derandomize=True)
+@settings(max_examples=300, deadline=None, derandomize=True)
 @given(designs())
 def test_the_same_exact_answer_as_the_plain_road(design: Design) -> None:
     ours, plain = both(design)
@@ -59,7 +59,7 @@ def test_the_same_exact_answer_as_the_plain_road(design: Design) -> None:
         assert rebuild(design[0], document) == []
 
 
-@settings(max_examples=250, deadline=None, derandomize=True)
+@settings(max_examples=150, deadline=None, derandomize=True)
 @given(designs())
 def test_tables_pass_the_audit(design: Design) -> None:
     setting, terms = design
@@ -80,7 +80,7 @@ def test_tables_pass_the_audit(design: Design) -> None:
     assert [name for name, finding in judged.items() if not finding.holds] == []
 
 
-@settings(max_examples=250, deadline=None, derandomize=True)
+@settings(max_examples=150, deadline=None, derandomize=True)
 @given(designs(most_profiles=9, bounded=True))
 def test_compact_proofs_are_proofs_about_the_full_program(design: Design) -> None:
     setting, terms = design
@@ -129,7 +129,7 @@ def stubborn(design: Design, picks: list[int]) -> Settled | None:
 
 
 @settings(
-    max_examples=300,
+    max_examples=200,
     deadline=None,
     derandomize=True,
     suppress_health_check=[HealthCheck.filter_too_much],  # many settings have no ties
