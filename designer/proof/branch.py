@@ -74,6 +74,10 @@ def prove_mixed(
     search = Search(exact, watch, seconds, effort, incumbent)
     why = f"within {seconds:g} seconds"
     try:
+        if incumbent is None and report.status != "optimal":
+            tree = _empty(exact, search)
+            if tree is not None:
+                return Outcome("infeasible", proved=True, tree=tree)
         tree = search.tree()
     except (Stopped, KeyboardInterrupt) as stop:
         # the table and the engine's word outlive the search for a proof
@@ -81,6 +85,8 @@ def prove_mixed(
             raise
         tree = None
         why = f"before it stopped: {getattr(stop, 'reason', 'interrupted')}"
+    if tree is None and search.budget.left > 0 and why.startswith("within"):
+        why = "as it could not close some branch"
     if search.incumbent is not None:
         return _optimal(exact, report, search.incumbent, tree, why)
     if tree is not None:
@@ -192,6 +198,26 @@ def _unbounded(
     return None if start is None else Incumbent(start.point, exact.minimum(start.point), ray)
 
 
+def _empty(exact: Exact, search: Search) -> Tree | None:
+    """A tree that shows there is no point with whole integers, if there is none.
+
+    Without a cost, since a goal that grows for ever leaves nodes that nothing can close. A
+    point that is met on the way becomes the first table of `search`.
+    """
+    costless = Exact(replace(exact.lp, cost=np.zeros(exact.lp.columns, dtype=np.int64)))
+    looking = Search(costless, search.budget, search.budget.left, search.effort, None)
+    try:
+        tree = looking.tree(until_met=True)
+    except TimeUp:
+        search.watch.check()  # only the budget is ours to run out of
+        return None
+    if looking.incumbent is None:
+        return tree
+    point = looking.incumbent.point
+    search.incumbent = Incumbent(point, exact.minimum(point))
+    return None
+
+
 class Search:
     """Depth-first branch and bound: floats steer it, exact certificates close its leaves."""
 
@@ -209,8 +235,11 @@ class Search:
         self.incumbent = incumbent
         self.columns = np.flatnonzero(exact.lp.integer)
 
-    def tree(self) -> Tree | None:
-        """Search; None if the budget was too short or some leaf could not be proved."""
+    def tree(self, until_met: bool = False) -> Tree | None:
+        """Search; None if the budget was too short or some leaf could not be proved.
+
+        With `until_met` also None as soon as any point is met.
+        """
         relaxed = replace(self.exact.lp, integer=np.zeros(self.exact.lp.columns, dtype=bool))
         # an explicit stack, since depth may exceed Python's recursion limit; a pair marks
         # where the two subtrees finished last become one
@@ -224,7 +253,7 @@ class Search:
                     done.append(Branch(item[0], item[1], left, right))
                     continue
                 found = self._visit(item)
-                if found is None:
+                if found is None or (until_met and self.incumbent is not None):
                     return None
                 if isinstance(found, Leaf):
                     done.append(found)

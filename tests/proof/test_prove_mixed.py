@@ -89,6 +89,28 @@ def test_nothing_whole_between_the_bounds() -> None:
     assert kinds == {"infeasible"}
 
 
+def test_no_whole_point_where_the_goal_grows_for_ever() -> None:
+    """Only halves solve 2 x + 4 y = 1, and z is free to grow: no node has an optimum."""
+    lp = program(
+        [[2, 4, 0]],
+        [1],
+        [1],
+        [0, 0, 0],
+        [9, 9, None],
+        [0, 0, 1],
+        "max",
+        integer=[True, True, False],
+    )
+    outcome = prove(lp)
+    judge(lp, outcome)
+    assert (outcome.status, outcome.proved) == ("infeasible", True)
+    # and a wrong word about a program that does have whole points
+    lp = program([[2, 4]], [2], [2], [0, 0], [9, 9], [1, 3], integer=[True, True])
+    outcome = prove(lp, engine=Told(Report("infeasible", "told")))
+    judge(lp, outcome)
+    assert outcome.value == 1
+
+
 def test_an_integer_program_without_end() -> None:
     lp = program([[2, -3]], [1], [1], [0, 0], [None, None], [1, 1], "max", integer=[True, True])
     outcome = prove(lp)
