@@ -211,7 +211,9 @@ class Walk:
         if status != "possible" or outcome.primal is None:
             return Found(settled)
         paid = [outcome.primal.value(i) for i in range(len(bases))]
-        return Found(self._with_table(settled, decided, works, bases, paid))
+        # Where pots are asked case by case it is the greatest table that fills them.
+        greatest = in_every_case(self.terms)
+        return Found(self._with_table(settled, decided, works, bases, None if greatest else paid))
 
     # -- home ----------------------------------------------------------------------------
 
