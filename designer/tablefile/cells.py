@@ -86,13 +86,14 @@ class Mistakes:
 class Numbers(dict[str, tuple[int, int] | None]):
     """A column of exact numbers: cells to (numerator, denominator), None for no number.
 
-    `unit` is the largest last place among the cells that look rounded, 0 if there are none.
+    `unit` is the largest last place among the cells that look rounded, 0 if there are none;
+    `place` the smallest last place among all decimals, for spreadsheets drop closing zeros.
     """
 
     def __init__(self) -> None:
         """Begin an empty column."""
         super().__init__()
-        self.unit = Fraction(0)
+        self.unit = self.place = Fraction(0)
         self.tops: list[IntArray] = []
         self.dens: list[IntArray] = []
 
@@ -114,6 +115,9 @@ class Numbers(dict[str, tuple[int, int] | None]):
             return None
         if "0x" not in cell and ("." in cell or "e" in cell.lower()):
             self.unit = max(self.unit, _last_place(cell, value))
+            place = _place(cell)
+            if place < 1:
+                self.place = min(self.place or place, place)
         return value.numerator, value.denominator
 
     def read(self, cells: Sequence[str]) -> list[int]:
@@ -145,6 +149,12 @@ def _digits(cell: str) -> bool:
     return cell.isascii() and cell.isdigit() and len(cell) < 1000
 
 
+def _place(cell: str) -> Fraction:
+    """The unit of the last place of a decimal, as it is written."""
+    digits, _, exponent = cell.strip().lower().partition("e")
+    return Fraction(10) ** (int(exponent or 0) - len(digits.partition(".")[2]))
+
+
 def _last_place(cell: str, value: Fraction) -> Fraction:
     """Find the unit of the last place of a decimal that looks rounded, else 0.
 
@@ -156,8 +166,7 @@ def _last_place(cell: str, value: Fraction) -> Fraction:
     if not exponent and places < ROUNDED_PLACES:
         return Fraction(0)
     size = max(Fraction(1), abs(value))
-    unit = Fraction(10) ** (int(exponent or 0) - places)
-    return min(max(unit, size / 10**12), size / 10**6)
+    return min(max(_place(cell), size / 10**12), size / 10**6)
 
 
 class Lookup(dict[str, int]):

@@ -246,14 +246,24 @@ class _Reading:
         rows = np.concatenate(self.rows)[order]
         if "probability" in columns:
             odds = (self.setting.weights, self.setting.total_weight)
-            slack = self.numbers["probability"].unit / 2
+            slack = self._coarse("probability")
             self._compare("probability", columns["probability"], odds, slack, rows)
         if "pot" in columns:
-            slack = pots + self.numbers["pot"].unit / 2
+            slack = pots + self._coarse("pot")
+            slack += sum((self._coarse(name) for name in self.pays), Fraction(0))
             self._compare("pot", columns["pot"], pot(table, self.setting), slack, rows)
         self.mistakes.check()
         chances = len(self.decides) * chance_unit / 2
         return ReadTable(table, exact, max(gain, pots), chances, decisions)
+
+    def _coarse(self, name: str) -> Fraction:
+        """Half the last place of a column's decimals: what follows from others may be rounded.
+
+        Payments of two places are taken at their word, but the pot beside them may have been
+        rounded, or may be the sum of what they were before.
+        """
+        column = self.numbers[name]
+        return max(column.unit, column.place) / 2
 
     def _rounding(self, pay_unit: Fraction, chance_unit: Fraction) -> tuple[Fraction, Fraction]:
         """Bound what rounding can do to a gain from a lie, and to a pot."""

@@ -273,6 +273,23 @@ def test_rounded_tables_are_recognised_and_bounded(setting: Setting, put: Put) -
         )
 
 
+def test_columns_that_follow_may_be_rounded_to_cents(setting: Setting, put: Put) -> None:
+    """As spreadsheets write them, closing zeros dropped; payments are still taken exactly."""
+    cents = (
+        GOOD.replace("1/6", "0.17")
+        .replace("1/3,0,1", "0.33,0,1")
+        .replace("1/3,1,0", "0.33,1,0")
+        .replace("1/3,14/3,0", "0.33,4.66,0.00")
+        .replace("0,4,-1", "0,4.1,-0.9")
+    )
+    read = read_table(put(cents), setting)
+    assert read.exact
+    assert read.table.payment(1, 1) == Fraction(466, 100)
+    for wrong in (cents.replace("0.17", "0.16"), cents.replace("4.66", "4.63")):
+        with pytest.raises(TableError, match=r"column '(probability|pot)'"):
+            read_table(put(wrong), setting)
+
+
 def test_a_rounded_balanced_table_still_balances(setting: Setting, put: Put) -> None:
     """Floats as Python writes them: the pot is off by an ulp and counts as balanced."""
     rows = "2,low,0,1,0.1,-0.1\n2,high,1,0,0.3333333333333333,4.666666666666667\n"
