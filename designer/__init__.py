@@ -10,8 +10,9 @@ from importlib import import_module
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
-    from designer.auditing import Audit, audit
+    from designer.auditing import Audit
     from designer.demands.terms import Demands, Terms
+    from designer.holding import audit
     from designer.posing import pose
     from designer.proof.recheck import recheck
     from designer.ruling.comparing import compare
@@ -35,7 +36,7 @@ _HOMES = {
     "Tradeoff": "designer.weighing.tradeoff",
     "Verdict": "designer.verdict",
     "RulesReport": "designer.ruling.report",
-    "audit": "designer.auditing",
+    "audit": "designer.holding",
     "compare": "designer.ruling.comparing",
     "parse_scenario": "designer.setting.scenario",
     "pose": "designer.posing",

@@ -24,7 +24,7 @@ LAYERS = (
     ("proof",),
     ("roads",),
     ("verdict",),
-    ("posing", "rebuilding"),
+    ("posing", "rebuilding", "holding"),
     ("weighing", "ruling"),
     ("saving",),
     ("views",),

@@ -31,7 +31,9 @@ def test_the_python_example_prints_what_it_says() -> None:
     assert lines[-1] == "True True"
 
 
-@pytest.mark.parametrize("command", sorted(set(re.findall(r"^designer (\w+)", README, re.MULTILINE))))
+@pytest.mark.parametrize(
+    "command", sorted(set(re.findall(r"^designer (\w+)", README, re.MULTILINE)))
+)
 def test_the_commands_exist(command: str) -> None:
     done = subprocess.run(
         [sys.executable, "-m", "designer", command, "--help"],

@@ -95,7 +95,7 @@ def _audited(
     free  whether no --subsidy was given: where the scenario's goal leaves outside money
           open, the table is then held against the outside money it takes itself
     """
-    from designer.auditing import audit
+    from designer.holding import audit
 
     def held(table: Table | Path, subsidy: Fraction, tolerance: Fraction | None) -> Audit:
         return audit(

@@ -142,7 +142,8 @@ class Draft:
         total = np.zeros((setting.profiles, len(setting.options)), dtype=self.dtype)
         for index in range(len(setting.parties)):
             total += self.value(index)
-        return total + (setting.worth - setting.outlay).astype(self.dtype)
+        total += (setting.worth - setting.outlay).astype(self.dtype)
+        return total
 
     def value(self, index: int) -> IntArray:
         """A party's worth at every profile, int (N, K), units of 1/grain."""

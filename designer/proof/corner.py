@@ -52,10 +52,8 @@ class Corner:
             right = plus(right, -exact.matrix.times(resting)[self.tight])
         numerators, den = kernel.solve(right)
         spread = scaled(resting, den)
-        if spread.dtype == numerators.dtype:
-            spread = spread.copy()
-        else:
-            spread = spread.astype(object)
+        # `scaled` may hand back its argument: never write into that.
+        spread = spread.astype(numerators.dtype if spread.dtype == numerators.dtype else object)
         spread[self.basic] = numerators
         return Point(spread, den)
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 from operator import mul
 from typing import cast
 
@@ -147,4 +148,4 @@ class Matrix:
         """The rows as lists of (column, value) in Python ints."""
         pairs = list(zip(self.indices.tolist(), self.data.tolist(), strict=True))
         cuts = self.indptr.tolist()
-        return [pairs[a:b] for a, b in zip(cuts, cuts[1:], strict=False)]
+        return [pairs[a:b] for a, b in pairwise(cuts)]

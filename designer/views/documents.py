@@ -89,6 +89,7 @@ def recheck_document(
         "claims": list(finding.claims),
         "faults": list(finding.faults),
         "open": list(finding.open),
+        "reduced": finding.reduced,
         "compared": compared,
         "differences": list(differences),
     }

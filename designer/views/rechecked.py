@@ -33,6 +33,17 @@ def _scope(finding: Finding, compared: bool, differences: Sequence[str]) -> str:
         return "Nothing is proved by this file."
     if differences:
         return "The proof is right about its own program, which is not this scenario's."
+    if finding.reduced and compared:
+        return (
+            "The program is a reduced one. What stands behind it was recounted from the scenario "
+            "and the program rebuilt: its answer is that of the scenario, over all its cases."
+        )
+    if finding.reduced:
+        return (
+            "Checked with whole numbers alone, no solver. The program is a reduced one: that its "
+            "answer is also that of your scenario, over all its cases, is checked with --scenario "
+            "FILE."
+        )
     if compared:
         return "The program was rebuilt from the scenario and is the same, row by row."
     return (
