@@ -21,6 +21,9 @@ from designer.engines.report import Basis, Report
 from designer.engines.watch import Watch
 from designer.program.linear import LinearProgram
 
+FEW = 50
+"""Bounds that may change before a fresh start, with presolve, is quicker."""
+
 
 class HotHighs:
     """An engine with a memory: as `Highs`, quicker where the rows stay what they were."""
@@ -51,8 +54,13 @@ class HotHighs:
         if watch.left <= 0:
             return Report("time-limit", self.name, message="no time left to start")
         program = floats(lp)
-        if not self._renew(lp, program):
-            return HIGHS.run(program, watch)
+        fresh = not self._kept(lp, program)
+        if fresh:
+            self._model = quiet_highs()
+            if not load(self._model, program):
+                self._rows = ()
+                return HIGHS.run(program, watch)
+        self._rows, self._floats = (lp.indptr, lp.indices, lp.data), program
         if watch.limit is not None:
             # the limit of a model counts from its first solve
             self._model.setOptionValue("time_limit", self._model.getRunTime() + watch.left)
@@ -61,32 +69,29 @@ class HotHighs:
         report = report_of(self._model, program, self.name, began, stop)
         if report.status != "optimal":
             self._rows = ()  # its basis is no good start
-            if report.status in ("time-limit", "interrupted"):
-                return report
-            return HIGHS.run(program, watch)
+            if not fresh and report.status not in ("time-limit", "interrupted"):
+                return HIGHS.run(program, watch)
         return replace(report, seconds=time.monotonic() - began)
 
-    def _renew(self, lp: LinearProgram, program: FloatProgram) -> bool:
-        """Bring the model to this program; False if it would not take it."""
-        rows, last = (lp.indptr, lp.indices, lp.data), self._floats
-        kept = len(self._rows) == 3 and all(a is b for a, b in zip(rows, self._rows, strict=True))
-        self._floats = program
-        if not kept or last is None or not _same_scale(last, program):
-            self._model = quiet_highs()
-            self._rows = rows if load(self._model, program) else ()
-            return bool(self._rows)
-        columns = np.arange(len(program.cost), dtype=np.int32)
-        self._model.changeColsCost(len(columns), columns, program.cost)
+    def _kept(self, lp: LinearProgram, program: FloatProgram) -> bool:
+        """Whether the model could be brought to this program by a few changes."""
+        last, rows = self._floats, (lp.indptr, lp.indices, lp.data)
+        if last is None or len(self._rows) != 3 or not _same_scale(last, program):
+            return False
+        if not all(one is other for one, other in zip(rows, self._rows, strict=True)):
+            return False
         moved = np.flatnonzero(
             (last.col_lo != program.col_lo) | (last.col_hi != program.col_hi)
         ).astype(np.int32)
+        turned = np.flatnonzero((last.row_lo != program.row_lo) | (last.row_hi != program.row_hi))
+        if len(moved) + len(turned) > FEW:
+            return False
+        columns = np.arange(len(program.cost), dtype=np.int32)
+        self._model.changeColsCost(len(columns), columns, program.cost)
         if len(moved):
-            self._model.changeColsBounds(
-                len(moved), moved, program.col_lo[moved], program.col_hi[moved]
-            )
-        for row in np.flatnonzero(
-            (last.row_lo != program.row_lo) | (last.row_hi != program.row_hi)
-        ):
+            lo, hi = program.col_lo[moved], program.col_hi[moved]
+            self._model.changeColsBounds(len(moved), moved, lo, hi)
+        for row in turned:
             self._model.changeRowBounds(int(row), program.row_lo[row], program.row_hi[row])
         return True
 

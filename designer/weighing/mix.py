@@ -22,7 +22,7 @@ from designer.proof.vector import Vector
 from designer.setting.setting import IntArray, Setting
 from designer.weighing.bounds import without_rows
 from designer.weighing.groups import CAPS, group_of, groups_of
-from designer.weighing.relaxed import Answer, Relaxed
+from designer.weighing.relaxed import Answer, Relaxed, allowed
 
 Groups = frozenset[str]
 
@@ -50,7 +50,8 @@ class Mix:
         self.possible: list[Known] = []
         self.collisions: list[Known] = []
         self.posed = 0
-        self._programs: dict[bool, _Masked] = {}
+        self._programs: dict[bool, Relaxed] = {}
+        self._masked: dict[bool, _Masked] = {}
 
     def known(self, kept: Groups) -> Known | None:
         """What is known of a set without posing it."""
@@ -73,7 +74,7 @@ class Mix:
             return known
         self.watch.check()
         self.posed += 1
-        masked = self._program("decision" in kept)
+        masked = self._mask("decision" in kept)
         answer = masked.pose(kept)
         if answer.status == "optimal" and answer.primal is not None:
             known = Known(kept | masked.kept_as_well(answer), answer.proved)
@@ -86,14 +87,19 @@ class Mix:
             raise Unsettled(answer.reason)
         return known
 
-    def _program(self, decided: bool) -> _Masked:
-        """The program with the decision as demanded, or free."""
+    def program(self, decided: bool) -> Relaxed:
+        """All groups with every allowance freed; the decision as demanded, or free."""
         decided = decided or "decision" not in self.groups
         if decided not in self._programs:
             terms = self.terms if decided else replace(self.terms, decision="randomized")
-            relaxed = Relaxed(self.setting, terms, {}, self.engine, self.watch)
-            self._programs[decided] = _Masked(relaxed, self.terms, decided)
+            self._programs[decided] = allowed(self.setting, terms, self.engine, self.watch)
         return self._programs[decided]
+
+    def _mask(self, decided: bool) -> _Masked:
+        decided = decided or "decision" not in self.groups
+        if decided not in self._masked:
+            self._masked[decided] = _Masked(self.program(decided), self.terms, decided)
+        return self._masked[decided]
 
 
 class _Masked:
@@ -114,8 +120,12 @@ class _Masked:
         """Whether the kept groups can be met."""
         dropped = [name for name in self.names if name and name not in kept]
         mask = np.isin(self.of_row, [self.names.index(name) for name in dropped])
-        lp = without_rows(self.relaxed.matrix, mask)
-        return self.relaxed.solve(self._unbounded(lp, kept))
+        elastic = {"money"} if "balance" in kept else set()
+        if any(group.startswith("ir:") for group in kept):
+            elastic.add("shortfall")
+        return self.relaxed.feasible(
+            elastic, lambda lp: self._unbounded(without_rows(lp, mask), kept)
+        )
 
     def _unbounded(self, lp: LinearProgram, kept: Groups) -> LinearProgram:
         """The program with the bounds on payments let go whose limits are not kept."""

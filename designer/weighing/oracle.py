@@ -10,7 +10,7 @@ from designer.engines.report import Engine
 from designer.engines.watch import Watch
 from designer.setting.setting import Setting
 from designer.weighing.mix import Unsettled
-from designer.weighing.relaxed import Relaxed
+from designer.weighing.relaxed import allowed
 
 
 @dataclass(frozen=True)
@@ -44,7 +44,8 @@ class Oracle:
         if terms not in self.known:
             self.watch.check()
             self.posed += 1
-            answer = Relaxed(self.setting, terms, {}, self.engine, self.watch).minimise({})
+            relaxed = allowed(self.setting, terms, self.engine, self.watch)
+            answer = relaxed.feasible(relaxed.columns)
             if answer.status not in ("optimal", "infeasible"):
                 raise Unsettled(answer.reason)
             self.known[terms] = Finding(answer.status == "optimal", answer.proved)

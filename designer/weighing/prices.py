@@ -13,7 +13,7 @@ from designer.demands.terms import Terms
 from designer.setting.setting import Setting
 from designer.weighing.groups import CAPS, FLOORS, may_free_decision
 from designer.weighing.mix import Mix
-from designer.weighing.relaxed import Answer, Freedom, Relaxed
+from designer.weighing.relaxed import Answer, Freedom, Relaxed, allowed
 
 ONE = Fraction(1)
 
@@ -61,11 +61,12 @@ class Prices:
     def __iter__(self) -> Iterator[Price]:
         """The prices, cheapest questions first. Raises Stopped and Unsettled."""
         terms = self.terms
-        whole = allowed(self.mix, terms)
+        whole = self.mix.program(decided=True)
         if "money" in whole.columns:
             yield self._single(whole, "outside-money", "money")
             if terms.balance == "ex-post":
-                average = allowed(self.mix, replace(terms, balance="ex-ante"))
+                on_average = replace(terms, balance="ex-ante")
+                average = allowed(self.setting, on_average, self.mix.engine, self.mix.watch)
                 yield self._single(average, "outside-money-on-average", "money")
         if "shortfall" in whole.columns:
             yield self._single(whole, "shortfall", "shortfall")
@@ -110,7 +111,7 @@ class Prices:
 
     def _second_best(self) -> Price:
         """The welfare given up when the decision may differ from the demanded one."""
-        freed = self._freed(replace(self.terms, decision="randomized"), {})
+        freed = self.mix.program(decided=False)
         closed = list(freed.columns)
         answer = freed.minimise({"welfare": ONE}, closed=closed)
         if answer.status != "optimal" or answer.at is None:
@@ -167,20 +168,6 @@ class Prices:
                     yield Price("compel", Fraction(size), found.proved, parties=chosen)
             if cured:
                 return  # larger sets are not smallest
-
-
-def allowed(mix: Mix, terms: Terms, decision: str | None = None) -> Relaxed:
-    """The terms with every allowance freed that they can pay with, from what they allow up."""
-    free: dict[str, Freedom] = {}
-    if terms.balance != "none":
-        free["subsidy"] = (terms.subsidy, None)
-    if terms.ir != "none" and len(terms.compelled) < len(mix.setting.parties):
-        free["shortfall"] = (terms.shortfall, None)
-    if terms.ic != "none":
-        free["slack"] = (terms.slack, None)
-    if decision is not None:
-        terms = replace(terms, decision=decision)
-    return Relaxed(mix.setting, terms, free, mix.engine, mix.watch)
 
 
 def _with_rates(price: Price, relaxed: Relaxed, answer: Answer, partners: Collection[str]) -> Price:

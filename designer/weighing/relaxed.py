@@ -13,7 +13,7 @@ answer is exact and has passed the proof checker.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping
+from collections.abc import Callable, Collection, Mapping
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
@@ -70,6 +70,10 @@ class Answer:
     dual: Vector | None = None
     farkas: Vector | None = None
     reason: str = ""
+
+
+def _same(lp: LinearProgram) -> LinearProgram:
+    return lp
 
 
 class Relaxed:
@@ -133,6 +137,37 @@ class Relaxed:
             return replace(answer, proved=False)
         proved = answer.proved and second.proved
         return replace(answer, at=second.at, primal=second.primal, proved=proved)
+
+    def feasible(
+        self, kept: Collection[str] = (), narrowed: Callable[[LinearProgram], LinearProgram] = _same
+    ) -> Answer:
+        """Whether the demands can be met with every allowance closed: "optimal", "infeasible".
+
+        Asked as the least of one allowance that is in play (of `kept`, criteria; the first of
+        money and shortfall that there is): an engine finds its way to a table much faster
+        than it finds that there is none, and where more than what the terms allow is needed,
+        the multipliers that prove it are a Farkas vector of the closed program:
+
+            sum y b + sum d x_bound = least amount - amount allowed > 0.
+
+        `narrowed` changes bounds of the program first.
+        """
+        useful = [n for n in ("money", "shortfall") if n in self.columns and n in kept]
+        # whole numbers have no multipliers to prove it with
+        elastic = useful[0] if useful and not self.matrix.integer.any() else None
+        weights: dict[str, Fraction] = {elastic: ONE} if elastic else {}
+        others = [name for name in self.columns if name != elastic]
+        answer = self.solve(self._posed(narrowed(self.closed(others)), weights))
+        if elastic is None or answer.status != "optimal" or answer.at is None:
+            return answer
+        if answer.at[elastic] == self.asked(elastic):
+            return answer
+        closed = self._posed(narrowed(self.closed(self.columns)), {})
+        outcome = Outcome("infeasible", proved=True, farkas=answer.dual)
+        holds = answer.proved and recheck(self._document(closed, outcome)).holds
+        if not holds:
+            return Answer("undecided", False, closed, reason="the checker rejects the certificate")
+        return Answer("infeasible", True, closed, farkas=answer.dual)
 
     def rate(self, answer: Answer, partner: str, closed: Collection[str]) -> Fraction:
         """By how much the optimum falls per unit of a closed allowance, for a first small unit.
@@ -293,3 +328,15 @@ def _first_best(draft: Draft) -> Fraction:
     best = draft.welfare.max(axis=1).astype(object)
     total = int((best * draft.weights.astype(object)).sum())
     return Fraction(total, draft.setting.total_weight * draft.setting.grain)
+
+
+def allowed(setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> Relaxed:
+    """The terms with every allowance freed that they can pay with, from what they allow up."""
+    free: dict[str, Freedom] = {}
+    if terms.balance != "none":
+        free["subsidy"] = (terms.subsidy, None)
+    if terms.ir != "none" and len(terms.compelled) < len(setting.parties):
+        free["shortfall"] = (terms.shortfall, None)
+    if terms.ic != "none":
+        free["slack"] = (terms.slack, None)
+    return Relaxed(setting, terms, free, engine, watch)

@@ -26,7 +26,7 @@ from designer.weighing.ladders import Ladder, climb_down, climb_up, least_steps,
 from designer.weighing.ledger import ledger
 from designer.weighing.mix import Mix, Unsettled
 from designer.weighing.oracle import Oracle, plain
-from designer.weighing.prices import Price, Prices, allowed
+from designer.weighing.prices import Price, Prices
 from designer.weighing.room import Room, rooms
 from designer.weighing.surface import Surface
 from designer.weighing.tradeoff import PARTS, Tradeoff
@@ -166,7 +166,7 @@ class _Page:
             self.grow(sets=tuple(found))
 
     def _frontiers(self) -> None:
-        surfaces: dict[str, Surface] = {}
+        surfaces: dict[bool, Surface] = {}
         done: list[Frontier] = []
         for x, y in PAIRS:
             if not (payable(self.terms, x) and payable(self.terms, y)):
@@ -180,18 +180,15 @@ class _Page:
             for triple in corner_list(self._surface(surfaces, TRIPLE), start):
                 self.grow(corners=triple)
 
-    def _surface(self, surfaces: dict[str, Surface], criteria: Sequence[str]) -> Surface:
+    def _surface(self, surfaces: dict[bool, Surface], criteria: Sequence[str]) -> Surface:
         """The program with these criteria: its decision free where welfare is among them."""
-        freed = "welfare" in criteria and self.terms.decision in ("efficient", "table")
-        decision = "randomized" if freed else self.terms.decision
-        if decision not in surfaces:
-            surface = Surface(allowed(self.mix, self.terms, decision))
-            if decision == "randomized":
-                surface.watch(TRIPLE)
-                for pair in PAIRS:
-                    surface.watch(pair)
-            surfaces[decision] = surface
-        return surfaces[decision]
+        free = "welfare" in criteria and "decision" in self.mix.groups
+        if free not in surfaces:
+            surface = surfaces[free] = Surface(self.mix.program(decided=not free))
+            for known in (*PAIRS, TRIPLE):
+                if set(known) <= {*surface.relaxed.columns, "welfare"}:
+                    surface.watch(known)
+        return surfaces[free]
 
     def _room(self) -> None:
         found: list[Room] = []

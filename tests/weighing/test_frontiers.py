@@ -20,7 +20,6 @@ from designer.setting.setting import Setting
 from designer.weighing.averages import on_average
 from designer.weighing.frontier import TRIPLE, Frontier, bends, corner_list, trace
 from designer.weighing.hull import LowerHull
-from designer.weighing.prices import allowed
 from designer.weighing.relaxed import Relaxed
 from designer.weighing.surface import Surface
 from designer.weighing.tradeoff import Tradeoff
@@ -85,7 +84,7 @@ def consistent(setting: Setting, terms: Terms, found: Frontier) -> None:
     for x in xs:
         y = at(found, x)
         assert had(setting, terms, found, x, y), (found.x, found.y, x, y)
-        if y >= HAIR:
+        if y >= HAIR + (terms.subsidy if found.y == "money" else 0):
             assert not had(setting, terms, found, x, y - HAIR), (found.x, found.y, x, y)
     allowed_already = terms.subsidy if found.x == "money" else Fraction(0)
     if found.corners[0][0] >= allowed_already + HAIR:
@@ -252,7 +251,7 @@ def test_three_criteria_of_trade(size: int) -> None:
 def test_nothing_known_beforehand_gives_the_same_list() -> None:
     setting = as_setting(trade(midpoints(12)))
     page = weigh(setting, BALANCED, only=["frontiers"])
-    surface = Surface(allowed(mix_of(setting, BALANCED), page.terms, "randomized"))
+    surface = Surface(mix_of(setting, BALANCED).program(decided=False))
     *before, last = corner_list(surface)
     assert last == page.corners
     assert before
@@ -261,7 +260,7 @@ def test_nothing_known_beforehand_gives_the_same_list() -> None:
 
 def test_a_frontier_grows_from_its_ends() -> None:
     setting = as_setting(trade(midpoints(12)))
-    surface = Surface(allowed(mix_of(setting, BALANCED), BALANCED.over(setting), "randomized"))
+    surface = Surface(mix_of(setting, BALANCED).program(decided=False))
     *before, last = trace(surface, "money", "welfare")
     assert last.complete
     assert [len(one.corners) for one in before] == sorted(len(one.corners) for one in before)
