@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import contextlib
-import os
 import sys
 from collections.abc import Sequence
 from typing import Any
@@ -12,6 +10,9 @@ import typer
 
 from designer.cli import audit, compare, pose, recheck, rules, weigh
 from designer.cli.output import Output, open_streams, stop_for
+
+CUT_SHORT = 130
+"""What the option parser makes of a Ctrl-C that reaches it."""
 
 app = typer.Typer(
     name="designer",
@@ -60,17 +61,6 @@ def main(arguments: Sequence[str] | None = None) -> None:
         if isinstance(error, SystemExit):
             raise
         code = stop_for(error, "--json" in words)
-    code = code if isinstance(code, int) else 0
-    if arguments is None:
-        _leave_at_once(code)
-    sys.exit(code)
-
-
-def _leave_at_once(code: int) -> None:
-    """End the process even if an engine was left behind that does not stop when told."""
-    apart = sys.modules.get("designer.engines.apart")
-    if apart is not None and apart.left_behind():
-        for stream in (sys.stdout, sys.stderr):
-            with contextlib.suppress(OSError, ValueError):
-                stream.flush()
-        os._exit(code)
+    if code == CUT_SHORT:
+        code = stop_for(KeyboardInterrupt(), "--json" in words)
+    sys.exit(code if isinstance(code, int) else 0)

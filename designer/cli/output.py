@@ -167,7 +167,7 @@ def stop_for(error: BaseException, as_json: bool) -> int:
 def _described(error: BaseException) -> tuple[str, int, str, Sequence[Mistake]]:
     if isinstance(error, InputError):
         return "input", error.exit_code, error.report(), error.mistakes
-    if isinstance(error, (KeyboardInterrupt, typer.Abort)):
+    if isinstance(error, typer.Abort) or _cut_short(error):
         return "interrupted", UNDECIDED, "UNDECIDED: interrupted before anything was decided.", ()
     if isinstance(error, MemoryError):
         text = "UNDECIDED: this machine's memory is too small for the problem; use fewer types."
@@ -183,6 +183,15 @@ def _described(error: BaseException) -> tuple[str, int, str, Sequence[Mistake]]:
         "scenario; DESIGNER_TRACEBACK=1 shows where it happened."
     )
     return "bug", BUG, text, ()
+
+
+def _cut_short(error: BaseException | None) -> bool:
+    """Whether Ctrl-C is behind it: compiled modules make an ImportError of one while they load."""
+    for _ in range(20):
+        if error is None or isinstance(error, KeyboardInterrupt):
+            break
+        error = error.__cause__ or error.__context__
+    return isinstance(error, KeyboardInterrupt)
 
 
 def _usage(error: Any) -> str:

@@ -25,8 +25,6 @@ PATIENCE = 1.5
 GLANCE = 0.05
 """Seconds between two looks at the clock."""
 
-_left: list[threading.Thread] = []
-
 
 @dataclass
 class Best:
@@ -55,12 +53,5 @@ def run_apart(model: Any, watch: Watch, stop: Stop) -> bool:
             told = time.monotonic()
         if told is not None and time.monotonic() - told > PATIENCE and thread.is_alive():
             stop.left = True
-            _left.append(thread)
             return False
     return True
-
-
-def left_behind() -> bool:
-    """Whether some solve is still running that nobody waits for."""
-    _left[:] = [thread for thread in _left if thread.is_alive()]
-    return bool(_left)

@@ -173,8 +173,20 @@ def test_a_bug_of_ours_is_one_line(capsys: Capsys, monkeypatch: pytest.MonkeyPat
     assert "Traceback (most recent call last)" in run(capsys, "pose", LOCK).err
 
 
+def while_loading() -> ImportError:
+    """What compiled modules make of a Ctrl-C that comes while they load."""
+    error = ImportError("initialization failed")
+    error.__cause__ = KeyboardInterrupt()
+    return error
+
+
 @pytest.mark.parametrize(
-    ("error", "kind"), [(KeyboardInterrupt(), "interrupted"), (MemoryError(), "memory")]
+    ("error", "kind"),
+    [
+        (KeyboardInterrupt(), "interrupted"),
+        (while_loading(), "interrupted"),
+        (MemoryError(), "memory"),
+    ],
 )
 def test_an_early_end_is_undecided(
     capsys: Capsys,

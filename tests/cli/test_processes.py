@@ -198,6 +198,35 @@ def test_ctrl_c_ends_cleanly_and_honestly(tmp_path: Path) -> None:
     assert not folder.exists()
 
 
+@pytest.mark.skipif(os.name != "posix", reason="signals as POSIX has them")
+def test_ctrl_c_while_modules_are_loaded() -> None:
+    script = """
+import os, signal, sys
+awaited = sys.argv[1]
+class Pressed:
+    def find_spec(self, name, path=None, target=None):
+        if name == awaited:
+            os.kill(os.getpid(), signal.SIGINT)
+sys.meta_path.insert(0, Pressed())
+from designer.__main__ import main
+sys.argv[1:] = ["pose", "scenarios/reef.toml", "--json"]
+main()
+"""
+    for module in ("typer", "designer.cli.rules", "designer.engines.highs", "numpy", "highspy"):
+        done = subprocess.run(
+            [sys.executable, "-c", script, module],
+            capture_output=True,
+            text=True,
+            timeout=120,
+            check=False,
+            cwd=ROOT,
+        )
+        assert done.returncode == 3, (module, done.stderr)
+        assert done.stderr in ("", "UNDECIDED: interrupted before anything was decided.\n")
+        told = json.loads(done.stdout)  # an error document, or an undecided verdict
+        assert told.get("kind", told.get("reason", "")).startswith("interrupted")
+
+
 def test_progress_keeps_to_stderr_and_is_wiped(capsys: pytest.CaptureFixture[str]) -> None:
     with Progress(None) as silent:  # captured: no terminal
         silent("solve", 9.0, 3)

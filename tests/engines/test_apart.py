@@ -12,7 +12,7 @@ import numpy as np
 import pytest
 
 from designer.engines import apart
-from designer.engines.apart import Best, left_behind, run_apart
+from designer.engines.apart import Best, run_apart
 from designer.engines.floats import floats
 from designer.engines.highs import HIGHS
 from designer.engines.listening import Stop, listening
@@ -59,12 +59,10 @@ def test_a_deaf_solve_is_left_behind(why: str) -> None:
     assert not run_apart(deaf, watch, stop)
     assert stop.left
     assert stop.asked
-    assert left_behind()
+    (thread,) = (thread for thread in threading.enumerate() if thread.name == "HiGHS")
     deaf.go_on.set()
-    for thread in threading.enumerate():
-        if thread.name == "HiGHS":
-            thread.join(60)
-    assert not left_behind()
+    thread.join(60)
+    assert not thread.is_alive()
 
 
 def test_a_solve_that_ends_is_waited_for() -> None:
@@ -72,7 +70,7 @@ def test_a_solve_that_ends_is_waited_for() -> None:
     threading.Timer(0.2, deaf.go_on.set).start()
     assert run_apart(deaf, Watch(), stop)
     assert not stop.asked
-    assert not left_behind()
+    assert not stop.left
 
 
 def test_what_callbacks_show_is_what_the_solve_ends_with() -> None:
@@ -135,11 +133,9 @@ def test_ctrl_c_in_a_mixed_solve(monkeypatch: pytest.MonkeyPatch) -> None:
 def test_the_command_line_does_not_wait_for_what_is_left_behind() -> None:
     script = """
 import sys, threading
-from designer.cli import main
-from designer.engines import apart
+from designer.__main__ import main
 deaf = threading.Thread(target=threading.Event().wait)
 deaf.start()
-apart._left.append(deaf)
 sys.argv = ["designer", "pose", "scenarios/lock-sale.toml", "--json"]
 main()
 """
