@@ -247,3 +247,26 @@ def lines(draw: st.DrawFn) -> tuple[Setting, Terms]:
         tidy="none",
     )
     return setting, terms
+
+
+def invented(parties: int, size: int, options: int, seed: int, high: int = 1000) -> Setting:
+    """Any number of parties with drawn worths and uneven weights."""
+    rng = np.random.default_rng(seed)
+    return Setting(
+        title="Drawn",
+        options=tuple(f"k{k}" for k in range(options)),
+        parties=tuple(
+            Party(
+                f"p{i}",
+                tuple(Type(str(a)) for a in range(size)),
+                tuple(int(w) for w in rng.integers(1, 4, size)),
+                integers(rng.integers(-high, high, (size, options))),
+                integers([0] * size),
+            )
+            for i in range(parties)
+        ),
+        outlay=integers([0] * options),
+        worth=integers([0] * options),
+        grain=1,
+        digest="0" * 64,
+    )

@@ -15,8 +15,8 @@ from designer.roads.interim import blocks, counting, halves, items, sums
 from designer.roads.interim.additive import additive
 from designer.roads.interim.dominance import dominance
 from designer.roads.interim.rule import Counts, Index, Rule
-from designer.setting.setting import Party, Setting, Type, integers
-from tests.roads.interim_settings import counted, rules, settings
+from designer.setting.setting import Setting
+from tests.roads.interim_settings import counted, invented, rules, settings
 
 
 def plain(counts: Counts) -> list[list[list[list[int]]]]:
@@ -109,28 +109,6 @@ def test_dominance_adds_up_the_points_beyond(axes: int, seed: int, weighed: bool
         for q in range(asked)
     ]
     assert dominance(points, weights if weighed else None, queries).tolist() == truth
-
-
-def invented(parties: int, size: int, options: int, seed: int, high: int = 1000) -> Setting:
-    """Any number of parties with drawn worths and uneven weights."""
-    rng = np.random.default_rng(seed)
-    return Setting(
-        title="Drawn",
-        options=tuple(f"k{k}" for k in range(options)),
-        parties=tuple(
-            Party(
-                f"p{i}",
-                tuple(Type(str(a)) for a in range(size)),
-                tuple(int(w) for w in rng.integers(1, 4, size)),
-                integers(rng.integers(-high, high, (size, options))),
-                integers([0] * size),
-            )
-            for i in range(parties)
-        ),
-        outlay=integers([0] * options),
-        worth=integers([0] * options),
-        grain=1,
-    )
 
 
 @pytest.mark.parametrize(("parties", "options"), [(6, 2), (6, 3), (5, 4)])

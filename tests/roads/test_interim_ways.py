@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import tracemalloc
+
 import pytest
 from hypothesis import assume, event, given
 from hypothesis import settings as runs
@@ -10,12 +12,14 @@ from hypothesis import strategies as st
 from designer.auditing import audit, judge
 from designer.demands.plain import as_plain
 from designer.demands.terms import Terms
+from designer.engines.watch import Progress, Watch
 from designer.posing import pose_terms
+from designer.roads.interim import blocks, road
 from designer.roads.interim import lies as lazy
-from designer.roads.interim import road
 from designer.roads.interim.multiplier import sides
+from designer.roads.interim.rule import Rule, welfare_index
 from designer.setting.setting import Setting
-from tests.roads.interim_settings import lines, questions
+from tests.roads.interim_settings import invented, lines, questions
 
 
 def agree(setting: Setting, terms: Terms) -> None:
@@ -74,3 +78,63 @@ def test_any_lead_party_or_none(question: tuple[Setting, Terms], data: st.DataOb
     with pytest.MonkeyPatch.context() as patch:
         patch.setattr(road, "lead_party", lambda setting: lead)
         agree(setting, terms)
+
+
+def pressed(after: str) -> Progress:
+    """A listener that stands for somebody who presses Ctrl-C once something is being done."""
+
+    def listener(doing: str, seconds: float, steps: int) -> None:
+        if doing.startswith(after):
+            raise KeyboardInterrupt
+
+    return listener
+
+
+@pytest.mark.parametrize(
+    ("after", "parties", "size", "options"),
+    [
+        ("counting by halves", 9, 9, 3),
+        ("counting every profile", 8, 6, 5),
+        ("looking for better rules", 8, 6, 3),
+    ],
+)
+def test_ctrl_c_leaves_it_undecided(after: str, parties: int, size: int, options: int) -> None:
+    setting = invented(parties, size, options, 1)
+    terms = Terms(decision="randomized", goals=("floor",), ir="none", tidy="none")
+    verdict = pose_terms(setting, terms, path="interim", progress=pressed(after))
+    assert (verdict.status, verdict.proved) == ("undecided", False)
+    assert verdict.reason == "interrupted; run it again to go on"
+
+
+def test_the_time_limit_leaves_it_undecided() -> None:
+    setting = invented(9, 9, 4, 1)
+    terms = Terms(decision="randomized", goals=("floor",), ir="none", tidy="none")
+    verdict = pose_terms(setting, terms, path="interim", time_limit=0.3)
+    assert (verdict.status, verdict.proved) == ("undecided", False)
+    assert verdict.reason == "the time limit was reached; give it more time with --time-limit"
+
+
+def test_progress_says_how_many_profiles_a_second() -> None:
+    heard: list[str] = []
+    verdict = pose_terms(
+        invented(8, 6, 5, 1),
+        Terms(goals=("revenue",), balance="none", tidy="none"),
+        path="interim",
+        progress=lambda doing, seconds, steps: heard.append(doing),
+    )
+    assert verdict.proved
+    assert any(doing.endswith("profiles a second") for doing in heard)
+
+
+def test_memory_stays_flat() -> None:
+    """Ten times the profiles take no more memory: nothing of the size of all profiles is held."""
+    peaks = []
+    for parties in (8, 9):
+        setting = invented(parties, 6, 3, 1)
+        rule = Rule((welfare_index(setting),))
+        tracemalloc.start()
+        blocks.count(setting, rule, None, Watch())
+        peaks.append(tracemalloc.get_traced_memory()[1])
+        tracemalloc.stop()
+    assert peaks[1] < 1.5 * peaks[0]
+    assert peaks[1] < 64 * 2**20

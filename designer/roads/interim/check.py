@@ -6,9 +6,10 @@ that the verdict carries over to the full program:
 
 1. the demands can be written in interim quantities at all (the road applies);
 2. every listed rule is one the decision demand allows, and its counts are recounted;
-3. the master's rows and columns are those that the scenario and the terms give;
-4. at the stated multipliers no rule whatever does better: the best one is found in one exact
-   pass over all profiles, slice by slice of the lead party's types.
+3. the master's rows and columns are those that the scenario and the terms give, and no lie
+   that has no row gains at its point;
+4. at the stated multipliers no rule whatever does better: the best one is found and counted
+   exactly (`counting.py`), or there is no other rule, since no profile is tied.
 
 By 3 and the balance lift (`mechanism.py`) a point of the master is a table of the full
 program; by 4 its multipliers are multipliers of the full program.
@@ -24,7 +25,7 @@ import numpy as np
 from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.plain import from_plain
 from designer.demands.terms import Terms
-from designer.engines.watch import Watch
+from designer.engines.watch import Interrupted, Watch
 from designer.program.program import Program
 from designer.proof.compare import same_program
 from designer.proof.vector import Vector
@@ -42,9 +43,16 @@ from designer.setting.setting import Setting
 def check(setting: Setting, document: dict[str, Any], watch: Watch | None = None) -> list[str]:
     """What keeps the document's verdict from being one about the full program; empty if nothing.
 
-    The document must have passed the plain checker.
+    The document must have passed the plain checker. Raises Stopped as `watch` says, and where
+    somebody presses Ctrl-C.
     """
-    watch = watch or Watch()
+    try:
+        return _check(setting, document, watch or Watch())
+    except KeyboardInterrupt:
+        raise Interrupted from None
+
+
+def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str]:
     try:
         terms = from_plain(document["terms"], setting)
         reduction = document["reduction"]

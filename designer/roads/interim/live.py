@@ -12,7 +12,9 @@ import numpy as np
 import numpy.typing as npt
 
 from designer.engines.floats import floats
+from designer.engines.listening import listening
 from designer.engines.model import load, quiet_highs
+from designer.engines.watch import Watch
 from designer.program.program import Program
 from designer.roads.interim.rule import Counts
 from designer.setting.setting import Setting
@@ -112,13 +114,21 @@ class Live:
         self.model.addCol(0.0, 0.0, np.inf, len(row), row.astype(np.int32), value)
         return column
 
-    def solve(self, seconds: float) -> str:
-        """Go on from the last basis; 'optimal', 'infeasible', 'unbounded' or another word."""
+    def solve(self, watch: Watch) -> str:
+        """Go on from the last basis; 'optimal', 'infeasible', 'unbounded' or another word.
+
+        Raises Stopped as `watch` says, and KeyboardInterrupt for Ctrl-C.
+        """
         import highspy
 
-        if np.isfinite(seconds):
-            self.model.setOptionValue("time_limit", self.model.getRunTime() + seconds)
-        self.model.run()
+        watch.check()
+        if watch.limit is not None:
+            self.model.setOptionValue("time_limit", self.model.getRunTime() + watch.left)
+        with listening(self.model, watch, attached=True) as stop:
+            self.model.run()
+        if stop.interrupted:
+            raise KeyboardInterrupt
+        watch.check()
         words = {
             highspy.HighsModelStatus.kOptimal: "optimal",
             highspy.HighsModelStatus.kInfeasible: "infeasible",
@@ -130,6 +140,11 @@ class Live:
     def value(self) -> float:
         """The objective of the last solve, in the engine's own money."""
         return float(self.model.getInfo().objective_function_value)
+
+    @property
+    def moved(self) -> bool:
+        """Whether the last solve changed the basis."""
+        return int(self.model.getInfo().simplex_iteration_count) > 0
 
     def release(self) -> None:
         """The demands can be met: the stand-ins go, and the goal comes."""

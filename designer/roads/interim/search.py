@@ -37,17 +37,18 @@ class Search:
         All of them where the engine has nothing to say.
         """
         centre: Duals | None = None
-        bits = COARSE
+        bits, added = COARSE, False
         while True:
             for g, place in self.master.columns[len(self.columns) :]:
                 self.columns.append(self.live.add(g, self.master.listed[place].counts))
             self.watch.tell("looking for better rules, listed", len(self.master.listed))
-            if self.live.solve(self.watch.left) != "optimal":
-                self.watch.check()
+            if self.live.solve(self.watch) != "optimal":
                 return list(range(len(self.columns)))
+            if added and not self.live.moved:
+                break  # what improves by less than the engine's tolerance moves nothing
             if self.live.standing and self.live.value <= CLOSE:
                 self.live.release()
-                centre = None
+                centre, added = None, False
                 continue
             out = self.live.duals()
             size = 1.0 + abs(out.bound)
@@ -61,6 +62,7 @@ class Search:
                     centre = bound
                 if found:
                     break
+            added = found
             if found:
                 continue
             if bits == FINE:
