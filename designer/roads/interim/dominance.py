@@ -68,7 +68,11 @@ def _within(
     block: Ints, points: list[Ints], weights: Ints | None, home: Ints, queries: list[Ints]
 ) -> Ints:
     """The same where only points whose block is the query's home count; ranks from 0."""
-    if len(points) > 2:
+    if len(points) > 3:
+        return _by_bits(block, points, weights, home, queries)
+    if len(points) == 3:
+        if not block.any() and not home.any():
+            return _three(points, weights, queries)
         return _by_bits(block, points, weights, home, queries)
     width = int(points[0].max()) + 1
     key, least = block * width + points[0], home * width + np.minimum(queries[0], width)
@@ -84,6 +88,50 @@ def _within(
         counted: Ints = total[last] - total[first]
         return counted
     return _wavelet(points[1][order], own, first, last, queries[1])
+
+
+def _three(points: list[Ints], weights: Ints | None, queries: list[Ints]) -> Ints:
+    """As `_by_bits` for three coordinates and one block, with one sort for all bits.
+
+    The points stay sorted by (last >> bit, first): each bit parts every block in two, stably.
+    """
+    order = np.argsort(points[0], kind="stable")
+    first, second, last = (at[order] for at in points)
+    own = None if weights is None else weights[order]
+    least = queries[2]
+    width = max(int(first.max()), int(queries[0].max())) + 1
+    answer = np.zeros(len(least), dtype=np.int64)
+    for bit in reversed(range(-1, max(int(last.max()), int(least.max())).bit_length())):
+        block = last >> (bit + 1)
+        one = (last >> bit) & 1 == 1 if bit >= 0 else np.ones(len(last), dtype=bool)
+        asked = np.flatnonzero((least >> bit) & 1 == 0) if bit >= 0 else np.arange(len(least))
+        mine = np.flatnonzero(one)
+        if len(mine) and len(asked):
+            home = least[asked] >> (bit + 1)
+            key = block[mine] * width + first[mine]
+            answer[asked] += _wavelet(
+                second[mine],
+                None if own is None else own[mine],
+                np.searchsorted(key, home * width + queries[0][asked]),
+                np.searchsorted(key, (home + 1) * width),
+                queries[1][asked],
+            )
+        if bit < 0:
+            break
+        new = np.concatenate([[True], block[1:] != block[:-1]])
+        starts = np.flatnonzero(new)
+        which = np.cumsum(new) - 1
+        zeros = np.concatenate([[0], np.cumsum(~one)])
+        start = starts[which]
+        before = zeros[:-1] - zeros[start]
+        within = np.arange(len(last)) - start - before
+        parted = zeros[np.concatenate([starts[1:], [len(last)]])] - zeros[starts]
+        place = start + np.where(one, parted[which] + within, before)
+        back = np.empty(len(last), dtype=np.int64)
+        back[place] = np.arange(len(last))
+        first, second, last = first[back], second[back], last[back]
+        own = None if own is None else own[back]
+    return answer
 
 
 def _by_bits(

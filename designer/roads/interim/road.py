@@ -137,7 +137,10 @@ class _Walk:
                 master.add(Listed(rule, counts))
                 return None
             master.lead = lead_party(setting)
-            self._list(rule)
+            if master.lead is None:
+                master.add(Listed(rule, counts))
+            else:
+                self._list(rule)
             return None
         master.lead = lead_party(setting)
         options = len(setting.options)
