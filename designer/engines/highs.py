@@ -193,9 +193,7 @@ HIGHS = Highs()
 
 @cache
 def _version() -> str:
-    from importlib.metadata import version
-
-    return version("highspy")
+    return str(quiet_highs().version())
 
 
 def report_of(

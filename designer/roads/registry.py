@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
+from importlib import import_module
 
 from designer.demands.terms import Terms
 from designer.engines.report import Engine
 from designer.engines.watch import Watch
 from designer.errors import Mistake, UsageError
 from designer.roads import full
-from designer.roads.interim.road import Interim
 from designer.roads.road import Road
 from designer.roads.settled import Settled
 from designer.roads.typegraph.road import TypeGraph
@@ -33,15 +34,60 @@ class Full:
         return full.travel(setting, terms, engine, watch)
 
 
-ROADS: tuple[Road, ...] = (Interim(), TypeGraph(), Full())
+class Later:
+    """A road that is loaded when it is first asked: most small questions never do."""
+
+    def __init__(self, name: str, module: str, road: str) -> None:
+        """Keep where it is."""
+        self.name, self.module, self.road = name, module, road
+
+    @cached_property
+    def found(self) -> Road:
+        """The road itself."""
+        road: Road = getattr(import_module(self.module), self.road)()
+        return road
+
+    def applies(self, setting: Setting, terms: Terms) -> str | None:
+        """As the road says."""
+        return self.found.applies(setting, terms)
+
+    def travel(self, setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> Settled:
+        """As the road does."""
+        return self.found.travel(setting, terms, engine, watch)
 
 
-@dataclass(frozen=True)
+ROADS: tuple[Road, ...] = (
+    Later("interim", "designer.roads.interim.road", "Interim"),
+    TypeGraph(),
+    Full(),
+)
+PLAIN = ROADS[-1]
+
+
+@dataclass(frozen=True, eq=False)
 class Choice:
-    """The road to take, and every road with None or the reason why it does not go there."""
+    """The road to take; `small` where that is the plain one because of its tidy table."""
 
     road: Road
-    reasons: tuple[tuple[str, str | None], ...]
+    setting: Setting
+    terms: Terms
+    small: bool = False
+
+    @cached_property
+    def reasons(self) -> tuple[tuple[str, str | None], ...]:
+        """Every road with None, or the reason why it is not taken."""
+        found = _reasons(self.setting, self.terms)
+        if not self.small:
+            return found
+        note = "the setting is small: the plain road also tidies the table"
+        return tuple(
+            (name, note if reason is None and name != PLAIN.name else reason)
+            for name, reason in found
+        )
+
+
+def _reasons(setting: Setting, terms: Terms) -> tuple[tuple[str, str | None], ...]:
+    return tuple((road.name, road.applies(setting, terms)) for road in ROADS)
 
 
 def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
@@ -50,16 +96,14 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
     Small settings take the plain road, whose table a tidy stage can still improve.
     Raises UsageError if the forced road does not exist or does not apply, or if none does.
     """
-    reasons = [(road.name, road.applies(setting, terms)) for road in ROADS]
     if forced is not None:
-        return Choice(_forced(forced, dict(reasons)), tuple(reasons))
-    small = full.tidies(setting, terms)
-    for road, (name, reason) in zip(ROADS, reasons, strict=True):
-        if reason is None and not (small and name != "full"):
-            if small:
-                note = "the setting is small: the plain road also tidies the table"
-                reasons = [(n, r if r is not None or n == "full" else note) for n, r in reasons]
-            return Choice(road, tuple(reasons))
+        return Choice(_forced(forced, dict(_reasons(setting, terms))), setting, terms)
+    if full.tidies(setting, terms) and PLAIN.applies(setting, terms) is None:
+        return Choice(PLAIN, setting, terms, small=True)
+    reasons = _reasons(setting, terms)
+    for road, (_, reason) in zip(ROADS, reasons, strict=True):
+        if reason is None:
+            return Choice(road, setting, terms)
     raise UsageError(
         [
             Mistake(
