@@ -15,8 +15,9 @@ from types import MappingProxyType
 from designer.engines.highs import HIGHS
 from designer.engines.report import Engine
 from designer.engines.watch import Stopped, Watch
-from designer.program.linear import LinearProgram
+from designer.program.linear import BoolArray, LinearProgram
 from designer.proof.exact import Exact
+from designer.proof.lazily import settle_part
 from designer.proof.outcome import Outcome
 from designer.proof.settle import Effort, Settled, settle
 from designer.setting.setting import IntArray
@@ -32,10 +33,12 @@ def prove(
     watch: Watch | None = None,
     scale: IntArray | None = None,
     branch_seconds: float = BRANCHING,
+    late: BoolArray | None = None,
 ) -> Outcome:
     """Solve a program and prove the answer exactly; see `Outcome` for what comes back.
 
     scale           positive int per row, for the elastic program of an infeasible one
+    late            bool per row: rows to leave out as long as they hold (continuous programs)
     branch_seconds  how long our own branch and bound may take to prove an integer optimum
 
     Never raises for a limit or Ctrl-C: the outcome is then undecided and says so.
@@ -51,6 +54,8 @@ def prove(
             from designer.proof.branch import prove_mixed
 
             outcome = prove_mixed(lp, engine, watch, effort, scale, branch_seconds)
+        elif late is not None:
+            outcome = _lazily(lp, late, engine, watch, effort)
         else:
             outcome = outcome_of(exact, settle(lp, engine, watch, effort, scale))
     except Stopped as stop:
@@ -64,6 +69,20 @@ def prove(
         engine=engine.name,
         seconds=MappingProxyType({"solve": solving, "prove": spent - solving}),
         effort=MappingProxyType(dict(effort.counts)),
+    )
+
+
+def _lazily(
+    lp: LinearProgram, late: BoolArray, engine: Engine, watch: Watch, effort: Effort
+) -> Outcome:
+    part = settle_part(lp, late, engine, watch, effort)
+    if part is None:
+        return outcome_of(Exact(lp), settle(lp, engine, watch, effort))
+    outcome = outcome_of(Exact(part.lp), part.settled)
+    return replace(
+        outcome,
+        dual=part.widened(outcome.dual, lp.rows),
+        farkas=part.widened(outcome.farkas, lp.rows),
     )
 
 

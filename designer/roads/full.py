@@ -21,6 +21,7 @@ from designer.proof.face import face, lift, reduced_costs
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
+from designer.roads.lazy import late_lies
 from designer.roads.settled import GoalResult, Settled
 from designer.setting.setting import IntArray, Setting, integers
 from designer.table import Table
@@ -59,6 +60,7 @@ class _Journey:
         self.engines: dict[str, None] = {}
         since = time.perf_counter()
         self.work = Formulation(setting, terms)
+        self.late = late_lies(self.work)
         self._spent("formulate", since)
         self.results: list[GoalResult] = []
         self.faces: list[Faced] = []
@@ -137,7 +139,7 @@ class _Journey:
             asked = _with_rule(lp, self.primal)
         elif self.faces and not whole:
             asked = face(lp, self.faces)
-        outcome = prove(asked, engine=self.engine, watch=self.watch)
+        outcome = self._prove(asked)
         for part, seconds in outcome.seconds.items():
             self.seconds[part] = self.seconds.get(part, 0.0) + seconds
         self.engines[outcome.engine] = None
@@ -166,11 +168,20 @@ class _Journey:
 
     primal: Vector | None = None
 
+    def _prove(self, lp: LinearProgram) -> Outcome:
+        """Prove a program, without the far lies as long as they hold and nothing needs them."""
+        late = self.late
+        if late is not None:
+            # goals add rows behind the lies; a lie that a settled goal made tight stays in
+            late = np.concatenate([late, np.zeros(lp.rows - len(late), dtype=bool)])
+            late &= ~lp.row_hi.finite
+        return prove(lp, engine=self.engine, watch=self.watch, late=late)
+
     def _impossible_without(self, program: Program) -> Settled:
         """The same question without goals: the certificate must speak of the demands alone."""
         self.results, self.faces = [], []
         stage = program.first(1)
-        outcome = prove(program.stage(0), engine=self.engine, watch=self.watch)
+        outcome = self._prove(program.stage(0))
         if outcome.status == "optimal":
             outcome = replace(
                 outcome, status="undecided", proved=False, reason="the engine contradicts itself"
