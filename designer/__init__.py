@@ -75,3 +75,8 @@ def __getattr__(name: str) -> Any:
     if name not in _HOMES:
         raise AttributeError(f"module 'designer' has no attribute {name!r}")
     return getattr(import_module(_HOMES[name]), name)
+
+
+def __dir__() -> list[str]:
+    """Every public name, loaded or not: what completion offers."""
+    return sorted({*globals(), *__all__})
