@@ -78,18 +78,19 @@ class Lifting:
             slow = slow + 1 if gain < SLOW else 0
             if slow > 60 or shift > MOST:
                 raise NotLifted("the float steps do not converge")
-            if largest(residual) == 0:
-                step, top = np.zeros(matrix.rows), -64
-            else:
-                step, top = self._step(residual, transposed)
-            correct = shift - max(0, top) - 1
-            if correct >= target or top == -64:
+            if largest(residual) == 0:  # then K total = 2**shift b: nothing is left to guess
                 self.bits = max(self.bits, shift)
-                found = reconstruct(total, shift, correct)
-                if found is not None and _holds(matrix, found, b):
+                found = _lowest(total, shift)
+                if _holds(matrix, found, b):
                     return found
-                if top == -64:
-                    raise NotLifted("a vanished residual without a solution")
+                raise NotLifted("a vanished residual without a solution")
+            step, top = self._step(residual, transposed)
+            correct = shift - max(0, top) - 1
+            if correct >= target:
+                self.bits = max(self.bits, shift)
+                guess = reconstruct(total, shift, correct)
+                if guess is not None and _holds(matrix, guess, b):
+                    return guess
                 target = int(correct * 1.6)
 
     def _step(self, residual: IntArray, transposed: bool) -> tuple[Floats, int]:
@@ -121,6 +122,13 @@ def _residual(matrix: Matrix, residual: IntArray, delta: IntArray, up: int) -> I
         delta = delta.astype(object)
     exact = (residual.astype(object) << up) - matrix.times(delta)
     return narrow(exact)
+
+
+def _lowest(total: IntArray, shift: int) -> tuple[IntArray, int]:
+    """Write total / 2**shift over the smallest power of two."""
+    spare = min((int(n) & -int(n)).bit_length() - 1 for n in total if n) if shift else 0
+    spare = min(spare, shift)
+    return narrow(total >> spare), 1 << (shift - spare)
 
 
 def _holds(matrix: Matrix, found: tuple[IntArray, int], b: IntArray) -> bool:
