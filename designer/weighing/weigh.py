@@ -17,6 +17,7 @@ from designer.weighing.frontier import (
     PAIRS,
     TRIPLE,
     Corner,
+    CornerList,
     Frontier,
     corner_list,
     payable,
@@ -175,10 +176,19 @@ class _Page:
             for known in trace(surface, x, y):
                 self.grow(frontiers=(*done, known))
             done.append(self.tradeoff.frontiers[-1])
+            self._unless_whole(f"frontier {x}-{y}", done[-1])
         if all(payable(self.terms, criterion) for criterion in TRIPLE):
             start = _embedded(done, self.terms)
             for triple in corner_list(self._surface(surfaces, TRIPLE), start):
                 self.grow(corners=triple)
+            if self.tradeoff.corners is not None:
+                self._unless_whole("corners", self.tradeoff.corners)
+
+    def _unless_whole(self, name: str, found: Frontier | CornerList) -> None:
+        """Say so where corners are missing."""
+        if not found.complete:
+            self.tradeoff.reasons[name] = found.reason
+            self.grow(complete=False)
 
     def _surface(self, surfaces: dict[bool, Surface], criteria: Sequence[str]) -> Surface:
         """The program with these criteria: its decision free where welfare is among them."""
