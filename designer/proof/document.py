@@ -237,7 +237,10 @@ def parse_document(raw: bytes) -> object:
         found = f"{failure.msg} at line {failure.lineno}, column {failure.colno}"
         raise _unreadable("", found, "JSON", again) from None
     except ValueError as failure:
-        raise _unreadable("", str(failure), "JSON as FORMAT.md describes it", again) from None
+        found = str(failure)[:200]
+        if "int_max_str_digits" in found:  # Python's word for it, meant for programmers
+            found = "a whole number of more digits than FORMAT.md writes in decimal"
+        raise _unreadable("", found, "JSON as FORMAT.md describes it", again) from None
     return parsed
 
 

@@ -244,8 +244,15 @@ def test_a_file_that_is_no_document_is_an_input_error(
 
 
 def test_a_decimal_that_python_refuses_is_an_input_error() -> None:
-    with pytest.raises(ProofError, match="Exceeds the limit"):
+    with pytest.raises(ProofError, match="more digits than FORMAT.md writes in decimal"):
         parse_document(b"[" + b"7" * 5000 + b"]")
+
+
+def test_a_long_key_is_cut() -> None:
+    key = b'"' + b"a" * 5000 + b'"'
+    with pytest.raises(ProofError, match="the key 'aaa") as caught:
+        parse_document(b"{" + key + b": 1, " + key + b": 2}")
+    assert len(str(caught.value)) < 400
 
 
 def test_a_file_that_cannot_be_opened_is_an_input_error(
