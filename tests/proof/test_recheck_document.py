@@ -244,7 +244,7 @@ def test_a_file_that_is_no_document_is_an_input_error(
 
 
 def test_a_decimal_that_python_refuses_is_an_input_error() -> None:
-    with pytest.raises(ProofError, match="more digits than FORMAT.md writes in decimal"):
+    with pytest.raises(ProofError, match=r"more digits than FORMAT\.md writes in decimal"):
         parse_document(b"[" + b"7" * 5000 + b"]")
 
 
