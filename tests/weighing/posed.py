@@ -45,11 +45,11 @@ def mix_of(setting: Setting, demands: Demands) -> Mix:
 
 
 def possible(setting: Setting, terms: Terms) -> bool:
-    """What `pose` says, proved; no payment is at least a floor above its cap."""
+    """What `pose` says on the plain road, proved; nothing lies between a floor and a lower cap."""
     low, high = terms.limits.pays_at_least, terms.limits.pays_at_most
     if low is not None and high is not None and low > high:
         return False
-    verdict = pose_terms(setting, replace(terms, goals=("any",), tidy="none"))
+    verdict = pose_terms(setting, replace(terms, goals=("any",), tidy="none"), path="full")
     assert verdict.proved, verdict.reason
     return verdict.status == "possible"
 

@@ -10,6 +10,7 @@ from fractions import Fraction
 
 import pytest
 from hypothesis import HealthCheck, assume, given, settings
+from hypothesis import strategies as st
 
 from designer import Demands, pose, weigh
 from designer.demands.terms import Terms
@@ -215,7 +216,7 @@ def three_hold(setting: Setting, page: Tradeoff, seed: int) -> None:
         asked = replace(
             page.terms, decision="randomized", goals=("welfare",), subsidy=money, tidy="none"
         )
-        verdict = pose_terms(lowered(setting, names, shortfall), asked)
+        verdict = pose_terms(lowered(setting, names, shortfall), asked, path="full")
         assert verdict.proved
         least = envelope(corners, money, shortfall)
         if least is None:
@@ -300,17 +301,24 @@ def test_the_hull_of_points_drawn_at_random(seed: int) -> None:
 
 
 @settings(max_examples=20, deadline=None, suppress_health_check=list(HealthCheck))
-@given(small_settings(most_profiles=6, most_options=2), STRICT)
-def test_averages_decide_what_profiles_do(setting: Setting, demands: Demands) -> None:
+@given(
+    small_settings(most_profiles=6, most_options=2),
+    STRICT,
+    st.sampled_from(("none", "bayesian")),
+    st.sampled_from(("none", "ex-ante", "interim")),
+)
+def test_averages_decide_what_profiles_do(
+    setting: Setting, demands: Demands, ic: str, ir: str
+) -> None:
     """Where payments enter on average only, the least money is that of the full program."""
-    demands = replace(demands, ic="bayesian", limits=None, ir="interim")
+    demands = replace(demands, ic=ic, limits=None, ir=ir)
     terms = demands.over(setting)
     reduced = on_average(setting, terms)
     assume(reduced is not None)
     relaxed = Relaxed(setting, terms, {"subsidy": (None, None)}, HIGHS, Watch())
     assert relaxed.averaged
     answer = relaxed.minimise({"money": Fraction(1)})
-    verdict = pose(setting, replace(demands, goal="outside-money", tidy="none"))
+    verdict = pose(setting, replace(demands, goal="outside-money", tidy="none"), path="full")
     words = {"optimal": "possible", "infeasible": "impossible", "unbounded": "unbounded"}
     assert verdict.status == words[answer.status]
     if answer.status == "optimal" and answer.at is not None:
