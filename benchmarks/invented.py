@@ -7,12 +7,19 @@ itself, and a joint prior goes into a sheet beside it, as an analyst would keep 
 from __future__ import annotations
 
 import itertools
+import random
 from collections.abc import Iterable, Mapping, Sequence
 
 Files = dict[str, str]
 Asked = Mapping[str, str | Sequence[str]]
 
 PARTIES = ("Aldermoor", "Brackwell", "Corrie", "Dunmere", "Eskham", "Fallow", "Garth", "Hythe")
+
+
+def named(party: int) -> str:
+    """A party's name; numbered from the ninth on."""
+    again, place = divmod(party, len(PARTIES))
+    return f"{PARTIES[place]}{again + 1}" if again else PARTIES[place]
 
 
 def ladder(party: int, size: int) -> list[int]:
@@ -30,7 +37,7 @@ def joint_project(parties: int, types: int, asked: Asked) -> Files:
     outlay = parties * (5 * types) // 2
     blocks = [
         _party(
-            PARTIES[i],
+            named(i),
             types=ladder(i, types),
             weights=weights(i, types),
             value={"build": "type", "leave": 0},
@@ -60,13 +67,14 @@ def trade(size: int, asked: Asked) -> Files:
 
 def one_item(bidders: int, types: int, asked: Asked) -> Files:
     """One item among bidders, or kept back."""
-    options = [*PARTIES[:bidders], "nobody"]
+    names = [named(i) for i in range(bidders)]
+    options = [*names, "nobody"]
     blocks = [
         _party(
-            PARTIES[i],
+            names[i],
             types=ladder(i, types),
             weights=weights(i, types),
-            value={option: "type" if option == PARTIES[i] else 0 for option in options},
+            value={option: "type" if option == names[i] else 0 for option in options},
         )
         for i in range(bidders)
     ]
@@ -88,6 +96,21 @@ def correlated_item(bidders: int, types: int, asked: Asked) -> Files:
     first = kept.index("[decisions]")
     kept.insert(first, 'joint = "joint.csv"')
     return {"scenario.toml": "\n".join(kept) + "\n", "joint.csv": "\n".join(lines) + "\n"}
+
+
+def general(parties: int, types: int, options: int, high: int, asked: Asked) -> Files:
+    """Any worth below `high` for any option, drawn by a fixed seed; even odds."""
+    draw = random.Random(5)  # noqa: S311 - a sample, not a secret
+    names = [f"site{k + 1}" for k in range(options)]
+    blocks = []
+    for i in range(parties):
+        kinds = []
+        for a in range(types):
+            worths = (f"w{k + 1} = {draw.randrange(high)}" for k in range(options))
+            kinds.append(f'{{ name = "t{a}", {", ".join(worths)} }}')
+        value = {name: f"w{k + 1}" for k, name in enumerate(names)}
+        blocks.append(_party(named(i), types=kinds, weights=[1] * types, value=value))
+    return _scenario("A choice of sites", names, blocks, asked)
 
 
 def common_worth(types: int, asked: Asked) -> Files:

@@ -16,6 +16,12 @@ from benchmarks.invented import Asked, Files
 COMPARED = ("ours", "full", "textbook", "linprog", "highs")
 """End to end beside every baseline."""
 
+REDUCED = ("ours", "full", "textbook", "highs", "ipm")
+"""Where a road does away with most of the program: beside both methods of the engine."""
+
+ENGINES = ("ours", "simplex", "ipm")
+"""Beside the engine's two methods alone."""
+
 LARGE = ("ours", "full", "highs")
 """Beside the engine on our own arrays only: the other two would run for many minutes."""
 
@@ -29,6 +35,7 @@ class Problem:
     ways      names of `benchmarks.ways.WAYS`
     small     answered in a fraction of a second by every way: for the tests
     smoke     whether the smoke run includes it too
+    budget    seconds per answer, where the run's own would be too few
     """
 
     name: str
@@ -38,6 +45,7 @@ class Problem:
     ways: tuple[str, ...] = COMPARED
     small: bool = False
     smoke: bool = False
+    budget: float | None = None
 
 
 def _asks(
@@ -66,6 +74,12 @@ def _project(parties: int, types: int, asked: Asked) -> Callable[[], Files]:
     return partial(invented.joint_project, parties, types, asked)
 
 
+def _general(
+    parties: int, types: int, options: int, asked: Asked, high: int = 1000
+) -> Callable[[], Files]:
+    return partial(invented.general, parties, types, options, high, asked)
+
+
 def _trade(size: int, asked: Asked) -> Callable[[], Files]:
     return partial(invented.trade, size, asked)
 
@@ -82,7 +96,60 @@ PROBLEMS: tuple[Problem, ...] = (
     Problem(
         "floor-3x4", "joint project, best floor", _project(3, 4, FLOOR), small=True, smoke=True
     ),
-    Problem("floor-3x8", "joint project, best floor", _project(3, 8, FLOOR)),
+    Problem(
+        "general-2x3x3",
+        "a choice of sites, vector types, most rent",
+        _general(2, 3, 3, RENT),
+        ways=("ours", "interim", "full", "textbook", "simplex", "ipm"),
+        small=True,
+        smoke=True,
+    ),
+    Problem("rule-3x4x3", "a choice of sites", _general(3, 4, 3, MONEY), small=True),
+    Problem(
+        "whole-3x25", "everything asked at once", _project(3, 25, WHOLE), "impossible", REDUCED
+    ),
+    Problem("rule-9x10x3", "a choice of sites, 10^9", _general(9, 10, 3, MONEY), ways=("ours",)),
+    Problem(
+        "rule-10x10x3",
+        "a choice of sites, 10^10",
+        _general(10, 10, 3, MONEY),
+        ways=("ours",),
+        budget=90.0,
+    ),
+    Problem("money-8x9", "joint project, 4.3e7", _project(8, 9, MONEY), ways=("ours",)),
+    Problem("money-12x10", "joint project, 10^12", _project(12, 10, MONEY), ways=("ours",)),
+    Problem(
+        "wide-12x10",
+        "two sites, worths below 10^7, 10^12",
+        _general(12, 10, 2, MONEY, 10**7),
+        ways=("ours",),
+    ),
+    Problem("money-20x10", "joint project, 10^20", _project(20, 10, MONEY), ways=("ours",)),
+    Problem("second-200", "sale, best lottery", _trade(200, SECOND), ways=ENGINES),
+    Problem("second-1000", "sale, best lottery", _trade(1000, SECOND), ways=("ours",)),
+    Problem("free-6x60", "joint project, best lottery", _project(6, 60, SECOND), ways=("ours",)),
+    Problem(
+        "item-4x12", "one item, most rent", partial(invented.one_item, 4, 12, RENT), ways=ENGINES
+    ),
+    Problem(
+        "item-50x20",
+        "one item, most rent",
+        partial(invented.one_item, 50, 20, RENT),
+        ways=("ours",),
+    ),
+    Problem(
+        "general-4x12x4",
+        "a choice of sites, vector types, most rent",
+        _general(4, 12, 4, RENT, 100),
+        ways=ENGINES,
+    ),
+    Problem(
+        "general-6x10x4",
+        "a choice of sites, vector types, most rent",
+        _general(6, 10, 4, RENT, 100),
+        ways=("ours",),
+        budget=60.0,
+    ),
     Problem("floor-3x12", "joint project, best floor", _project(3, 12, FLOOR)),
     Problem(
         "floor-3x15",
@@ -90,8 +157,13 @@ PROBLEMS: tuple[Problem, ...] = (
         _project(3, 15, FLOOR),
         ways=("shell", *COMPARED, "textbook-quick"),
     ),
-    Problem("money-3x4", "joint project, least outside money", _project(3, 4, MONEY), small=True),
-    Problem("money-3x12", "joint project, least outside money", _project(3, 12, MONEY)),
+    Problem(
+        "money-3x4",
+        "joint project, least outside money",
+        _project(3, 4, MONEY),
+        ways=(*COMPARED, "interim", "ipm"),
+        small=True,
+    ),
     Problem("money-3x15", "joint project, least outside money", _project(3, 15, MONEY)),
     Problem("money-3x22", "10,648 balance rows", _project(3, 22, MONEY), ways=LARGE),
     Problem("floor-3x22", "10,648 balance rows", _project(3, 22, FLOOR), ways=LARGE),
@@ -111,7 +183,11 @@ PROBLEMS: tuple[Problem, ...] = (
         "impossible",
     ),
     Problem(
-        "certain-3x4", "joint project, honest in every case", _project(3, 4, CERTAIN), small=True
+        "certain-3x4",
+        "joint project, honest in every case",
+        _project(3, 4, CERTAIN),
+        ways=(*COMPARED, "type-graph"),
+        small=True,
     ),
     Problem("certain-3x9", "joint project, honest in every case", _project(3, 9, CERTAIN)),
     Problem(

@@ -8,11 +8,16 @@ from collections.abc import Sequence
 from datetime import UTC, datetime
 from importlib.metadata import version
 
+from benchmarks.growth import Family, rows
 from benchmarks.measure import Measured, Series
 from benchmarks.startup import Start
 from benchmarks.targets import Target
+from benchmarks.ways import ROADS
 
-BASELINES = ("full", "textbook", "textbook-quick", "linprog", "highs")
+BASELINES = (
+    *("full", "interim", "type-graph", "textbook", "textbook-quick", "linprog"),
+    *("highs", "simplex", "ipm"),
+)
 PARTS = ("read", "count", "formulate", "solve", "prove", "table", "check", "save")
 VERSIONS = ("highspy", "numpy", "scipy", "pulp")
 
@@ -25,13 +30,25 @@ peak of the whole process in MiB, imports included.
   audit, verdict, proof) is timed apart: the other ways save nothing.
 - **full**: the same on the plain program; **ours** takes the first road that applies, named
   beside its answer.
+- **interim**, **type-graph**: the same by the road of that name.
 - **shell**: `designer pose FILE --json`, start-up included.
 - **textbook**: PuLP and HiGHS with a loop per quantifier (`tests/oracles/textbook.py`), from the
   setting in memory to a float answer; **textbook-quick** adds terms up in dictionaries.
 - **linprog**: scipy's `linprog` on sparse rows built with numpy (`benchmarks/naive.py`), likewise.
 - **highs**: HiGHS alone on our arrays, already floats: it starts where our formulation ends.
+  **simplex** and **ipm** name its method; interior point stops before the crossover to a vertex.
+- **B/profile**: peak memory less what the process held once warm, over the number of profiles;
+  from 1,000 profiles on, since below that it is noise. A road that never lists the profiles
+  comes out near 0.
 - Times in the form `4.2×` say how often our time fits into theirs; `>` marks a way that was
   stopped, so that the true figure is larger.
+"""
+
+
+GROWTH = """\
+Least-squares slope of the quantity's logarithm on that of T, the types a party has, or of T^n,
+the profiles. Joint projects; bytes are beyond the warm process. Fixed costs flatten the fit at
+small sizes, so the slope between the last two sizes stands beside it.
 """
 
 
@@ -62,21 +79,36 @@ def compared(measured: Sequence[Measured]) -> str:
                 sign = "> " if ratio[2] else ""
                 told = f"{sign}{ratio[0]:.3g}× ({sign}{ratio[1]:.3g}×)"
             rows.append(
-                [one.problem.name, way, _time(series), _peak(series), told, _answer(series)]
+                [
+                    one.problem.name,
+                    way,
+                    _time(series),
+                    _peak(series),
+                    _bytes(series, one),
+                    told,
+                    _answer(series),
+                ]
             )
-    return table(["problem", "way", "seconds", "MiB", "times ours", "answer"], rows)
+    head = ["problem", "way", "seconds", "MiB", "B/profile", "times ours", "answer"]
+    return table(head, rows)
+
+
+def growing(families: Sequence[tuple[Family, Sequence[Measured]]]) -> str:
+    """Fitted exponents beside the theoretical ones, a row per family and quantity."""
+    head = ["family", "quantity", "parties × types", "fitted", "last step", "theory", "why"]
+    return table(head, [row for family, found in families for row in rows(family, found)])
 
 
 def shares(measured: Sequence[Measured]) -> str:
     """Where our time goes, in percent, saving included."""
     rows = []
     for one in measured:
-        for way in ("ours", "full"):
+        for way in ROADS:
             series = one.series.get(way)
             if series is None or not series.runs:
                 continue
             run = series.runs[0]
-            if way == "ours" and run.path == "full" and "full" in one.series:
+            if way == "ours" and run.path in one.series:
                 continue  # one and the same
             total = series.part(*PARTS)
             rows.append(
@@ -147,6 +179,7 @@ def document(
     start: Sequence[Start],
     found: Sequence[Target],
     faults: Sequence[str],
+    families: Sequence[tuple[Family, Sequence[Measured]]] = (),
 ) -> str:
     """Everything, as one Markdown document."""
     parts = ["# Benchmarks\n", "Written by `python -m benchmarks --write`.\n", machine(), NOTES]
@@ -154,6 +187,7 @@ def document(
         ("Targets", aims(found), found),
         ("Start-up", starting(start), start),
         ("Beside other ways", compared(measured), measured),
+        ("Growth", f"{GROWTH}\n{growing(families)}" if families else "", families),
         ("Where our time goes", shares(measured), measured),
         ("Formulating and rechecking alone", alone(measured), measured),
     ):
@@ -164,6 +198,10 @@ def document(
         parts.append("\n".join(f"- {fault}" for fault in faults) + "\n")
     else:
         parts.append("All ways gave the same answers; all of ours are proved.\n")
+    every = [*measured, *(one for _, some in families for one in some)]
+    left = [f"{one.problem.name}, {way}" for one in every for way in one.left_out]
+    if left:
+        parts.append(f"Left out for want of time (`--within`): {'; '.join(left)}.\n")
     says = "\n".join(f"- **{one.problem.name}**: {one.problem.says}" for one in measured)
     parts += ["## The problems\n", says + "\n"]
     return "\n".join(parts)
@@ -173,12 +211,22 @@ def _time(series: Series) -> str:
     if series.failure:
         return "failed"
     if series.median is None:
-        return f"> {series.over:.0f}" if series.over else "–"
+        return f"> {series.over:.0f}" if series.over else "not measured"
     return f"{seconds(series.median)} ({seconds(series.least)})"
 
 
 def _peak(series: Series) -> str:
     return "–" if series.peak is None else f"{series.peak:,.0f}"
+
+
+def _bytes(series: Series, one: Measured) -> str:
+    """Bytes per profile; the number of profiles is the same in every way."""
+    every = (kept.quantity("profiles") for kept in one.series.values())
+    profiles = next((count for count in every if count), None)
+    grown = series.quantity("bytes")
+    if grown is None or profiles is None or profiles < 1000:
+        return "–"
+    return f"{grown / profiles:.3g}"
 
 
 def _answer(series: Series) -> str:

@@ -15,6 +15,32 @@ NONZEROS = 900_000
 """Nonzeros from which a program counts as one of about a million."""
 
 
+FASTER = {
+    "whole-3x25": {"highs": 300, "textbook": 1000},
+    "second-200": {"simplex": 1000, "ipm": 1000},
+    "item-4x12": {"simplex": 100, "ipm": 100},
+    "general-4x12x4": {"simplex": 20, "ipm": 20},
+    "mean-4x12": {"highs": 100},
+}
+"""Times as fast as each way we are to be."""
+
+WITHIN = {
+    "rule-9x10x3": 15,
+    "rule-10x10x3": 90,
+    "money-8x9": 1,
+    "money-12x10": 5,
+    "money-20x10": 1,
+    "second-1000": 5,
+    "free-6x60": 5,
+    "item-50x20": 10,
+    "general-6x10x4": 60,
+}
+"""Seconds in which we are to have answered and proved."""
+
+GIB = 1024.0
+"""MiB that such an answer may take."""
+
+
 @dataclass(frozen=True)
 class Target:
     """One figure: what was wanted, what was measured, whether it was met."""
@@ -69,6 +95,7 @@ def targets(measured: Iterable[Measured], start: Iterable[Start]) -> list[Target
             # Two times as noisy as one; the least of each is the better judge of a loss.
             met = max(gain[:2]) >= 0.9
             found.append(Target(f"{name}: {road}, no slower than full", "≥ 1×", told, met))
+        found += _faster(one) + _within(one)
         made = one.series.get("formulate")
         if made and made.median and made.peak and made.runs[0].sizes["nonzeros"] >= NONZEROS:
             told = f"{made.median:.2f} s, {made.peak:,.0f} MiB"
@@ -79,3 +106,27 @@ def targets(measured: Iterable[Measured], start: Iterable[Start]) -> list[Target
             told = f"{checked.median:.2f} s"
             found.append(Target(f"{name}: recheck", "< 2 s", told, checked.median < 2))
     return found
+
+
+def _faster(one: Measured) -> list[Target]:
+    """A stopped way gives a lower bound only: it can meet a target, and never proves a miss."""
+    found = []
+    for way, wanted in FASTER.get(one.problem.name, {}).items():
+        ratio = one.ratio(way)
+        if ratio is not None:
+            told = f"{'> ' if ratio[2] else ''}{ratio[0]:.3g}×"
+            says = f"{one.problem.name}: ours, faster than {way}"
+            found.append(Target(says, f"≥ {wanted:,}×", told, ratio[0] >= wanted))
+    return found
+
+
+def _within(one: Measured) -> list[Target]:
+    wanted, ours = WITHIN.get(one.problem.name), one.series.get("ours")
+    if wanted is None or ours is None or (ours.median is None and ours.over is None):
+        return []
+    says = f"{one.problem.name}: ours, answered and proved"
+    asked = f"≤ {wanted} s, ≤ 1 GiB"
+    if ours.median is None or ours.peak is None:
+        return [Target(says, asked, f"> {ours.over:.0f} s", False)]
+    met = ours.median <= wanted and ours.peak <= GIB and all(run.proved for run in ours.runs)
+    return [Target(says, asked, f"{ours.median:.2f} s, {ours.peak:,.0f} MiB", met)]

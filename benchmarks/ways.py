@@ -19,6 +19,12 @@ from functools import cache
 from pathlib import Path
 from typing import Any
 
+SAVED = 200_000
+"""Profiles up to which saving is timed too."""
+
+ROADS = ("ours", "full", "interim", "type-graph")
+"""The ways that are ours: the road that is taken by itself, and each by name."""
+
 
 @dataclass(frozen=True)
 class Run:
@@ -47,9 +53,12 @@ def ours(path: Path, road: str | None = None) -> Run:
     reading = time.perf_counter() - began
     verdict = pose(setting, path=road)
     seconds = time.perf_counter() - began
-    began = time.perf_counter()
-    _save(verdict)
-    saving = time.perf_counter() - began
+    parts = {"read": reading, **verdict.seconds}
+    # Saving writes a line per profile: where there are too many, no table is kept.
+    if setting.profiles <= SAVED:
+        began = time.perf_counter()
+        _save(verdict)
+        parts["save"] = time.perf_counter() - began
     matrix = verdict.program.matrix
     value = verdict.goal_value
     named = verdict.goals[0].goal != "any"
@@ -60,14 +69,29 @@ def ours(path: Path, road: str | None = None) -> Run:
         "" if value is None or not named else _short(str(value)),
         verdict.proved,
         verdict.path,
-        {"read": reading, **verdict.seconds, "save": saving},
-        {"rows": matrix.rows, "columns": matrix.columns, "nonzeros": matrix.nonzeros},
+        parts,
+        {
+            "rows": matrix.rows,
+            "columns": matrix.columns,
+            "nonzeros": matrix.nonzeros,
+            "profiles": setting.profiles,
+        },
     )
 
 
 def full(path: Path) -> Run:
     """The same, on the plain program that reduces nothing."""
     return ours(path, "full")
+
+
+def interim(path: Path) -> Run:
+    """The same, by the interim road."""
+    return ours(path, "interim")
+
+
+def type_graph(path: Path) -> Run:
+    """The same, by the type-graph road."""
+    return ours(path, "type-graph")
 
 
 def textbook(path: Path, quick: bool = False) -> Run:
@@ -101,7 +125,7 @@ def linprog(path: Path) -> Run:
     return Run(ended - began, status, value, parts=parts)
 
 
-def highs(path: Path) -> Run:
+def highs(path: Path, solver: str = "choose") -> Run:
     """HiGHS alone on our arrays, already floats: pass the model and run, nothing else."""
     from designer import Demands, read_scenario
     from designer.demands.formulate import formulate
@@ -117,6 +141,9 @@ def highs(path: Path) -> Run:
     model = quiet_highs()
     if not load(model, arrays):
         raise RuntimeError("HiGHS refused the model")
+    model.setOptionValue("solver", solver)
+    if solver == "ipm":
+        model.setOptionValue("run_crossover", "off")
     model.run()
     seconds = time.perf_counter() - began
     words = {7: "possible", 8: "impossible", 9: "undecided", 10: "unbounded"}
@@ -128,6 +155,16 @@ def highs(path: Path) -> Run:
             reached = -reached
         value = float(reached / lp.cost_den + float(lp.cost_const))
     return Run(seconds, status, value)
+
+
+def simplex(path: Path) -> Run:
+    """The same by the simplex method."""
+    return highs(path, "simplex")
+
+
+def ipm(path: Path) -> Run:
+    """The same by interior point, without crossover to a vertex."""
+    return highs(path, "ipm")
 
 
 def formulate_only(path: Path) -> Run:
@@ -170,10 +207,14 @@ def recheck_only(path: Path) -> Run:
 WAYS: dict[str, Callable[[Path], Run]] = {
     "ours": ours,
     "full": full,
+    "interim": interim,
+    "type-graph": type_graph,
     "textbook": textbook,
     "textbook-quick": textbook_quick,
     "linprog": linprog,
     "highs": highs,
+    "simplex": simplex,
+    "ipm": ipm,
     "formulate": formulate_only,
     "recheck": recheck_only,
 }

@@ -9,7 +9,7 @@ import pytest
 
 from benchmarks import report
 from benchmarks.__main__ import main
-from benchmarks.child import peak_mib, write
+from benchmarks.child import LONG, peak_mib, write
 from benchmarks.measure import Measured, Series, measure
 from benchmarks.registry import PROBLEMS, Problem, problem
 from benchmarks.targets import Target, targets
@@ -77,8 +77,8 @@ def test_a_measuring_process_reports_back() -> None:
 
 def test_a_way_that_outlives_its_budget_is_stopped() -> None:
     one = replace(problem("floor-3x15"), ways=("textbook",))
-    found = measure(one, rounds=2, budget=-15.0, once=True, tell=lambda _: None)
-    assert found.series["textbook"].over == -15.0
+    found = measure(one, rounds=2, budget=-LONG, once=True, tell=lambda _: None)
+    assert found.series["textbook"].over == -LONG
     assert found.series["textbook"].runs == []
 
 
@@ -134,3 +134,31 @@ def test_listing_and_unknown_names(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["--list"]) == 0
     assert "floor-3x15" in capsys.readouterr().out
     assert main(["--only", "nothing-of-that-name"]) == 2
+
+
+def test_a_turn_that_does_not_fit_is_left_out() -> None:
+    one = replace(problem("second-4"), ways=("ours",))
+    found = measure(one, rounds=1, budget=60.0, once=True, tell=lambda _: None, until=0.0)
+    assert found.faults == []
+    assert found.series["ours"].runs == []
+    assert "not measured" in report.compared([found])
+    assert "(`--within`): second-4, ours." in report.document([found], [], [], [])
+
+
+@pytest.mark.parametrize("met", [True, False])
+def test_a_stopped_way_can_meet_a_target(met: bool) -> None:
+    ours = series("ours", 0.01 if met else 1.0)
+    found = Measured(problem("whole-3x25"), {"ours": ours, "highs": series("highs", over=20.0)})
+    told = "> 2e+03×" if met else "> 20×"
+    assert targets([found], []) == [
+        Target("whole-3x25: ours, faster than highs", "≥ 300×", told, met)
+    ]
+
+
+def test_an_answer_in_time_counts_only_if_proved() -> None:
+    ours = series("ours", 0.5)
+    found = Measured(problem("money-8x9"), {"ours": ours})
+    says = "money-8x9: ours, answered and proved"
+    assert targets([found], []) == [Target(says, "≤ 1 s, ≤ 1 GiB", "0.50 s, 40 MiB", True)]
+    ours.runs[0] = replace(ours.runs[0], proved=False)
+    assert not targets([found], [])[0].met
