@@ -32,9 +32,13 @@ def weights(party: int, size: int) -> list[int]:
     return [1 + (a * (party + 2) + party) % 3 for a in range(size)]
 
 
-def joint_project(parties: int, types: int, asked: Asked) -> Files:
-    """Build or leave; the outlay is about what the parties' middle types would bear."""
-    outlay = parties * (5 * types) // 2
+def joint_project(parties: int, types: int, asked: Asked, untied: bool = False) -> Files:
+    """Build or leave; the outlay is about what the parties' middle types would bear.
+
+    `untied`: half a crown more, so that no case leaves the choice open.
+    """
+    whole = parties * (5 * types) // 2
+    outlay: int | str = f"{2 * whole + 1}/2" if untied else whole
     blocks = [
         _party(
             named(i),
@@ -158,12 +162,15 @@ def _scenario(
     options: Iterable[str],
     blocks: Iterable[str],
     asked: Asked,
-    outlay: Mapping[str, int] | None = None,
+    outlay: Mapping[str, int | str] | None = None,
 ) -> Files:
     lines = [f'title = "{title}"', 'money = "crowns"', 'note = "Invented data."', ""]
     lines += ["[decisions]", f"options = {_list(options)}", ""]
     if outlay:
-        pairs = ", ".join(f"{option} = {amount}" for option, amount in outlay.items())
+        pairs = ", ".join(
+            f'{option} = "{amount}"' if isinstance(amount, str) else f"{option} = {amount}"
+            for option, amount in outlay.items()
+        )
         lines += ["[designer]", f"outlay = {{ {pairs} }}"]
     for block in blocks:
         lines += ["", block]

@@ -124,7 +124,12 @@ PROBLEMS: tuple[Problem, ...] = (
         _general(12, 10, 2, MONEY, 10**7),
         ways=("ours",),
     ),
-    Problem("money-20x10", "joint project, 10^20", _project(20, 10, MONEY), ways=("ours",)),
+    Problem(
+        "money-20x10",
+        "joint project, 10^20",
+        partial(invented.joint_project, 20, 10, MONEY, untied=True),
+        ways=("ours",),
+    ),
     Problem("second-200", "sale, best lottery", _trade(200, SECOND), ways=ENGINES),
     Problem("second-1000", "sale, best lottery", _trade(1000, SECOND), ways=("ours",)),
     Problem("free-6x60", "joint project, best lottery", _project(6, 60, SECOND), ways=("ours",)),

@@ -39,7 +39,7 @@ peak of the whole process in MiB, imports included.
   **simplex** and **ipm** name its method; interior point stops before the crossover to a vertex.
 - **B/profile**: peak memory less what the process held once warm, over the number of profiles;
   from 1,000 profiles on, since below that it is noise. A road that never lists the profiles
-  comes out near 0.
+  comes out near 0. Saving is in it, up to 200,000 profiles; from there nothing is saved.
 - Times in the form `4.2×` say how often our time fits into theirs; `>` marks a way that was
   stopped, so that the true figure is larger.
 """
