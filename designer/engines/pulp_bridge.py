@@ -6,11 +6,19 @@ back as a point; HiGHS then makes a corner of the point, and the exact proof dec
 
 from __future__ import annotations
 
+import contextlib
+import json
 import math
+import os
+import signal
+import subprocess
+import sys
+import tempfile
 import time
 import warnings
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -28,6 +36,12 @@ WIDER = 2.0**7
 """Each further box is wider by this much."""
 BOXES = 3
 """Boxes tried before 'infeasible' is called unclear."""
+
+PATIENCE = 3.0
+"""Seconds an engine gets beyond the time limit to say what it has."""
+GLANCE = 0.2
+"""Seconds between two looks at the clock."""
+CHILD = Path(__file__).with_name("pulp_child.py")
 
 NEEDS_BOX = ("CBC", "COIN", "CYLP")
 """Engines whose dual simplex invents bounds of 1e10 on free columns and may stop there."""
@@ -104,31 +118,78 @@ class PulpEngine:
         return replace(report, status="unclear", seconds=seconds)
 
     def _once(self, program: FloatProgram, watch: Watch, box: float) -> Report:
-        import pulp
-
         began = time.monotonic()
         if watch.left <= 0:
             return Report("time-limit", self.name, message="no time left to start")
-        options: dict[str, Any] = {"msg": False}
-        if watch.limit is not None:
-            options["timeLimit"] = max(1.0, watch.left)
-        with silent_stdout(), warnings.catch_warnings():
-            # the user chose this engine by name: that PuLP 4 drops it is no news to act on
-            warnings.simplefilter("ignore", DeprecationWarning)
-            columns, problem = pulp.LpProblem.fromDict(as_dict(program, box))
-            try:
-                said = problem.solve(pulp.getSolver(self.solver, **options))
-            except (pulp.PulpSolverError, OSError, RuntimeError, ValueError) as error:
-                return Report("failed", self.name, message=str(error))
+        asked = {
+            "solver": self.solver,
+            "seconds": None if watch.limit is None else max(1.0, watch.left),
+            "program": as_dict(program, box),
+        }
+        told = _in_a_process(asked, watch)
         seconds = time.monotonic() - began
-        # PuLP 4 returns statistics, earlier ones the status itself
-        status = _said(int(getattr(said, "status", said)), watch)
-        values = [columns[f"x{j}"].varValue for j in range(len(program.cost))]
+        if told is None:
+            return Report("time-limit", self.name, seconds=seconds, message="ended by us")
+        if "failed" in told:
+            return Report("failed", self.name, seconds=seconds, message=str(told["failed"]))
+        status = _said(int(told["status"]), watch)
+        values = [told["values"].get(f"x{j}") for j in range(len(program.cost))]
         x: FloatArray | None = None
         if status in ("optimal", "time-limit") and any(value is not None for value in values):
             # PuLP drops columns that no row and no cost mentions
             x = program.point(_filled(values, program))
         return Report(status, self.name, x, seconds=seconds, message=str(status))
+
+
+def _in_a_process(asked: dict[str, Any], watch: Watch) -> dict[str, Any] | None:
+    """What PuLP answers, asked in a process of its own; None if the time limit ended it.
+
+    Engines hear neither Ctrl-C nor the time limit in time, start processes of their own, leave
+    files behind and may crash: all that ends with the process and its folder.
+    """
+    with tempfile.TemporaryDirectory(prefix="designer-", ignore_cleanup_errors=True) as folder:
+        child = subprocess.Popen(
+            [sys.executable, "-P", str(CHILD)],
+            stdin=subprocess.PIPE,
+            stdout=subprocess.PIPE,
+            stderr=subprocess.DEVNULL,
+            cwd=folder,
+            env={
+                **os.environ,
+                **dict.fromkeys(("TMPDIR", "TEMP", "TMP"), folder),
+                "PYTHONPATH": os.pathsep.join(os.path.abspath(place) for place in sys.path),
+            },
+            start_new_session=True,
+        )
+        question: bytes | None = json.dumps(asked).encode()
+        try:
+            while True:
+                try:
+                    answer, _ = child.communicate(question, timeout=GLANCE)
+                    break
+                except subprocess.TimeoutExpired:
+                    question = None
+                    if watch.progress is not None:
+                        watch.progress("solve", watch.seconds, 0)
+                    if watch.limit is not None and watch.seconds > watch.limit + PATIENCE:
+                        return None
+        finally:
+            _end(child)
+    if child.returncode != 0:
+        return {"failed": f"the engine's process ended with code {child.returncode}"}
+    found: dict[str, Any] = json.loads(answer)
+    return found
+
+
+def _end(child: subprocess.Popen[bytes]) -> None:
+    """End the process with all it has started, if it has not ended by itself."""
+    if child.poll() is None:
+        with contextlib.suppress(ProcessLookupError, PermissionError):
+            if hasattr(os, "killpg"):
+                os.killpg(child.pid, signal.SIGKILL)
+            else:
+                child.kill()
+        child.communicate()
 
 
 def as_dict(program: FloatProgram, box: float = math.inf) -> dict[str, Any]:

@@ -5,15 +5,19 @@ PuLP 3.3.2 brings CBC along; HiGHS is found through highspy.
 
 from __future__ import annotations
 
+import os
 import subprocess
 import sys
+import time
 import warnings
+from pathlib import Path
 
 import numpy as np
 import pytest
 
+from designer.engines import pulp_bridge
 from designer.engines.floats import floats
-from designer.engines.pulp_bridge import as_dict, available, bridge
+from designer.engines.pulp_bridge import PulpEngine, as_dict, available, bridge
 from designer.engines.report import Basis, Report
 from designer.engines.watch import Watch
 from designer.errors import UsageError
@@ -118,6 +122,66 @@ def test_an_engine_that_is_not_there() -> None:
 def test_no_time_left() -> None:
     assert bridge("HiGHS").solve(TRADE, Watch(limit=0.0)).status == "time-limit"
     assert prove(TRADE, engine=bridge("HiGHS"), watch=Watch(limit=0.0)).status == "undecided"
+
+
+DEAF = """
+import json, os, subprocess, sys, time
+note = json.load(sys.stdin)["solver"]
+other = subprocess.Popen([sys.executable, "-c", "import time; time.sleep(600)"])
+with open(note, "w") as written:
+    written.write(f"{os.getpid()} {other.pid} {os.getcwd()}")
+time.sleep(600)
+"""
+
+
+def running(number: str) -> bool:
+    """Whether a process is more than the entry of a dead one that nobody has waited for."""
+    done = subprocess.run(
+        ["ps", "-o", "stat=", "-p", number], capture_output=True, text=True, check=False
+    )
+    return bool(done.stdout.strip()) and not done.stdout.strip().startswith("Z")
+
+
+@pytest.mark.skipif(os.name != "posix", reason="processes as POSIX has them")
+@pytest.mark.parametrize("why", ["limit", "ctrl-c"])
+def test_an_engine_that_does_not_stop_is_ended_with_all_it_started(
+    why: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    child, note = tmp_path / "deaf.py", tmp_path / "note"
+    child.write_text(DEAF, encoding="utf-8")
+    monkeypatch.setattr(pulp_bridge, "CHILD", child)
+    monkeypatch.setattr(pulp_bridge, "PATIENCE", 0.0)
+
+    def progress(doing: str, seconds: float, steps: int) -> None:
+        if why == "ctrl-c" and note.exists() and note.read_text(encoding="utf-8"):
+            raise KeyboardInterrupt
+
+    engine = PulpEngine(str(note))
+    if why == "limit":
+        assert engine.solve(TRADE, Watch(limit=3.0)).status == "time-limit"
+    else:
+        with pytest.raises(KeyboardInterrupt):
+            engine.solve(TRADE, Watch(progress=progress))
+    one, two, folder = note.read_text(encoding="utf-8").split()
+    assert not Path(folder).exists()
+    for _ in range(100):
+        if not (running(one) or running(two)):
+            return
+        time.sleep(0.05)  # the system ends processes in its own time
+    raise AssertionError("the engine's processes go on")
+
+
+def test_an_engine_that_crashes_is_no_crash_of_ours(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    child = tmp_path / "crash.py"
+    child.write_text("import os; os._exit(17)", encoding="utf-8")
+    monkeypatch.setattr(pulp_bridge, "CHILD", child)
+    outcome = prove(TRADE, engine=PulpEngine("crash"))
+    judge(TRADE, outcome)
+    assert outcome.value == prove(TRADE).value
+    report = PulpEngine("crash").solve(TRADE, Watch())
+    assert (report.status, report.message) == ("failed", "the engine's process ended with code 17")
 
 
 def test_nothing_is_printed_on_stdout() -> None:
