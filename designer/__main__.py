@@ -19,6 +19,8 @@ def main() -> None:
     behind, and a Ctrl-C in it would replace the exit code by a signal.
     """
     code: object = INTERRUPTED
+    # numpy's linear algebra, unused here, would start a thread for each core: 50 ms
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     try:
         from designer.cli import main as run
 
