@@ -32,7 +32,7 @@ def test_what_ships_beside_the_code() -> None:
     assert project["tool"]["hatch"]["build"]["targets"]["wheel"]["packages"] == ["designer"]
     for name in ("proof/FORMAT.md", "setting/scenario.schema.json", "py.typed"):
         assert (package / name).is_file()
-    assert "Apache License" in (ROOT / "LICENSE").read_text(encoding="utf-8")
+    assert "Apache License" in (package / "LICENSE").read_text(encoding="utf-8")
     module, _, function = project["project"]["scripts"]["designer"].partition(":")
     assert callable(getattr(importlib.import_module(module), function))
 

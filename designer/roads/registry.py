@@ -66,7 +66,7 @@ PLAIN = ROADS[-1]
 
 @dataclass(frozen=True, eq=False)
 class Choice:
-    """The road to take; `small` where that is the plain one because of its tidy table."""
+    """The road to take; `small` where that is the plain one because the setting is small."""
 
     road: Road
     setting: Setting
@@ -79,11 +79,15 @@ class Choice:
         found = _reasons(self.setting, self.terms)
         if not self.small:
             return found
-        note = "the setting is small: the plain road also tidies the table"
+        note = "the setting is small: the plain road is as fast, and can tidy the table"
         return tuple(
             (name, note if reason is None and name != PLAIN.name else reason)
             for name, reason in found
         )
+
+
+def _payments(setting: Setting) -> int:
+    return setting.profiles * len(setting.parties)
 
 
 def _reasons(setting: Setting, terms: Terms) -> tuple[tuple[str, str | None], ...]:
@@ -98,7 +102,8 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
     """
     if forced is not None:
         return Choice(_forced(forced, dict(_reasons(setting, terms))), setting, terms)
-    if full.tidies(setting, terms) and PLAIN.applies(setting, terms) is None:
+    small = full.tidies(setting, terms) or _payments(setting) <= full.SMALL_UP_TO
+    if small and PLAIN.applies(setting, terms) is None:
         return Choice(PLAIN, setting, terms, small=True)
     reasons = _reasons(setting, terms)
     for road, (_, reason) in zip(ROADS, reasons, strict=True):
