@@ -6,24 +6,17 @@ back as a point; HiGHS then makes a corner of the point, and the exact proof dec
 
 from __future__ import annotations
 
-import contextlib
-import json
 import math
-import os
-import signal
-import subprocess
-import sys
-import tempfile
 import time
 import warnings
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from pathlib import Path
 from typing import Any
 
 import numpy as np
 
 from designer.engines.floats import FloatProgram, floats
+from designer.engines.pulp_process import ask
 from designer.engines.report import Basis, FloatArray, Report, Said
 from designer.engines.silence import silent_stdout
 from designer.engines.watch import Watch
@@ -36,12 +29,6 @@ WIDER = 2.0**7
 """Each further box is wider by this much."""
 BOXES = 3
 """Boxes tried before 'infeasible' is called unclear."""
-
-PATIENCE = 3.0
-"""Seconds an engine gets beyond the time limit to say what it has."""
-GLANCE = 0.2
-"""Seconds between two looks at the clock."""
-CHILD = Path(__file__).with_name("pulp_child.py")
 
 NEEDS_BOX = ("CBC", "COIN", "CYLP")
 """Engines whose dual simplex invents bounds of 1e10 on free columns and may stop there."""
@@ -126,7 +113,7 @@ class PulpEngine:
             "seconds": None if watch.limit is None else max(1.0, watch.left),
             "program": as_dict(program, box),
         }
-        told = _in_a_process(asked, watch)
+        told = ask(asked, watch)
         seconds = time.monotonic() - began
         if told is None:
             return Report("time-limit", self.name, seconds=seconds, message="ended by us")
@@ -139,57 +126,6 @@ class PulpEngine:
             # PuLP drops columns that no row and no cost mentions
             x = program.point(_filled(values, program))
         return Report(status, self.name, x, seconds=seconds, message=str(status))
-
-
-def _in_a_process(asked: dict[str, Any], watch: Watch) -> dict[str, Any] | None:
-    """What PuLP answers, asked in a process of its own; None if the time limit ended it.
-
-    Engines hear neither Ctrl-C nor the time limit in time, start processes of their own, leave
-    files behind and may crash: all that ends with the process and its folder.
-    """
-    with tempfile.TemporaryDirectory(prefix="designer-", ignore_cleanup_errors=True) as folder:
-        child = subprocess.Popen(
-            [sys.executable, "-P", str(CHILD)],
-            stdin=subprocess.PIPE,
-            stdout=subprocess.PIPE,
-            stderr=subprocess.DEVNULL,
-            cwd=folder,
-            env={
-                **os.environ,
-                **dict.fromkeys(("TMPDIR", "TEMP", "TMP"), folder),
-                "PYTHONPATH": os.pathsep.join(os.path.abspath(place) for place in sys.path),
-            },
-            start_new_session=True,
-        )
-        question: bytes | None = json.dumps(asked).encode()
-        try:
-            while True:
-                try:
-                    answer, _ = child.communicate(question, timeout=GLANCE)
-                    break
-                except subprocess.TimeoutExpired:
-                    question = None
-                    if watch.progress is not None:
-                        watch.progress("solve", watch.seconds, 0)
-                    if watch.limit is not None and watch.seconds > watch.limit + PATIENCE:
-                        return None
-        finally:
-            _end(child)
-    if child.returncode != 0:
-        return {"failed": f"the engine's process ended with code {child.returncode}"}
-    found: dict[str, Any] = json.loads(answer)
-    return found
-
-
-def _end(child: subprocess.Popen[bytes]) -> None:
-    """End the process with all it has started, if it has not ended by itself."""
-    if child.poll() is None:
-        with contextlib.suppress(ProcessLookupError, PermissionError):
-            if hasattr(os, "killpg"):
-                os.killpg(child.pid, signal.SIGKILL)
-            else:
-                child.kill()
-        child.communicate()
 
 
 def as_dict(program: FloatProgram, box: float = math.inf) -> dict[str, Any]:

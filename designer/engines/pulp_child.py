@@ -1,14 +1,15 @@
-"""A process that solves one program with PuLP: JSON in on stdin, JSON out on stdout.
+"""A process that solves programs with PuLP: a line of JSON in, a line of JSON out.
 
 Run as a file, so that it needs PuLP and the standard library alone. In: `solver`, `seconds`
 (or null) and `program`, PuLP's own dictionary. Out: `status` and `values` by column name, or
-`failed` with the engine's words.
+`failed` with the engine's words. It ends, and takes its folder away, when stdin does.
 """
 
 from __future__ import annotations
 
 import json
 import os
+import shutil
 import sys
 import warnings
 from typing import Any
@@ -34,12 +35,14 @@ def solve(asked: dict[str, Any]) -> dict[str, Any]:
 
 
 def main() -> None:
-    """Keep stdout for the answer: engines write on it as they please."""
-    answer = os.fdopen(os.dup(1), "w", encoding="utf-8")
+    """Keep stdout for the answers: engines write on it as they please."""
+    answers = os.fdopen(os.dup(1), "w", encoding="utf-8")
     nowhere = os.open(os.devnull, os.O_WRONLY)
     os.dup2(nowhere, 1)
-    json.dump(solve(json.load(sys.stdin)), answer)
-    answer.close()
+    for question in sys.stdin:
+        answers.write(f"{json.dumps(solve(json.loads(question)))}\n")
+        answers.flush()
+    shutil.rmtree(os.getcwd(), ignore_errors=True)
     os._exit(0)  # engines may leave threads behind
 
 

@@ -15,7 +15,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from designer.engines import pulp_bridge
+from designer.engines import pulp_process
 from designer.engines.floats import floats
 from designer.engines.pulp_bridge import PulpEngine, as_dict, available, bridge
 from designer.engines.report import Basis, Report
@@ -126,7 +126,7 @@ def test_no_time_left() -> None:
 
 DEAF = """
 import json, os, subprocess, sys, time
-note = json.load(sys.stdin)["solver"]
+note = json.loads(sys.stdin.readline())["solver"]
 other = subprocess.Popen([sys.executable, "-c", "import time; time.sleep(600)"])
 with open(note, "w") as written:
     written.write(f"{os.getpid()} {other.pid} {os.getcwd()}")
@@ -149,8 +149,9 @@ def test_an_engine_that_does_not_stop_is_ended_with_all_it_started(
 ) -> None:
     child, note = tmp_path / "deaf.py", tmp_path / "note"
     child.write_text(DEAF, encoding="utf-8")
-    monkeypatch.setattr(pulp_bridge, "CHILD", child)
-    monkeypatch.setattr(pulp_bridge, "PATIENCE", 0.0)
+    monkeypatch.setattr(pulp_process, "CHILD", child)
+    monkeypatch.setattr(pulp_process, "_idle", [])
+    monkeypatch.setattr(pulp_process, "PATIENCE", 0.0)
 
     def progress(doing: str, seconds: float, steps: int) -> None:
         if why == "ctrl-c" and note.exists() and note.read_text(encoding="utf-8"):
@@ -171,12 +172,35 @@ def test_an_engine_that_does_not_stop_is_ended_with_all_it_started(
     raise AssertionError("the engine's processes go on")
 
 
+def test_one_process_answers_again_and_goes_when_we_do(tmp_path: Path) -> None:
+    script = """
+from tests.engines.test_pulp_bridge import *
+for _ in range(3):
+    assert bridge("HiGHS").solve(TRADE, Watch()).status == "optimal"
+(child,) = pulp_process._idle
+print(child.process.pid, child.folder, flush=True)
+os._exit(0)  # as the command line does
+"""
+    ran = subprocess.run(
+        [sys.executable, "-c", script], capture_output=True, text=True, check=False
+    )
+    assert ran.returncode == 0, ran.stderr
+    number, folder = ran.stdout.split()
+    for _ in range(100):
+        if not running(number):
+            break
+        time.sleep(0.05)
+    assert not running(number)
+    assert not Path(folder).exists()
+
+
 def test_an_engine_that_crashes_is_no_crash_of_ours(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     child = tmp_path / "crash.py"
     child.write_text("import os; os._exit(17)", encoding="utf-8")
-    monkeypatch.setattr(pulp_bridge, "CHILD", child)
+    monkeypatch.setattr(pulp_process, "CHILD", child)
+    monkeypatch.setattr(pulp_process, "_idle", [])
     outcome = prove(TRADE, engine=PulpEngine("crash"))
     judge(TRADE, outcome)
     assert outcome.value == prove(TRADE).value
