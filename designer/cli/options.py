@@ -70,6 +70,10 @@ Rows = Annotated[
 Json = Annotated[
     bool, typer.Option("--json", help="One JSON document on stdout, the rest on stderr.")
 ]
+ShowProgress = Annotated[
+    bool | None,
+    typer.Option("--progress/--no-progress", help="Progress on stderr; else on terminals."),
+]
 Quiet = Annotated[bool, typer.Option("--quiet", "-q", help="No screen: the exit code tells.")]
 
 

@@ -84,10 +84,7 @@ def pose(
     rows: options.Rows = None,
     json: options.Json = False,
     quiet: options.Quiet = False,
-    progress: Annotated[
-        bool | None,
-        typer.Option("--progress/--no-progress", help="Progress on stderr; else on terminals."),
-    ] = None,
+    progress: options.ShowProgress = None,
 ) -> None:
     """Find the best payment table that does all that is asked, or prove that none does."""
     from designer.setting.scenario import read_scenario

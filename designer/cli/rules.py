@@ -57,10 +57,7 @@ def rules(
     ] = None,
     json: options.Json = False,
     quiet: options.Quiet = False,
-    progress: Annotated[
-        bool | None,
-        typer.Option("--progress/--no-progress", help="Progress on stderr; else on terminals."),
-    ] = None,
+    progress: options.ShowProgress = None,
 ) -> None:
     """Why not simply use the textbook rule? What each classic rule keeps, costs and breaks."""
     from designer.ruling.report import rules as report_on

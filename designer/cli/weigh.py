@@ -69,10 +69,7 @@ def weigh(
     rows: options.Rows = None,
     json: options.Json = False,
     quiet: options.Quiet = False,
-    progress: Annotated[
-        bool | None,
-        typer.Option("--progress/--no-progress", help="Progress on stderr; else on terminals."),
-    ] = None,
+    progress: options.ShowProgress = None,
 ) -> None:
     """What must give: which demands collide, what each way out costs, what trades for what."""
     from designer.setting.scenario import read_scenario

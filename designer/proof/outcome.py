@@ -93,7 +93,6 @@ class GoalResult:
     proved  whether exact arithmetic confirmed that nothing better exists
     bound   an engine's word on what is best, where `proved` is False
     dual, tree   the certificate, over the rows of the goal's stage (minimising form)
-    pin     the row that keeps the value in later stages, or None
     tidy    whether this is the closing tidy stage rather than a goal that was asked for
     """
 
@@ -103,6 +102,5 @@ class GoalResult:
     bound: Fraction | float | None = None
     dual: Vector | None = None
     tree: Tree | None = None
-    pin: int | None = None
     tidy: bool = False
     reason: str = ""

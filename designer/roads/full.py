@@ -84,7 +84,7 @@ class _Journey:
                 return self._stopped(program, outcome)
             primal = outcome.primal
         if tidy:
-            before = program, tuple(self.results)
+            before = program
             program = self._pose("swing")
             outcome = self._settle(program, tidy=True)
             if outcome.status == "optimal":
@@ -97,8 +97,7 @@ class _Journey:
                 )
             else:
                 # The goals are settled; only the choice among optimal tables is not.
-                program, results = before
-                self.results = [*results[:-1], replace(results[-1], pin=None)]
+                program = before
                 self.results.append(
                     GoalResult("swing", None, False, tidy=True, reason=outcome.reason)
                 )
@@ -119,7 +118,6 @@ class _Journey:
                 raise AssertionError("only settled goals are followed by another")
             lp = self.work.program().stage(len(self.results) - 1)
             pin = self.work.pin(value)
-            self.results[-1] = replace(before, pin=pin)
             if before.dual is not None and not lp.integer.any():
                 self.faces.append(_faced(lp, before.dual, pin, self.work))
         program = self.work.pose(name)
