@@ -25,7 +25,8 @@ def _rows(draft: Draft, terms: Terms) -> None:
 
     U_i(a, b) = sum_theta_-i P(theta_-i | a) [sum_k x_k(b, theta_-i) v_i(k, .) - t_i(b, theta_-i)].
     """
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party = draft.setting.parties[index]
         true, told = draft.lies(index)
         if party.name in terms.trusted or not len(true):
             continue

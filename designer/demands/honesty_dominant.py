@@ -21,14 +21,15 @@ from designer.setting.setting import Party, Setting
 
 def _rows(draft: Draft, terms: Terms) -> None:
     """u_i(theta; theta) - u_i(theta; b, theta_-i) >= -slack at every profile in scope, b != a."""
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party = draft.setting.parties[index]
         true, told = lies(party.size)
         if party.name in terms.trusted or not len(true):
             continue
-        fiber = draft.fibers[index]
+        fiber = draft.fiber(index)
         truth, lie = fiber[true].ravel(), fiber[told].ravel()
         told_at = np.repeat(told, fiber.shape[1])
-        keep = draft.in_scope[truth]
+        keep = draft.in_scope(truth)
         truth, lie, told_at = truth[keep], lie[keep], told_at[keep]
         honest = draft.worth(index, truth, truth) - draft.pays(index, truth)
         lying = draft.worth(index, truth, lie) - draft.pays(index, lie)

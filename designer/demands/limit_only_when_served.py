@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import numpy as np
-
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
@@ -19,13 +17,14 @@ def _rows(draft: Draft, terms: Terms) -> None:
     which is possible only where the decision there is fixed.
     """
     setting, cap = draft.setting, terms.limits.pays_at_most
-    everywhere = np.arange(setting.profiles, dtype=np.int64)
-    for index, party in enumerate(setting.parties):
-        serves = (draft.value(index) > 0).astype(draft.dtype)
+    for index in draft.judged:
+        party, everywhere = setting.parties[index], draft.everywhere_of(index)
+        serves = (draft.value_at(index, everywhere) > 0).astype(draft.dtype)
         served = draft.chosen(everywhere, serves, 1)
         if cap is None:
-            unserved = (served.const == 0) & ~np.isin(everywhere, served.row)
-            at = np.flatnonzero(unserved).astype(np.int64)
+            unserved = served.const == 0
+            unserved[served.row] = False
+            at = everywhere[unserved]
             form = -draft.pays(index, at)
         else:
             at = everywhere

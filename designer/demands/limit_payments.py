@@ -4,12 +4,11 @@ from __future__ import annotations
 
 from fractions import Fraction
 
-import numpy as np
-
 from designer.demands.kinds import Demand
 from designer.demands.terms import Terms
 from designer.program.draft import Draft
 from designer.program.labels import Clause
+from designer.program.linear import IndexArray
 
 
 def _rows(draft: Draft, terms: Terms) -> None:
@@ -30,14 +29,14 @@ def _rows(draft: Draft, terms: Terms) -> None:
 def _free_limit(draft: Draft, key: str, sign: int) -> None:
     """Sign * (limit - t_i(theta)) >= 0 at every profile."""
     setting = draft.setting
-    everywhere = np.arange(setting.profiles, dtype=np.int64)
-    limit = draft.allowance(key, Fraction(0)).repeat(setting.profiles)
-    for index, party in enumerate(setting.parties):
+    for index in draft.judged:
+        at = draft.everywhere_of(index)
 
-        def label(j: int, name: str = party.name) -> Clause:
-            return Clause("limit", key, name, setting.labels_at(j))
+        def label(j: int, name: str = setting.parties[index].name, at: IndexArray = at) -> Clause:
+            return Clause("limit", key, name, setting.labels_at(int(at[j])))
 
-        room = (limit - draft.pays(index, everywhere)).times(Fraction(sign))
+        limit = draft.allowance(key, Fraction(0)).repeat(len(at))
+        room = (limit - draft.pays(index, at)).times(Fraction(sign))
         draft.require(room, ">=", "limit", label)
 
 

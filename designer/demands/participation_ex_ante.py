@@ -10,7 +10,8 @@ from designer.program.labels import TakesPart, always
 
 def _rows(draft: Draft, terms: Terms) -> None:
     """E[u_i] - E[outside_i] >= -shortfall, one row per party that is not compelled."""
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party = draft.setting.parties[index]
         if party.name in terms.compelled:
             continue
         label = TakesPart(party.name)

@@ -13,18 +13,18 @@ from designer.program.labels import Label, TakesPart
 
 def _rows(draft: Draft, terms: Terms) -> None:
     """u_i(theta) - outside_i(theta) >= -shortfall at every profile in scope."""
-    scope = draft.scope
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party, scope = draft.setting.parties[index], draft.scope_of(index)
         if party.name in terms.compelled:
             continue
-        outside = constants(draft.outside(index)[scope], draft.setting.grain, draft.dtype)
+        outside = constants(draft.outside_at(index, scope), draft.setting.grain, draft.dtype)
         utility = draft.worth(index, scope, scope) - draft.pays(index, scope)
         allowed = draft.allowance("shortfall", terms.shortfall, party.name).repeat(len(scope))
         draft.require(utility - outside + allowed, ">=", "takes part", _label(draft, index))
 
 
 def _label(draft: Draft, index: int) -> Callable[[int], Label]:
-    setting, scope = draft.setting, draft.scope
+    setting, scope = draft.setting, draft.scope_of(index)
 
     def label(j: int) -> Label:
         at = setting.labels_at(int(scope[j]))

@@ -13,7 +13,8 @@ from designer.setting.setting import Party
 
 def _rows(draft: Draft, terms: Terms) -> None:
     """U_i(a) - E[outside_i | a] >= -shortfall, per type of each party not compelled."""
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party = draft.setting.parties[index]
         if party.name in terms.compelled:
             continue
         allowed = draft.allowance("shortfall", terms.shortfall, party.name).repeat(party.size)

@@ -7,7 +7,8 @@ demand needs them: n*T^n + n*T^2 nonzeros instead of n*T^(n+1).
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import math
+from collections.abc import Callable, Sequence
 from fractions import Fraction
 from functools import cached_property
 from typing import Any
@@ -48,6 +49,7 @@ class Draft:
         self.rows: list[tuple[Rows, str]] = []
         self.bounds: list[tuple[int, int, Fraction | None, Fraction | None]] = []
         self.columns = 0
+        self._fibers: dict[int, IndexArray] = {}
         self._expected_pay: dict[int, IndexArray] = {}
         self._expected_decision: dict[int, tuple[IndexArray, IntArray]] = {}
         self._allowances: dict[str, Affine] = {}
@@ -77,20 +79,26 @@ class Draft:
 
     def bound_payments(self, lo: Fraction | None, hi: Fraction | None) -> None:
         """Give every payment t_i(theta) a floor and a cap."""
-        self.bounds.append((0, self.setting.profiles * len(self.setting.parties), lo, hi))
+        self.bounds.append((0, self.payments, lo, hi))
 
     def _lay_out(self) -> None:
-        setting, total = self.setting, self.setting.profiles
-        for party in setting.parties:
-            self.add_columns("pays", total, _pays_label(setting, party.name))
-        options = len(setting.options)
+        self._lay_out_payments()
+        self.payments = self.columns
+        self._lay_out_decisions()
+
+    def _lay_out_payments(self) -> None:
+        for party in self.setting.parties:
+            self.add_columns("pays", self.setting.profiles, _pays_label(self.setting, party.name))
+
+    def _lay_out_decisions(self) -> None:
+        setting, total, options = self.setting, len(self.everywhere), len(self.setting.options)
         self.chance_den = 1
         self.chance = np.zeros((total, options), dtype=self.dtype)
         self.chance_col = np.full((total, options), -1, dtype=np.int64)
         if self.decision == "table":
             if setting.rule is None:
                 raise ValueError("the setting gives no decision rule")
-            self.chance = setting.rule.astype(self.dtype)
+            self.chance = setting.rule[self.everywhere].astype(self.dtype)
             self.chance_den = setting.rule_den
             return
         if self.decision in FREE_RULES:
@@ -100,27 +108,36 @@ class Draft:
         settled = open_to.sum(axis=1) == 1
         self.chance[settled] = open_to[settled]
         open_to[settled] = False
-        cells = np.argwhere(open_to)
+        first = self._first_options()
+        cells = np.argwhere(open_to & (first == np.arange(options)))
+        at = self.everywhere
         top = Fraction(1) if self.decision == "deterministic" else None
         columns = self.add_columns(
-            "decides", len(cells), _decides_label(setting, cells), Fraction(0), top
+            "decides", len(cells), _decides_label(setting, at, cells), Fraction(0), top
         )
         self.chance_col[cells[:, 0], cells[:, 1]] = columns
+        row, option = np.nonzero(open_to)
+        self.chance_col[row, option] = self.chance_col[row, first[row, option]]
         lotteries = np.flatnonzero(~settled)
         if len(lotteries):
             place = np.full(total, -1, dtype=np.int64)
             place[lotteries] = np.arange(len(lotteries))
             size = len(lotteries)
             form = Affine(
-                place[cells[:, 0]],
-                columns,
-                np.ones(len(cells), dtype=self.dtype),
+                place[row],
+                self.chance_col[row, option],
+                np.ones(len(row), dtype=self.dtype),
                 np.full(size, -1, dtype=self.dtype),
                 np.ones(size, dtype=self.dtype),
             )
             self.require(
-                form, "=", "lottery", lambda j: Lottery(setting.labels_at(int(lotteries[j])))
+                form, "=", "lottery", lambda j: Lottery(setting.labels_at(int(at[lotteries[j]])))
             )
+
+    def _first_options(self) -> IndexArray:
+        """Per profile and option, the option whose column serves it, int (N, K): itself."""
+        options = np.arange(len(self.setting.options), dtype=np.int64)
+        return np.broadcast_to(options, (len(self.everywhere), len(options)))
 
     # -- rows ----------------------------------------------------------------------------
 
@@ -135,47 +152,79 @@ class Draft:
 
     # -- what the setting gives, as arrays -----------------------------------------------
 
-    @cached_property
-    def welfare(self) -> IntArray:
-        """Total worth net of outlay by profile and option, int (N, K), units of 1/grain."""
-        setting = self.setting
-        total = np.zeros((setting.profiles, len(setting.options)), dtype=self.dtype)
-        for index in range(len(setting.parties)):
-            total += self.value(index)
-        total += (setting.worth - setting.outlay).astype(self.dtype)
-        return total
-
-    def value(self, index: int) -> IntArray:
-        """A party's worth at every profile, int (N, K), units of 1/grain."""
-        party = self.setting.parties[index]
-        value = party.value.astype(self.dtype)
-        own: IntArray = value if party.depends else value[self.type_of(index)]
-        return own
-
-    def outside(self, index: int) -> IntArray:
-        """A party's outside option at every profile, int (N,), units of 1/grain."""
-        party = self.setting.parties[index]
-        outside = party.outside.astype(self.dtype)
-        return outside if party.outside_depends else outside[self.type_of(index)]
-
-    def type_of(self, index: int) -> IndexArray:
-        """The position of a party's type at every profile, int (N,)."""
-        after = int(np.prod(self.setting.shape[index + 1 :], dtype=np.int64))
-        return np.arange(self.setting.profiles, dtype=np.int64) // after % self.setting.shape[index]
+    @property
+    def judged(self) -> Sequence[int]:
+        """The parties whose rows are written; those of the others would say the same again."""
+        return range(len(self.setting.parties))
 
     @cached_property
-    def fibers(self) -> list[IndexArray]:
-        """Per party, profile numbers by own type and others' profile, int (T_i, N / T_i)."""
-        grid = np.arange(self.setting.profiles, dtype=np.int64).reshape(self.setting.shape)
-        return [
-            np.ascontiguousarray(np.moveaxis(grid, index, 0)).reshape(size, -1)
-            for index, size in enumerate(self.setting.shape)
-        ]
+    def everywhere(self) -> IndexArray:
+        """The numbers of the profiles that the program tells apart, int (N,)."""
+        return np.arange(self.setting.profiles, dtype=np.int64)
+
+    def everywhere_of(self, index: int) -> IndexArray:
+        """The profiles at which a party's own rows differ, int (N,)."""
+        return self.everywhere
+
+    @cached_property
+    def scope(self) -> IndexArray:
+        """The profiles at which ex-post and dominant demands hold (convention 5)."""
+        return self.everywhere[self.in_scope(self.everywhere)]
+
+    def scope_of(self, index: int) -> IndexArray:
+        """The profiles in scope at which a party's own rows differ."""
+        return self.scope
+
+    def in_scope(self, profiles: IndexArray) -> BoolArray:
+        """Whether ex-post and dominant demands hold at the listed profiles."""
+        if self.setting.support_only and self.setting.joint is not None:
+            inside: BoolArray = self.setting.joint[profiles] != 0
+            return inside
+        return np.ones(len(profiles), dtype=bool)
 
     @cached_property
     def weights(self) -> IntArray:
-        """Profile weights, int (N,)."""
+        """The weights of the profiles `everywhere`, int (N,)."""
         return self.setting.weights.astype(self.dtype)
+
+    @cached_property
+    def welfare(self) -> IntArray:
+        """Total worth net of outlay `everywhere` by option, int (N, K), units of 1/grain."""
+        setting, every = self.setting, self.everywhere
+        total = np.zeros((len(every), len(setting.options)), dtype=self.dtype)
+        for index in range(len(setting.parties)):
+            total += self.value_at(index, every)
+        total += (setting.worth - setting.outlay).astype(self.dtype)
+        return total
+
+    def value_at(self, index: int, profiles: IndexArray) -> IntArray:
+        """A party's worth at the listed profiles, int (R, K), units of 1/grain."""
+        party = self.setting.parties[index]
+        at = profiles if party.depends else self.type_at(index, profiles)
+        value: IntArray = party.value[at].astype(self.dtype)
+        return value
+
+    def outside_at(self, index: int, profiles: IndexArray) -> IntArray:
+        """A party's outside option at the listed profiles, int (R,), units of 1/grain."""
+        party = self.setting.parties[index]
+        at = profiles if party.outside_depends else self.type_at(index, profiles)
+        outside: IntArray = party.outside[at].astype(self.dtype)
+        return outside
+
+    def type_at(self, index: int, profiles: IndexArray) -> IndexArray:
+        """The position of a party's type at the listed profiles, int (R,)."""
+        return profiles // math.prod(self.setting.shape[index + 1 :]) % self.setting.shape[index]
+
+    def fiber(self, index: int) -> IndexArray:
+        """A party's profile numbers by own type and others' profile, int (T_i, N / T_i)."""
+        if index not in self._fibers:
+            self._fibers[index] = self._fiber(index)
+        return self._fibers[index]
+
+    def _fiber(self, index: int) -> IndexArray:
+        grid = np.arange(self.setting.profiles, dtype=np.int64).reshape(self.setting.shape)
+        own = np.ascontiguousarray(np.moveaxis(grid, index, 0))
+        return own.reshape(self.setting.shape[index], -1)
 
     def beliefs(self, index: int) -> tuple[IntArray, IntArray]:
         """Weights of the others' profiles given one's type, int (T_i, N / T_i), and totals.
@@ -183,9 +232,9 @@ class Draft:
         With independent types all rows are the same: the product of the others' weights.
         """
         setting = self.setting
-        fiber = self.fibers[index]
+        fiber = self.fiber(index)
         if setting.joint is not None:
-            weights = self.weights[fiber]
+            weights = setting.joint.astype(self.dtype)[fiber]
             return weights, weights.sum(axis=1)
         product = np.ones(1, dtype=self.dtype)
         for other, party in enumerate(setting.parties):
@@ -197,20 +246,6 @@ class Draft:
             np.broadcast_to(product, fiber.shape),
             np.full(size, int(product.sum()), dtype=self.dtype),
         )
-
-    @cached_property
-    def scope(self) -> IndexArray:
-        """The profiles at which ex-post and dominant demands hold (convention 5)."""
-        if self.setting.support_only and self.setting.joint is not None:
-            return np.flatnonzero(self.weights != 0).astype(np.int64)
-        return np.arange(self.setting.profiles, dtype=np.int64)
-
-    @cached_property
-    def in_scope(self) -> BoolArray:
-        """`scope` as a mask over profiles."""
-        mask = np.zeros(self.setting.profiles, dtype=bool)
-        mask[self.scope] = True
-        return mask
 
     def marginal(self, index: int) -> IntArray:
         """Weights of a party's types, int (T_i,)."""
@@ -225,35 +260,43 @@ class Draft:
 
     def pays(self, index: int, profiles: IndexArray) -> Affine:
         """t_i at the listed profiles."""
-        return of_columns(profiles + index * self.setting.profiles, self.dtype)
+        return of_columns(self.payment_columns(index, profiles), self.dtype)
+
+    def payment_columns(self, index: int, profiles: IndexArray) -> IndexArray:
+        """The columns of t_i at the listed profiles, of the same shape."""
+        return profiles + index * self.setting.profiles
+
+    def chances(self, profiles: IndexArray) -> tuple[IntArray, IndexArray]:
+        """What is settled of the decision, int (R, K) over `chance_den`, and columns or -1."""
+        return self.chance[profiles], self.chance_col[profiles]
 
     def chosen(self, profiles: IndexArray, worth: IntArray, den: int) -> Affine:
         """sum_k x_k(theta_r) * worth[r, k] / den at the listed profiles; worth (R, K) or (K,)."""
         worth = np.broadcast_to(worth, (len(profiles), len(self.setting.options)))
-        column = self.chance_col[profiles]
+        chance, column = self.chances(profiles)
         row, option = np.nonzero((column >= 0) & (worth != 0))
         return Affine(
             row.astype(np.int64),
             column[row, option],
             worth[row, option] * self.chance_den,
-            (self.chance[profiles] * worth).sum(axis=1).astype(self.dtype),
+            (chance * worth).sum(axis=1).astype(self.dtype),
             np.full(len(profiles), den * self.chance_den, dtype=self.dtype),
         )
 
     def worth(self, index: int, true: IndexArray, told: IndexArray) -> Affine:
         """A party's worth at true profiles when the decision follows the told profiles."""
         party = self.setting.parties[index]
-        rows = true if party.depends else self.type_of(index)[true]
+        rows = true if party.depends else self.type_at(index, true)
         return self.chosen(told, party.value.astype(self.dtype)[rows], self.setting.grain)
 
     def pot(self, profiles: IndexArray) -> Affine:
         """sum_i t_i(theta) - sum_k x_k(theta) * outlay(k) at the listed profiles."""
-        total, size = self.setting.profiles, len(profiles)
-        parties = len(self.setting.parties)
+        size, parties = len(profiles), len(self.setting.parties)
+        columns = [self.payment_columns(index, profiles) for index in range(parties)]
         outlay = self.chosen(profiles, self.setting.outlay.astype(self.dtype), self.setting.grain)
         paid = Affine(
             np.repeat(np.arange(size, dtype=np.int64), parties),
-            (profiles[:, None] + np.arange(parties, dtype=np.int64) * total).ravel(),
+            np.stack(columns, axis=1).ravel(),
             np.ones(size * parties, dtype=self.dtype),
             np.zeros(size, dtype=self.dtype),
             np.ones(size, dtype=self.dtype),
@@ -284,7 +327,7 @@ class Draft:
         row, other = np.nonzero(chosen)
         return Affine(
             row.astype(np.int64),
-            self.fibers[index][told[row], other] + index * self.setting.profiles,
+            self.payment_columns(index, self.fiber(index)[told[row], other]),
             chosen[row, other],
             np.zeros(len(true), dtype=self.dtype),
             totals[true],
@@ -303,7 +346,7 @@ class Draft:
         if self.setting.independent and not party.depends:
             return self._worth_of_chances(index, true, told)
         weights, totals = self.beliefs(index)
-        fiber = self.fibers[index]
+        fiber = self.fiber(index)
         forms = self.worth(index, fiber[true].ravel(), fiber[told].ravel())
         return _averages(forms, weights[true], totals[true])
 
@@ -312,7 +355,7 @@ class Draft:
         pick = np.zeros(len(self.setting.options), dtype=self.dtype)
         pick[option] = 1
         weights, totals = self.beliefs(index)
-        forms = self.chosen(self.fibers[index][types].ravel(), pick, 1)
+        forms = self.chosen(self.fiber(index)[types].ravel(), pick, 1)
         return _averages(forms, weights[types], totals[types])
 
     def _worth_of_chances(self, index: int, true: IndexArray, told: IndexArray) -> Affine:
@@ -340,10 +383,12 @@ class Draft:
         """
         if index in self._expected_decision:
             return self._expected_decision[index]
-        party, fiber = self.setting.parties[index], self.fibers[index]
+        party, fiber = self.setting.parties[index], self.fiber(index)
         weights, totals = self.beliefs(index)
-        fixed = (self.chance[fiber] * weights[:, :, None]).sum(axis=1).astype(self.dtype)
-        open_to = (self.chance_col[fiber] >= 0).any(axis=1)
+        shape = (*fiber.shape, len(self.setting.options))
+        chance, open_column = (part.reshape(shape) for part in self.chances(fiber.ravel()))
+        fixed = (chance * weights[:, :, None]).sum(axis=1).astype(self.dtype)
+        open_to = (open_column >= 0).any(axis=1)
         cells = np.argwhere(open_to)
         columns = np.full(open_to.shape, -1, dtype=np.int64)
 
@@ -354,7 +399,7 @@ class Draft:
         if len(cells):
             new = self.add_columns("expected decision", len(cells), label)
             columns[cells[:, 0], cells[:, 1]] = new
-            column = self.chance_col[fiber[cells[:, 0]], cells[:, 1][:, None]]
+            column = open_column[cells[:, 0], :, cells[:, 1]]
             row, other = np.nonzero(column >= 0)
             form = Affine(
                 row.astype(np.int64),
@@ -377,7 +422,7 @@ class Draft:
         if not party.outside_depends:
             return constants(party.outside, self.setting.grain, self.dtype)
         weights, totals = self.beliefs(index)
-        outside = party.outside.astype(self.dtype)[self.fibers[index]]
+        outside = party.outside.astype(self.dtype)[self.fiber(index)]
         total = (outside * weights).sum(axis=1).astype(self.dtype)
         form = constants(total, 1, self.dtype)
         return Affine(form.row, form.col, form.num, form.const, totals * self.setting.grain)
@@ -391,8 +436,7 @@ class Draft:
 
     def expected_worth(self, index: int) -> Affine:
         """E[sum_k x_k v_i(k)]."""
-        everywhere = np.arange(self.setting.profiles, dtype=np.int64)
-        return self.worth(index, everywhere, everywhere).mean(self.weights)
+        return self.worth(index, self.everywhere, self.everywhere).mean(self.weights)
 
     def expected_utility(self, index: int) -> Affine:
         """E[u_i]."""
@@ -401,10 +445,8 @@ class Draft:
 
     def expected_choice(self, worth: IntArray) -> Affine:
         """E[sum_k x_k worth(k)] with worth int (K,) or (N, K) in units of 1/grain."""
-        everywhere = np.arange(self.setting.profiles, dtype=np.int64)
-        return self.chosen(everywhere, worth.astype(self.dtype), self.setting.grain).mean(
-            self.weights
-        )
+        form = self.chosen(self.everywhere, worth.astype(self.dtype), self.setting.grain)
+        return form.mean(self.weights)
 
     def expected_welfare(self) -> Affine:
         """E[sum_k x_k (sum_i v_i(k) + worth(k) - outlay(k))]; worth is the designer's."""
@@ -412,8 +454,8 @@ class Draft:
 
     def expected_outside(self, index: int) -> Affine:
         """E[outside_i]."""
-        form = constants(self.outside(index), self.setting.grain, self.dtype)
-        return form.mean(self.weights)
+        outside = self.outside_at(index, self.everywhere)
+        return constants(outside, self.setting.grain, self.dtype).mean(self.weights)
 
     def expected_pot(self) -> Affine:
         """E[sum_i t_i - sum_k x_k outlay(k)], through the interim payments."""
@@ -479,5 +521,7 @@ def _pays_label(setting: Setting, name: str) -> Callable[[int], Label]:
     return lambda profile: Pays(name, setting.labels_at(profile))
 
 
-def _decides_label(setting: Setting, cells: IndexArray) -> Callable[[int], Label]:
-    return lambda j: Decides(setting.options[int(cells[j, 1])], setting.labels_at(int(cells[j, 0])))
+def _decides_label(setting: Setting, at: IndexArray, cells: IndexArray) -> Callable[[int], Label]:
+    return lambda j: Decides(
+        setting.options[int(cells[j, 1])], setting.labels_at(int(at[cells[j, 0]]))
+    )

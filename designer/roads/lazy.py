@@ -43,9 +43,9 @@ def late_lies(work: Formulation) -> BoolArray | None:
             blocks.append(slice(start, start + block.count))
         start += block.count
     tempted = [
-        (index, party)
-        for index, party in enumerate(setting.parties)
-        if party.name not in terms.trusted and party.size > 1
+        (index, setting.parties[index])
+        for index in draft.judged
+        if setting.parties[index].name not in terms.trusted and setting.parties[index].size > 1
     ]
     for (index, party), rows in zip(tempted, blocks, strict=True):
         true, told = draft.lies(index)
@@ -53,8 +53,8 @@ def late_lies(work: Formulation) -> BoolArray | None:
         far = np.abs(rank[true] - rank[told]) > 1
         if terms.ic == "dominant":
             # one row for each profile of the others at which honesty is asked
-            fiber = draft.fibers[index]
-            far = np.repeat(far, fiber.shape[1])[draft.in_scope[fiber[true].ravel()]]
+            fiber = draft.fiber(index)
+            far = np.repeat(far, fiber.shape[1])[draft.in_scope(fiber[true].ravel())]
         late[rows] = far
     return late if int(late.sum()) >= LATE_FROM else None
 

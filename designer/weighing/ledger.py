@@ -110,10 +110,10 @@ def _entries(setting: Setting, relaxed: Relaxed, answer: Answer) -> list[Entry]:
     paid = primal.fractions()
     entries, standings = [], []
     for i, party in enumerate(setting.parties):
-        worth = (chances * draft.value(i).astype(object)).sum(axis=1) * weights
-        outside = draft.outside(i).astype(object) * weights
+        worth = (chances * draft.value_at(i, draft.everywhere).astype(object)).sum(axis=1) * weights
+        outside = draft.outside_at(i, draft.everywhere).astype(object) * weights
         columns = draft.expected_pay(i)
-        own = draft.type_of(i)
+        own = draft.type_at(i, draft.everywhere)
         entries.append(
             Entry("worth", party.name, "", ONE, Fraction(int(worth.sum()), total * den * grain))
         )

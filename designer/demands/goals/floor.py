@@ -15,7 +15,8 @@ def _objective(draft: Draft, terms: Terms) -> Affine:
     Compelled parties count too: leaving them out would let the table take from them at will.
     """
     floor = draft.unknown("floor")
-    for index, party in enumerate(draft.setting.parties):
+    for index in draft.judged:
+        party = draft.setting.parties[index]
         form = draft.interim_gain(index) - floor.repeat(party.size)
         draft.require(form, ">=", "goal floor", always(Clause("goal", "floor", party.name)))
     return floor

@@ -29,14 +29,14 @@ def pivotal_takings(draft: Draft) -> IntArray:
     """What the pivotal rule would collect at every profile, int (N,), units of 1/grain."""
     welfare = draft.welfare
     parties = range(len(draft.setting.parties))
-    reach = largest(welfare) + max(largest(draft.value(i)) for i in parties) + 1
+    reach = largest(welfare) + max(largest(draft.setting.parties[i].value) for i in parties) + 1
     # Rows multiply the takings by the denominator of the given rule's lotteries.
     bound = 2 * len(parties) * reach * draft.chance_den * draft.setting.grain
-    every = np.arange(draft.setting.profiles)
+    every = np.arange(len(welfare))
     best = welfare.argmax(axis=1)
-    total = held(np.zeros(draft.setting.profiles, dtype=np.int64), bound)
+    total = held(np.zeros(len(welfare), dtype=np.int64), bound)
     for i in parties:
-        others = held(welfare - draft.value(i), bound)
+        others = held(welfare - draft.value_at(i, draft.everywhere), bound)
         total = total + others.max(axis=1) - others[every, best]
     return total
 
@@ -45,8 +45,8 @@ def _objective(draft: Draft, terms: Terms) -> Affine:
     """(1 - z) * takings(theta) - pot(theta) >= 0 where anything is taken."""
     share = draft.unknown("returned share")
     takings = pivotal_takings(draft)
-    scope = draft.scope[takings[draft.scope] > 0]
-    taken = takings[scope]
+    counts = draft.in_scope(draft.everywhere) & (takings > 0)
+    scope, taken = draft.everywhere[counts], takings[counts]
     kept = share.repeat(len(scope))
     allowed = constants(taken, draft.setting.grain, taken.dtype) + Affine(
         kept.row,
