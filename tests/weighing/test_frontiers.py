@@ -212,7 +212,8 @@ def three_hold(setting: Setting, page: Tradeoff, seed: int) -> None:
     names = tuple(party.name for party in setting.parties)
     points = [(c[0], c[1]) for c in corners]
     points += [(most[0] * rng.randint(0, 8) / 8, most[1] * rng.randint(0, 8) / 8) for _ in range(8)]
-    for money, shortfall in points:
+    for drawn, shortfall in points:
+        money = max(drawn, page.terms.subsidy)  # the page speaks of no less than what is asked
         asked = replace(
             page.terms, decision="randomized", goals=("welfare",), subsidy=money, tidy="none"
         )
