@@ -1,4 +1,8 @@
-"""From one multiplier's optimum to a point and multipliers of the master program."""
+"""From one multiplier's optimum to a point and multipliers of the master program.
+
+Whole arrays of integers over one denominator at a time: with a thousand types, fractions one by
+one would take longer than finding the optimum.
+"""
 
 from __future__ import annotations
 
@@ -8,15 +12,16 @@ from fractions import Fraction
 import numpy as np
 
 from designer.demands.terms import Terms
-from designer.program.labels import Honest
+from designer.program.linear import IndexArray
 from designer.program.program import Program
 from designer.proof.outcome import Outcome
 from designer.proof.vector import Vector
 from designer.roads.interim.draft import InterimDraft
-from designer.roads.interim.multiplier import Optimum, Side, utilities
+from designer.roads.interim.multiplier import Flow, Optimum, Side, utilities
 from designer.setting.setting import IntArray, Setting
 
-Rows = dict[int, Fraction]
+Part = tuple[IndexArray, IntArray, int]
+"""Rows, and their natural multipliers as numerators over one denominator."""
 
 
 def outcome_of(
@@ -31,7 +36,7 @@ def outcome_of(
 
     Nothing is believed of it: the checker holds it against the program like any other.
     """
-    dual = _scaled(_multipliers(setting, terms, found, best, program), program)
+    dual = _stored(_multipliers(setting, terms, found, best, draft, program), program)
     if not best.possible:
         return Outcome("infeasible", proved=True, farkas=dual)
     primal, value = _point(setting, terms, found, best, draft, program)
@@ -40,21 +45,10 @@ def outcome_of(
     return Outcome("optimal", proved=True, table_proved=True, value=value, primal=primal, dual=dual)
 
 
-def _chances(setting: Setting, best: Optimum) -> list[list[list[Fraction]]]:
-    """q_i(k, a), by party, type and option."""
-    found = []
-    for index, party in enumerate(setting.parties):
-        each = setting.total_weight // sum(party.weights)
-        rows = []
-        for a, weight in enumerate(party.weights):
-            mass = each * weight
-            row = [Fraction(0)] * len(setting.options)
-            for share, listed in best.shares:
-                for k, taken in enumerate(listed.counts.taken[0][index][a]):
-                    row[k] += share * int(taken) / mass
-            rows.append(row)
-        found.append(rows)
-    return found
+def _others(side: Side, taken: IntArray) -> IntArray:
+    """The weight of the others' profiles at which each option is taken, given one's type."""
+    others: IntArray = taken // side.weights[:, None]
+    return others
 
 
 def _point(
@@ -66,99 +60,98 @@ def _point(
     program: Program,
 ) -> tuple[Vector, Fraction]:
     """Shares, interim quantities and payments, and the goal's value there."""
-    chances = _chances(setting, best)
-    x: Rows = {
-        int(column): share
-        for column, (share, _) in zip(draft.share_columns, best.shares, strict=True)
-    }
+    goal, grain = terms.goals[0], setting.grain
     # What the pot holds over and above what is asked goes to the first party.
     spare = Fraction(0)
-    if terms.balance != "none" and terms.goals[0] in ("any", "welfare"):
+    if terms.balance != "none" and goal in ("any", "welfare"):
         spare = best.pot + terms.subsidy
-    for index, side in enumerate(found):
+    split = math.lcm(*(share.denominator for share, _ in best.shares))
+    eachs = [setting.total_weight // sum(side.party.weights) for side in found]
+    den = grain * math.lcm(split * math.lcm(*eachs), spare.denominator, best.pot.denominator)
+    den = math.lcm(den, terms.shortfall.denominator)
+    x = np.zeros(program.matrix.columns, dtype=object)
+    for column, (share, _) in zip(draft.share_columns, best.shares, strict=True):
+        x[column] = int(share * den)
+    for index, (side, each) in enumerate(zip(found, eachs, strict=True)):
+        chances = np.zeros(side.value.shape, dtype=object)
+        for share, listed in best.shares:
+            chances += _others(side, listed.counts.taken[0][index]) * int(share * split)
         columns, _ = draft.expected_decision(index)
-        pays = draft.expected_pay(index)
-        value = side.party.value.astype(object)
-        left = utilities(side, chances[index])
-        for a, row in enumerate(chances[index]):
-            for k, chance in enumerate(row):
-                x[int(columns[a, k])] = chance
-            worth = sum((int(v) * q for v, q in zip(value[a], row, strict=True)), Fraction(0))
-            x[int(pays[a])] = (worth - left[a]) / setting.grain + terms.shortfall
-            if not index:
-                x[int(pays[a])] -= spare
-    goal = terms.goals[0]
+        unit = den // (split * each)
+        x[columns] = chances * unit
+        least = int(side.party.outside[side.order[-1]]) * split * each
+        worth = (side.value * chances).sum(axis=1) - utilities(side, chances) - least
+        pays = worth * (unit // grain) + int(terms.shortfall * den)
+        x[draft.expected_pay(index)] = pays if index else pays - int(spare * den)
     if goal == "outside-money":
         form = draft.allowance("subsidy", Fraction(0))
-        x[int(form.col[0])] = -best.pot
-        value_found = -best.pot
+        x[int(form.col[0])] = -int(best.pot * den)
+        value = -best.pot
     elif goal == "revenue":
-        value_found = best.pot
+        value = best.pot
     else:
         stage = program.stages[0]
-        cost = {int(j): int(stage.cost[j]) for j in np.flatnonzero(stage.cost)}
-        total = sum((c * x.get(j, Fraction(0)) for j, c in cost.items()), Fraction(0))
-        value_found = total / stage.cost_den + stage.cost_const
-    kept = {column: value for column, value in x.items() if value}
-    return Vector.of(kept, program.matrix.columns), value_found
+        used = np.flatnonzero(stage.cost)
+        total = int((stage.cost[used].astype(object) * x[used]).sum())
+        value = Fraction(total, den * stage.cost_den) + stage.cost_const
+    return Vector.over(den, x.tolist()), value
 
 
 def _multipliers(
-    setting: Setting, terms: Terms, found: tuple[Side, ...], best: Optimum, program: Program
-) -> Rows:
-    """Multipliers of the natural rows, by row number."""
-    rows: Rows = {}
+    setting: Setting,
+    terms: Terms,
+    found: tuple[Side, ...],
+    best: Optimum,
+    draft: InterimDraft,
+    program: Program,
+) -> list[Part]:
+    """Multipliers of the natural rows."""
+    parts: list[Part] = []
     starts = _starts(program)
     pi = best.pi
     slices = Fraction(0)
     place = starts["expected decision"][0]
-    total = setting.total_weight
     for index, (side, flow) in enumerate(zip(found, best.flows, strict=True)):
         table, den = _weights(setting, side, best, index)
-        each = total // sum(side.party.weights)
-        taken = best.shares[0][1].counts.taken[0][index]
-        for a, row in enumerate(table):
-            mass = each * side.party.weights[a]
-            slices += Fraction(int((row * taken[a]).sum()), mass * den)
-            for k in np.flatnonzero(row):
-                rows[place + int(k)] = Fraction(int(row[k]), den)
-            place += len(row)
+        each = setting.total_weight // sum(side.party.weights)
+        others = _others(side, best.shares[0][1].counts.taken[0][index])
+        slices += Fraction(int((table * others).sum()), each * den)
+        parts.append((place + np.arange(table.size), table.ravel(), den))
+        place += table.size
         if side.party.size > 1:
-            start = starts["honest"].pop(0)
-            for offset, pair in enumerate(_pairs(program, side, start)):
-                if pair in flow.lies:
-                    rows[start + offset] = flow.lies[pair]
-        start = starts["takes part"].pop(0)
-        rows[start + side.order[-1]] = pi
-    rows[starts["slice"][0]] = -slices
+            rows, num = _told(side, flow, *draft.lies(index))
+            parts.append((starts["honest"].pop(0) + rows, num, flow.den))
+        parts.append(_one(starts["takes part"].pop(0) + side.order[-1], pi))
+    parts.append(_one(starts["slice"][0], -slices))
     goal = terms.goals[0]
     if "balance" in starts and (goal != "revenue" or not best.possible):
-        rows[starts["balance"][0]] = pi
-    return {row: value for row, value in rows.items() if value}
+        parts.append(_one(starts["balance"][0], pi))
+    return parts
+
+
+def _one(row: int, value: Fraction) -> Part:
+    return np.array([row]), np.array([value.numerator], dtype=object), value.denominator
 
 
 def _weights(setting: Setting, side: Side, best: Optimum, index: int) -> tuple[IntArray, int]:
     """The weight of q_i(k, a) in the objective and all rows, money units: integers, over one."""
-    party, flow = side.party, best.flows[index]
-    value = party.value.astype(object)
-    total = sum(party.weights)
-    den = total * math.lcm(
-        best.alpha.denominator,
-        best.pi.denominator,
-        *(multiplier.denominator for multiplier in flow.lies.values()),
-    )
-    own = [int(best.alpha * den) // total * weight for weight in party.weights]
+    flow, value = best.flows[index], side.value
+    total = sum(side.party.weights)
+    den = math.lcm(total * best.alpha.denominator, best.pi.denominator, flow.den)
+    own = side.weights * (int(best.alpha * den) // total)
     own[side.order[-1]] += int(best.pi * den)
-    table = np.zeros(value.shape, dtype=object)
-    for (a, b), multiplier in flow.lies.items():
-        whole = multiplier.numerator * (den // multiplier.denominator)
-        own[a] += whole
-        table[b] -= value[a] * whole
-    table += value * np.array(own, dtype=object)[:, None]
+    order = np.array(side.line.order)
+    low, high, unit = order[:-1], order[1:], den // flow.den
+    up, down = flow.up * unit, flow.down * unit
+    own[low] += up
+    own[high] += down
+    table = value * own[:, None]
+    table[high] -= value[low] * up[:, None]
+    table[low] -= value[high] * down[:, None]
     if not index:
         alpha, both = int(best.alpha * den) // total, int((best.alpha + best.pi) * den) // total
         row = setting.worth.astype(object) * alpha - setting.outlay.astype(object) * both
-        table += np.multiply.outer(np.array(party.weights, dtype=object), row)
+        table += np.multiply.outer(side.weights, row)
     return table, den * setting.grain
 
 
@@ -172,24 +165,29 @@ def _starts(program: Program) -> dict[str, list[int]]:
     return found
 
 
-def _pairs(program: Program, side: Side, start: int) -> list[tuple[int, int]]:
-    """The lies of one party in the order of their rows."""
-    place = 0
-    for block in program.row_axis.blocks:
-        if place == start:
-            labels = [type_.label for type_ in side.party.types]
-            position = {label: a for a, label in enumerate(labels)}
-            pairs = []
-            for label in map(block.label, range(block.count)):
-                if isinstance(label, Honest):
-                    pairs.append((position[label.true], position[label.told]))
-            return pairs
-        place += block.count
-    raise KeyError(start)
+def _told(
+    side: Side, flow: Flow, true: IndexArray, told: IndexArray
+) -> tuple[IndexArray, IntArray]:
+    """Which of the written lies carry a multiplier, and its numerator."""
+    spot = np.empty(side.party.size, dtype=np.int64)
+    spot[list(side.line.order)] = np.arange(side.party.size)
+    step = spot[told] - spot[true]
+    up, down = np.flatnonzero(step == 1), np.flatnonzero(step == -1)
+    num = np.concatenate([flow.up[spot[true[up]]], flow.down[spot[told[down]]]])
+    return np.concatenate([up, down]), num
 
 
-def _scaled(rows: Rows, program: Program) -> Vector:
+def _stored(parts: list[Part], program: Program) -> Vector:
     """Natural multipliers as those of the stored rows."""
-    num, den = program.row_scale
-    stored = {row: value * int(den[row]) / int(num[row]) for row, value in rows.items()}
-    return Vector.of(stored, len(num))
+    common = math.lcm(*(den for _, _, den in parts))
+    rows = np.concatenate([rows for rows, _, _ in parts])
+    num = np.concatenate([num * (common // den) for _, num, den in parts])
+    used = np.flatnonzero(num)
+    rows, num = rows[used], num[used]
+    above, below = (scale[rows].astype(object) for scale in program.row_scale)
+    num = num * below
+    rest = above // np.gcd(num, above)
+    over = math.lcm(*set(rest.tolist()))
+    dense = np.zeros(len(program.row_scale[0]), dtype=object)
+    dense[rows] = num * over // above
+    return Vector.over(common * over, dense.tolist())

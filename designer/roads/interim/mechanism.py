@@ -22,6 +22,8 @@ from typing import Any
 
 import numpy as np
 
+from designer.proof.vector import Vector
+from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.rule import Index, Rule
 from designer.setting.exact import number, text
 from designer.setting.setting import IntArray, Setting, integers
@@ -149,6 +151,50 @@ class Mechanism:
             "effects": None if self.effects is None else _texts(self.effects),
             "pot": text(self.pot),
         }
+
+
+def of_point(
+    setting: Setting,
+    lead: int | None,
+    mixture: tuple[tuple[tuple[Fraction, Rule], ...], ...],
+    draft: InterimDraft,
+    point: Vector,
+    balanced: bool,
+) -> Mechanism:
+    """The mechanism whose interim payments and chances are those of a point of the master.
+
+    balanced  with the pot at its expectation in every case
+    """
+    x = np.array(point.numerators(), dtype=object)
+    pays = [
+        x[draft.pays_columns[i]] if i in draft.pays_columns else np.zeros(size, dtype=object)
+        for i, size in enumerate(setting.shape)
+    ]
+    average = _over(pays, point.den)
+    if not balanced:
+        return Mechanism(setting, lead, mixture, average)
+    # From here on over point.den * grain * the product of the parties' total weights.
+    outlay = setting.outlay.astype(object)
+    total = setting.total_weight
+    own = [row * (setting.grain * total) for row in pays]
+    means, spent = [], []
+    for i, party in enumerate(setting.parties):
+        weights = np.array(party.weights, dtype=object)
+        means.append(int((own[i] * weights).sum()) // sum(party.weights))
+        spent.append((x[draft.expected_decision(i)[0]] * outlay).sum(axis=1) * total)
+    first = setting.parties[0]
+    expected = int((spent[0] * np.array(first.weights, dtype=object)).sum()) // sum(first.weights)
+    everything = sum(means)
+    pot, den = everything - expected, point.den * setting.grain * total
+    effects = [
+        cost + (pot - (everything - mean)) - mine
+        for cost, mean, mine in zip(spent, means, own, strict=True)
+    ]
+    return Mechanism(setting, lead, mixture, average, _over(effects, den), Fraction(pot, den))
+
+
+def _over(rows: list[IntArray], den: int) -> tuple[tuple[Fraction, ...], ...]:
+    return tuple(tuple(Fraction(number, den) for number in row.tolist()) for row in rows)
 
 
 def _lowest(rows: list[IntArray], den: int) -> tuple[IntArray, int]:

@@ -37,23 +37,30 @@ BITS = 40
 
 @dataclass(frozen=True, eq=False)
 class Side:
-    """A party on a line. `order` runs from its best-off to its worst-off type."""
+    """A party on a line. `order` runs from its best-off to its worst-off type.
+
+    value, weights  the party's own, as Python ints: products may be of any length
+    """
 
     party: Party
     line: Line
     order: tuple[int, ...]
+    value: IntArray
+    weights: IntArray
 
 
 @dataclass(frozen=True, eq=False)
 class Flow:
-    """One party's multipliers at some weights of welfare and pot.
+    """The multipliers of one party's lies between neighbours on its line, over one den.
 
-    lies     (true, told) -> multiplier, per probability of the true type's whole party
-    virtual  zbar by type
+    up    int, shape (T - 1,): the j-th type by rising theta claims to be the next
+    down  int, shape (T - 1,): the next claims to be the j-th
+    Both are per probability of the whole party.
     """
 
-    lies: dict[tuple[int, int], Fraction]
-    virtual: tuple[Fraction, ...]
+    up: IntArray
+    down: IntArray
+    den: int
 
 
 @dataclass(frozen=True, eq=False)
@@ -91,7 +98,8 @@ def sides(setting: Setting, terms: Terms) -> tuple[Side, ...] | None:
         order = None if own is None else _order(party, own)
         if own is None or order is None:
             return None
-        found.append(Side(party, own, order))
+        weights = np.array(party.weights, dtype=object)
+        found.append(Side(party, own, order, party.value.astype(object), weights))
     return tuple(found)
 
 
@@ -116,45 +124,53 @@ def _order(party: Party, own: Line) -> tuple[int, ...] | None:
 
 
 def flow(side: Side, alpha: Fraction, pi: Fraction, pooled: bool = True) -> Flow:
-    """The lies' multipliers and the ironed virtual types (not `pooled`: before ironing).
+    """The lies' multipliers at some weights of welfare and pot (not `pooled`: without ironing).
 
     Every type passes pi times its probability on to the next worse-off type, which it could
     claim to be; what it would gain there counts against the decisions taken there.
     """
-    theta, weights, total = side.line.theta, side.party.weights, sum(side.party.weights)
-    virtual, raw, unit = _virtual(side, alpha, pi, pooled)
-    lies: dict[tuple[int, int], Fraction] = {}
-    passing = 0
-    for a, b in pairwise(side.order):
-        passing += weights[a]
-        lies[a, b] = pi * Fraction(passing, total)
-    over = Fraction(0)
-    for a, b in pairwise(side.line.order):
-        over += (Fraction(raw[a], unit) - virtual[a]) * weights[a] / total
-        if over:
-            # Lies both ways between pooled neighbours lift the lower one's virtual type.
-            each = over / int(theta[b] - theta[a])
-            for pair in ((a, b), (b, a)):
-                lies[pair] = lies.get(pair, Fraction(0)) + each
-    return Flow({pair: value for pair, value in lies.items() if value}, tuple(virtual))
+    total = sum(side.party.weights)
+    passing = np.cumsum(side.weights[list(side.order)])[:-1] * pi.numerator
+    ironed = _virtual(side, alpha, pi, pooled)
+    order = list(side.line.order)
+    over = np.cumsum(((ironed.raw - ironed.virtual) * side.weights)[order])[:-1]
+    # Lies both ways between pooled neighbours lift the lower one's virtual type.
+    gap = np.diff(side.line.theta[order])
+    common = math.lcm(*(int(step) for step, lifted in zip(gap, over, strict=True) if lifted))
+    part = math.lcm(pi.denominator, ironed.unit * common)
+    up = np.array([0 if not o else o * common // g for o, g in zip(over, gap, strict=True)])
+    up = up.astype(object) * (part // (ironed.unit * common))
+    down = up.copy()
+    passed = passing * (part // pi.denominator)
+    if side.order == side.line.order:
+        up = up + passed
+    else:
+        down = down + passed[::-1]
+    return Flow(up, down, part * total)
 
 
-def _virtual(
-    side: Side, alpha: Fraction, pi: Fraction, pooled: bool
-) -> tuple[list[Fraction], list[int], int]:
-    """Ironed virtual types; and before ironing, as integers over a unit."""
-    weights = side.party.weights
-    den, scale = math.lcm(alpha.denominator, pi.denominator), math.lcm(*weights)
-    theta = [int(value) for value in side.line.theta]
-    both, push = int((alpha + pi) * den) * scale, int(pi * den)
-    raw = [both * value for value in theta]
-    passing = 0
-    for a, b in pairwise(side.order):
-        passing += weights[a]
-        raw[b] -= push * passing * (theta[a] - theta[b]) * (scale // weights[b])
+@dataclass(frozen=True, eq=False)
+class _Virtual:
+    """Virtual types before ironing and ironed, over one unit."""
+
+    raw: IntArray
+    virtual: IntArray
+    unit: int
+
+
+def _virtual(side: Side, alpha: Fraction, pi: Fraction, pooled: bool) -> _Virtual:
+    """The virtual types at two weights; without ironing where not `pooled`."""
+    weights, theta = side.weights, side.line.theta
+    den, scale = math.lcm(alpha.denominator, pi.denominator), math.lcm(*side.party.weights)
+    raw = theta * (int((alpha + pi) * den) * scale)
+    order = np.array(side.order)
+    better, worse = order[:-1], order[1:]
+    passing = np.cumsum(weights[order])[:-1] * int(pi * den)
+    raw[worse] -= passing * (theta[better] - theta[worse]) * (scale // weights[worse])
     unit = den * scale
-    if not pooled:
-        return [Fraction(value, unit) for value in raw], raw, unit
+    rising = raw[list(side.line.order)]
+    if not pooled or bool(np.all(rising[1:] > rising[:-1])):
+        return _Virtual(raw, raw, unit)
     pools: list[tuple[int, int, list[int]]] = []
     for a in side.line.order:
         mass, total, members = weights[a], raw[a] * weights[a], [a]
@@ -163,12 +179,11 @@ def _virtual(
             before = pools.pop()
             mass, total, members = mass + before[0], total + before[1], before[2] + members
         pools.append((mass, total, members))
-    virtual = [Fraction(0)] * len(theta)
+    common = math.lcm(*(mass // math.gcd(mass, total) for mass, total, _ in pools))
+    virtual = np.zeros(len(raw), dtype=object)
     for mass, total, members in pools:
-        value = Fraction(total, mass * unit)
-        for a in members:
-            virtual[a] = value
-    return virtual, raw, unit
+        virtual[members] = total * common // mass
+    return _Virtual(raw * common, virtual, unit * common)
 
 
 def rule_at(
@@ -183,22 +198,13 @@ def rule_at(
     Efficient rules decide no less for a higher type however they break ties: nothing is to be
     ironed then.
     """
-    both = alpha + pi
-    ironed = [_virtual(side, alpha, pi, not first)[0] for side in found]
-    den = math.lcm(
-        alpha.denominator,
-        pi.denominator,
-        *{value.denominator for row in ironed for value in row},
-    )
-    scale = int(both * den)
+    ironed = [_virtual(side, alpha, pi, not first) for side in found]
+    den = math.lcm(alpha.denominator, pi.denominator, *(own.unit for own in ironed))
+    scale = int((alpha + pi) * den)
     tables = []
-    for side, row in zip(found, ironed, strict=True):
-        shift = [
-            v.numerator * (den // v.denominator) - scale * int(place)
-            for v, place in zip(row, side.line.theta, strict=True)
-        ]
-        value = side.party.value.astype(object) * scale
-        tables.append(value + np.multiply.outer(np.array(shift, dtype=object), side.line.slope))
+    for side, own in zip(found, ironed, strict=True):
+        shift = own.virtual * (den // own.unit) - side.line.theta * scale
+        tables.append(side.value * scale + np.multiply.outer(shift, side.line.slope))
     worth, outlay = setting.worth.astype(object), setting.outlay.astype(object)
     return Rule((*first, Index(tuple(tables), worth * int(alpha * den) - outlay * scale)))
 
@@ -241,20 +247,15 @@ def _rough_ironed(
     return virtual
 
 
-def utilities(side: Side, chances: list[list[Fraction]]) -> list[Fraction]:
-    """What each type gets in units of 1/grain where binding lies leave the pot the most.
+def utilities(side: Side, chances: IntArray) -> IntArray:
+    """What each type gets over the worst-off one where binding lies leave the pot the most.
 
-    The worst-off type gets what staying out brings.
+    chances  numerators of q(k, a), int, shape (T, K); found in units of 1/grain over their den
     """
-    value, order = side.party.value.astype(object), tuple(reversed(side.order))
-    found = [Fraction(0)] * side.party.size
-    found[order[0]] = Fraction(int(side.party.outside[order[0]]))
-    for b, a in pairwise(order):
-        gain = sum(
-            (int(d) * chance for d, chance in zip(value[a] - value[b], chances[b], strict=True)),
-            Fraction(0),
-        )
-        found[a] = found[b] + gain
+    order = np.array(side.order)
+    gains = ((side.value[order[:-1]] - side.value[order[1:]]) * chances[order[1:]]).sum(axis=1)
+    found = np.zeros(side.party.size, dtype=object)
+    found[order[:-1]] = np.cumsum(gains[::-1])[::-1]
     return found
 
 
@@ -263,12 +264,9 @@ def values(setting: Setting, found: tuple[Side, ...], counts: Counts) -> tuple[F
     total = setting.total_weight
     welfare, pot = 0, Fraction(0)
     for side, table in zip(found, counts.taken[0], strict=True):
-        value = side.party.value.astype(object)
-        each = total // sum(side.party.weights)
-        masses = [each * weight for weight in side.party.weights]
-        worth = int((value * table).sum())
+        worth = int((side.value * table).sum())
         welfare += worth
-        pot += worth - _left(side, table, masses)
+        pot += worth - _left(side, table, total)
     decided = counts.taken[0][0].sum(axis=0)
     spent = int((decided * setting.outlay.astype(object)).sum())
     enjoyed = int((decided * setting.worth.astype(object)).sum())
@@ -276,20 +274,19 @@ def values(setting: Setting, found: tuple[Side, ...], counts: Counts) -> tuple[F
     return Fraction(welfare - spent + enjoyed, scale), (pot - spent) / scale
 
 
-def _left(side: Side, table: IntArray, masses: list[int]) -> Fraction:
+def _left(side: Side, table: IntArray, total: int) -> Fraction:
     """Sum over types of mass times utility, as `utilities` says, from weights.
 
     Masses are the weights times a constant, so better-off mass over own mass needs only them.
     Whatever a type gains at the next worse-off one's decisions is left to all better-off ones.
     """
-    value = side.party.value.astype(object)
     scale = math.lcm(*side.party.weights)
     order = np.array(side.order)
-    better = np.cumsum(np.array([side.party.weights[a] for a in side.order], dtype=object))
-    gains = ((value[order[:-1]] - value[order[1:]]) * table[order[1:]]).sum(axis=1)
-    shares = np.array([scale // side.party.weights[b] for b in side.order[1:]], dtype=object)
-    gained = int((gains * better[:-1] * shares).sum()) if len(gains) else 0
-    return int(side.party.outside[side.order[-1]]) * Fraction(sum(masses)) + Fraction(gained, scale)
+    better = np.cumsum(side.weights[order])
+    worse = order[1:]
+    gains = ((side.value[order[:-1]] - side.value[worse]) * table[worse]).sum(axis=1)
+    gained = int((gains * better[:-1] * (scale // side.weights[worse])).sum())
+    return int(side.party.outside[side.order[-1]]) * Fraction(total) + Fraction(gained, scale)
 
 
 Valued = tuple[Listed, Fraction, Fraction]

@@ -28,7 +28,7 @@ from designer.roads.interim.counting import TooMany, lead_party, tied, too_many
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.lies import broken, first_lies, with_more
 from designer.roads.interim.master import Master, Prices, averaged, exact_prices, rule_for
-from designer.roads.interim.mechanism import Mechanism
+from designer.roads.interim.mechanism import Mechanism, of_point
 from designer.roads.interim.multiplier import optimum, sides
 from designer.roads.interim.rule import Index, Listed, Rule, welfare_index
 from designer.roads.interim.search import Search
@@ -281,36 +281,17 @@ class _Walk:
 
     def _mechanism(self, draft: InterimDraft, primal: Vector, keep: list[int]) -> Mechanism:
         setting, master = self.setting, self.master
-        values = primal.fractions()
+        shares = primal.numerators()[: len(keep)]
         mixture = []
         for g in range(master.slices):
             parts = [
-                (values.get(new, Fraction(0)), master.listed[master.columns[j][1]].rule)
-                for new, j in enumerate(keep)
-                if master.columns[j][0] == g
+                (Fraction(share, primal.den), master.listed[master.columns[j][1]].rule)
+                for share, j in zip(shares, keep, strict=True)
+                if share and master.columns[j][0] == g
             ]
-            mixture.append(tuple((share, rule) for share, rule in parts if share))
-        pays = []
-        known = draft.pays_columns
-        for index, party in enumerate(setting.parties):
-            columns = known.get(index)
-            pays.append(
-                tuple(
-                    Fraction(0) if columns is None else values.get(int(columns[a]), Fraction(0))
-                    for a in range(party.size)
-                )
-            )
-        chances = [
-            [
-                [values.get(int(column), Fraction(0)) for column in row]
-                for row in draft.expected_decision(index)[0]
-            ]
-            for index in range(len(setting.parties))
-        ]
-        mechanism = Mechanism(setting, master.lead, tuple(mixture), tuple(pays))
-        if self.asked.balance != "ex-post":
-            return mechanism
-        return _balanced(mechanism, chances)
+            mixture.append(tuple(parts))
+        balanced = self.asked.balance == "ex-post"
+        return of_point(setting, master.lead, tuple(mixture), draft, primal, balanced)
 
     def _undecided(self, reason: str) -> Settled:
         _, program = self.master.program([])
@@ -334,36 +315,10 @@ class _Walk:
 
 def _restored(dual: Vector | None, old: Program, new: Program) -> Vector | None:
     """The same natural multipliers over rows that dropping columns may have scaled anew."""
-    if dual is None:
-        return None
+    if dual is None or old is new:
+        return dual
     entries = {}
     for row, value in dual.fractions().items():
         natural = value * int(old.row_scale[0][row]) / int(old.row_scale[1][row])
         entries[row] = natural * int(new.row_scale[1][row]) / int(new.row_scale[0][row])
     return Vector.of(entries, dual.size)
-
-
-def _balanced(mechanism: Mechanism, chances: list[list[list[Fraction]]]) -> Mechanism:
-    """The same mechanism with the pot at its expectation in every case."""
-    setting = mechanism.setting
-    outlay = [Fraction(int(spent), setting.grain) for spent in setting.outlay]
-    averages = [
-        sum((p * m for p, m in zip(party.marginal, table, strict=True)), Fraction(0))
-        for party, table in zip(setting.parties, mechanism.pays_on_average, strict=True)
-    ]
-    spent = [
-        [sum((q * o for q, o in zip(row, outlay, strict=True)), Fraction(0)) for row in table]
-        for table in chances
-    ]
-    first = setting.parties[0]
-    expected = sum((p * s for p, s in zip(first.marginal, spent[0], strict=True)), Fraction(0))
-    pot = sum(averages, Fraction(0)) - expected
-    everything = sum(averages, Fraction(0))
-    effects = tuple(
-        tuple(
-            spent[i][a] + pot - mine - (everything - averages[i])
-            for a, mine in enumerate(mechanism.pays_on_average[i])
-        )
-        for i in range(len(setting.parties))
-    )
-    return replace(mechanism, effects=effects, pot=pot)
