@@ -7,6 +7,7 @@ from fractions import Fraction
 from types import MappingProxyType
 
 from designer.setting import exact
+from designer.setting.options import Options, named
 from designer.setting.parties import TAKEN, Roster
 from designer.setting.reading import Section, describe, listing, unknown_keys
 from designer.setting.setting import Chance, Limits, Side
@@ -31,30 +32,33 @@ def read_limits(root: Section) -> Limits:
     return limits
 
 
-def read_side(root: Section, roster: Roster, options: Sequence[str]) -> Side:
+def read_side(root: Section, roster: Roster, options: Options) -> Side:
     """Floors on expected welfare and revenue, and fixed or bounded interim probabilities."""
     section = root.section("side")
     if section is None:
         return Side()
     section.only("welfare_at_least", "revenue_at_least", "chance")
-    chances = [_chance(entry, roster, options) for entry in section.sections("chance")]
+    chances = [
+        chance
+        for entry in section.sections("chance")
+        for chance in _chances(entry, roster, options)
+    ]
     return Side(
-        section.number("welfare_at_least"),
-        section.number("revenue_at_least"),
-        tuple(chance for chance in chances if chance is not None),
+        section.number("welfare_at_least"), section.number("revenue_at_least"), tuple(chances)
     )
 
 
-def _chance(section: Section, roster: Roster, options: Sequence[str]) -> Chance | None:
+def _chances(section: Section, roster: Roster, options: Options) -> list[Chance]:
+    """What one entry demands: of a party, or of every member of a group."""
     section.only("party", "type", "option", "at_least", "at_most", "exactly")
-    party = _one_of(section, "party", roster.names, "a party")
-    option = _one_of(section, "option", options, "an option")
+    parties = _parties(section, roster)
+    chosen = _options(section, roster, parties, options)
     position = None
     if "type" not in section:
         section.wrong("type", "a type of the party", "Write type = TYPE.")
-    elif party is not None:
+    elif parties:
         position = roster.position(
-            party, section.values["type"], section.at("type"), section.report
+            parties[0], section.values["type"], section.at("type"), section.report
         )
     bounds = {key: _probability(section, key) for key in ("at_least", "at_most", "exactly")}
     given = [key for key in bounds if key in section]
@@ -68,19 +72,40 @@ def _chance(section: Section, roster: Roster, options: Sequence[str]) -> Chance 
     low = bounds["at_least"] if "exactly" not in given else bounds["exactly"]
     high = bounds["at_most"] if "exactly" not in given else bounds["exactly"]
     _ordered(low, high, section, "at_least", "at_most")
-    if party is None or position is None or option is None:
-        return None
-    return Chance(party, position, option, low, high)
+    if position is None:
+        return []
+    pairs = zip(parties, chosen, strict=False)  # no option, where it is mistaken
+    return [Chance(party, position, option, low, high) for party, option in pairs]
 
 
-def _one_of(section: Section, key: str, known: Sequence[str | None], what: str) -> int | None:
-    value = section.values.get(key)
-    if isinstance(value, str) and value in known:
-        return known.index(value)
-    names = [name for name in known if name is not None]
-    if len(names) == len(known) and names:
-        section.wrong(key, listing(names), section.report.near(value, names) or f"Name {what}.")
-    return None
+def _parties(section: Section, roster: Roster) -> tuple[int, ...]:
+    """The party or the group that an entry names; none where it is mistaken."""
+    value = section.values.get("party")
+    parties = roster.called(value) if isinstance(value, str) else ()
+    if not parties and None not in roster.names and roster.names:
+        names = [*roster.known_names(), *roster.groups]
+        remedy = section.report.near(value, names) or "Name a party."
+        section.wrong("party", listing(roster.known_names()), remedy)
+    return parties
+
+
+def _options(
+    section: Section, roster: Roster, parties: Sequence[int], options: Options
+) -> list[int]:
+    """The option of each party; {name} in it is the party's own name."""
+    value = section.values.get("option")
+    found = []
+    known = isinstance(value, str) and value in options.names
+    own = [roster.names[party] if party in roster.group_of else None for party in parties]
+    for name in own or [None]:
+        option = named(value, name) if isinstance(value, str) and name and not known else value
+        if not isinstance(option, str) or option not in options.names:
+            if options.names:
+                remedy = section.report.near(value, options.names) or "Name an option."
+                section.wrong("option", listing(options.names), remedy)
+            return []
+        found.append(options.names.index(option))
+    return found
 
 
 def _probability(section: Section, key: str) -> Fraction | None:
@@ -157,9 +182,12 @@ def _blend(root: Section, roster: Roster) -> Mapping[str, Fraction] | None:
             section.wrong("blend", "weights by name", "Write blend = { worth = 1, pot = -1 }.")
         return None
     if roster.complete:
-        known = (*TAKEN, *roster.known_names())
+        known = (*TAKEN, *roster.known_names(), *roster.groups)
         unknown_keys(table.values, known, table.place, root.report, "name")
-    weights = {key: table.number(key) for key in table.values}
+    weights: dict[str, Fraction | None] = {}
+    for key in sorted(table.values, key=lambda key: key not in roster.groups):
+        members = [str(roster.names[i]) for i in roster.groups.get(key, ())] or [key]
+        weights |= dict.fromkeys(members, table.number(key))  # a member's own goes before
     return MappingProxyType(
         {key: weight for key, weight in sorted(weights.items()) if weight is not None}
     )

@@ -19,8 +19,8 @@ from __future__ import annotations
 import ast
 import unicodedata
 import warnings
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import NoReturn, TypeAlias
 
@@ -51,11 +51,13 @@ class Names:
 
     own      the position of the party whose worth it is; None for the designer
     fields   per party the names of its types' fields; None where they could not be read
+    groups   per name that stands for several parties alike their positions
     """
 
     own: int | None
     parties: tuple[str | None, ...]
     fields: tuple[frozenset[str] | None, ...]
+    groups: Mapping[str, tuple[int, ...]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -342,6 +344,12 @@ class _Copier:
             for index, known in enumerate(parties):
                 if known is not None and fold(known) == fold(name):
                     return index
+        if name in self.names.groups:
+            members = [parties[index] for index in self.names.groups[name]]
+            self.refuse(
+                f"{shorten(name)} stands for {len(members)} parties alike",
+                f'Name one of them: types["{members[0]}"].',
+            )
         known_names = [known for known in parties if known is not None]
         return self.refuse(
             f"no party is called {shorten(name)}",

@@ -1,9 +1,14 @@
-"""The parties' names and types, read before anything that refers to them."""
+"""The parties' names and types, read before anything that refers to them.
+
+A [[party]] with `count = 8` states eight parties alike, NAME 1 to NAME 8: a *group*. Each has
+its own type; types, prior, worths and the rest are read once and stand for each of them.
+Wherever the file names parties, the group's name stands for each of its members.
+"""
 
 from __future__ import annotations
 
 import keyword
-from collections.abc import Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import cached_property
@@ -24,22 +29,37 @@ from designer.setting.reading import (
 )
 from designer.setting.setting import Type
 
-KEYS = ("name", "types", "prior", "weights", "value", "outside", "compelled")
+KEYS = ("name", "count", "types", "prior", "weights", "value", "outside", "compelled")
 TAKEN = ("worth", "pot", "parties")
 """Words of the [goal] blend; a party of that name could not be told from them."""
+
+OWN = "name"
+"""In the options and worths of parties alike, {name} is the party's own name."""
+
+MOST_ALIKE = 1_000
+"""Largest count. Tables, proofs and screens have an entry or a line for every party: more would
+be read by nobody, and a count beyond this is more likely a slip of the pen."""
 
 
 @dataclass
 class Roster:
     """Who the parties are, as far as could be read; None where it could not.
 
-    Filled by `read_roster`, and left as it is from then on.
+    Filled by `read_roster`, and left as it is from then on. Every list has an entry per party.
+
+    sections  its table in the file: one and the same for all parties of a group
+    heads     the first party of its table: the party itself unless it is one of a group
+    groups    the members of each group, by the group's name
+    counted   whether every count could be read
     """
 
-    sections: list[Section]
-    names: list[str | None]
-    types: list[tuple[Type, ...] | None]
+    sections: list[Section] = field(default_factory=list)
+    names: list[str | None] = field(default_factory=list)
+    types: list[tuple[Type, ...] | None] = field(default_factory=list)
     positions: list[dict[str, int]] = field(default_factory=list)
+    heads: list[int] = field(default_factory=list)
+    groups: dict[str, tuple[int, ...]] = field(default_factory=dict)
+    counted: bool = True
 
     @property
     def complete(self) -> bool:
@@ -53,7 +73,7 @@ class Roster:
 
     def expression_names(self, own: int | None) -> Names:
         """What expressions of one party (None: the designer) may name."""
-        return Names(own, *self._names)
+        return Names(own, *self._names, self.groups)
 
     @cached_property
     def _names(self) -> tuple[tuple[str | None, ...], tuple[frozenset[str] | None, ...]]:
@@ -66,6 +86,17 @@ class Roster:
     def known_names(self) -> list[str]:
         """The names that could be read."""
         return [name for name in self.names if name is not None]
+
+    @cached_property
+    def group_of(self) -> Mapping[int, str]:
+        """The group of each party that is one of parties alike."""
+        return {party: group for group, members in self.groups.items() for party in members}
+
+    def called(self, name: str) -> tuple[int, ...]:
+        """The parties a name stands for: a party, or all members of a group; maybe none."""
+        if name in self.names:
+            return (self.names.index(name),)
+        return self.groups.get(name, ())
 
     def position(self, party: int, raw: object, place: str, report: Report) -> int | None:
         """The position of a type of a party, matched by value if a number, else by name."""
@@ -83,28 +114,43 @@ class Roster:
         return None
 
     def profile(self, at: dict[str, Any], place: str, report: Report) -> tuple[int, ...] | None:
-        """One type position per party from a table party = type; every party once."""
-        found: list[int | None] = []
+        """One type position per party from a table party = type; every party once.
+
+        A group's name gives the type of those of its members that are not named themselves.
+        """
+        known = [*self.known_names(), *self.groups]
         for key in at:
-            if key not in self.names and None not in self.names:
+            if key not in known and None not in self.names:
                 report.add(
                     join(place, key),
                     f"an unknown party {describe(key)}",
                     f"one of {listing(self.known_names())}",
-                    report.near(key, self.known_names()) or "Remove it.",
+                    report.near(key, known) or "Remove it.",
                 )
+        found: dict[str, int | None] = {}
+        steps: list[int | None] = []
         for party, name in enumerate(self.names):
-            if name is None:
-                found.append(None)
-            elif name not in at:
-                found.append(None)
-                report.add(
-                    join(place, name), "nothing", "a type of every party", f"Add {name} = TYPE."
-                )
-            else:
-                found.append(self.position(party, at[name], join(place, name), report))
-        complete = [step for step in found if step is not None]
-        return tuple(complete) if len(complete) == len(found) else None
+            called = name if name in at else self.group_of.get(party)
+            if name is None or called is None or called not in at:
+                if name is not None:
+                    self._no_type(party, at, place, report)
+                steps.append(None)
+                continue
+            if called not in found:
+                found[called] = self.position(party, at[called], join(place, called), report)
+            steps.append(found[called])
+        complete = [step for step in steps if step is not None]
+        return tuple(complete) if len(complete) == len(steps) else None
+
+    def _no_type(self, party: int, at: dict[str, Any], place: str, report: Report) -> None:
+        """Note that a profile says nothing of a party; once for a group none of which it names."""
+        name = str(self.names[party])
+        group = self.group_of.get(party)
+        if group is not None and not any(self.names[one] in at for one in self.groups[group]):
+            if party != self.heads[party]:
+                return
+            name = group
+        report.add(join(place, name), "nothing", "a type of every party", f"Add {name} = TYPE.")
 
 
 def canonical(raw: object) -> str | None:
@@ -125,40 +171,99 @@ def read_roster(root: Section) -> Roster:
     """Names and types of all [[party]] tables."""
     if "party" not in root:
         root.wrong("party", "at least one [[party]]", "Describe each party in a table [[party]].")
+    roster = Roster()
     sections = root.sections("party")
-    roster = Roster(sections, [], [])
+    taken: dict[str, str] = {}
+    counts: list[int] = []
     for section in sections:
-        name = read_party_name(section, roster.names)
-        if name is not None:
-            section.place += f" '{name}'"
-        roster.names.append(name)
-    for section in sections:
+        count = read_count(section)
+        names = read_party_names(section, count, taken)
+        taken |= {name: section.place for name in names if name is not None}
+        if names[0] is not None:
+            section.place += f" '{section.values['name']}'"
+        head = len(roster.names)
+        if count is not None and "count" in section and names[0] is not None:
+            members = tuple(range(head, head + count))
+            roster.groups[section.values["name"]] = members
+            taken[section.values["name"]] = taken[names[0]]
+        roster.counted = roster.counted and count is not None
+        roster.names += names
+        counts.append(len(names))
+    for section, count in zip(sections, counts, strict=True):
         section.only(*KEYS)
         types = read_types(section)
-        roster.types.append(types)
-        roster.positions.append({kind.label: a for a, kind in enumerate(types or ())})
+        positions = {kind.label: a for a, kind in enumerate(types or ())}
+        roster.heads += [len(roster.heads)] * count
+        roster.sections += [section] * count
+        roster.types += [types] * count
+        roster.positions += [positions] * count
     return roster
 
 
-def read_party_name(section: Section, earlier: Sequence[str | None]) -> str | None:
-    """The name of a party, unlike those before it and the words the blend keeps."""
+def read_count(section: Section) -> int | None:
+    """How many parties alike a table states; 1 where it does not say, None where mistaken."""
+    count = section.values.get("count", 1)
+    if isinstance(count, int) and not isinstance(count, bool) and 1 <= count <= MOST_ALIKE:
+        return count
+    remedy = "Write count = 8 for eight parties alike, each with its own type."
+    if isinstance(count, int) and count > MOST_ALIKE:
+        remedy = "State fewer parties, each standing for several."
+    section.wrong("count", f"a whole number from 1 to {MOST_ALIKE:,}", remedy)
+    return None
+
+
+def read_party_names(
+    section: Section, count: int | None, taken: Mapping[str, str]
+) -> list[str | None]:
+    """The names of the parties of one table, unlike those taken and the words the blend keeps.
+
+    NAME alone, or NAME 1 to NAME count; [None] for each where the name is mistaken, and a
+    single None where the count is. `taken` says by which table.
+    """
+    unknown: list[str | None] = [None] * (count or 1)
     if "name" not in section:
         section.wrong("name", "a name", 'Write name = "…".')
-        return None
+        return unknown
     name = read_name(section.values["name"], section.at("name"), section.report, "a name")
+    if name is None:
+        return unknown
     if name in TAKEN:
         section.wrong(
             "name",
             f"a name other than {listing(TAKEN)}",
             "Rename it: in the blend of goals these words mean something else.",
         )
-        return None
-    if name is not None and name in earlier:
+        return unknown
+    if name == OWN and "count" in section:
         section.wrong(
-            "name", f"a name unlike party[{earlier.index(name)}]'s", "Give each party its own name."
+            "name",
+            f"a name other than {OWN}",
+            f"Rename them: {{{OWN}}} stands for each one's own name.",
         )
-        return None
-    return name
+        return unknown
+    if count is None:
+        return unknown
+    names = [name] if count == 1 else [f"{name} {number}" for number in range(1, count + 1)]
+    for one in (name, *names):
+        if one in taken:
+            _collides(section, one, taken[one])
+            return unknown
+    if count > 1 and read_name(names[-1], section.at("name"), section.report, "a name") is None:
+        return unknown  # too long with its number
+    return list(names)
+
+
+def _collides(section: Section, name: str, other: str) -> None:
+    """Note that a name is another table's already."""
+    if name == section.values["name"]:
+        section.wrong("name", f"a name unlike {other}'s", "Give each party its own name.")
+    else:
+        section.report.add(
+            section.at("name"),
+            f"{describe(section.values['name'])}, whose count makes {describe(name)} of it",
+            f"a name unlike {other}'s",
+            "Give each party its own name.",
+        )
 
 
 def read_types(section: Section) -> tuple[Type, ...] | None:

@@ -21,11 +21,16 @@ from designer.setting.worths import frozen, too_many
 
 
 def read_own_priors(roster: Roster) -> list[tuple[int, ...] | None]:
-    """The weights of each party's types, from its prior or weights."""
-    return [
-        _own_prior(section, None if types is None else len(types))
-        for section, types in zip(roster.sections, roster.types, strict=True)
-    ]
+    """The weights of each party's types, from its prior or weights; read once for a group."""
+    weights: list[tuple[int, ...] | None] = []
+    for party, head in enumerate(roster.heads):
+        types = roster.types[party]
+        weights.append(
+            weights[head]
+            if head < party
+            else _own_prior(roster.sections[party], None if types is None else len(types))
+        )
+    return weights
 
 
 def _own_prior(section: Section, size: int | None) -> tuple[int, ...] | None:
@@ -104,7 +109,8 @@ def read_joint(
 ) -> tuple[IntArray, list[tuple[int, ...]]] | None:
     """The joint prior: weights over all N profiles, and each party's marginal weights."""
     report = root.report
-    for section in roster.sections:
+    for party in sorted(set(roster.heads)):
+        section = roster.sections[party]
         for key in ("prior", "weights"):
             if key in section:
                 section.report.add(
@@ -139,11 +145,12 @@ def read_joint(
     for party, section in enumerate(roster.sections):
         blocks = dense.reshape(-1, roster.shape[party], steps[party])
         along = [int(weight) for weight in blocks.sum(axis=(0, 2))]
+        whose = f" of {roster.names[party]}" if party in roster.group_of else ""
         for kind, mass in zip(roster.types[party] or (), along, strict=True):
             if mass == 0:
                 report.add(
                     section.at("types"),
-                    f"the type {kind.label!r} of probability 0 in the joint prior",
+                    f"the type {kind.label!r}{whose} of probability 0 in the joint prior",
                     "a positive probability for every type",
                     "Give a profile with it some weight, or remove the type.",
                 )

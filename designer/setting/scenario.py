@@ -23,6 +23,7 @@ from designer.setting.asked import read_asked, read_limits, read_side
 from designer.setting.dump import digest_of, dump
 from designer.setting.evaluate import Amounts, constant
 from designer.setting.expression import ExpressionError
+from designer.setting.options import Options, expand
 from designer.setting.parties import Roster, read_roster
 from designer.setting.priors import read_joint, read_own_priors
 from designer.setting.reading import Refused, Report, Section, describe, read_name
@@ -162,13 +163,16 @@ class _Reader:
         money = root.text("money", MONEY)
         note = root.text("note", "", lines=True)
         support_only = root.word("profiles", ("all", "support"), "all") == "support"
-        options = self.options()
+        options_read = self.options()
         roster = read_roster(root)
+        options = expand(options_read, "decisions.options", roster, self.report)
         outlay, worth = self.designer(roster, options)
         values, outsides = self.worths(roster, options)
-        compelled = [section.flag("compelled") for section in roster.sections]
+        heads = sorted(set(roster.heads))
+        compels = {i: roster.sections[i].flag("compelled") for i in heads}
+        compelled = [compels[head] for head in roster.heads]
         joint, weights = self.priors(roster)
-        rule = read_rule(root, roster, options, self.folder) if "rule" in root else None
+        rule = read_rule(root, roster, options.names, self.folder) if "rule" in root else None
         limits = read_limits(root)
         side = read_side(root, roster, options)
         asked = read_asked(root, roster)
@@ -197,7 +201,7 @@ class _Reader:
         table, rule_den = rule or (None, 1)
         return Setting(
             title=title,
-            options=tuple(options),
+            options=options.names,
             parties=tuple(parties),
             outlay=per_type([_sure(one) for one in outlay], 1, grain)[0],
             worth=per_type([_sure(one) for one in worth], 1, grain)[0],
@@ -237,7 +241,7 @@ class _Reader:
         return options if len(self.report) == before else []
 
     def designer(
-        self, roster: Roster, options: Sequence[str]
+        self, roster: Roster, options: Options
     ) -> tuple[list[Amounts | None], list[Amounts | None]]:
         """The designer's outlay and worth per option; what is not given is 0."""
         section = self.root.section("designer") or Section({}, "designer", self.report)
@@ -248,21 +252,23 @@ class _Reader:
         return outlay, worth
 
     def worths(
-        self, roster: Roster, options: Sequence[str]
+        self, roster: Roster, options: Options
     ) -> tuple[list[list[Amounts | None]], list[Amounts | None]]:
         """Each party's worth per option, and its outside option."""
         count = math.prod(roster.shape)
         values: list[list[Amounts | None]] = []
         outsides: list[Amounts | None] = []
-        for i, section in enumerate(roster.sections):
-            reader = WorthReader(roster, i, self.report)
+        readers: list[WorthReader] = []
+        for i, (section, head) in enumerate(zip(roster.sections, roster.heads, strict=True)):
+            reader = WorthReader(roster, i, self.report, readers[head] if head < i else None)
+            readers.append(reader)
             value = reader.per_option(section, "value", options, rest_is_zero=False)
             outside: Amounts | None = constant(0)
             if "outside" in section:
                 outside = reader.read(section.values["outside"], section.at("outside"))
             for key, amounts in (("value", value), ("outside", [outside])):
                 others = any(one is not None and set(one.axes) - {i} for one in amounts)
-                if others and count > profiles.MOST:
+                if others and head == i and count > profiles.MOST:
                     too_many(count, section.at(key), self.report)
             values.append(value)
             outsides.append(outside)

@@ -12,49 +12,78 @@ import numpy as np
 from designer.setting import exact, profiles
 from designer.setting.evaluate import Amounts, collect, common_multiple, constant, evaluate
 from designer.setting.expression import ExpressionError, parse, references
+from designer.setting.options import Options, unknown_options
 from designer.setting.parties import Roster
-from designer.setting.reading import Report, Section, describe, read_number, unknown_keys
+from designer.setting.reading import Report, Section, describe, read_number
 from designer.setting.setting import IntArray, Type, integers
 
 FORMS = 'Write a number, an expression such as "type / 2", or a list with one entry per type.'
 
 
 class WorthReader:
-    """Reads the money amounts of one party (or, with `own` None, of the designer)."""
+    """Reads the money amounts of one party (or, with `own` None, of the designer).
 
-    def __init__(self, roster: Roster, own: int | None, report: Report) -> None:
-        """Amounts may refer to the types in `roster`."""
+    Parties alike share what is read: an amount of the own type alone is read for the first
+    of them and moved to the others' types; one of others' types is read for each.
+    """
+
+    def __init__(
+        self, roster: Roster, own: int | None, report: Report, like: WorthReader | None = None
+    ) -> None:
+        """Amounts may refer to the types in `roster`; `like` has read those of a party alike."""
         self.roster = roster
         self.own = own
         self.report = report
+        self.first = like is None
+        self.known: dict[str, tuple[Amounts | None, bool]] = {} if like is None else like.known
 
     def per_option(
-        self, section: Section, key: str, options: Sequence[str], *, rest_is_zero: bool
+        self, section: Section, key: str, options: Options, *, rest_is_zero: bool
     ) -> list[Amounts | None]:
         """One amount per option from a table option = amount."""
         missing = constant(Fraction(0)) if rest_is_zero else None
-        result: list[Amounts | None] = [missing] * len(options)
+        result: list[Amounts | None] = [missing] * len(options.names)
         if key not in section:
-            if not rest_is_zero:
+            if not rest_is_zero and self.first:
                 section.wrong(key, "a worth for every option", f"Write {key} = {{ … }}.")
             return result
-        table = section.section(key)
-        if table is None:
+        table = section.section(key) if self.first else Section(section.values[key], "", Report())
+        if table is None or not isinstance(table.values, dict):
             return result
-        if options:
-            unknown_keys(table.values, options, table.place, self.report, "option")
+        table.place = section.at(key)
+        own = self.own
+        alike = own is not None and own in self.roster.group_of
+        mine = self.roster.names[own] if own is not None and alike else None
+        chosen: list[str | None] = []
+        if options.names:
+            chosen, unknown = options.keys(table.values, mine)
+            if self.first:
+                unknown_options(unknown, options, mine, table.place, self.report)
         else:
             for name, raw in table.values.items():
                 self.read(raw, table.at(name))
-        for index, option in enumerate(options):
-            if option in table:
-                result[index] = self.read(table.values[option], table.at(option))
-            elif not rest_is_zero:
-                table.wrong(option, "a worth for every option", "Write 0 if it is worth nothing.")
+        for k, written in enumerate(chosen):
+            if written is not None:
+                result[k] = self.read(table.values[written], table.at(written))
+        if self.first and not rest_is_zero:
+            for name in options.written(k for k, one in enumerate(chosen) if one is None):
+                table.wrong(name, "a worth for every option", "Write 0 if it is worth nothing.")
         return result
 
     def read(self, raw: object, place: str) -> Amounts | None:
         """An amount in any of its forms, in its shortest form; None when mistaken."""
+        if place in self.known:
+            amounts, others = self.known[place]
+            if amounts is None or not amounts.axes:
+                return amounts
+            if not others and self.own is not None:
+                return Amounts((self.own,), amounts.num, amounts.den)
+        amounts = self._read(raw, place)
+        # The expression itself tells: types["Farm 2"] is its own type to one of the group.
+        self.known[place] = amounts, "types" in str(raw) or _deep(raw)
+        return amounts
+
+    def _read(self, raw: object, place: str) -> Amounts | None:
         before = len(self.report)
         amounts = None
         try:
@@ -95,7 +124,7 @@ class WorthReader:
         types = self.roster.types
         if types[own] is None:
             return None
-        if any(isinstance(entry, list) for entry in raw):
+        if _deep(raw):
             return self.nested(raw, place)
         if not self.counted(raw, place, own):
             return None
@@ -111,6 +140,14 @@ class WorthReader:
 
     def nested(self, raw: list[object], place: str) -> Amounts | None:
         """A number for every profile."""
+        if len(self.roster.groups.get(self.roster.group_of.get(self.own or 0, ""), ())) > 1:
+            self.report.add(
+                place,
+                "lists in lists, for several parties alike",
+                "worths that each one's own position gives",
+                "Write an expression of type and types.PARTY, or the parties one by one.",
+            )
+            return None
         if not self.roster.complete:
             return None
         shape = self.roster.shape
@@ -212,6 +249,11 @@ def _stack(slices: Sequence[Amounts], own: int, shape: Sequence[int]) -> Amounts
         part = np.asarray(each.num, dtype=object).reshape(sizes) * (den // each.den)
         parts.append(np.broadcast_to(part, full))
     return Amounts(axes, np.concatenate(parts, axis=at), den)
+
+
+def _deep(raw: object) -> bool:
+    """Whether lists are in lists: amounts over profiles."""
+    return isinstance(raw, list) and any(isinstance(entry, list) for entry in raw)
 
 
 def _is_number(raw: str) -> bool:

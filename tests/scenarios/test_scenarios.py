@@ -15,7 +15,7 @@ from designer.setting.setting import Setting
 from tests.oracles.textbook import build_and_solve
 
 FOLDER = Path(__file__).parents[2] / "scenarios"
-NAMES = ("breakwater", "dawn-berth", "lock-sale", "reef", "ropewalk", "wreck")
+NAMES = ("breakwater", "cooling-place", "dawn-berth", "lock-sale", "reef", "ropewalk", "wreck")
 
 ANSWERS: tuple[tuple[str, Demands, str, dict[str, str | None]], ...] = (
     ("breakwater", Demands(), "impossible", {"floor": None}),
@@ -26,6 +26,7 @@ ANSWERS: tuple[tuple[str, Demands, str, dict[str, str | None]], ...] = (
     ("lock-sale", Demands(goal="outside-money"), "possible", {"outside-money": "5/2"}),
     ("dawn-berth", Demands(), "possible", {"revenue": "455/2", "welfare": "265"}),
     ("dawn-berth", Demands(ir="none"), "unbounded", {"revenue": None}),
+    ("cooling-place", Demands(), "possible", {"revenue": "167895/2048"}),
     ("ropewalk", Demands(), "possible", {"floor": "640/27"}),
     ("wreck", Demands(), "possible", {"revenue": "145/2"}),
     ("reef", Demands(), "possible", {"revenue": "165/4", "worst-pot": "25"}),
@@ -100,6 +101,16 @@ def test_lock_sale_by_hand() -> None:
     assert derivation is not None
     assert derivation.total == 5
     assert [line.multiplier for line in derivation.lines] == [1, 1, 2, 2, 2]
+
+
+def test_cooling_place_is_the_optimal_auction_among_alike() -> None:
+    """E[max(0, virtual worths)] by the largest of six; Myerson (1981), as below.
+
+    20 counts 20 - (60 - 20) 3 = -100, 60 counts 60 - (90 - 60) / 2 = 45, and 90 itself.
+    """
+    below_90, below_60 = Fraction(3, 4) ** 6, Fraction(1, 4) ** 6
+    expected = 90 * (1 - below_90) + 45 * (below_90 - below_60)
+    assert posed("cooling-place").goal_value == expected
 
 
 def test_dawn_berth_is_the_optimal_auction() -> None:

@@ -161,8 +161,8 @@ CASES: list[tuple[str, str, str, str]] = [
         (
             "party[1].name: found nothing; expected a name.\n"
             '    Write name = "…".\n'
-            "party[1].nam: found an unknown key 'nam'; expected one of name, types, prior, "
-            "weights, value, outside, compelled.\n"
+            "party[1].nam: found an unknown key 'nam'; expected one of name, count, types, "
+            "prior, weights, value, outside, compelled.\n"
             "    Did you mean 'name'?"
         ),
     ),
