@@ -10,10 +10,10 @@ from typing import TYPE_CHECKING, Any
 
 from designer.errors import Mistake, ProofError
 from designer.proof import decode
-from designer.proof.document import plain_program, plain_stage
 
 if TYPE_CHECKING:
     from designer.demands.terms import Terms
+    from designer.program.draft import Draft
     from designer.program.program import Axis, Program
     from designer.setting.setting import Setting
 
@@ -46,17 +46,20 @@ def program_digest(document: object) -> str:
     return digest.hexdigest()
 
 
-def rebuild(document: object, setting: Setting, terms: Terms) -> Program:
+def rebuild(
+    document: object, setting: Setting, terms: Terms, draft: Draft | None = None
+) -> Program:
     """The program that the scenario and the terms lead to, with the document's stages.
 
     Goals are posed in the document's order and pinned at the document's values; nothing else
-    is taken from it. Raises ProofError for malformed stages or goals that do not exist.
+    is taken from it. `draft` is where to write, a plain one by default. Raises ProofError for
+    malformed stages or goals that do not exist.
     """
     from designer.demands.formulate import Formulation
     from designer.demands.registry import GOALS
 
     _, stages = _decoded(document)
-    work = Formulation(setting, terms)
+    work = Formulation(setting, terms, draft=draft)
     program = work.program()
     for s, stage in enumerate(stages):
         if stage.goal not in GOALS:
@@ -78,9 +81,7 @@ def same_program(document: object, program: Program) -> list[str]:
     malformed program or malformed stages.
     """
     theirs, their_stages = _decoded(document)
-    plain: dict[str, Any] = {"program": plain_program(program), "verdict": "impossible"}
-    plain["stages"] = [plain_stage(stage) for stage in program.stages]
-    ours, our_stages = _decoded(plain)
+    ours, our_stages = _own(program)
     found = []
     for what, one, other in (
         ("columns", theirs.columns, ours.columns),
@@ -98,7 +99,7 @@ def same_program(document: object, program: Program) -> list[str]:
         places = [j for j in range(ours.columns) if _column(theirs, j) != _column(ours, j)]
         found += _listed("column", places, program.column_axis)
     for s, (stage, own) in enumerate(zip(their_stages, our_stages, strict=True)):
-        if _goal(stage) != _goal(own):
+        if not _same_goal(stage, own):
             found.append(f"goal {s + 1}, {own.goal}, differs")
     return found
 
@@ -111,6 +112,27 @@ def _decoded(document: object) -> tuple[decode.Program, list[decode.Stage]]:
         return program, decode.stages(document.get("stages"), program, str(document.get("verdict")))
     except decode.Fault as fault:
         raise _malformed(str(fault)) from None
+
+
+def _own(program: Program) -> tuple[decode.Program, list[decode.Stage]]:
+    """The program in the shape that a document is decoded to."""
+    matrix = program.matrix
+    sides = (matrix.row_lo, matrix.row_hi, matrix.col_lo, matrix.col_hi)
+    bounds = []
+    for side in sides:
+        idx = side.finite.nonzero()[0]
+        bounds.append(dict(zip(idx.tolist(), side.num[idx].tolist(), strict=True)))
+    arrays = (matrix.indptr.tolist(), matrix.indices.tolist(), matrix.data.tolist())
+    integer = frozenset(matrix.integer.nonzero()[0].tolist())
+    stages = []
+    for stage in program.stages:
+        idx = stage.cost.nonzero()[0]
+        cost = decode.Vector(stage.cost_den, idx.tolist(), stage.cost[idx].tolist(), 1)
+        const = stage.cost_const.as_integer_ratio()
+        sign, size = 1 if stage.sense == "min" else -1, (stage.columns, stage.rows)
+        stages.append(decode.Stage(stage.goal, sign, *size, cost, const, {}))
+    den, size = matrix.col_den, (matrix.columns, matrix.rows)
+    return decode.Program(*size, *arrays, den, integer, tuple(bounds), 1), stages
 
 
 def _malformed(found: str) -> ProofError:
@@ -138,10 +160,14 @@ def _column(program: decode.Program, j: int) -> tuple[Any, ...]:
     return j in program.integer, *(s if s is None else Fraction(s, program.col_den) for s in sides)
 
 
-def _goal(stage: decode.Stage) -> tuple[Any, ...]:
-    terms = zip(stage.cost.idx, stage.cost.num, strict=True)
-    cost = {j: Fraction(number, stage.cost.den) for j, number in terms}
-    return stage.goal, stage.sign, stage.columns, stage.rows, cost, Fraction(*stage.const)
+def _same_goal(one: decode.Stage, two: decode.Stage) -> bool:
+    a, b = one.cost, two.cost
+    return (
+        (one.goal, one.sign, one.columns, one.rows) == (two.goal, two.sign, two.columns, two.rows)
+        and a.idx == b.idx
+        and all(p * b.den == q * a.den for p, q in zip(a.num, b.num, strict=True))
+        and Fraction(*one.const) == Fraction(*two.const)
+    )
 
 
 def _listed(what: str, places: list[int], axis: Axis) -> list[str]:

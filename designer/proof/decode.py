@@ -213,7 +213,8 @@ def _sparse(entry: dict[str, Any], size: int, where: str) -> tuple[list[int], li
 
 
 def _words(*numbers: Sequence[int]) -> int:
-    return 1 + max(max(map(int.bit_length, part), default=0) for part in numbers) // 64
+    ends = (end for part in numbers if part for end in (min(part), max(part)))
+    return 1 + max(map(int.bit_length, ends), default=0) // 64
 
 
 def _covers(blocks: object, size: int) -> bool:

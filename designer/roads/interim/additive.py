@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -32,8 +33,9 @@ Words = list[npt.NDArray[np.int64]]
 class Additive:
     """The option with the largest options[k] + sum_i parties[i][a_i, k]; ties go to the first.
 
-    parties  per party, Python int, shape (T_i, K), 0 at the first option and at the first type
-    options  Python int, shape (K,), 0 at the first
+    parties  per party, int, shape (T_i, K), 0 at the first option and at the first type
+    options  int, shape (K,), 0 at the first
+    Python ints, or int64 where 4 * reach + 4 is below ROOM.
     """
 
     parties: tuple[IntArray, ...]
@@ -50,26 +52,36 @@ def additive(rule: Rule) -> Additive:
     if not rule.indices:
         raise ValueError("the given table has no index")
     tables: list[IntArray] = []
+    short = len(rule.indices) == 1 and _short(rule.indices[0])
     for index in rule.indices:
-        lower = _relative(index)
+        lower = _relative(index, np.dtype(np.int64 if short else object))
         span = 2 * sum(_largest(t) for t in lower) + 1
         tables = (
             [t * span + u for t, u in zip(tables, lower, strict=True)] if tables else list(lower)
         )
-    shared = math.gcd(*(int(v) for t in tables for v in t.flat)) or 1
+    shared = math.gcd(*(v for t in tables for v in t.ravel().tolist())) or 1
     tables = [t // shared for t in tables]
     return Additive(tuple(tables[:-1]), tables[-1][0])
 
 
-def _relative(index: Index) -> list[IntArray]:
+def _short(index: Index) -> bool:
+    """Whether 64 bits hold every number on the way: those of `_relative`, and 4 * reach + 4."""
+    tables = (*index.parties, index.options)
+    if any(table.dtype != np.int64 for table in tables):
+        return False
+    # A relative table's numbers are up to 4 times as large, the options' 2 * (n + 1) times.
+    return 48 * (len(tables) + 1) * (max(map(_largest, tables)) + 1) < ROOM
+
+
+def _relative(index: Index, dtype: np.dtype[Any]) -> list[IntArray]:
     """The same choices from smaller numbers: only differences between options matter.
 
     What a party's first type adds is moved to the options' own row.
     """
-    options = np.asarray(index.options, dtype=object)[None, :]
+    options = np.asarray(index.options, dtype=dtype)[None, :]
     tables = []
     for table in index.parties:
-        whole = np.asarray(table, dtype=object)
+        whole = np.asarray(table, dtype=dtype)
         options = options + whole[:1]
         moved = whole - whole[:1]
         tables.append(moved - moved[:, :1])

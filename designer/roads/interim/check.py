@@ -17,7 +17,6 @@ program; by 4 its multipliers are multipliers of the full program.
 
 from __future__ import annotations
 
-from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -93,7 +92,7 @@ def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str
         whole = counts[0] if len(rules[0].indices) == 1 else count(own, plain, None, watch)
         if not tied(own, plain, whole, watch):
             return []  # no other rule is efficient
-    return _better(own, terms, lead, program, _multipliers(document), watch)
+    return _better(own, terms, lead, program, _multipliers(document, program), watch)
 
 
 def _read_lies(plain: Any, setting: Setting) -> Lies | None:
@@ -119,8 +118,7 @@ def _told(
     ray: bool,
 ) -> Lies:
     """The lies that gain at a point or a ray of the document."""
-    numbers = tuple(_whole(number) for number in vector["num"])
-    x = Vector(_whole(vector["den"]), tuple(vector["idx"]), numbers, program.matrix.columns)
+    x = _vector(vector, program.matrix.columns)
     return broken(setting, averaged(terms), draft, x, ray)
 
 
@@ -156,14 +154,14 @@ def _program(
     return draft, Formulation(setting, inner, draft=draft).pose(terms.goals[0])
 
 
-def _multipliers(document: dict[str, Any]) -> dict[int, Fraction]:
+def _multipliers(document: dict[str, Any], program: Program) -> Vector:
     """The multipliers over rows: of the certificate of the only stage, or of impossibility."""
-    vector = document.get("farkas") or document["stages"][0]["dual"]
-    den = _whole(vector["den"])
-    return {
-        row: Fraction(_whole(number), den)
-        for row, number in zip(vector["idx"], vector["num"], strict=True)
-    }
+    return _vector(document.get("farkas") or document["stages"][0]["dual"], program.matrix.rows)
+
+
+def _vector(plain: dict[str, Any], size: int) -> Vector:
+    numbers = tuple(map(_whole, plain["num"]))
+    return Vector(_whole(plain["den"]), tuple(plain["idx"]), numbers, size)
 
 
 def _whole(value: int | str) -> int:
@@ -175,7 +173,7 @@ def _better(
     terms: Terms,
     lead: int | None,
     program: Program,
-    multipliers: dict[int, Fraction],
+    multipliers: Vector,
     watch: Watch,
 ) -> list[str]:
     """A slice in which some rule does better than the multipliers admit."""

@@ -247,8 +247,8 @@ class _Halves:
                     table[g, -1] = share - sum(table[g, :-1])
                     continue
                 each = share // sum(party.weights)
-                for a, weight in enumerate(party.weights):
-                    table[a, -1] = each * weight - sum(table[a, :-1])
+                mass = np.array(party.weights, dtype=object) * each
+                table[:, -1] = mass - table[:, :-1].sum(axis=1)
 
 
 def _sum(values: IntArray) -> int:

@@ -12,6 +12,7 @@ from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.terms import Terms
 from designer.engines.watch import Watch
 from designer.program.program import Program
+from designer.proof.vector import Vector
 from designer.roads.interim.counting import count
 from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.live import Duals, Floats
@@ -106,40 +107,33 @@ def averaged(terms: Terms) -> Terms:
     return replace(terms, balance=balance, tidy="none")
 
 
-def exact_prices(
-    setting: Setting, lead: int | None, program: Program, dual: dict[int, Fraction]
-) -> Prices:
+def exact_prices(setting: Setting, lead: int | None, program: Program, dual: Vector) -> Prices:
     """The index that exact multipliers of the minimising form give to every decision.
 
     q_i(k, a) is defined with weight(theta_i = a) in the denominator, so a unit of weight at
     which k is taken is worth the row's natural multiplier over that weight.
     """
     options, total = len(setting.options), setting.total_weight
-    num, den = program.row_scale
-
-    def natural(row: int) -> Fraction:
-        return dual.get(row, Fraction(0)) * int(num[row]) / int(den[row])
-
     start = program.row_axis.start("slice")
-    size = 1 if lead is None else setting.shape[lead]
-    slices = tuple(-natural(start + g) for g in range(size))
-    place = start + size
-    tables = []
-    for party in setting.parties:
-        each = total // sum(party.weights)
-        tables.append(
-            [
-                [natural(place + a * options + k) / (each * own) for k in range(options)]
-                for a, own in enumerate(party.weights)
-            ]
-        )
-        place += party.size * options
-    common = math.lcm(*(v.denominator for table in tables for row in table for v in row))
-    whole = tuple(
-        np.array([[int(v * common) for v in row] for row in table], dtype=object)
-        for table in tables
-    )
-    return Prices(whole, slices, common)
+    place = start + (1 if lead is None else setting.shape[lead])
+    cells = sum(setting.shape) * options
+    # Natural multipliers are num / (den * dual.den).
+    num, den = (scale[start : place + cells].astype(object) for scale in program.row_scale)
+    num *= np.array(dual.numerators()[start : place + cells], dtype=object)
+    size = place - start
+    slices = tuple(Fraction(-n, d * dual.den) for n, d in zip(num[:size], den[:size], strict=True))
+    num, den = num[size:], den[size:]
+    for_party = [total // sum(party.weights) for party in setting.parties]
+    masses = [
+        each * own
+        for each, party in zip(for_party, setting.parties, strict=True)
+        for own in party.weights
+    ]
+    den *= np.repeat(np.array(masses, dtype=object), options)
+    common = math.lcm(*set((den // np.gcd(num, den)).tolist()))
+    whole = (num * common // den).reshape(-1, options)
+    ends = np.cumsum(setting.shape)[:-1]
+    return Prices(tuple(np.split(whole, ends)), slices, common * dual.den)
 
 
 def rule_for(setting: Setting, first: tuple[Index, ...], parties: tuple[IntArray, ...]) -> Rule:

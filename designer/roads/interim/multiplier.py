@@ -19,6 +19,7 @@ import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
@@ -31,6 +32,7 @@ from designer.setting.setting import IntArray, Party, Setting
 
 GOALS = ("any", "welfare", "revenue", "outside-money")
 ROUNDS = 500
+Floats = npt.NDArray[np.float64]
 BITS = 40
 """Bits of the indices of rules that only steer the search."""
 
@@ -39,14 +41,37 @@ BITS = 40
 class Side:
     """A party on a line. `order` runs from its best-off to its worst-off type.
 
-    value, weights  the party's own, as Python ints: products may be of any length
+    Arrays are of Python ints: products may be of any length.
     """
 
     party: Party
     line: Line
     order: tuple[int, ...]
-    value: IntArray
-    weights: IntArray
+
+    @cached_property
+    def value(self) -> IntArray:
+        """The party's worths, shape (T, K)."""
+        return self.party.value.astype(object)
+
+    @cached_property
+    def weights(self) -> IntArray:
+        """The party's weights, shape (T,)."""
+        return np.array(self.party.weights, dtype=object)
+
+    @cached_property
+    def scale(self) -> int:
+        """What `left` is over."""
+        return math.lcm(*self.party.weights)
+
+    @cached_property
+    def left(self) -> IntArray:
+        """What a unit of weight at a type and option leaves to all better-off types, (T, K)."""
+        order = np.array(self.order)
+        better, worse = order[:-1], order[1:]
+        passing = np.cumsum(self.weights[order])[:-1] * (self.scale // self.weights[worse])
+        left = np.zeros(self.value.shape, dtype=object)
+        left[worse] = (self.value[better] - self.value[worse]) * passing[:, None]
+        return left
 
 
 @dataclass(frozen=True, eq=False)
@@ -98,8 +123,7 @@ def sides(setting: Setting, terms: Terms) -> tuple[Side, ...] | None:
         order = None if own is None else _order(party, own)
         if own is None or order is None:
             return None
-        weights = np.array(party.weights, dtype=object)
-        found.append(Side(party, own, order, party.value.astype(object), weights))
+        found.append(Side(party, own, order))
     return tuple(found)
 
 
@@ -209,31 +233,54 @@ def rule_at(
     return Rule((*first, Index(tuple(tables), worth * int(alpha * den) - outlay * scale)))
 
 
-def rough_rule_at(setting: Setting, found: tuple[Side, ...], mu: float) -> Rule:
-    """Nearly the best rule at welfare's weight 1 and the pot's mu, from floats."""
-    tables = []
-    for side in found:
-        weights = np.array(side.party.weights, dtype=np.float64)
-        theta = side.line.theta.astype(np.float64)
+class Rough:
+    """Nearly the best rules at welfare's weight 1 and the pot's mu, from floats."""
+
+    def __init__(self, setting: Setting, found: tuple[Side, ...]) -> None:
+        """Gather what does not depend on mu."""
+        self.sides = [_RoughSide(side) for side in found]
+        self.worth, self.outlay = _floats(setting.worth), _floats(setting.outlay)
+
+    def rule_at(self, mu: float) -> Rule:
+        """The rule, in indices of about BITS bits."""
+        tables = [side.index(mu) for side in self.sides]
+        options = self.worth - (1 + mu) * self.outlay
+        tables.append((options - options[0])[None, :])
+        top = max(float(np.abs(table).max()) for table in tables) or 1.0
+        whole = [np.rint(table * (2.0**BITS / top)).astype(np.int64) for table in tables]
+        return Rule((Index(tuple(whole[:-1]), whole[-1][0]),))
+
+
+class _RoughSide:
+    """One party in floats: its virtual types are (1 + mu) theta - mu rent, before ironing."""
+
+    def __init__(self, side: Side) -> None:
+        self.line, self.slope = list(side.line.order), _floats(side.line.slope)
+        self.theta, self.weights = _floats(side.line.theta), _floats(side.weights)
+        self.value = _floats(side.value - side.value[:, :1])
         order = np.array(side.order)
-        tail = np.cumsum(weights[order])[:-1]
-        raw = (1 + mu) * theta
-        raw[order[1:]] -= mu * tail * (theta[order[:-1]] - theta[order[1:]]) / weights[order[1:]]
-        virtual = _rough_ironed(raw, weights, side.line.order)
-        shift = virtual - (1 + mu) * theta
-        value = side.party.value.astype(np.float64) * (1 + mu)
-        tables.append(value + np.multiply.outer(shift, side.line.slope.astype(np.float64)))
-    options = setting.worth.astype(np.float64) - (1 + mu) * setting.outlay.astype(np.float64)
-    tables.append(options[None, :])
-    tables = [table - table[:, :1] for table in tables]
-    top = max(float(np.abs(table).max()) for table in tables) or 1.0
-    whole = [np.rint(t * (2.0**BITS / top)).astype(np.int64).astype(object) for t in tables]
-    return Rule((Index(tuple(whole[:-1]), whole[-1][0]),))
+        better, worse = order[:-1], order[1:]
+        passing = np.cumsum(self.weights[order])[:-1]
+        self.rent = np.zeros(len(self.theta))
+        self.rent[worse] = passing * (self.theta[better] - self.theta[worse]) / self.weights[worse]
+
+    def index(self, mu: float) -> Floats:
+        """What the party's types add to each option, relative to the first."""
+        level = (1 + mu) * self.theta
+        raw = level - mu * self.rent
+        rising = raw[self.line]
+        if (rising[1:] > rising[:-1]).all():
+            virtual = raw
+        else:
+            virtual = _rough_ironed(raw, self.weights, self.line)
+        return self.value * (1 + mu) + np.multiply.outer(virtual - level, self.slope)
 
 
-def _rough_ironed(
-    raw: npt.NDArray[np.float64], weights: npt.NDArray[np.float64], order: tuple[int, ...]
-) -> npt.NDArray[np.float64]:
+def _floats(values: IntArray) -> Floats:
+    return values.astype(np.float64)
+
+
+def _rough_ironed(raw: Floats, weights: Floats, order: list[int]) -> Floats:
     pools: list[tuple[float, float, list[int]]] = []
     for a in order:
         mass, total, members = float(weights[a]), float(raw[a] * weights[a]), [a]
@@ -280,13 +327,9 @@ def _left(side: Side, table: IntArray, total: int) -> Fraction:
     Masses are the weights times a constant, so better-off mass over own mass needs only them.
     Whatever a type gains at the next worse-off one's decisions is left to all better-off ones.
     """
-    scale = math.lcm(*side.party.weights)
-    order = np.array(side.order)
-    better = np.cumsum(side.weights[order])
-    worse = order[1:]
-    gains = ((side.value[order[:-1]] - side.value[worse]) * table[worse]).sum(axis=1)
-    gained = int((gains * better[:-1] * (scale // side.weights[worse])).sum())
-    return int(side.party.outside[side.order[-1]]) * Fraction(total) + Fraction(gained, scale)
+    gained = int((side.left * table).sum())
+    least = int(side.party.outside[side.order[-1]])
+    return Fraction(least * total * side.scale + gained, side.scale)
 
 
 Valued = tuple[Listed, Fraction, Fraction]
@@ -303,9 +346,10 @@ def _steered(
     gift: Fraction,
 ) -> tuple[Valued, Valued] | None:
     """Two rules near the crossing, found with rounded numbers; None if they are no start."""
+    rough = Rough(setting, found)
     for _ in range(ROUNDS):
         mu = float((low[1] - high[1]) / (high[2] - low[2]))
-        rule = rough_rule_at(setting, found, mu)
+        rule = rough.rule_at(mu)
         counts = count(rule)
         welfare, pot = values(setting, found, counts)
         middle = Listed(rule, counts), welfare, pot + gift

@@ -170,7 +170,7 @@ class _Walk:
                 return None
             certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
             if outcome.status != "unbounded" and certificate is not None and not self.only:
-                prices = exact_prices(self.setting, master.lead, program, certificate.fractions())
+                prices = exact_prices(self.setting, master.lead, program, certificate)
                 if self._improve(prices):
                     return None
         return self._back(draft, program, outcome, chosen)
