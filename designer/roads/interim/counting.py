@@ -1,9 +1,10 @@
-"""Which way to count what a rule takes: the cheapest of four, all exact.
+"""Which way to count what a rule takes: the cheapest of five, all exact.
 
 blocks   a pass over all profiles              any setting
 halves   pairs of half-profiles                two to four options
 sums     distributions of sums                 two options, sums of small range
 items    products of cumulative weights        every option concerns at most one party
+alike    one party for several, by multisets   parties of equal index and weights
 """
 
 from __future__ import annotations
@@ -11,7 +12,7 @@ from __future__ import annotations
 import numpy as np
 
 from designer.engines.watch import Stopped, Watch
-from designer.roads.interim import blocks, halves, items, sums
+from designer.roads.interim import alike, blocks, halves, items, sums
 from designer.roads.interim.additive import additive, words
 from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
 from designer.setting.setting import Setting
@@ -39,6 +40,8 @@ def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Count
     Raises TooMany where that would take longer than MOST, and Stopped as `watch` says.
     """
     way = _way(setting, rule, lead)
+    if way == "alike":
+        return alike.count(setting, rule, lead, watch)
     if way == "items":
         return items.count(setting, rule, watch)
     if way == "sums":
@@ -56,6 +59,8 @@ def _way(setting: Setting, rule: Rule, lead: int | None) -> str:
         ways["blocks"] *= 3 * len(words(np.zeros(1, dtype=object), additive(rule).reach)) - 2
     if min(ways.values()) > QUICK and lead is None:
         ways |= {"sums": sums.work(setting, rule), "items": items.work(setting, rule)}
+    if min(ways.values()) > QUICK:
+        ways["alike"] = alike.work(setting, rule, lead)
     way = min(ways, key=lambda name: ways[name])
     if ways[way] > MOST:
         raise TooMany
@@ -93,5 +98,5 @@ def too_many(setting: Setting, decision: str) -> bool:
         return False
     efficient = Rule((welfare_index(setting),))
     ways = [blocks.work(setting), halves.work(setting, None), items.work(setting, efficient)]
-    ways.append(sums.work(setting, efficient))
+    ways += [sums.work(setting, efficient), alike.work(setting, efficient, None)]
     return min(ways) > MOST
