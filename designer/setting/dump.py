@@ -77,7 +77,7 @@ def _party(setting: Setting, index: int) -> Iterator[str]:
     yield f"types = [{', '.join(map(_type, party.types))}]"
     if setting.joint is None:
         factor = math.gcd(*party.weights) or 1
-        yield f"weights = [{', '.join(_number(Fraction(w // factor)) for w in party.weights)}]"
+        yield f"weights = [{', '.join(_number(w // factor) for w in party.weights)}]"
     outside = party.outside
     if party.outside_depends or any(int(amount) for amount in outside):
         yield f"outside = {_worth(outside, party.outside_depends, setting, index)}"
@@ -107,10 +107,10 @@ def _nested(column: IntArray, grain: int, shape: Sequence[int] = ()) -> str:
     def amount(value: int) -> str:
         written = known.get(value)
         if written is None:
-            written = known[value] = _number(Fraction(value, grain))
+            written = known[value] = _number(value if grain == 1 else Fraction(value, grain))
         return written
 
-    level = [amount(int(value)) for value in column]
+    level = [amount(value) for value in column.tolist()]
     for size in reversed(shape[1:]):
         level = [f"[{', '.join(level[i : i + size])}]" for i in range(0, len(level), size)]
     return f"[{', '.join(level)}]"
@@ -216,14 +216,17 @@ def _pairs(numbers: Mapping[str, Fraction | None]) -> Iterator[str]:
 
 def _type(kind: Type) -> str:
     """A type as read back: bare where label and number say it all, else a table."""
+    label = _label(kind)
+    if not kind.fields and label[0] != '"':
+        return label
     own = None
     with contextlib.suppress(ValueError):
         own = exact.number(kind.label)
-    parts = [f"name = {_label(kind)}"]
+    parts = [f"name = {label}"]
     if kind.number is not None and kind.number != own:
         parts.append(f"number = {_number(kind.number)}")
     parts += [f"{_key(name)} = {_number(kind.fields[name])}" for name in sorted(kind.fields)]
-    return _label(kind) if len(parts) == 1 else f"{{ {', '.join(parts)} }}"
+    return label if len(parts) == 1 else f"{{ {', '.join(parts)} }}"
 
 
 def _label(kind: Type) -> str:
@@ -232,7 +235,7 @@ def _label(kind: Type) -> str:
     return _quoted(kind.label)
 
 
-def _number(value: Fraction) -> str:
+def _number(value: Fraction | int) -> str:
     """Bare where every TOML reader keeps it exact (64-bit integers), else exact text."""
     if value.denominator == 1 and abs(value.numerator) < 2**63:
         return str(value.numerator)

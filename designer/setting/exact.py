@@ -20,7 +20,8 @@ def text(value: Fraction | int) -> str:
     >>> text(Fraction(6, 4)), text(Fraction(4, 2))
     ('3/2', '2')
     """
-    value = Fraction(value)
+    if not isinstance(value, Fraction):
+        value = Fraction(value)
     if max(value.numerator.bit_length(), value.denominator.bit_length()) < 6_500:
         return str(value)  # both parts together stay below MAX_TEXT characters
     if value.denominator == 1:
