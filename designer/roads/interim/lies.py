@@ -6,6 +6,7 @@ those to a neighbour. The others are left out, and looked at exactly once there 
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
@@ -21,6 +22,7 @@ from designer.setting.setting import IntArray, Party, Setting
 
 ALL_UP_TO = 1_000
 """Lies up to which all are written."""
+ROOM = 2**62
 NEAR = 1e-9
 """Relative distance within which a float comparison is repeated exactly."""
 
@@ -88,26 +90,20 @@ def broken(setting: Setting, terms: Terms, draft: InterimDraft, x: Vector, ray: 
     found: list[tuple[tuple[int, int], ...]] = [() for _ in setting.parties]
     if terms.ic != "bayesian" or draft.written is None:
         return tuple(found)
-    values = x.numerators()
+    values = np.array(x.numerators(), dtype=object)
     slack = _at(draft.allowance("slack", terms.slack), values, x.den, ray)
     for index, party in enumerate(setting.parties):
         if party.name in terms.trusted or party.size < 2:
             continue
-        chance = values_of(values, draft.expected_decision(index)[0])
-        pays = values_of(values, draft.expected_pay(index))
+        chance = values[draft.expected_decision(index)[0]]
+        pays = values[draft.expected_pay(index)]
         found[index] = _broken(party, chance, pays, x.den, setting.grain, slack)
     return tuple(found)
 
 
-def values_of(values: Sequence[int], columns: IntArray) -> IntArray:
-    """The numerators at an array of columns, Python ints."""
-    flat = np.array([values[int(j)] for j in columns.ravel()], dtype=object)
-    return flat.reshape(columns.shape)
-
-
-def _at(form: Affine, values: Sequence[int], den: int, ray: bool) -> Fraction:
+def _at(form: Affine, values: IntArray, den: int, ray: bool) -> Fraction:
     """The value of one form."""
-    total = sum(int(num) * values[int(col)] for num, col in zip(form.num, form.col, strict=True))
+    total = int((form.num * values[form.col]).sum())
     constant = 0 if ray else int(form.const[0])
     return (Fraction(total, den) + constant) / int(form.den[0])
 
@@ -116,6 +112,16 @@ def _broken(
     party: Party, chance: IntArray, pays: IntArray, den: int, grain: int, slack: Fraction
 ) -> tuple[tuple[int, int], ...]:
     value = party.value.astype(object)
+    allowed = slack * den * grain
+    top = value.shape[1] * _largest(value) * _largest(chance) + _largest(pays) * grain
+    if 2 * max(top, grain, abs(allowed)) < ROOM:
+        small, chances = value.astype(np.int64), chance.astype(np.int64)
+        got = small @ chances.T - pays.astype(np.int64) * grain
+        more = got - np.diag(got)[:, None]
+        np.fill_diagonal(more, -ROOM)
+        best = more.argmax(axis=1)
+        gains = more.max(axis=1) > math.floor(allowed)
+        return tuple((int(a), int(best[a])) for a in np.flatnonzero(gains))
     rough_chance = _floats(chance, den)
     rough_pays = _floats(pays, den)
     rough_value = _floats(value, grain)
@@ -125,7 +131,6 @@ def _broken(
     scale += float(np.abs(rough_pays).max()) + abs(float(slack))
     near = gain > float(slack) - NEAR * scale
     np.fill_diagonal(near, False)
-    allowed = slack * den * grain
     worst: dict[int, tuple[Fraction, int]] = {}
     spots = np.argwhere(near)
     if not len(spots):
@@ -139,6 +144,10 @@ def _broken(
         if a not in worst or exact[place] > worst[a][0]:
             worst[a] = (exact[place], b)
     return tuple((a, b) for a, (_, b) in sorted(worst.items()))
+
+
+def _largest(values: IntArray) -> int:
+    return max(int(values.max()), -int(values.min()))
 
 
 def _floats(values: IntArray, den: int) -> np.ndarray[tuple[int, ...], np.dtype[np.float64]]:
