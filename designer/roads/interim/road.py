@@ -32,6 +32,7 @@ from designer.roads.interim.mechanism import Mechanism, of_point
 from designer.roads.interim.multiplier import optimum, sides
 from designer.roads.interim.rule import Index, Listed, Rule, welfare_index
 from designer.roads.interim.search import Search
+from designer.roads.interim.symmetry import alike_parties, even_lies, even_outcome
 from designer.roads.product import as_independent
 from designer.roads.settled import GoalResult, Settled, Status
 from designer.setting.setting import Setting
@@ -168,6 +169,8 @@ class _Walk:
         with self._spending("count"):
             if self._told(draft, outcome):
                 return None
+            if not self.only:
+                outcome = even_outcome(self.setting, self.terms, master.lead, program, outcome)
             certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
             if outcome.status != "unbounded" and certificate is not None and not self.only:
                 prices = exact_prices(self.setting, master.lead, program, certificate)
@@ -188,8 +191,9 @@ class _Walk:
         if not any(pairs for lies in found for pairs in lies):
             return False
         self.search = None  # its rows are out of date
+        groups = alike_parties(self.setting, self.terms, master.lead)
         for lies in found:
-            master.lies = with_more(master.lies, lies)
+            master.lies = with_more(master.lies, even_lies(groups, lies))
         return True
 
     def _improve(self, prices: Prices) -> bool:

@@ -12,6 +12,7 @@ from designer.engines.watch import Watch
 from designer.roads.interim.live import Duals, Live
 from designer.roads.interim.master import COARSE, Master, rough_rule, rough_worth
 from designer.roads.interim.rule import Listed
+from designer.roads.interim.symmetry import alike_parties, even_tables
 
 SMOOTHING = 0.5
 FINE = 40
@@ -76,6 +77,8 @@ class Search:
         Whether it does anywhere, and the multipliers with the slices at the best rule's prices.
         """
         master = self.master
+        groups = alike_parties(master.setting, master.terms, master.lead)
+        duals = Duals(even_tables(groups, duals.parties), duals.slices, duals.level)
         rule = rough_rule(master.setting, master.first(), duals, bits)
         counts = master.count(rule)
         gain = rough_worth(master.setting, out, counts) - out.slices
