@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections import defaultdict
 from dataclasses import dataclass
+from itertools import accumulate
 from operator import mul
 
 from designer.proof import decode
@@ -102,9 +103,10 @@ def _keeps(
     at = _zeros(program.columns, products)
     for j, number in zip(v.idx, v.num, strict=True):
         at[j] = number
+    # sums[k] is the sum of the first k products, all rows on end.
+    sums = list(accumulate(map(mul, program.data, map(at.__getitem__, program.indices)), initial=0))
     for i in range(rows):
-        part = slice(program.indptr[i], program.indptr[i + 1])
-        level = sum(map(mul, program.data[part], map(at.__getitem__, program.indices[part])))
+        level = sums[program.indptr[i + 1]] - sums[program.indptr[i]]
         lo, hi = row_lo.get(i), row_hi.get(i)
         if (lo is not None and level < lo * scale) or (hi is not None and level > hi * scale):
             raise Fault(f"{where}: row {i} is not kept")

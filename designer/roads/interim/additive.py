@@ -59,7 +59,7 @@ def additive(rule: Rule) -> Additive:
         tables = (
             [t * span + u for t, u in zip(tables, lower, strict=True)] if tables else list(lower)
         )
-    shared = math.gcd(*(v for t in tables for v in t.ravel().tolist())) or 1
+    shared = math.gcd(*(math.gcd(*t.ravel().tolist()) for t in tables)) or 1
     tables = [t // shared for t in tables]
     return Additive(tuple(tables[:-1]), tables[-1][0])
 

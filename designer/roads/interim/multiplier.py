@@ -21,11 +21,13 @@ from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
 from itertools import pairwise
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from designer.demands.terms import Terms
+from designer.program.linear import IndexArray
 from designer.roads.interim.lies import Line, line
 from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
 from designer.setting.setting import IntArray, Party, Setting
@@ -195,19 +197,30 @@ def _virtual(side: Side, alpha: Fraction, pi: Fraction, pooled: bool) -> _Virtua
     rising = raw[list(side.line.order)]
     if not pooled or bool(np.all(rising[1:] > rising[:-1])):
         return _Virtual(raw, raw, unit)
-    pools: list[tuple[int, int, list[int]]] = []
-    for a in side.line.order:
-        mass, total, members = weights[a], raw[a] * weights[a], [a]
-        # Neighbours are pooled until means rise strictly from pool to pool.
-        while pools and pools[-1][1] * mass >= total * pools[-1][0]:
-            before = pools.pop()
-            mass, total, members = mass + before[0], total + before[1], before[2] + members
-        pools.append((mass, total, members))
-    common = math.lcm(*(mass // math.gcd(mass, total) for mass, total, _ in pools))
-    virtual = np.zeros(len(raw), dtype=object)
-    for mass, total, members in pools:
-        virtual[members] = total * common // mass
+    line = list(side.line.order)
+    starts, mass, total = _pooled(weights[line], (raw * weights)[line])
+    common = math.lcm(*set((mass // np.gcd(mass, total)).tolist()))
+    virtual = np.empty(len(raw), dtype=object)
+    virtual[line] = np.repeat(total * common // mass, np.diff(starts))
     return _Virtual(raw * common, virtual, unit * common)
+
+
+def _pooled(
+    mass: npt.NDArray[Any], total: npt.NDArray[Any]
+) -> tuple[IndexArray, npt.NDArray[Any], npt.NDArray[Any]]:
+    """Neighbours joined until means rise strictly: where pools start, masses, totals.
+
+    Two neighbours whose means fall are in one pool in the end, whatever is joined first. The
+    starts end with the end of the last pool.
+    """
+    starts = np.arange(len(mass) + 1)
+    while True:
+        falls = total[:-1] * mass[1:] >= total[1:] * mass[:-1]
+        if not falls.any():
+            return starts, mass, total
+        first = np.flatnonzero(np.concatenate([[True], falls == 0]))
+        mass, total = np.add.reduceat(mass, first), np.add.reduceat(total, first)
+        starts = np.append(starts[first], starts[-1])
 
 
 def rule_at(
@@ -268,30 +281,14 @@ class _RoughSide:
         """What the party's types add to each option, relative to the first."""
         level = (1 + mu) * self.theta
         raw = level - mu * self.rent
-        rising = raw[self.line]
-        if (rising[1:] > rising[:-1]).all():
-            virtual = raw
-        else:
-            virtual = _rough_ironed(raw, self.weights, self.line)
+        starts, mass, total = _pooled(self.weights[self.line], (raw * self.weights)[self.line])
+        virtual = np.empty(len(raw))
+        virtual[self.line] = np.repeat(total / mass, np.diff(starts))
         return self.value * (1 + mu) + np.multiply.outer(virtual - level, self.slope)
 
 
 def _floats(values: IntArray) -> Floats:
     return values.astype(np.float64)
-
-
-def _rough_ironed(raw: Floats, weights: Floats, order: list[int]) -> Floats:
-    pools: list[tuple[float, float, list[int]]] = []
-    for a in order:
-        mass, total, members = float(weights[a]), float(raw[a] * weights[a]), [a]
-        while pools and pools[-1][1] * mass >= total * pools[-1][0]:
-            before = pools.pop()
-            mass, total, members = mass + before[0], total + before[1], before[2] + members
-        pools.append((mass, total, members))
-    virtual = np.empty(len(raw))
-    for mass, total, members in pools:
-        virtual[members] = total / mass
-    return virtual
 
 
 def utilities(side: Side, chances: IntArray) -> IntArray:
