@@ -52,6 +52,10 @@ def read_on_demand(path: str | os.PathLike[str], setting: Setting) -> OnDemand:
             from designer.roads.typegraph.mechanism import from_plain as from_graph
 
             return from_graph(plain, setting)
+        if plain.get("kind") == "likeness":
+            from designer.roads.likeness.mechanism import from_plain as from_likeness
+
+            return from_likeness(plain, setting)
         from designer.roads.interim.mechanism import from_plain
 
         return from_plain(plain, setting)

@@ -33,7 +33,7 @@ def pose(
     demands     overrides of the scenario's own demands; None: none
     engine      "highs", or "pulp:NAME" for any engine PuLP finds; its word is only a hint
     time_limit  seconds after which the verdict is `undecided`
-    path        the road to take ("full", "interim", "type-graph"); None: the first that applies
+     path        the road to take ("full", "interim", "type-graph"); None
     progress    called with what is being done, seconds so far and a step count
 
     Raises ScenarioError for a scenario that cannot be read and UsageError for demands that

@@ -99,6 +99,12 @@ class Verdict:
             from designer.roads.interim.standing import standings
 
             return standings(self.setting, self.program, self.primal)
+        if self.path == "likeness" and self.mechanism is not None:
+            from designer.roads.likeness.mechanism import LikenessMechanism
+            from designer.roads.likeness.standing import standings as of_orbits
+
+            if isinstance(self.mechanism, LikenessMechanism):
+                return of_orbits(self.mechanism)
         if self.path == "type-graph" and self.mechanism is not None:
             from designer.roads.typegraph import standing
             from designer.roads.typegraph.mechanism import GraphMechanism

@@ -348,7 +348,7 @@ class Draft:
         weights, totals = self.beliefs(index)
         fiber = self.fiber(index)
         forms = self.worth(index, fiber[true].ravel(), fiber[told].ravel())
-        return _averages(forms, weights[true], totals[true])
+        return averages(forms, weights[true], totals[true])
 
     def interim_chance(self, index: int, types: IndexArray, option: int) -> Affine:
         """P(option | the party has the type), one form per listed type."""
@@ -356,7 +356,7 @@ class Draft:
         pick[option] = 1
         weights, totals = self.beliefs(index)
         forms = self.chosen(self.fiber(index)[types].ravel(), pick, 1)
-        return _averages(forms, weights[types], totals[types])
+        return averages(forms, weights[types], totals[types])
 
     def _worth_of_chances(self, index: int, true: IndexArray, told: IndexArray) -> Affine:
         """sum_k v_i(k, true) * q_i(k, told), over the columns q_i where they are needed."""
@@ -488,7 +488,7 @@ class Draft:
         return constants(np.zeros(1, dtype=self.dtype), 1, self.dtype).plus(amount)
 
 
-def _averages(forms: Affine, weights: IntArray, totals: IntArray) -> Affine:
+def averages(forms: Affine, weights: IntArray, totals: IntArray) -> Affine:
     """Averages of consecutive runs of forms with one denominator, weights (R, runs)."""
     runs = weights.shape[1]
     flat = weights.ravel()

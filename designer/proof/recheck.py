@@ -31,7 +31,7 @@ class Finding:
     claims   what exactly was proved, one sentence each; empty unless `holds`
     faults   what is wrong; empty if and only if `holds`
     open     the goals whose optimality the document does not claim
-    reduced  the claims are about a reduced program (FORMAT 10 and 11): that they carry over to
+    reduced  the claims are about a reduced program (FORMAT 10 to 12): that they carry over to
              the scenario takes the scenario to check
     """
 

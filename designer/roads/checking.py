@@ -9,6 +9,7 @@ from designer.setting.setting import Setting
 
 CLAIMS = {
     "interim": "no rule that is not listed does better",
+    "likeness": "it is the scenario's, up to trading places between parties that are alike",
     "type-graph": "its rows, paths and payments are those of the scenario, case by case",
 }
 """What a passed check adds to what the plain checker found, by road."""
@@ -35,4 +36,8 @@ def _checked(setting: Setting, document: dict[str, Any], watch: Watch | None) ->
         from designer.roads.typegraph import check as typegraph
 
         return typegraph.check(setting, document, watch)
+    if road == "likeness":
+        from designer.roads.likeness import check as likeness
+
+        return likeness.check(setting, document, watch)
     return [f"no road called {str(road)[:40]!r} reduces programs"]

@@ -9,7 +9,7 @@ from fractions import Fraction
 
 import numpy as np
 
-from designer.demands.formulate import Formulation
+from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.terms import Terms
 from designer.engines.report import Engine
 from designer.engines.watch import Watch
@@ -41,28 +41,49 @@ CELLS_UP_TO = 5_000_000
 """Payment and decision columns up to which the plain program is built (about 20 GiB)."""
 
 
-def tidies(setting: Setting, terms: Terms) -> bool:
-    """Whether a closing tidy stage is due."""
+def tidies(setting: Setting, terms: Terms, payments: int | None = None) -> bool:
+    """Whether a closing tidy stage is due; `payments`: the unknown ones, if not all differ."""
     if terms.tidy == "none" or "swing" in terms.goals:
         return False
-    payments = setting.profiles * len(setting.parties)
+    if payments is None:
+        payments = setting.profiles * len(setting.parties)
     return terms.tidy == "swing" or payments <= TIDY_UP_TO
 
 
 def travel(setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> Settled:
     """Formulate, solve and prove goal by goal; stop at the first that has no optimum."""
-    return _Journey(setting, terms, engine, watch).travel()
+    since = time.perf_counter()
+    draft = Draft(setting, terms.decision, amounts_of(terms))
+    settled = settle(draft, terms, engine, watch, since)
+    if settled.status != "possible" or settled.primal is None:
+        return settled
+    since = time.perf_counter()
+    table = table_of(draft, settled.primal)
+    settled.seconds["table"] = time.perf_counter() - since
+    return replace(settled, table=table)
+
+
+def settle(
+    draft: Draft, terms: Terms, engine: Engine, watch: Watch, since: float, path: str = "full"
+) -> Settled:
+    """Settle all goals on a draft whose columns are laid out; no table yet.
+
+    `since` is when the laying out began.
+    """
+    return _Journey(draft, terms, engine, watch, since, path).travel()
 
 
 class _Journey:
     """One walk down the road: what has been settled so far."""
 
-    def __init__(self, setting: Setting, terms: Terms, engine: Engine, watch: Watch) -> None:
-        self.setting, self.terms, self.engine, self.watch = setting, terms, engine, watch
+    def __init__(
+        self, draft: Draft, terms: Terms, engine: Engine, watch: Watch, since: float, path: str
+    ) -> None:
+        self.setting, self.terms, self.engine, self.watch = draft.setting, terms, engine, watch
+        self.path = path
         self.seconds: dict[str, float] = {}
         self.engines: dict[str, None] = {}
-        since = time.perf_counter()
-        self.work = Formulation(setting, terms)
+        self.work = Formulation(draft.setting, terms, draft=draft)
         self.late = late_lies(self.work)
         self._spent("formulate", since)
         self.results: list[GoalResult] = []
@@ -70,7 +91,7 @@ class _Journey:
 
     def travel(self) -> Settled:
         """Every goal in turn, then the tidy stage."""
-        tidy = tidies(self.setting, self.terms)
+        tidy = tidies(self.setting, self.terms, self.work.draft.payments)
         program, primal = None, None
         for name in self.terms.goals:
             if name == "any" and (tidy or len(self.terms.goals) > 1):
@@ -103,10 +124,7 @@ class _Journey:
                 )
         if program is None or primal is None:
             raise AssertionError("a possible verdict needs a table")
-        since = time.perf_counter()
-        table = table_of(self.work.draft, primal)
-        self._spent("table", since)
-        return self._settled("possible", program, table=table, primal=primal)
+        return self._settled("possible", program, primal=primal)
 
     def _pose(self, name: str) -> Program:
         """Pin the goal before, if any, and pose the next."""
@@ -210,7 +228,7 @@ class _Journey:
     def _settled(self, status: str, program: Program, **more: object) -> Settled:
         return Settled(
             status=status,  # type: ignore[arg-type]
-            path="full",
+            path=self.path,
             program=program,
             goals=tuple(self.results),
             engine=" + ".join(self.engines),

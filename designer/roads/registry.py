@@ -59,6 +59,7 @@ class Later:
 ROADS: tuple[Road, ...] = (
     Later("interim", "designer.roads.interim.road", "Interim"),
     TypeGraph(),
+    Later("likeness", "designer.roads.likeness.road", "ByLikeness"),
     Full(),
 )
 PLAIN = ROADS[-1]

@@ -12,9 +12,9 @@ from collections.abc import Iterable
 from dataclasses import replace
 from typing import Any, cast
 
-from designer.demands.even_handed import alike
 from designer.demands.terms import Terms
 from designer.program.labels import Balances, Clause, Honest, Label, TakesPart
+from designer.setting.likeness import twins
 from designer.setting.setting import Setting
 
 CAPS = ("pays_at_most", "pays_at_least")
@@ -40,7 +40,7 @@ def groups_of(setting: Setting, terms: Terms) -> tuple[str, ...]:
     found += [f"limit:{key}" for key in CLAUSES if getattr(terms.limits, key)]
     found += [f"side:{key}" for key in FLOORS if getattr(terms.side, key) is not None]
     found += [f"side:chance[{place}]" for place in range(len(terms.side.chances))]
-    if terms.even_handed and next(alike(setting), None) is not None:
+    if terms.even_handed and next(twins(setting), None) is not None:
         found.append("even-handed")
     return tuple(found)
 

@@ -280,7 +280,12 @@ class Walk:
         )
 
     def _elsewhere(self, reason: str) -> Settled:
-        """The plain road, where it can go; its `path` says so."""
+        """The next road that can go there, by likeness or plain; its `path` says which."""
+        from designer.roads.likeness.road import ByLikeness
+
+        likeness = ByLikeness()
+        if likeness.applies(self.asked, self.terms) is None:
+            return likeness.travel(self.asked, self.terms, self.engine, self.watch)
         cells = self.asked.profiles * (len(self.asked.parties) + len(self.asked.options))
         if cells > full.CELLS_UP_TO:
             return self._undecided(

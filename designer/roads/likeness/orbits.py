@@ -1,0 +1,178 @@
+"""Profiles up to trades of places: one representative each, and the way there.
+
+The representative of a profile has the types of every group in rising order. A multiset of
+types is one representative: C(m + T - 1, m) of them for m alike parties of T types, against T^m
+profiles.
+"""
+
+from __future__ import annotations
+
+import itertools
+import math
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from designer.program.linear import BoolArray, IndexArray
+from designer.roads.likeness.likeness import Likeness
+from designer.setting.profiles import strides
+from designer.setting.setting import IntArray, Setting
+
+
+class Orbits:
+    """The representatives of a setting's profiles under the trades of a likeness."""
+
+    def __init__(self, setting: Setting, likeness: Likeness) -> None:
+        """Nothing is laid out before it is asked."""
+        self.setting, self.likeness = setting, likeness
+        self.strides = np.array(strides(setting.shape), dtype=np.int64)
+        self.options = len(setting.options)
+
+    # -- the representatives ---------------------------------------------------------------
+
+    @cached_property
+    def _every(self) -> tuple[IndexArray, IntArray]:
+        numbers, weights = self._spread(self.likeness.groups)
+        order = np.argsort(numbers)
+        return numbers[order], weights[order]
+
+    @property
+    def profiles(self) -> IndexArray:
+        """The numbers of the representatives, rising, int (R,)."""
+        return self._every[0]
+
+    @property
+    def weights(self) -> IntArray:
+        """The weight of all profiles that each stands for, int (R,)."""
+        return self._every[1]
+
+    @cached_property
+    def first_slot(self) -> BoolArray:
+        """Whether a representative's party is the first of its group with its type, (R, n)."""
+        types = self.types(self.profiles)
+        first = np.ones(types.shape, dtype=bool)
+        for i, j in self.likeness.steps:
+            first[:, j] = types[:, j] != types[:, i]
+        return first
+
+    @cached_property
+    def kinds(self) -> IndexArray:
+        """Per representative and option, the first option it can trade places with, (R, K).
+
+        Trades of equal types leave the representative as it is, and may move options.
+        """
+        own = np.arange(self.options, dtype=np.int64)
+        kinds = np.tile(own, (len(self.profiles), 1))
+        if self.likeness.still:
+            return kinds
+        before = None
+        while before is None or not np.array_equal(before, kinds):
+            before = kinds.copy()
+            for i, j in self.likeness.steps:
+                same = ~self.first_slot[:, j]
+                there = kinds[same]
+                kinds[same] = np.minimum(there, there[:, self.likeness.moves[i, j]])
+        return kinds
+
+    # -- from any profile ------------------------------------------------------------------
+
+    def types(self, profiles: IndexArray) -> IndexArray:
+        """Type positions at the listed profiles, int (R, n)."""
+        shape = np.array(self.setting.shape, dtype=np.int64)
+        found: IndexArray = profiles[:, None] // self.strides % shape
+        return found
+
+    def to_first(self, profiles: IndexArray) -> tuple[IndexArray, IndexArray | None]:
+        """The place of each profile's representative in `profiles`, and where options go.
+
+        x_k(theta) = x_moved[k](representative); None where no option ever moves.
+        """
+        types = self.types(profiles)
+        moved = None
+        if self.likeness.still:
+            for group in self.likeness.groups:
+                types[:, group] = np.sort(types[:, group], axis=1)
+        else:
+            moved = np.tile(np.arange(self.options, dtype=np.int64), (len(profiles), 1))
+            for group in self.likeness.groups:
+                self._ordered(types, moved, group)
+        return np.searchsorted(self.profiles, types @ self.strides), moved
+
+    def _ordered(self, types: IndexArray, moved: IndexArray, group: tuple[int, ...]) -> None:
+        """Sort a group's types by trades of neighbours, and carry the options along."""
+        for last in range(len(group) - 1, 0, -1):
+            for i, j in itertools.pairwise(group[: last + 1]):
+                at = np.flatnonzero(types[:, i] > types[:, j])
+                types[at, i], types[at, j] = types[at, j], types[at, i]
+                moved[at] = self.likeness.moves[i, j][moved[at]]
+
+    def slot(self, party: int, profiles: IndexArray) -> IndexArray:
+        """The party that takes a party's place at the representative, int (R,).
+
+        Where several of its group have its type, the first of them.
+        """
+        group = np.array(self.likeness.group_of(party), dtype=np.int64)
+        types = self.types(profiles)
+        lower = (types[:, group] < types[:, [party]]).sum(axis=1)
+        found: IndexArray = group[lower]
+        return found
+
+    # -- seen by one party -----------------------------------------------------------------
+
+    def fiber(self, party: int) -> IndexArray:
+        """A party's profiles by own type and the others' types up to trades, int (T_i, M)."""
+        others, _ = self._others(party)
+        own = np.arange(self.setting.shape[party], dtype=np.int64) * self.strides[party]
+        found: IndexArray = own[:, None] + others
+        return found
+
+    def beliefs(self, party: int) -> IntArray:
+        """The weights of the others' types up to trades, int (M,)."""
+        return self._others(party)[1]
+
+    def _others(self, party: int) -> tuple[IndexArray, IntArray]:
+        groups = [tuple(i for i in group if i != party) for group in self.likeness.groups]
+        return self._spread([group for group in groups if group])
+
+    def _spread(self, groups: Any) -> tuple[IndexArray, IntArray]:
+        """Numbers and weights of all choices of a multiset of types per group."""
+        numbers = np.zeros(1, dtype=np.int64)
+        weights: IntArray = np.ones(1, dtype=object)
+        for group in groups:
+            types = multisets(self.setting.shape[group[0]], len(group))
+            steps = types @ self.strides[list(group)]
+            numbers = np.add.outer(numbers, steps).ravel()
+            own = multiset_weights(types, self.setting.parties[group[0]].weights)
+            weights = np.multiply.outer(weights, own).ravel()
+        return numbers, weights
+
+
+def count(setting: Setting, likeness: Likeness) -> int:
+    """How many representatives there are."""
+    return math.prod(
+        math.comb(len(group) + setting.shape[group[0]] - 1, len(group)) for group in likeness.groups
+    )
+
+
+def multisets(size: int, members: int) -> IndexArray:
+    """All multisets of `members` types out of `size`, as rising rows, int (C, members)."""
+    found = itertools.combinations_with_replacement(range(size), members)
+    return np.fromiter(itertools.chain.from_iterable(found), dtype=np.int64).reshape(-1, members)
+
+
+def multiset_weights(types: IndexArray, weights: tuple[int, ...]) -> IntArray:
+    """The weight of all orders of each multiset: m! prod_a weights_a^n_a / n_a!, Python ints."""
+    rows, members = types.shape
+    left = np.full(rows, members, dtype=np.int64)
+    total: IntArray = np.ones(rows, dtype=object)
+    for a, weight in enumerate(weights):
+        power = [weight**n for n in range(members + 1)]
+        ways = [[math.comb(m, n) * power[n] for n in range(m + 1)] for m in range(members + 1)]
+        table = np.zeros((members + 1, members + 1), dtype=object)
+        for m, row in enumerate(ways):
+            table[m, : m + 1] = row
+        n = (types == a).sum(axis=1)
+        total = total * table[left, n]
+        left = left - n
+    return total
