@@ -33,7 +33,8 @@ def pose(
     demands     overrides of the scenario's own demands; None: none
     engine      "highs", or "pulp:NAME" for any engine PuLP finds; its word is only a hint
     time_limit  seconds after which the verdict is `undecided`
-     path        the road to take ("full", "interim", "type-graph"); None
+    path        the road to take ("interim", "type-graph", "likeness", "full"); None: the first
+                that applies
     progress    called with what is being done, seconds so far and a step count
 
     Raises ScenarioError for a scenario that cannot be read and UsageError for demands that

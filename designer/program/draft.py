@@ -213,7 +213,9 @@ class Draft:
 
     def type_at(self, index: int, profiles: IndexArray) -> IndexArray:
         """The position of a party's type at the listed profiles, int (R,)."""
-        return profiles // math.prod(self.setting.shape[index + 1 :]) % self.setting.shape[index]
+        step = math.prod(self.setting.shape[index + 1 :])
+        at: IndexArray = profiles // step % self.setting.shape[index]
+        return at.astype(np.int64, copy=False)
 
     def fiber(self, index: int) -> IndexArray:
         """A party's profile numbers by own type and others' profile, int (T_i, N / T_i)."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import copy
 import json
 import math
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -200,16 +201,29 @@ def test_eight_parties_of_five_types_with_dominant_honesty() -> None:
 
 def verdict_of_unanimity(members: int, size: int, outlay: int) -> Any:
     """Expected welfare of building when everyone's worth covers an even share."""
-    from fractions import Fraction
-
     share = Fraction(outlay, members)
     worths = [v for v in range(size) if v >= share]
     chance = Fraction(len(worths), size) ** members
     return chance * (members * Fraction(sum(worths), len(worths)) - outlay)
 
 
-def test_numbers_too_large_are_declined() -> None:
+def test_more_representatives_than_fit_are_declined() -> None:
     assert ROAD.applies(farms(20, 10, 60), Demands().over(farms(20, 10, 60))) is not None
+
+
+def test_a_hundred_parties_whose_profiles_no_word_can_number() -> None:
+    """2^100 profiles, 101 up to trades.
+
+    An outlay of 100 is covered only where all hundred report 1, and only by an even share each.
+    """
+    setting = farms(100, 2, 100)
+    assert setting.profiles == 2**100
+    asked = Demands(ic="dominant", ir="ex-post", balance="ex-post", budget="no-deficit")
+    verdict = pose(setting, asked, path="likeness")
+    assert verdict.proved
+    assert verdict.status == "possible"
+    assert verdict.pays(["1"] * 100) in ((Fraction(1),) * 100, (Fraction(0),) * 100)
+    assert rebuild(setting, verdict.proof) == []
 
 
 # -- attacks -----------------------------------------------------------------------------------

@@ -64,7 +64,7 @@ class LikenessMechanism:
         return tuple(Fraction(int(part), self.paid_den) for part in paid[0])
 
     def _numbers(self, types: Sequence[int]) -> IndexArray:
-        return np.array([self.setting.profile_of(tuple(types))], dtype=np.int64)
+        return np.array([self.setting.profile_of(tuple(types))], dtype=self.orbits.dtype)
 
     def table(self) -> Table:
         """Every profile, for settings small enough to hold."""

@@ -19,6 +19,9 @@ from designer.roads.likeness.likeness import Likeness
 from designer.setting.profiles import strides
 from designer.setting.setting import IntArray, Setting
 
+WORDS = 2**62
+"""Profile numbers below this are held in int64."""
+
 
 class Orbits:
     """The representatives of a setting's profiles under the trades of a likeness."""
@@ -26,7 +29,9 @@ class Orbits:
     def __init__(self, setting: Setting, likeness: Likeness) -> None:
         """Nothing is laid out before it is asked."""
         self.setting, self.likeness = setting, likeness
-        self.strides = np.array(strides(setting.shape), dtype=np.int64)
+        # profile numbers are Python integers where they pass 64 bits
+        self.dtype = np.dtype(np.int64 if setting.profiles < WORDS else object)
+        self.strides: IndexArray = np.array(strides(setting.shape), dtype=self.dtype)
         self.options = len(setting.options)
 
     # -- the representatives ---------------------------------------------------------------
@@ -81,7 +86,7 @@ class Orbits:
         """Type positions at the listed profiles, int (R, n)."""
         shape = np.array(self.setting.shape, dtype=np.int64)
         found: IndexArray = profiles[:, None] // self.strides % shape
-        return found
+        return found.astype(np.int64)
 
     def to_first(self, profiles: IndexArray) -> tuple[IndexArray, IndexArray | None]:
         """The place of each profile's representative in `profiles`, and where options go.
@@ -123,7 +128,7 @@ class Orbits:
     def fiber(self, party: int) -> IndexArray:
         """A party's profiles by own type and the others' types up to trades, int (T_i, M)."""
         others, _ = self._others(party)
-        own = np.arange(self.setting.shape[party], dtype=np.int64) * self.strides[party]
+        own = np.arange(self.setting.shape[party]).astype(self.dtype) * self.strides[party]
         found: IndexArray = own[:, None] + others
         return found
 
@@ -137,7 +142,7 @@ class Orbits:
 
     def _spread(self, groups: Any) -> tuple[IndexArray, IntArray]:
         """Numbers and weights of all choices of a multiset of types per group."""
-        numbers = np.zeros(1, dtype=np.int64)
+        numbers: IndexArray = np.zeros(1, dtype=self.dtype)
         weights: IntArray = np.ones(1, dtype=object)
         for group in groups:
             types = multisets(self.setting.shape[group[0]], len(group))

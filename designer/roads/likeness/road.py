@@ -19,8 +19,6 @@ from designer.roads.settled import Settled
 from designer.setting.likeness import twins
 from designer.setting.setting import Setting
 
-NUMBERS = 2**62
-"""Profiles are numbered in int64."""
 TABLE_UP_TO = 100_000
 """Profiles up to which the whole table is made at once."""
 
@@ -60,8 +58,6 @@ def reduced(setting: Setting, terms: Terms) -> tuple[Orbits, Terms] | str:
         return "a worth or an outside option depends on other parties' types"
     if terms.decision == "deterministic":
         return "the decision must be sure at every profile, and an average of tables is not"
-    if setting.profiles >= NUMBERS:
-        return "there are too many profiles to number"
     own = as_independent(setting)
     if own is None:
         return "the types are correlated"
