@@ -45,11 +45,15 @@ class ExpectedPay(Label):
 
 @dataclass(frozen=True)
 class ExpectedDecision(Label):
-    """q_i(k, a): the probability of an option when a party reports a type."""
+    """q_i(k, a): the probability of an option when a party reports a type.
+
+    others  how many options beside it, all one to the party, are counted in
+    """
 
     party: str
     type: str
     option: str
+    others: int = 0
 
 
 @dataclass(frozen=True)

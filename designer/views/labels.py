@@ -46,8 +46,8 @@ def term(label: Label) -> str:
             return f"E[{party} pays | {kind}]"
         case Decides(option, at):
             return f"Pr[{option} | {', '.join(at)}]"
-        case ExpectedDecision(party, kind, option):
-            return f"Pr[{option} | {party} {kind}]"
+        case ExpectedDecision(party, kind, option, others):
+            return f"Pr[{_or(option, others)} | {party} {kind}]"
         case Share(kind, rule):
             return f"[share of rule {rule} | {kind}]"
         case OnAverage(what, None):
@@ -134,11 +134,19 @@ def sentence(label: Label | None, folds: int = 1) -> str:
             return f"the goal {goal} keeps its value"
         case ExpectedPay(party, kind):
             return f"what {party} pays on average when it reports {kind} is an average"
-        case ExpectedDecision(party, kind, option):
-            return f"how likely {option} is when {party} reports {kind} is an average"
+        case ExpectedDecision(party, kind, option, others):
+            chance = _or(option, others)
+            return f"how likely {chance} is when {party} reports {kind} is an average"
         case Unknown(name):
             return f"the {name} keeps its sign"
     return "a chance is at least 0"
+
+
+def _or(option: str, others: int) -> str:
+    """An option, and how many more are counted with it."""
+    if not others:
+        return option
+    return f"{option} or {others} other{'s' if others > 1 else ''} all one to it"
 
 
 def family(label: Label | None) -> str:

@@ -66,18 +66,16 @@ def crowds(draw: st.DrawFn) -> tuple[Setting, Terms]:
         if chance.party == place
     )
     crowd = replace(setting, parties=tuple(parties), rule=None, rule_den=1)
-    blend = tuple(
-        (name, weight) for word, weight in terms.blend for name in names.get(word, [word])
-    )
+    blend = {name: weight for word, weight in terms.blend for name in names.get(word, [word])}
     if draw(st.integers(0, 4)) == 0:
-        blend = (*blend, (parties[0].name, Fraction(1)))  # one of them counts more
+        blend[parties[0].name] = Fraction(3)  # one of them counts for more
     terms = replace(
         terms,
         decision="randomized" if terms.decision == "table" else terms.decision,
         compelled=frozenset(n for word in terms.compelled for n in names[word]),
         trusted=frozenset(n for word in terms.trusted for n in names[word]),
         side=replace(terms.side, chances=chances),
-        blend=blend,
+        blend=tuple(blend.items()),
     )
     return crowd, terms
 

@@ -78,7 +78,7 @@ def _point(
             chances += _others(side, listed.counts.taken[0][index]) * int(share * split)
         columns, _ = draft.expected_decision(index)
         unit = den // (split * each)
-        x[columns] = chances * unit
+        x[columns] = draft.merged[index].sums(chances) * unit
         least = int(side.party.outside[side.order[-1]]) * split * each
         worth = (side.value * chances).sum(axis=1) - utilities(side, chances) - least
         pays = worth * (unit // grain) + int(terms.shortfall * den)
@@ -116,6 +116,7 @@ def _multipliers(
         each = setting.total_weight // sum(side.party.weights)
         others = _others(side, best.shares[0][1].counts.taken[0][index])
         slices += Fraction(int((table * others).sum()), each * den)
+        table = table[:, draft.merged[index].first]
         parts.append((place + np.arange(table.size), table.ravel(), den))
         place += table.size
         if side.party.size > 1:

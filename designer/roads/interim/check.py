@@ -33,6 +33,7 @@ from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.lies import broken
 from designer.roads.interim.master import averaged, exact_prices, rule_for
 from designer.roads.interim.mechanism import rules_from_plain
+from designer.roads.interim.merged import merged
 from designer.roads.interim.road import Interim
 from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
 from designer.roads.product import as_independent
@@ -149,7 +150,13 @@ def _program(
     """The master that the scenario, the terms and the counts give."""
     inner = averaged(terms)
     draft = InterimDraft(
-        setting, terms.decision, amounts_of(inner), lead=lead, columns=tuple(columns), lies=lies
+        setting,
+        terms.decision,
+        amounts_of(inner),
+        lead=lead,
+        columns=tuple(columns),
+        lies=lies,
+        chances=terms.side.chances,
     )
     return draft, Formulation(setting, inner, draft=draft).pose(terms.goals[0])
 
@@ -177,7 +184,8 @@ def _better(
     watch: Watch,
 ) -> list[str]:
     """A slice in which some rule does better than the multipliers admit."""
-    prices = exact_prices(setting, lead, program, multipliers)
+    classes = merged(setting, terms.side.chances)
+    prices = exact_prices(setting, lead, program, multipliers, classes)
     first = (welfare_index(setting),) if terms.decision == "efficient" else ()
     best = count(setting, rule_for(setting, first, prices.parties), lead, watch)
     return [

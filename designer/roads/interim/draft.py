@@ -15,8 +15,9 @@ from designer.program.affine import Affine, constants, of_columns
 from designer.program.draft import Draft
 from designer.program.labels import ExpectedDecision, ExpectedPay, Share, Slice
 from designer.program.linear import IndexArray
+from designer.roads.interim.merged import merged
 from designer.roads.interim.rule import Counts
-from designer.setting.setting import IntArray, Setting
+from designer.setting.setting import Chance, IntArray, Setting
 
 Lies = tuple[tuple[tuple[int, int], ...], ...]
 """Per party, pairs of positions (true, told)."""
@@ -32,6 +33,8 @@ class InterimDraft(Draft):
     without a lead party):
 
         q_i(k, a) = sum_{g,r} lambda_{g,r} * taken_r[g][i][a, k] / weight(theta_i = a).
+
+    Options that are all one to a party (`merged`) share one q, that of any of them.
     """
 
     def __init__(
@@ -43,12 +46,15 @@ class InterimDraft(Draft):
         lead: int | None = None,
         columns: tuple[tuple[int, Counts], ...] = (),
         lies: Lies | None = None,
+        chances: tuple[Chance, ...] = (),
     ) -> None:
         """`columns` lists (g, counts of the rule) per share column.
 
-        `lies` lists the pairs (true, told) to be written per party; None writes all.
+        `lies` lists the pairs (true, told) to be written per party; None writes all. `chances`
+        are demands on single options.
         """
         self.lead, self.shares, self.written = lead, columns, lies
+        self.merged = merged(setting, chances)
         super().__init__(setting, decision, amounts)
 
     def _lay_out(self) -> None:
@@ -80,11 +86,14 @@ class InterimDraft(Draft):
     def _define(self, index: int) -> None:
         """The rows that tie q_i(k, a) to the shares."""
         setting, party = self.setting, self.setting.parties[index]
-        options = len(setting.options)
+        classes = self.merged[index]
+        options = classes.size
 
         def label(j: int) -> ExpectedDecision:
-            a, k = divmod(j, options)
-            return ExpectedDecision(party.name, party.types[a].label, setting.options[k])
+            a, c = divmod(j, options)
+            option = setting.options[classes.first[c]]
+            others = int((classes.of == c).sum()) - 1
+            return ExpectedDecision(party.name, party.types[a].label, option, others)
 
         columns = self.add_columns("expected decision", party.size * options, label)
         self._probabilities[index] = columns.reshape(party.size, options)
@@ -94,7 +103,7 @@ class InterimDraft(Draft):
         )
         rows, cols, nums = [], [], []
         for share, (g, counts) in enumerate(self.shares):
-            taken = counts.taken[g][index].ravel()
+            taken = classes.sums(counts.taken[g][index]).ravel()
             place = np.flatnonzero(taken)
             rows.append(place)
             cols.append(np.full(len(place), self.share_columns[share]))
@@ -135,7 +144,7 @@ class InterimDraft(Draft):
         return self._pays
 
     def expected_decision(self, index: int) -> tuple[IndexArray, IntArray]:
-        """The columns q_i(k, a); none is constant."""
+        """The columns q_i(k, a), (T_i, C) over classes of options; none is constant."""
         columns = self._probabilities[index]
         return columns, np.zeros(columns.shape, dtype=self.dtype)
 
@@ -146,7 +155,7 @@ class InterimDraft(Draft):
     def interim_worth(self, index: int, true: IndexArray, told: IndexArray) -> Affine:
         """sum_k v_i(k, true) q_i(k, told)."""
         party = self.setting.parties[index]
-        value = party.value.astype(self.dtype)[true]
+        value = party.value[:, self.merged[index].first].astype(self.dtype)[true]
         row, option = np.nonzero(value)
         return Affine(
             row.astype(np.int64),
@@ -157,8 +166,10 @@ class InterimDraft(Draft):
         )
 
     def interim_chance(self, index: int, types: IndexArray, option: int) -> Affine:
-        """q_i(option, a)."""
-        return of_columns(self._probabilities[index][types, option], self.dtype)
+        """q_i(option, a), of an option that the draft was told a chance is demanded of."""
+        return of_columns(
+            self._probabilities[index][types, self.merged[index].of[option]], self.dtype
+        )
 
     def expected_worth(self, index: int) -> Affine:
         """E[sum_k x_k v_i(k)] = sum_a P(a) sum_k v_i(k, a) q_i(k, a)."""
@@ -166,7 +177,8 @@ class InterimDraft(Draft):
         return self.interim_worth(index, types, types).mean(self.marginal(index))
 
     def expected_choice(self, worth: IntArray) -> Affine:
-        """E[sum_k x_k worth(k)], worth int (K,) in units of 1/grain."""
+        """E[sum_k x_k worth(k)], worth int (K,) in units of 1/grain, made of outlay and worth."""
+        worth = worth[self.merged[0].first]
         size, options = self._probabilities[0].shape
         form = Affine(
             np.repeat(np.arange(size, dtype=np.int64), options),

@@ -97,7 +97,8 @@ def broken(setting: Setting, terms: Terms, draft: InterimDraft, x: Vector, ray: 
             continue
         chance = values[draft.expected_decision(index)[0]]
         pays = values[draft.expected_pay(index)]
-        found[index] = _broken(party, chance, pays, x.den, setting.grain, slack)
+        value = party.value[:, draft.merged[index].first].astype(object)
+        found[index] = _broken(value, chance, pays, x.den, setting.grain, slack)
     return tuple(found)
 
 
@@ -109,9 +110,8 @@ def _at(form: Affine, values: IntArray, den: int, ray: bool) -> Fraction:
 
 
 def _broken(
-    party: Party, chance: IntArray, pays: IntArray, den: int, grain: int, slack: Fraction
+    value: IntArray, chance: IntArray, pays: IntArray, den: int, grain: int, slack: Fraction
 ) -> tuple[tuple[int, int], ...]:
-    value = party.value.astype(object)
     allowed = slack * den * grain
     top = value.shape[1] * _largest(value) * _largest(chance) + _largest(pays) * grain
     if 2 * max(top, grain, abs(allowed)) < ROOM:

@@ -16,6 +16,7 @@ from designer.engines.listening import listening
 from designer.engines.model import load, quiet_highs
 from designer.engines.watch import Watch
 from designer.program.program import Program
+from designer.roads.interim.merged import Merged
 from designer.roads.interim.rule import Counts
 from designer.setting.setting import Setting
 
@@ -54,9 +55,16 @@ class Duals:
 class Live:
     """A HiGHS model of the master program that grows by columns."""
 
-    def __init__(self, setting: Setting, program: Program, lead: int | None) -> None:
+    def __init__(
+        self,
+        setting: Setting,
+        program: Program,
+        lead: int | None,
+        classes: tuple[Merged, ...],
+    ) -> None:
         """Load the program of a master without rules."""
-        self.setting, self.lead = setting, lead
+        self.setting, self.lead, self.classes = setting, lead, classes
+        self.sizes = [n * own.size for n, own in zip(setting.shape, classes, strict=True)]
         self.slices = 1 if lead is None else setting.shape[lead]
         self.program = floats(program.stage(0))
         self.model = quiet_highs()
@@ -72,7 +80,7 @@ class Live:
 
     def _stand_in(self) -> None:
         """A column for every inequality and equation that rules alone may not meet."""
-        first = self.start + self.slices + sum(self.setting.shape) * len(self.setting.options)
+        first = self.start + self.slices + sum(self.sizes)
         lo, hi = self.program.row_lo, self.program.row_hi
         for row in range(len(lo)):
             if self.start <= row < first:
@@ -94,12 +102,12 @@ class Live:
 
     def add(self, g: int, counts: Counts) -> int:
         """List a rule in one slice; its column."""
-        setting, options = self.setting, len(self.setting.options)
+        setting = self.setting
         rows, values = [np.array([self.start + g])], [np.ones(1)]
         place = self.start + self.slices
         for index, party in enumerate(setting.parties):
             each = setting.total_weight // sum(party.weights)
-            taken = counts.taken[g][index]
+            taken = self.classes[index].sums(counts.taken[g][index])
             mass = [each * weight * counts.den for weight in party.weights]
             share = np.array(
                 [[int(v) / m for v in row] for row, m in zip(taken, mass, strict=True)]
@@ -107,7 +115,7 @@ class Live:
             spot = np.flatnonzero(share)
             rows.append(place + spot)
             values.append(share[spot])
-            place += party.size * options
+            place += self.sizes[index]
         row = np.concatenate(rows)
         value = np.concatenate(values) * self.scale[row]
         column = int(self.model.getNumCol())
@@ -158,15 +166,14 @@ class Live:
 
     def duals(self) -> Duals:
         """The multipliers of the last solve, in the engine's own money."""
-        options = len(self.setting.options)
         y = np.array(self.model.getSolution().row_dual) * self.scale
         slices = -y[self.start : self.start + self.slices]
         place = self.start + self.slices
         tables = []
-        for party in self.setting.parties:
-            size = party.size * options
+        for party, own, size in zip(self.setting.parties, self.classes, self.sizes, strict=True):
             marginal = np.array([float(p) for p in party.marginal])
-            tables.append(y[place : place + size].reshape(party.size, options) / marginal[:, None])
+            table = y[place : place + size].reshape(party.size, own.size) / marginal[:, None]
+            tables.append(table[:, own.of])
             place += size
         return Duals(tuple(tables), slices, self.value + float(slices.sum()))
 

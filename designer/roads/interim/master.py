@@ -16,6 +16,7 @@ from designer.proof.vector import Vector
 from designer.roads.interim.counting import count
 from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.live import Duals, Floats
+from designer.roads.interim.merged import Merged
 from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
 from designer.setting.setting import IntArray, Setting
 
@@ -89,6 +90,7 @@ class Master:
             lead=self.lead,
             columns=tuple((g, self.listed[r].counts) for g, r in chosen),
             lies=self.lies,
+            chances=self.terms.side.chances,
         )
         return Formulation(self.setting, self.terms, draft=draft)
 
@@ -107,16 +109,23 @@ def averaged(terms: Terms) -> Terms:
     return replace(terms, balance=balance, tidy="none")
 
 
-def exact_prices(setting: Setting, lead: int | None, program: Program, dual: Vector) -> Prices:
+def exact_prices(
+    setting: Setting,
+    lead: int | None,
+    program: Program,
+    dual: Vector,
+    classes: tuple[Merged, ...],
+) -> Prices:
     """The index that exact multipliers of the minimising form give to every decision.
 
     q_i(k, a) is defined with weight(theta_i = a) in the denominator, so a unit of weight at
     which k is taken is worth the row's natural multiplier over that weight.
     """
-    options, total = len(setting.options), setting.total_weight
+    total = setting.total_weight
     start = program.row_axis.start("slice")
     place = start + (1 if lead is None else setting.shape[lead])
-    cells = sum(setting.shape) * options
+    sizes = [n * own.size for n, own in zip(setting.shape, classes, strict=True)]
+    cells = sum(sizes)
     # Natural multipliers are num / (den * dual.den).
     num, den = (scale[start : place + cells].astype(object) for scale in program.row_scale)
     num *= np.array(dual.numerators()[start : place + cells], dtype=object)
@@ -125,15 +134,18 @@ def exact_prices(setting: Setting, lead: int | None, program: Program, dual: Vec
     num, den = num[size:], den[size:]
     for_party = [total // sum(party.weights) for party in setting.parties]
     masses = [
-        each * own
-        for each, party in zip(for_party, setting.parties, strict=True)
-        for own in party.weights
+        each * weight
+        for each, party, own in zip(for_party, setting.parties, classes, strict=True)
+        for weight in party.weights
+        for _ in range(own.size)
     ]
-    den *= np.repeat(np.array(masses, dtype=object), options)
+    den *= np.array(masses, dtype=object)
     common = math.lcm(*set((den // np.gcd(num, den)).tolist()))
-    whole = (num * common // den).reshape(-1, options)
-    ends = np.cumsum(setting.shape)[:-1]
-    return Prices(tuple(np.split(whole, ends)), slices, common * dual.den)
+    parts = np.split(num * common // den, np.cumsum(sizes)[:-1])
+    tables = tuple(
+        part.reshape(-1, own.size)[:, own.of] for part, own in zip(parts, classes, strict=True)
+    )
+    return Prices(tables, slices, common * dual.den)
 
 
 def rule_for(setting: Setting, first: tuple[Index, ...], parties: tuple[IntArray, ...]) -> Rule:

@@ -181,7 +181,8 @@ def of_point(
     for i, party in enumerate(setting.parties):
         weights = np.array(party.weights, dtype=object)
         means.append(int((own[i] * weights).sum()) // sum(party.weights))
-        spent.append((x[draft.expected_decision(i)[0]] * outlay).sum(axis=1) * total)
+        columns, _ = draft.expected_decision(i)
+        spent.append((x[columns] * outlay[draft.merged[i].first]).sum(axis=1) * total)
     first = setting.parties[0]
     expected = int((spent[0] * np.array(first.weights, dtype=object)).sum()) // sum(first.weights)
     everything = sum(means)

@@ -173,7 +173,7 @@ class _Walk:
                 outcome = even_outcome(self.setting, self.terms, master.lead, program, outcome)
             certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
             if outcome.status != "unbounded" and certificate is not None and not self.only:
-                prices = exact_prices(self.setting, master.lead, program, certificate)
+                prices = exact_prices(self.setting, master.lead, program, certificate, draft.merged)
                 if self._improve(prices):
                     return None
         return self._back(draft, program, outcome, chosen)

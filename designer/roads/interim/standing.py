@@ -51,7 +51,7 @@ def _of_party(
         return sum(
             (
                 Fraction(int(party.value[a, k]), setting.grain)
-                * chance[party.name, labels[b], option]
+                * chance.get((party.name, labels[b], option), 0)  # those counted with another: 0
                 for k, option in enumerate(setting.options)
             ),
             Fraction(0),
