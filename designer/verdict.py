@@ -88,6 +88,7 @@ class Verdict:
             compelled=terms.compelled,
             limits=terms.limits,
             side=terms.side,
+            even_handed=terms.even_handed,
         )
 
     @cached_property

@@ -12,7 +12,7 @@ import numpy.typing as npt
 
 from designer.auditing import honesty
 from designer.auditing.decisions import judge_decisions
-from designer.auditing.even import even_handed
+from designer.auditing.even import even_handed as judge_likeness
 from designer.auditing.limits import judge_limits, judge_side
 from designer.auditing.outcome import (
     BALANCE,
@@ -44,6 +44,7 @@ def audit(
     compelled: Iterable[str] | None = None,
     limits: Limits | None = None,
     side: Side | None = None,
+    even_handed: bool | None = None,
 ) -> Audit:
     """Hold a payment table against every demand, exactly and from the definitions alone.
 
@@ -52,7 +53,7 @@ def audit(
                for lotteries. None: 0, or what rounding explains when the file looks rounded
     subsidy    outside money S: the pot is held against -S (exact) or at least -S (no-deficit)
     slack      tolerated gain from a lie; `shortfall`: tolerated loss from taking part
-    compelled, limits, side   instead of the scenario's own, where given
+    compelled, limits, side, even_handed   instead of the scenario's own, where given
 
     Margins are minima over parties, true types, lies and profiles of (conventions 1, 4, 8)
         ic-bayesian  E[u_i | truth] - E[u_i | lie]      ic-dominant  the same at each profile
@@ -103,8 +104,8 @@ def audit(
     for name, (floor, value) in floors.items():
         if floor is not None:
             findings.append(Finding(name, value - floor >= -tolerance, value - floor))
-    if setting.asked.get("even_handed"):
-        findings.append(even_handed(setting, table, tolerance, chance_tolerance))
+    if setting.asked.get("even_handed") if even_handed is None else even_handed:
+        findings.append(judge_likeness(setting, table, tolerance, chance_tolerance))
 
     asked = [f for f in findings if not (f.party in excused and f.demand in PARTICIPATION)]
     others = {f.demand for f in findings} - {*HONESTY, *PARTICIPATION, *BALANCE}

@@ -43,6 +43,7 @@ def audit(
     budget: options.Budget = None,
     subsidy: options.Subsidy = None,
     slack: options.Slack = None,
+    even_handed: options.EvenHanded = None,
     compel: options.Compel = None,
     rows: options.Rows = None,
     json: options.Json = False,
@@ -63,6 +64,7 @@ def audit(
         budget=budget,
         subsidy=subsidy,
         slack=slack,
+        even_handed=even_handed,
     ).over(setting)
     found = _audited(setting, table, terms, _amount(tolerance), free=subsidy is None)
     asked = {
@@ -105,6 +107,7 @@ def _audited(
             subsidy=subsidy,
             slack=terms.slack,
             compelled=terms.compelled,
+            even_handed=terms.even_handed,
         )
 
     found = held(path, terms.subsidy, tolerance)

@@ -328,6 +328,26 @@ def test_audit_says_under_which_demands_a_table_was_made(capsys: Capsys, tmp_pat
     assert run(capsys, "audit", BREAKWATER, folder / "transfers.csv").err == ""
 
 
+def test_audit_asks_for_alike_treatment(capsys: Capsys, tmp_path: Path) -> None:
+    """Norhaven and Suth have equal data; a crown more from one of them tells them apart."""
+    folder = tmp_path / "out"
+    words = ["--ic", "none", "--ir", "none", "--balance", "none", "--goal", "any"]
+    assert run(capsys, "pose", BREAKWATER, *words, "--save", folder).code == 0
+    table = folder / "transfers.csv"
+    assert run(capsys, "audit", BREAKWATER, table, *words[:-2], "--even-handed").code == 0
+    lines = table.read_text(encoding="utf-8").splitlines(keepends=True)
+    header, cells = lines[0].strip().split(","), lines[2].strip().split(",")
+    place = header.index("pays:Norhaven")
+    assert cells[place] == "0"
+    cells[place], cells[-1] = "1", "1"
+    lines[2] = ",".join(cells) + "\n"
+    table.write_text("".join(lines), encoding="utf-8")
+    assert run(capsys, "audit", BREAKWATER, table, *words[:-2]).code == 0
+    found = run(capsys, "audit", BREAKWATER, table, *words[:-2], "--even-handed")
+    assert found.code == 1
+    assert "parties with equal data alike" in found.out
+
+
 def test_audit_takes_the_outside_money_that_a_goal_left_open(
     capsys: Capsys, tmp_path: Path
 ) -> None:
