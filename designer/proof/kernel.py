@@ -19,8 +19,11 @@ import numpy as np
 from designer.engines.watch import Watch
 from designer.proof.lifting import Lifting, NotLifted
 from designer.proof.sparse import Matrix, largest, narrow
+from designer.proof.waves import Waves, waves
 from designer.setting.setting import IntArray
 
+WAVES = 400
+"""Kernels from this size are tried in waves first: shallow ones are done by then."""
 PEEL = 4_000
 """Kernels up to this size are peeled in Python before anything else."""
 SPARSE = 4_000
@@ -74,6 +77,12 @@ class Kernel:
         if self.size == 0 or largest(b) == 0:
             # still to be checked regular by whoever needs that; 0 solves every system
             return np.zeros(self.size, dtype=np.int64), 1
+        if self.size >= WAVES and self._waves is not None:
+            found = self._waves.solve(
+                b, transposed, lambda rest: self._core._solve(rest, transposed)
+            )
+            if found is not None:
+                return found
         core = len(self._peeled.core_rows) if self.size <= PEEL else self.size
         sparse = IMPORTED if "scipy.sparse.linalg" in sys.modules else SPARSE
         if core <= sparse and not self._crowded:
@@ -89,6 +98,16 @@ class Kernel:
             if self.size <= PEEL and core <= DENSE_LAST:
                 return self._peeled.solve(b.tolist(), transposed, dense=True)
             raise Singular(str(failure)) from failure
+
+    @cached_property
+    def _waves(self) -> Waves | None:
+        return waves(self.matrix)
+
+    @cached_property
+    def _core(self) -> Kernel:
+        if self._waves is None:
+            raise ValueError("a kernel without waves has no core")
+        return Kernel(self._waves.core_matrix, self.watch)
 
     @cached_property
     def _peeled(self) -> Peeled:

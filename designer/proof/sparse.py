@@ -80,6 +80,11 @@ class Matrix:
         """The number of rows."""
         return len(self.indptr) - 1
 
+    @property
+    def nonzeros(self) -> int:
+        """The number of entries."""
+        return len(self.data)
+
     @cached_property
     def largest(self) -> int:
         """The largest absolute entry."""
