@@ -55,8 +55,8 @@ def read_basis(model: Any, program: FloatProgram, *, retained: bool = False) -> 
     if len(columns) != len(program.cost) or len(rows) != len(program.row_lo):
         return None
     return Basis(
-        _ours(columns, np.isfinite(program.col_lo), np.isfinite(program.col_hi)),
-        _ours(rows, np.isfinite(program.row_lo), np.isfinite(program.row_hi)),
+        sides_of(columns, np.isfinite(program.col_lo), np.isfinite(program.col_hi)),
+        sides_of(rows, np.isfinite(program.row_lo), np.isfinite(program.row_hi)),
     )
 
 
@@ -122,7 +122,8 @@ def multipliers_of(model: Any, program: FloatProgram) -> FloatArray | None:
     return program.multipliers(np.array(solution.row_dual, dtype=np.float64))
 
 
-def _ours(statuses: list[Any], lo: Any, hi: Any) -> Any:
+def sides_of(statuses: list[Any], lo: Any, hi: Any) -> Any:
+    """HiGHS's statuses as ours; `lo` and `hi` say which bounds there are."""
     ours = np.array([int(status) for status in statuses], dtype=np.int8)
     # 'nonbasic' without a side, and sides that have no bound, fall back to the bound there is
     ours[(ours > ZERO) | ((ours == ZERO) & (lo | hi))] = LOWER

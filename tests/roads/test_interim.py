@@ -147,7 +147,7 @@ def mutate(document: dict[str, Any], data: st.DataObject) -> str:
     """Change one thing; what it was."""
     reduction = document["reduction"]
     ways = ["share", "drop", "number", "lead", "value", "verdict", "coefficient", "term", "slice"]
-    ways += ["dual"] * 3
+    ways += ["dual"] * 3 + ["exception", "like"]
     way: str = data.draw(st.sampled_from(ways))
     shares, rules = reduction["shares"], reduction["rules"]
     stage = document["stages"][0]
@@ -160,9 +160,17 @@ def mutate(document: dict[str, Any], data: st.DataObject) -> str:
         shares[place][0] += step
     elif way == "drop" and shares:
         shares.pop(data.draw(st.integers(0, len(shares) - 1)))
+    elif way == "exception" and any(isinstance(rule, dict) for rule in rules):
+        rule = data.draw(st.sampled_from([rule for rule in rules if isinstance(rule, dict)]))
+        row = data.draw(st.sampled_from(rule["except"]))
+        row[data.draw(st.integers(0, len(row) - 1))] += step
+    elif way == "like" and any(isinstance(rule, dict) for rule in rules):
+        rule = data.draw(st.sampled_from([rule for rule in rules if isinstance(rule, dict)]))
+        rule["like"] += data.draw(st.integers(-2, 2))
     elif way == "number" and rules and rules[0]:
-        rule = data.draw(st.sampled_from(rules))
-        tables = data.draw(st.sampled_from(rule))["parties"]
+        lists: list[Any] = [rule for rule in rules if isinstance(rule, list)]
+        indices: list[Any] = data.draw(st.sampled_from(lists))
+        tables = data.draw(st.sampled_from(indices))["parties"]
         row = data.draw(st.sampled_from(data.draw(st.sampled_from(tables))))
         row[data.draw(st.integers(0, len(row) - 1))] += step * data.draw(st.integers(1, 50))
     elif way == "lead":

@@ -95,7 +95,7 @@ def pressed(after: str) -> Progress:
     [
         ("counting by halves", 9, 9, 3),
         ("counting every profile", 8, 6, 5),
-        ("looking for better rules", 8, 6, 3),
+        ("looking for prices", 8, 6, 3),
     ],
 )
 def test_ctrl_c_leaves_it_undecided(after: str, parties: int, size: int, options: int) -> None:
@@ -104,6 +104,25 @@ def test_ctrl_c_leaves_it_undecided(after: str, parties: int, size: int, options
     verdict = pose_terms(setting, terms, path="interim", progress=pressed(after))
     assert (verdict.status, verdict.proved) == ("undecided", False)
     assert verdict.reason == "interrupted; run it again to go on"
+
+
+def test_ctrl_c_in_column_generation() -> None:
+    terms = Terms(decision="randomized", goals=("floor",), ir="none", tidy="none")
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(road, "interior", lambda *asked: None)
+        verdict = pose_terms(
+            invented(6, 5, 3, 1), terms, path="interim", progress=pressed("looking for better")
+        )
+    assert (verdict.status, verdict.proved) == ("undecided", False)
+
+
+@runs(max_examples=150, deadline=None)
+@given(questions(max_parties=3))
+def test_column_generation_alone(question: tuple[Setting, Terms]) -> None:
+    setting, terms = question
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(road, "interior", lambda *asked: None)
+        agree(setting, terms)
 
 
 def test_the_time_limit_leaves_it_undecided() -> None:

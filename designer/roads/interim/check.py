@@ -28,7 +28,7 @@ from designer.engines.watch import Interrupted, Watch
 from designer.program.program import Program
 from designer.proof.compare import same_program
 from designer.proof.vector import Vector
-from designer.roads.interim.counting import count, tied
+from designer.roads.interim.counting import count, counts_of, tied
 from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.lies import broken
 from designer.roads.interim.master import averaged, exact_prices, rule_for
@@ -77,7 +77,7 @@ def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str
     faults = [fault for rule in rules if (fault := _forbidden(own, terms, rule))]
     if faults:
         return faults[:1]
-    counts = [count(own, rule, lead, watch) for rule in rules]
+    counts = counts_of(own, rules, lead, watch)
     draft, program = _program(own, terms, lead, lies, [(g, counts[r]) for g, r in shares])
     differences = same_program(document, program)
     if differences:
@@ -131,6 +131,12 @@ def _forbidden(setting: Setting, terms: Terms, rule: Rule) -> str | None:
         return "the given table is listed, but is not what the terms ask for"
     if terms.decision == "efficient" and not _same(rule.indices[0], welfare_index(setting)):
         return "a listed rule does not start with welfare"
+    if terms.decision == "efficient" and rule.exceptions:
+        types = np.array([at for at, _ in rule.exceptions], dtype=np.int64)
+        score = rule.indices[0].at(types)
+        taken = [option for _, option in rule.exceptions]
+        if np.any(score[np.arange(len(taken)), taken] < score.max(axis=1)):
+            return "a listed rule makes an exception that is not efficient"
     return None
 
 

@@ -4,12 +4,17 @@ from __future__ import annotations
 
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from concurrent.futures import ThreadPoolExecutor, wait
+from contextlib import contextmanager
 from dataclasses import dataclass, field
-from typing import TypeVar
+from functools import cache
+from typing import TYPE_CHECKING, TypeVar
 
 from designer.engines.watch import Interrupted, Watch
+
+if TYPE_CHECKING:
+    from threadpoolctl import ThreadpoolController
 
 Result = TypeVar("Result")
 CORES = 2
@@ -28,6 +33,25 @@ class _Guard(Watch):
         if self.stopped.is_set():
             raise Interrupted
         super().check()
+
+
+@contextmanager
+def one_blas_thread() -> Iterator[None]:
+    """Products of small matrices on one core.
+
+    Where others are busy, waiting for a second thread takes many times longer than the work.
+    """
+    with _blas().limit(limits=1, user_api="blas"):
+        yield
+
+
+@cache
+def _blas() -> ThreadpoolController:
+    """The linear algebra libraries that are loaded; scipy brings its own."""
+    import scipy.linalg  # noqa: F401
+    from threadpoolctl import ThreadpoolController
+
+    return ThreadpoolController()
 
 
 def on_cores(

@@ -9,6 +9,8 @@ alike    one party for several, by multisets   parties of equal index and weight
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
 from designer.engines.watch import Stopped, Watch
@@ -39,6 +41,8 @@ def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Count
 
     Raises TooMany where that would take longer than MOST, and Stopped as `watch` says.
     """
+    if rule.exceptions:
+        return counts_of(setting, [rule], lead, watch)[0]
     way = _way(setting, rule, lead)
     if way == "alike":
         return alike.count(setting, rule, lead, watch)
@@ -49,6 +53,30 @@ def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Count
     if way == "halves":
         return halves.count(setting, rule, lead, watch)
     return blocks.count(setting, rule, lead, watch)
+
+
+def counts_of(
+    setting: Setting, rules: Sequence[Rule], lead: int | None, watch: Watch
+) -> list[Counts]:
+    """The exact counts of several rules: those that differ in exceptions alone in one pass."""
+    passes: dict[int, Counts] = {}
+    found = []
+    for rule in rules:
+        plain = Rule(rule.indices)
+        if id(rule.indices) not in passes:
+            passes[id(rule.indices)] = count(setting, plain, lead, watch)
+        counts = passes[id(rule.indices)]
+        if rule.exceptions:
+            types = np.array([at for at, _ in rule.exceptions], dtype=np.int64)
+            before = plain.decides(setting, types)[0].argmax(axis=1)
+            moves = [
+                (at, int(old), new)
+                for (at, new), old in zip(rule.exceptions, before, strict=True)
+                if old != new
+            ]
+            counts = counts.moved(setting, lead, moves)
+        found.append(counts)
+    return found
 
 
 def _way(setting: Setting, rule: Rule, lead: int | None) -> str:
@@ -96,7 +124,9 @@ def too_many(setting: Setting, decision: str) -> bool:
     """Whether no way of counting is quick enough, as far as the setting alone tells."""
     if decision == "table":
         return False
+    if min(blocks.work(setting), halves.work(setting, None)) <= MOST:
+        return False
     efficient = Rule((welfare_index(setting),))
-    ways = [blocks.work(setting), halves.work(setting, None), items.work(setting, efficient)]
+    ways = [items.work(setting, efficient)]
     ways += [sums.work(setting, efficient), alike.work(setting, efficient, None)]
     return min(ways) > MOST

@@ -143,6 +143,7 @@ class Mechanism:
             "mixture": [
                 [
                     {"share": text(share), "indices": [index.plain() for index in rule.indices]}
+                    | ({"except": _except(rule)} if rule.exceptions else {})
                     for share, rule in mix
                 ]
                 for mix in self.mixture
@@ -216,7 +217,7 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> Mechanism:
         if plain["format"] != FORMAT:
             raise ValueError(f"the format is {plain['format']!r}, not {FORMAT!r}")
         mixture = tuple(
-            tuple((number(part["share"]), _rule(part["indices"], setting)) for part in mix)
+            tuple((number(part["share"]), _with_exceptions(part, setting)) for part in mix)
             for mix in plain["mixture"]
         )
         average = _numbers(plain["pays_on_average"], setting)
@@ -242,9 +243,67 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> Mechanism:
         raise ValueError(f"not a table document: {error!r}") from None
 
 
+def _with_exceptions(part: Any, setting: Setting) -> Rule:
+    rule = _rule(part["indices"], setting)
+    if "except" not in part:
+        return rule
+    return Rule(rule.indices, _exceptions(part["except"], setting, bool(rule.indices)))
+
+
+def rules_to_plain(rules: Sequence[Rule]) -> tuple[list[Any], list[int]]:
+    """Rules as `rules_from_plain` reads them, and where each of them stands there.
+
+    Rules that differ in exceptions alone name one without exceptions, which is put first.
+    """
+    found: list[Any] = []
+    plain: dict[int, int] = {}
+    places = []
+    for rule in rules:
+        if id(rule.indices) not in plain:
+            plain[id(rule.indices)] = len(found)
+            found.append([index.plain() for index in rule.indices])
+        like = plain[id(rule.indices)]
+        if rule.exceptions:
+            found.append({"like": like, "except": _except(rule)})
+        places.append(len(found) - 1 if rule.exceptions else like)
+    return found, places
+
+
 def rules_from_plain(plain: Any, setting: Setting) -> list[Rule]:
     """Rules from lists of plain indices. Raises ValueError or TypeError for anything else."""
-    return [_rule(indices, setting) for indices in plain]
+    found: list[Rule] = []
+    for rule in plain:
+        if isinstance(rule, dict):
+            like = rule["like"]
+            if type(like) is not int or not 0 <= like < len(found) or found[like].exceptions:
+                raise ValueError("a rule is like none before it")
+            indices = found[like].indices
+            found.append(Rule(indices, _exceptions(rule["except"], setting, bool(indices))))
+        else:
+            found.append(_rule(rule, setting))
+    return found
+
+
+def _except(rule: Rule) -> list[list[int]]:
+    """The exceptions of a rule: positions of types, then of the option."""
+    return [[*types, option] for types, option in rule.exceptions]
+
+
+def _exceptions(
+    plain: Any, setting: Setting, indexed: bool
+) -> tuple[tuple[tuple[int, ...], int], ...]:
+    """Exceptions as `_except` wrote them. Raises ValueError or TypeError for anything else."""
+    sizes = (*setting.shape, len(setting.options))
+    rows = [tuple(row) for row in plain]
+    for row in rows:
+        whole = len(row) == len(sizes) and all(type(v) is int for v in row)
+        if not whole or not all(0 <= v < size for v, size in zip(row, sizes, strict=True)):
+            raise ValueError("an exception names no profile and option")
+    if len({row[:-1] for row in rows}) != len(rows):
+        raise ValueError("two exceptions at one profile")
+    if rows and not indexed:
+        raise ValueError("the given table has no exceptions")
+    return tuple((row[:-1], row[-1]) for row in rows)
 
 
 def _numbers(rows: Any, setting: Setting) -> tuple[tuple[Fraction, ...], ...]:

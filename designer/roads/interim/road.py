@@ -17,19 +17,21 @@ from fractions import Fraction
 import numpy as np
 
 from designer.demands.terms import Terms
-from designer.engines.report import Engine
+from designer.engines.report import Basis, Engine
 from designer.engines.watch import Stopped, Watch
 from designer.program.program import Program
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
+from designer.roads.interim.barrier import interior
 from designer.roads.interim.certificate import outcome_of
 from designer.roads.interim.counting import TooMany, lead_party, tied, too_many
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.lies import broken, first_lies, with_more
 from designer.roads.interim.master import Master, Prices, averaged, exact_prices, rule_for
-from designer.roads.interim.mechanism import Mechanism, of_point
+from designer.roads.interim.mechanism import Mechanism, of_point, rules_to_plain
 from designer.roads.interim.multiplier import optimum, sides
+from designer.roads.interim.near import Hinted, corner_near
 from designer.roads.interim.rule import Index, Listed, Rule, welfare_index
 from designer.roads.interim.search import Search
 from designer.roads.interim.symmetry import alike_parties, even_lies, even_outcome
@@ -101,6 +103,9 @@ class _Walk:
                 best = self._start()
             if best is not None:
                 return self._back(*best)
+            step = self._from_within()
+            if step is not None:
+                return step
             while True:
                 chosen = list(range(len(self.master.columns)))
                 if not self.only:
@@ -144,6 +149,38 @@ class _Walk:
                 self._list(rule)
             return None
         master.lead = lead_party(setting)
+        return None
+
+    def _from_within(self) -> Settled | None:
+        """List the rules near an interior point, or simple ones; the answer if they settle it."""
+        master = self.master
+        if self.terms.decision != "randomized":
+            return None
+        while self.goal != "any":
+            lies = master.lies
+            with self._spending("search"):
+                draft, program = master.program([])
+                found = interior(self.setting, draft, program, self.watch)
+                if found is None:
+                    break
+                first = len(master.columns)
+                corner = corner_near(master, found, self.watch)
+            if corner is None:
+                break
+            self.wanted.update(range(first, len(master.columns)))
+            step = self._exact(list(range(first, len(master.columns))), corner.basis)
+            if step is not None:
+                return step
+            if master.lies is lies:
+                break
+        if not master.columns:
+            with self._spending("count"):
+                self._list_simple()
+        return None
+
+    def _list_simple(self) -> None:
+        """The efficient rule, and one that always takes the same option for each."""
+        setting = self.setting
         options = len(setting.options)
         nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in setting.shape)
         self._list(Rule((welfare_index(setting),)))
@@ -151,17 +188,17 @@ class _Walk:
             row = np.zeros(options, dtype=np.int64)
             row[k] = 1
             self._list(Rule((Index(nothing, row),)))
-        return None
 
     def _list(self, rule: Rule) -> None:
         self.master.add(Listed(rule, self.master.count(rule)))
 
-    def _exact(self, chosen: list[int]) -> Settled | None:
+    def _exact(self, chosen: list[int], basis: Basis | None = None) -> Settled | None:
         """Settle the master over chosen columns exactly; None if rules or lies came to light."""
         master = self.master
         with self._spending("formulate"):
             draft, program = master.program([master.columns[j] for j in chosen])
-        outcome = prove(program.stage(0), engine=self.engine, watch=self.watch)
+        engine = self.engine if basis is None else Hinted(basis)
+        outcome = prove(program.stage(0), engine=engine, watch=self.watch)
         for part, seconds in outcome.seconds.items():
             self.seconds[part] = self.seconds.get(part, 0.0) + seconds
         if outcome.status == "undecided" or not outcome.proved:
@@ -169,7 +206,8 @@ class _Walk:
         with self._spending("count"):
             if self._told(draft, outcome):
                 return None
-            if not self.only:
+            mixed = any(master.listed[master.columns[j][1]].rule.exceptions for j in chosen)
+            if not self.only and not mixed:
                 outcome = even_outcome(self.setting, self.terms, master.lead, program, outcome)
             certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
             if outcome.status != "unbounded" and certificate is not None and not self.only:
@@ -270,13 +308,12 @@ class _Walk:
     def _reduction(self, keep: list[int]) -> dict[str, object]:
         """What the document says of the rules behind its share columns."""
         used = sorted({self.master.columns[j][1] for j in keep})
-        place = {r: new for new, r in enumerate(used)}
+        rules, places = rules_to_plain([self.master.listed[r].rule for r in used])
+        place = dict(zip(used, places, strict=True))
         return {
             "road": "interim",
             "lead": self.master.lead,
-            "rules": [
-                [index.plain() for index in self.master.listed[r].rule.indices] for r in used
-            ],
+            "rules": rules,
             "shares": [[self.master.columns[j][0], place[self.master.columns[j][1]]] for j in keep],
             "lies": None
             if self.master.lies is None

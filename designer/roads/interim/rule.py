@@ -7,6 +7,8 @@ second, and so on; what is still tied goes to the option listed first.
 
 from __future__ import annotations
 
+import math
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any
 
@@ -14,6 +16,9 @@ import numpy as np
 import numpy.typing as npt
 
 from designer.setting.setting import IntArray, Setting
+
+Move = tuple[tuple[int, ...], int, int]
+"""Positions of types, the option taken there before, and the one after."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,9 +48,13 @@ class Index:
 
 @dataclass(frozen=True, eq=False)
 class Rule:
-    """A lexicographic index rule; with no index at all, the setting's given table."""
+    """A lexicographic index rule; with no index at all, the setting's given table.
+
+    exceptions  (positions of types, position of the option taken there instead)
+    """
 
     indices: tuple[Index, ...]
+    exceptions: tuple[tuple[tuple[int, ...], int], ...] = ()
 
     def decides(self, setting: Setting, types: npt.NDArray[np.int64]) -> tuple[IntArray, int]:
         """What is taken at the listed profiles: numerators (R, K) over one denominator."""
@@ -59,8 +68,11 @@ class Rule:
             score = index.at(types)
             top = np.where(best, score, score.min() - 1).max(axis=1, keepdims=True)
             best &= score == top
+        chosen = best.argmax(axis=1)
+        for at, option in self.exceptions:
+            chosen[(types == np.array(at)).all(axis=1)] = option
         taken = np.zeros(best.shape, dtype=np.int64)
-        taken[np.arange(len(types)), best.argmax(axis=1)] = 1
+        taken[np.arange(len(types)), chosen] = 1
         return taken, 1
 
 
@@ -84,6 +96,23 @@ class Counts:
     def totals(self) -> tuple[int, ...]:
         """The weight of the profiles at which each option is taken, over `den`."""
         return tuple(int(v) for v in self.merged().taken[0][0].sum(axis=0))
+
+    def moved(self, setting: Setting, lead: int | None, moves: Iterable[Move]) -> Counts:
+        """The same where at some profiles another option is taken: (types, from, to)."""
+        found = list(self.taken)
+        own: set[int] = set()
+        for types, before, after in moves:
+            g = 0 if lead is None else types[lead]
+            if g not in own:
+                own.add(g)
+                found[g] = tuple(table.copy() for table in found[g])
+            weight = self.den * math.prod(
+                party.weights[a] for party, a in zip(setting.parties, types, strict=True)
+            )
+            for table, a in zip(found[g], types, strict=True):
+                table[a, before] -= weight
+                table[a, after] += weight
+        return Counts(tuple(found), self.den)
 
 
 @dataclass(frozen=True, eq=False)
