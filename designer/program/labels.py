@@ -76,6 +76,19 @@ class OnAverage(Label):
 
 
 @dataclass(frozen=True)
+class PaysAgainst(Label):
+    """What a party pays on average over its own types, the others' reports given.
+
+    at     one type label per party, the party's own left as "·"
+    worst  the type at which participation holds it, where that is asked type by type
+    """
+
+    party: str
+    at: tuple[str, ...]
+    worst: str | None = None
+
+
+@dataclass(frozen=True)
 class Unknown(Label):
     """A scalar unknown: outside money, a floor, the largest payment, a margin."""
 
@@ -106,9 +119,26 @@ class TakesPart(Label):
 
 @dataclass(frozen=True)
 class AtMost(Label):
-    """Honesty and participation together bound what a party can pay on average."""
+    """Honesty and participation together bound what a party can pay on average.
+
+    worst  the type at which participation holds it, where several bounds are told apart
+    """
 
     party: str
+    worst: str | None = None
+
+
+@dataclass(frozen=True)
+class Paths(Label):
+    """Paths of lies bound what a party pays over its own types, the others' reports given.
+
+    `at` and `worst` as in `PaysAgainst`; number  which of the paths listed there
+    """
+
+    party: str
+    at: tuple[str, ...]
+    number: int
+    worst: str | None = None
 
 
 @dataclass(frozen=True)

@@ -16,7 +16,9 @@ from designer.program.labels import (
     Label,
     Lottery,
     OnAverage,
+    Paths,
     Pays,
+    PaysAgainst,
     Pin,
     Share,
     Slice,
@@ -32,6 +34,7 @@ MOST_TERMS = 12
 LEGEND: dict[type[Label], str] = {
     ExpectedPay: "E[P pays | a]  what P pays on average when it reports a",
     Pays: "[P pays | a, b, …]  what P pays when the reports are a, b, … in the parties' order",
+    PaysAgainst: "E[P pays | ·, b, …]  what P pays on average when the others report b, …",
     ExpectedDecision: "Pr[d | P a]  how likely d is when P reports a",
     Decides: "Pr[d | a, b, …]  how likely d is when the reports are a, b, … in the parties' order",
 }
@@ -54,6 +57,8 @@ def term(label: Label) -> str:
             return f"E[{what}]"
         case OnAverage(what, party):
             return f"E[{party} pays]" if what == "pays" else f"E[{what} of {party}]"
+        case PaysAgainst(party, at, worst):
+            return f"E[{party} pays | {', '.join(at)}{_held(worst)}]"
         case Unknown(name):
             return f"[{name}]"
     return f"[{label}]"
@@ -126,8 +131,14 @@ def sentence(label: Label | None, folds: int = 1) -> str:
             return f"the pot balances{_where(at)}"
         case Clause(group, key, party, at):
             return f"{_clause(group, key, party)}{_where(at)}"
-        case AtMost(party):
-            return f"what {party} pays on average is bounded by honesty and participation"
+        case AtMost(party, worst):
+            bounded = "is bounded by honesty and participation"
+            return f"what {party} pays on average {bounded}{_held(worst)}"
+        case Paths(party, at, number, worst):
+            bounded = f"is bounded by its paths of lies no. {number}"
+            return f"{term(PaysAgainst(party, at, worst))} {bounded}"
+        case PaysAgainst():
+            return f"{term(label)} is an average"
         case OnAverage():
             return f"the rule fixes {term(label)}"
         case Pin(goal):
@@ -140,6 +151,11 @@ def sentence(label: Label | None, folds: int = 1) -> str:
         case Unknown(name):
             return f"the {name} keeps its sign"
     return "a chance is at least 0"
+
+
+def _held(worst: str | None) -> str:
+    """The type that participation holds, where several bounds are told apart."""
+    return "" if worst is None else f", {worst} at its outside option"
 
 
 def _or(option: str, others: int) -> str:
@@ -156,7 +172,7 @@ def family(label: Label | None) -> str:
             return "honesty"
         case TakesPart():
             return "taking part"
-        case AtMost():
+        case AtMost() | Paths():
             return "honesty and taking part together"
         case OnAverage():
             return "the decision rule"

@@ -12,7 +12,11 @@ shown here is that the verdict carries over to the full program:
    participation rows, one tree per class of the others' profiles;
 4. the payments that these paths give are held against every lie row and participation row,
    and where it is asked against the pot at every profile: so the bounds are reached;
-5. at tied profiles no efficient option has a lower price at the stated multipliers.
+5. at tied profiles no efficient option has a lower price at the stated multipliers;
+6. or, where the document lists cuts, the chances at tied profiles are columns of its program.
+   Every listed tree is followed, the program is written anew from them and compared. The
+   lotteries of the document's point are then taken, and its paths must give payments that
+   keep every lie row and participation row and reach what the point says each party pays.
 """
 
 from __future__ import annotations
@@ -27,17 +31,21 @@ from designer.demands.plain import from_plain
 from designer.demands.terms import Terms
 from designer.engines.watch import Watch
 from designer.proof.compare import same_program
+from designer.proof.vector import Vector
 from designer.roads.product import as_independent
 from designer.roads.typegraph.bases import OWN, ZERO, Base, kind, outside_scope
 from designer.roads.typegraph.cases import Cases, cases_program
 from designer.roads.typegraph.decided import Decided, decide
-from designer.roads.typegraph.evidence import Claim, read_claim
+from designer.roads.typegraph.evidence import Claim, read_bound, read_claim
 from designer.roads.typegraph.fibers import Fibers, Lengths, fibers
+from designer.roads.typegraph.lotteries import Bound, Opened, lottery_program, on_average
 from designer.roads.typegraph.mechanism import unrolled
+from designer.roads.typegraph.mixing import rule_of, uncovered
 from designer.roads.typegraph.paths import along
 from designer.roads.typegraph.pots import least_pot
 from designer.roads.typegraph.prices import better, prices
 from designer.roads.typegraph.road import TypeGraph, in_every_case
+from designer.roads.typegraph.torn import Torn, even_scope, fault, scope_at
 from designer.roads.typegraph.totals import Figures, spending, totals_program
 from designer.setting.exact import number
 from designer.setting.setting import IntArray, Setting
@@ -83,15 +91,11 @@ class _Check:
             if verdict != "possible":
                 raise Rejected("listed rows cannot show that the goal has no end")
         decided = decide(self.setting, self.terms.decision, self.watch)
+        if "cuts" in reduction:
+            return self._cuts(decided, reduction)
         decided = decided.choosing(unrolled(reduction["ties"], len(decided.tied)))
-        parties = range(len(self.setting.parties))
-        works = [fibers(self.setting, self.terms, decided, i) for i in parties]
-        if len(reduction["parties"]) != len(works):
-            raise Rejected("the reduction does not fit the parties")
-        bases = [
-            _measured(work, read_claim(plain, work), self.watch)
-            for work, plain in zip(works, reduction["parties"], strict=True)
-        ]
+        works = self._works(decided)
+        bases = self._bases(works, reduction)
         if listed:
             self._pots(works, bases, number(self.document["stages"][0]["value"]))
             return []
@@ -101,6 +105,47 @@ class _Check:
             if verdict == "possible":
                 self._pots(works, bases, None)
         return self._totals(decided, works, bases)
+
+    def _works(self, decided: Decided) -> list[Fibers]:
+        parties = range(len(self.setting.parties))
+        return [fibers(self.setting, self.terms, decided, i) for i in parties]
+
+    def _bases(self, works: list[Fibers], reduction: dict[str, Any]) -> list[Base]:
+        """The payments and bounds of the paths that a document gives."""
+        if len(reduction["parties"]) != len(works):
+            raise Rejected("the reduction does not fit the parties")
+        return [
+            _measured(work, read_claim(plain, work), self.watch)
+            for work, plain in zip(works, reduction["parties"], strict=True)
+        ]
+
+    def _cuts(self, decided: Decided, reduction: dict[str, Any]) -> list[str]:
+        """The document's program is that of the listed paths, and its point has a table."""
+        why = uncovered(self.setting, self.terms, decided, limit=None)
+        if why is not None:
+            raise Rejected(f"paths are listed for open lotteries, but {why}")
+        opened = Opened(self.setting, self.terms, self._works(decided))
+        if len(reduction["cuts"]) != len(opened.works):
+            raise Rejected("the reduction does not fit the parties")
+        bounds = [
+            [_followed_cuts(found, read_bound(plain, found)) for plain in listed]
+            for found, listed in zip(opened.torn, reduction["cuts"], strict=True)
+        ]
+        program = lottery_program(self.setting, self.terms, opened, bounds)
+        faults = same_program(self.document, program)
+        if faults or self.document["verdict"] == "impossible":
+            return faults
+        written = self.document["primal"]
+        tops = [_whole(top) for top in written["num"]]
+        primal = Vector(
+            _whole(written["den"]), tuple(written["idx"]), tuple(tops), program.matrix.columns
+        )
+        works = self._works(rule_of(program, opened, primal))
+        for i, found in enumerate(self._bases(works, reduction)):
+            if found.most is not None and primal.value(i) > found.most:
+                name = self.setting.parties[i].name
+                raise Rejected(f"{name} cannot be made to pay what the point says")
+        return []
 
     def _rows(self, plain: Any) -> list[str]:
         """The document's program is the listed rows of the full one."""
@@ -173,6 +218,24 @@ class _Check:
         if (better(decided, priced) != decided.choices).any():
             return ["another choice at a tied profile may do better"]
         return []
+
+
+def _followed_cuts(found: Torn, bound: Bound) -> Bound:
+    """The same paths, if every one of them bounds what the party pays."""
+    work = found.work
+    name = work.setting.parties[work.party].name
+    held = kind(work)
+    if held not in ("cases", "types") or on_average(work):
+        raise Rejected(f"no paths bound what {name} pays")
+    if (bound.root == OWN) != (held == "cases"):
+        raise Rejected(f"the paths of {name} do not end where participation holds it")
+    scope = even_scope(found)
+    wrong = fault(work, bound.even, bound.root, scope)
+    scope = scope_at(work, found.others[bound.graph])
+    wrong = wrong or fault(work, bound.trees, bound.root, scope)
+    if wrong is not None:
+        raise Rejected(wrong)
+    return bound
 
 
 def _measured(work: Fibers, claim: Claim, watch: Watch) -> Base:

@@ -15,7 +15,7 @@ import numpy as np
 import numpy.typing as npt
 
 from designer.engines.watch import Watch
-from designer.setting.setting import IntArray, Setting
+from designer.setting.setting import IntArray, Setting, integers
 
 INNER = 1 << 16
 """Profiles of the inner parties held at once."""
@@ -34,9 +34,10 @@ class Decided:
     at       int, shape (N,): which of them, by profile
     tied     int, shape (M,): the tied profiles, ascending
     torn     bool, shape (M, K): the options that are efficient there
-    choices  int, shape (M,): the option taken there
+    choices  int, shape (M,): the option taken there, the likeliest one of a lottery
     kinds    int, shape (P - K, 1 + K): behind the palette's entries for ties, the option taken
-             and which are efficient
+             and which are efficient; empty with lotteries
+    mixed    whether lotteries are taken at tied profiles: an entry is then one lottery
     """
 
     palette: IntArray
@@ -46,6 +47,7 @@ class Decided:
     torn: Mask
     choices: Indices
     kinds: Indices
+    mixed: bool = False
 
     def choosing(self, choices: IntArray) -> Decided:
         """The same rule with other choices at the tied profiles.
@@ -64,6 +66,34 @@ class Decided:
         at[self.tied] = options + place.ravel()
         palette = np.concatenate([certain, certain[kinds[:, 0]]])
         return Decided(palette, 1, at, self.tied, self.torn, choices.astype(np.int64), kinds)
+
+    def mixing(self, lotteries: IntArray, den: int, of: IntArray) -> Decided:
+        """The same rule with lotteries at the tied profiles.
+
+        lotteries  int, shape (L, K), over den      of  int, shape (M,): which one is taken
+
+        Raises ValueError for what is no lottery over the options that are efficient there.
+        """
+        options = self.torn.shape[1]
+        if lotteries.shape[1:] != (options,) or of.shape != self.tied.shape:
+            raise ValueError("the lotteries do not fit the tied profiles")
+        if len(of) and not 0 <= int(of.min()) <= int(of.max()) < len(lotteries):
+            raise ValueError("a tied profile names a lottery that is not there")
+        if den < 1 or (lotteries < 0).any() or (lotteries.sum(axis=1) != den).any():
+            raise ValueError("the chances of a lottery do not add up to one")
+        if ((lotteries[of] != 0) & ~self.torn).any():
+            raise ValueError("a lottery at a tied profile is not efficient there")
+        held = integers(lotteries)
+        certain = np.eye(options, dtype=held.dtype) * den
+        likeliest = held.argmax(axis=1).astype(np.int64)
+        # A lottery that is certain is the option itself, as at profiles without ties.
+        sure = held.max(axis=1) == den
+        entry = np.where(sure, likeliest, options + np.arange(len(held)))
+        at = self.at.astype(np.min_scalar_type(options + len(held)))
+        at[self.tied] = entry[of]
+        none = np.zeros((0, options + 1), dtype=np.int64)
+        palette = np.concatenate([certain, held])
+        return Decided(palette, den, at, self.tied, self.torn, likeliest[of], none, True)
 
     def leaning(self, part: int) -> Decided:
         """One part in `part` of every choice at a tie given to the other options there.

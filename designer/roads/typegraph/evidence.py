@@ -11,7 +11,9 @@ import numpy as np
 from designer.roads.typegraph.bases import OWN, ZERO, Base, Flow, Root
 from designer.roads.typegraph.decided import Indices, distinct
 from designer.roads.typegraph.fibers import Fibers
+from designer.roads.typegraph.lotteries import Bound
 from designer.roads.typegraph.mechanism import runs, unrolled
+from designer.roads.typegraph.torn import Torn
 from designer.setting.exact import number, text
 
 
@@ -72,6 +74,54 @@ def read_claim(plain: Any, work: Fibers) -> Claim:
     if flow.den < 1 or len(roots) != types or min(roots) < 0 or any(a < 0 for *_, a in lies):
         raise ValueError("the multipliers do not fit")
     return Claim(0, None, pays, flow)
+
+
+def plain_bound(bound: Bound) -> dict[str, Any]:
+    """Paths listed while lotteries at ties are open; per torn profile a bundle of trees."""
+    both = np.concatenate([bound.even, bound.trees])
+    trees, of = distinct(both, both.shape[1])
+    even, cuts = of[: len(bound.even)], of[len(bound.even) :]
+    bundles: dict[tuple[int, ...], int] = {}
+    torn = []
+    for part in np.split(cuts, np.flatnonzero(np.diff(bound.graph)) + 1) if len(cuts) else ():
+        torn.append(bundles.setdefault(tuple(part.tolist()), len(bundles)))
+    return {
+        "root": bound.root,
+        "trees": trees.tolist(),
+        "even": runs(even),
+        "bundles": [list(bundle) for bundle in bundles],
+        "torn": runs(np.array(torn, dtype=np.int64)),
+    }
+
+
+def read_bound(plain: Any, found: Torn) -> Bound:
+    """The paths that `plain_bound` wrote. Raises ValueError or TypeError for anything else."""
+    types, root = found.work.types, plain["root"]
+    if root != OWN and not (type(root) is int and 0 <= root < types):
+        raise ValueError("the trees have no root")
+    trees = np.array(plain["trees"], dtype=np.int64).reshape(-1, types)
+    if len(trees) and (trees.min() < 0 or trees.max() >= types):
+        raise ValueError("a tree names a type that is not there")
+    bundles = [[_place(tree, len(trees)) for tree in bundle] for bundle in plain["bundles"]]
+    if not all(bundles):
+        raise ValueError("some of the others' reports have no paths")
+    even = [_place(tree, len(trees)) for tree in unrolled(plain["even"], len(found.even)).tolist()]
+    torn = unrolled(plain["torn"], len(found.others)).tolist()
+    torn = [_place(bundle, len(bundles)) for bundle in torn]
+    cuts = [tree for bundle in torn for tree in bundles[bundle]]
+    graph = np.repeat(np.arange(len(torn)), [len(bundles[bundle]) for bundle in torn])
+    return Bound(
+        root,
+        trees[np.array(even, dtype=np.int64)],
+        graph.astype(np.int64),
+        trees[np.array(cuts, dtype=np.int64)],
+    )
+
+
+def _place(value: Any, size: int) -> int:
+    if type(value) is not int or not 0 <= value < size:
+        raise ValueError("a list names what is not there")
+    return value
 
 
 def _whole(written: Any) -> int:

@@ -52,6 +52,7 @@ class Fibers:
     rows   int, shape (G, T): what is decided for each report, by place in the palette
     of     int, shape (R,): the class of each of the others' profiles
     mass   int, shape (G,): the weight of the class (1 where weights differ by own type)
+    only   int, shape (G,): the others' profiles that the classes stand for; None: all of them
     """
 
     setting: Setting
@@ -62,6 +63,7 @@ class Fibers:
     of: Indices
     mass: IntArray
     merged: bool
+    only: Indices | None = None
 
     @property
     def classes(self) -> int:
@@ -113,7 +115,8 @@ class Fibers:
     def apart(self) -> Indices:
         """Others' profiles by own type as profile numbers, int (R, T); for classes unmerged."""
         grid = np.arange(self.setting.profiles, dtype=np.int64).reshape(self.setting.shape)
-        return np.ascontiguousarray(np.moveaxis(grid, self.party, -1)).reshape(-1, self.types)
+        every = np.ascontiguousarray(np.moveaxis(grid, self.party, -1)).reshape(-1, self.types)
+        return every if self.only is None else every[self.only]
 
     @cached_property
     def _values(self) -> IntArray:
@@ -128,7 +131,7 @@ class Fibers:
     @cached_property
     def leaning(self) -> Fibers | None:
         """The same classes under a rule that leans towards the other choices at ties."""
-        if not len(self.decided.tied):
+        if self.decided.mixed or not len(self.decided.tied):
             return None
         return replace(self, decided=self.decided.leaning(4 * self.reach))
 

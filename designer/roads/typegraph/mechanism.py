@@ -87,7 +87,7 @@ class GraphMechanism:
             "money": self.setting.money,
             "sign": "pays is paid BY the party; negative amounts are received",
             "decision": self.works[0].terms.decision,
-            "ties": runs(self.decided.choices),
+            **plain_ties(self.decided),
             "den": self.den,
             "pays": [[[text(Fraction(v)) for v in row] for row in p] for p in self._lists()],
             "shifts": [text(shift) for shift in self.shifts],
@@ -113,7 +113,7 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> GraphMechanism:
             raise ValueError("the decision must be 'efficient' or 'table'")
         setting = as_independent(setting) or setting
         decided = decide(setting, terms.decision, Watch())
-        decided = decided.choosing(unrolled(plain["ties"], len(decided.tied)))
+        decided = read_ties(plain, decided)
         works = tuple(fibers(setting, terms, decided, i) for i in range(len(setting.parties)))
         pays = tuple(
             np.array([[number(v) for v in row] for row in table], dtype=object)
@@ -125,6 +125,38 @@ def from_plain(plain: dict[str, Any], setting: Setting) -> GraphMechanism:
         return GraphMechanism(setting, decided, works, pays, int(plain["den"]), shifts)
     except (KeyError, TypeError, IndexError, AttributeError) as error:
         raise ValueError(f"not a table document: {error!r}") from None
+
+
+def plain_ties(decided: Decided) -> dict[str, Any]:
+    """What is taken at tied profiles: `ties`, or `lotteries` where some are no sure choices.
+
+    Readers that know `ties` alone find none of it, and refuse.
+    """
+    if not decided.mixed:
+        return {"ties": runs(decided.choices)}
+    taken = decided.palette[decided.at[decided.tied]]
+    found: dict[tuple[int, ...], int] = {}
+    of = [found.setdefault(tuple(int(v) for v in row), len(found)) for row in taken.tolist()]
+    return {
+        "lotteries": {
+            "den": text(Fraction(decided.den)),
+            "rows": [[text(Fraction(v)) for v in row] for row in found],
+            "of": runs(np.array(of, dtype=np.int64)),
+        }
+    }
+
+
+def read_ties(plain: dict[str, Any], decided: Decided) -> Decided:
+    """The rule with what `plain_ties` wrote. Raises ValueError or TypeError otherwise."""
+    if "lotteries" not in plain:
+        return decided.choosing(unrolled(plain["ties"], len(decided.tied)))
+    given = plain["lotteries"]
+    den = number(given["den"])
+    rows = [[number(v) for v in row] for row in given["rows"]]
+    if den.denominator != 1 or any(v.denominator != 1 for row in rows for v in row):
+        raise ValueError("a lottery is written in whole parts")
+    lotteries = np.array([[int(v) for v in row] for row in rows], dtype=object)
+    return decided.mixing(lotteries, int(den), unrolled(given["of"], len(decided.tied)))
 
 
 def runs(values: IntArray) -> list[list[int]]:

@@ -1,8 +1,9 @@
 """One walk down the type-graph road: decide, find the paths, settle what is left, and back.
 
 Where profiles are tied the walk starts with the first option listed, and changes choices as
-the multipliers ask until they prove that no choice does better. Should they never, the plain
-road takes over where it can.
+the multipliers ask until they prove that no choice does better. Should they not soon, the
+choices are opened to lotteries (`mixing.py`); where these are not looked for, or not found, the
+plain road takes over if it can.
 """
 
 from __future__ import annotations
@@ -24,21 +25,24 @@ from designer.roads.settled import GoalResult, Settled
 from designer.roads.typegraph.bases import OWN, Base, Cycle, TooBig, base
 from designer.roads.typegraph.cases import Cases, cases_program
 from designer.roads.typegraph.decided import Decided, decide
-from designer.roads.typegraph.evidence import plain_base
+from designer.roads.typegraph.evidence import plain_base, plain_bound
 from designer.roads.typegraph.fibers import Fibers, fibers
 from designer.roads.typegraph.mechanism import GraphMechanism, runs
+from designer.roads.typegraph.mixing import Mixing, Unsettled, first_roots, uncovered
 from designer.roads.typegraph.paths import trail
 from designer.roads.typegraph.pots import least_pot
 from designer.roads.typegraph.prices import better, prices
 from designer.roads.typegraph.road import in_every_case
 from designer.roads.typegraph.totals import Figures, spending, totals_program
 from designer.setting.profiles import strides
-from designer.setting.setting import Setting
+from designer.setting.setting import IntArray, Setting
 
 TABLE_UP_TO = 200_000
 """Profiles up to which the whole table is made at once."""
 ROUNDS = 8
 """Times that choices at tied profiles are changed before the plain road takes over."""
+FIRST = 3
+"""Times that they are changed before lotteries are looked for, where they can be."""
 
 
 class Torn(Exception):  # noqa: N818 - not an error: another road may go there
@@ -65,6 +69,7 @@ class Walk:
         self.goal = terms.goals[0]
         self.cases = Cases(())
         self.seconds: dict[str, float] = {}
+        self.bases: list[Base] | None = None
 
     def walk(self) -> Settled:
         """Decide, and change the choices at ties until they are proved best."""
@@ -72,20 +77,32 @@ class Walk:
             since = time.perf_counter()
             decided = decide(self.setting, self.terms.decision, self.watch)
             self._spent("decide", since)
-            seen: set[bytes] = set()
-            while len(seen) < ROUNDS and decided.choices.tobytes() not in seen:
-                seen.add(decided.choices.tobytes())
-                found = self.attempt(decided)
-                if found.settled is not None:
-                    return found.settled
-                if found.choices is None:
-                    break
-                decided = found.choices
-            raise Torn("lotteries where several options are efficient may do better")
+            return self._choose(decided)
         except (Torn, TooBig) as reason:
             return self._elsewhere(str(reason))
         except Stopped as stop:
             return self._undecided(f"{stop.reason}; {stop.remedy}")
+
+    def _choose(self, decided: Decided) -> Settled:
+        """Change choices at ties, then open them to lotteries. Raises Torn, TooBig."""
+        first, seen = decided, list[IntArray]()
+        why = uncovered(self.setting, self.terms, decided)
+        while len(seen) < ROUNDS and not any((decided.choices == one).all() for one in seen):
+            seen.append(decided.choices)
+            found = self.attempt(decided)
+            if found.settled is not None:
+                return found.settled
+            if found.choices is None:
+                break
+            decided = found.choices
+            if why is None and len(seen) == FIRST:
+                break
+        if why is None:
+            try:
+                return self._mixed(first, seen)
+            except Unsettled as reason:
+                why = str(reason)
+        raise Torn(f"lotteries where several options are efficient may do better, and {why}")
 
     def attempt(self, decided: Decided) -> Found:
         """What one choice at the tied profiles leads to."""
@@ -103,6 +120,7 @@ class Walk:
                 return self._contradiction(decided, found)
             bases.append(found)
         self._spent("paths", since)
+        self.bases = bases
         if in_every_case(self.terms):
             since = time.perf_counter()
             least, profile = least_pot(works, bases, self.watch)
@@ -214,6 +232,31 @@ class Walk:
         # Where pots are asked case by case it is the greatest table that fills them.
         greatest = in_every_case(self.terms)
         return Found(self._with_table(settled, decided, works, bases, None if greatest else paid))
+
+    # -- lotteries at ties -----------------------------------------------------------------
+
+    def _mixed(self, decided: Decided, seen: list[IntArray]) -> Settled:
+        """The best lotteries at ties, beginning with choices that were tried. Raises Unsettled."""
+        search = Mixing(self.setting, self.terms, decided, self.engine, self.watch, self.seconds)
+        found = search.settle(first_roots(search.opened.works, self.bases), seen)
+        outcome = found.outcome
+        status = {"optimal": "possible", "infeasible": "impossible"}.get(
+            outcome.status, "unbounded"
+        )
+        value = outcome.value if status == "possible" else None
+        result = GoalResult(self.goal, value, outcome.proved, dual=outcome.dual)
+        reduction: dict[str, object] = {
+            "road": "type-graph",
+            "cuts": [[plain_bound(bound) for bound in bounds] for bounds in found.bounds],
+        }
+        if found.decided is not None:
+            reduction["parties"] = [plain_base(base) for base in found.bases]
+        settled = self._settled(status, found.program, outcome, result, reduction)
+        if status != "possible" or found.decided is None or outcome.primal is None:
+            return settled
+        paid = [outcome.primal.value(i) for i in range(len(found.bases))]
+        works, bases = list(found.works), list(found.bases)
+        return self._with_table(settled, found.decided, works, bases, paid)
 
     # -- home ----------------------------------------------------------------------------
 
