@@ -34,8 +34,11 @@ tidy stage costs many times the answer itself.
 """
 
 
-SMALL_UP_TO = 600
+SMALL_UP_TO = 150
 """Payments up to which the plain road takes a few milliseconds: no reduction is quicker."""
+
+SEARCHED_UP_TO = 1_000
+"""The same where the reduction would have to search for rules, one program after the other."""
 
 CELLS_UP_TO = 5_000_000
 """Payment and decision columns up to which the plain program is built (about 20 GiB)."""

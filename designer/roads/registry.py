@@ -109,7 +109,8 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
     reasons = _reasons(setting, terms)
     for road, (_, reason) in zip(ROADS, reasons, strict=True):
         if reason is None:
-            return Choice(road, setting, terms)
+            small = road.name == "interim" and _searched_longer(setting, terms)
+            return Choice(PLAIN if small else road, setting, terms, small)
     raise UsageError(
         [
             Mistake(
@@ -121,6 +122,13 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
             )
         ]
     )
+
+
+def _searched_longer(setting: Setting, terms: Terms) -> bool:
+    """Whether the interim road would search for rules for longer than the plain road takes."""
+    from designer.roads.interim.multiplier import direct
+
+    return _payments(setting) <= full.SEARCHED_UP_TO and not direct(setting, terms)
 
 
 def _forced(name: str, reasons: dict[str, str | None]) -> Road:

@@ -129,6 +129,11 @@ def sides(setting: Setting, terms: Terms) -> tuple[Side, ...] | None:
     return tuple(found)
 
 
+def direct(setting: Setting, terms: Terms) -> bool:
+    """Whether no rules have to be searched for: they are given, or one multiplier finds them."""
+    return terms.decision == "table" or sides(setting, terms) is not None
+
+
 def _order(party: Party, own: Line) -> tuple[int, ...] | None:
     """From the best-off to the worst-off type, whatever the rule; None if that depends on it.
 
