@@ -1,9 +1,10 @@
-"""Which way to count what a rule takes: the cheapest of five, all exact.
+"""Which way to count what a rule takes: the cheapest of six, all exact.
 
 blocks   a pass over all profiles              any setting
 halves   pairs of half-profiles                two to four options
 sums     distributions of sums                 two options, sums of small range
 items    products of cumulative weights        every option concerns at most one party
+units    sums of such products                 options are all sets of some sizes of parties
 alike    one party for several, by multisets   parties of equal index and weights
 """
 
@@ -14,7 +15,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from designer.engines.watch import Stopped, Watch
-from designer.roads.interim import alike, blocks, halves, items, sums
+from designer.roads.interim import alike, blocks, halves, items, sums, units
 from designer.roads.interim.additive import additive, words
 from designer.roads.interim.rule import Counts, Index, Rule, welfare_index
 from designer.setting.setting import Setting
@@ -46,6 +47,8 @@ def count(setting: Setting, rule: Rule, lead: int | None, watch: Watch) -> Count
     way = _way(setting, rule, lead)
     if way == "alike":
         return alike.count(setting, rule, lead, watch)
+    if way == "units":
+        return units.count(setting, rule, watch)
     if way == "items":
         return items.count(setting, rule, watch)
     if way == "sums":
@@ -87,6 +90,7 @@ def _way(setting: Setting, rule: Rule, lead: int | None) -> str:
         ways["blocks"] *= 3 * len(words(np.zeros(1, dtype=object), additive(rule).reach)) - 2
     if min(ways.values()) > QUICK and lead is None:
         ways |= {"sums": sums.work(setting, rule), "items": items.work(setting, rule)}
+        ways["units"] = units.work(setting, rule)
     if min(ways.values()) > QUICK:
         ways["alike"] = alike.work(setting, rule, lead)
     way = min(ways, key=lambda name: ways[name])
@@ -104,6 +108,8 @@ def tied(setting: Setting, rule: Rule, counts: Counts, watch: Watch) -> bool:
     """
     if not rule.indices:
         return False
+    if _way(setting, rule, None) == "units":
+        return units.count(setting, rule, watch, last=True).totals() != counts.totals()
     options = len(setting.options)
     nothing = tuple(np.zeros((n, options), dtype=np.int64) for n in setting.shape)
     later = Rule((*rule.indices, Index(nothing, np.arange(options, dtype=np.int64))))
@@ -129,4 +135,5 @@ def too_many(setting: Setting, decision: str) -> bool:
     efficient = Rule((welfare_index(setting),))
     ways = [items.work(setting, efficient)]
     ways += [sums.work(setting, efficient), alike.work(setting, efficient, None)]
+    ways.append(units.work(setting, efficient))
     return min(ways) > MOST

@@ -18,6 +18,7 @@ from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.live import Duals, Floats
 from designer.roads.interim.merged import Merged
 from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
+from designer.roads.interim.units import additive_again
 from designer.setting.setting import IntArray, Setting
 
 COARSE = 24
@@ -165,6 +166,7 @@ def rough_rule(setting: Setting, first: tuple[Index, ...], duals: Duals, bits: i
         ((table - table[:, :1])[0] for table in duals.parties), np.zeros(len(setting.options))
     )
     options = np.array([round(v * scale) for v in common], dtype=object)
+    options = additive_again(setting, options)
     parties = tuple(np.rint(table * scale).astype(np.int64).astype(object) for table in level)
     return Rule((*first, Index(parties, options)))
 
