@@ -8,6 +8,7 @@ from designer.demands.terms import Terms
 from designer.setting import exact
 from designer.setting.setting import Setting
 from designer.views.amounts import counted
+from designer.views.numbered import runs, span
 from designer.views.page import Page, heading, listed, paragraph
 from designer.views.sentences import sentences
 
@@ -21,7 +22,10 @@ def scenario(setting: Setting) -> Page:
     """Title, parties, cases, decisions, money and note."""
     from rich.text import Text
 
-    names = ", ".join(f"{party.name} ({party.size})" for party in setting.parties)
+    names = ", ".join(
+        f"{span(run[0].name, run[-1].name)} ({run[0].size}{' each' if len(run) > 1 else ''})"
+        for run in runs(setting.parties, lambda party: party.name, lambda party: party.size)
+    )
     rows = [
         ("parties", f"{names}: {counted(setting.profiles, 'case')}, {_nature(setting)}"),
         ("decisions", _decisions(setting)),
@@ -45,5 +49,10 @@ def _decisions(setting: Setting) -> str:
         worth = Fraction(int(setting.worth[k]), setting.grain)
         notes = [f"outlay {exact.text(outlay)}"] if outlay else []
         notes += [f"worth {exact.text(worth)} to the designer"] if worth else []
-        parts.append(f"{option} ({', '.join(notes)})" if notes else option)
-    return ", ".join(parts)
+        parts.append((option, notes))
+    found = []
+    for run in runs(parts, lambda part: part[0], lambda part: part[1]):
+        (first, notes), (last, _) = run[0], run[-1]
+        more = f" ({', '.join(notes)}{' each' if len(run) > 1 else ''})" if notes else ""
+        found.append(span(first, last) + more)
+    return ", ".join(found)

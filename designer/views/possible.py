@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from fractions import Fraction
 
 from designer.auditing.outcome import Pot, Standing
@@ -13,6 +15,7 @@ from designer.table import OnDemand, Table
 from designer.verdict import Verdict
 from designer.views.amounts import ROUNDED, amount, cell
 from designer.views.grid import Column, Grid
+from designer.views.numbered import runs, span
 from designer.views.page import Page, caution, heading, listed, paragraph
 
 CASES = 12
@@ -166,6 +169,7 @@ def standings(found: Sequence[Standing], rows: int | None = None, saved: bool = 
 
     saved  whether --save is there to write the rest of a long list
     """
+    found = alike_once(found)
     shown = _shown(len(found), STANDINGS if rows is None else rows)
     page: Page = [heading("Type by type, on average when everyone is honest")]
     columns = [
@@ -194,6 +198,20 @@ def standings(found: Sequence[Standing], rows: int | None = None, saved: bool = 
         page.append(Grid(columns, lines, stacked))
     page += _rest(len(found) - shown, "type", "interim.csv" if saved else "", lines)
     return page
+
+
+def alike_once(found: Sequence[Standing]) -> list[Standing]:
+    """Numbered parties in a row with the same lines are shown once, under one name."""
+    parties = [list(lines) for _, lines in itertools.groupby(found, lambda one: one.party)]
+    once: list[Standing] = []
+    for run in runs(
+        parties,
+        lambda lines: lines[0].party,
+        lambda lines: [replace(line, party="") for line in lines],
+    ):
+        name = span(run[0][0].party, run[-1][0].party)
+        once += [replace(line, party=name) for line in run[0]]
+    return once
 
 
 def pots(setting: Setting, pot: Pot) -> Page:
