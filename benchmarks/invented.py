@@ -32,10 +32,18 @@ def weights(party: int, size: int) -> list[int]:
     return [1 + (a * (party + 2) + party) % 3 for a in range(size)]
 
 
-def joint_project(parties: int, types: int, asked: Asked, untied: bool = False) -> Files:
+def odds(party: int, size: int) -> list[int]:
+    """Whole prior weights from 1 to 999, drawn by a fixed seed."""
+    draw = random.Random(party)  # noqa: S311 - a sample, not a secret
+    return [draw.randrange(1, 1000) for _ in range(size)]
+
+
+def joint_project(
+    parties: int, types: int, asked: Asked, untied: bool = False, uneven: bool = False
+) -> Files:
     """Build or leave; the outlay is about what the parties' middle types would bear.
 
-    `untied`: half a crown more, so that no case leaves the choice open.
+    `untied`: half a crown more, so that no case leaves the choice open. `uneven`: as `odds`.
     """
     whole = parties * (5 * types) // 2
     outlay: int | str = f"{2 * whole + 1}/2" if untied else whole
@@ -43,7 +51,7 @@ def joint_project(parties: int, types: int, asked: Asked, untied: bool = False) 
         _party(
             named(i),
             types=ladder(i, types),
-            weights=weights(i, types),
+            weights=odds(i, types) if uneven else weights(i, types),
             value={"build": "type", "leave": 0},
         )
         for i in range(parties)

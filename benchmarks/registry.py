@@ -19,6 +19,15 @@ COMPARED = ("ours", "full", "textbook", "linprog", "highs")
 REDUCED = ("ours", "full", "textbook", "highs", "ipm")
 """Where a road does away with most of the program: beside both methods of the engine."""
 
+ROADS = (*COMPARED, "interim")
+"""Where the plain road and the reduced one take about as long: beside both."""
+
+EITHER = ("ours", "full", "interim")
+"""The same without the baselines."""
+
+METHODS = ("ours", "full", "simplex", "ipm")
+"""Where presolve could do what our reduction does: beside the engine's two methods."""
+
 ENGINES = ("ours", "simplex", "ipm")
 """Beside the engine's two methods alone."""
 
@@ -59,6 +68,8 @@ def _asks(
 FLOOR = _asks("efficient", "bayesian", "none", "ex-post", "exact", "floor")
 MONEY = _asks("efficient", "bayesian", "interim", "ex-post", "exact", "outside-money")
 WHOLE = _asks("efficient", "bayesian", "interim", "ex-post", "exact", "any")
+HELPED = {**WHOLE, "subsidy": "100"}
+HELPED_FLOOR = {**HELPED, "goal": "floor"}
 DEFAULT = _asks("efficient", "bayesian", "none", "ex-post", "exact", "floor", tidy="")
 CERTAIN = _asks("efficient", "dominant", "ex-post", "ex-post", "no-deficit", "outside-money")
 MEAN = _asks("efficient", "dominant", "interim", "ex-ante", "exact", "outside-money")
@@ -94,8 +105,16 @@ PROBLEMS: tuple[Problem, ...] = (
         smoke=True,
     ),
     Problem(
-        "floor-3x4", "joint project, best floor", _project(3, 4, FLOOR), small=True, smoke=True
+        "floor-3x4",
+        "joint project, best floor",
+        _project(3, 4, FLOOR),
+        ways=ROADS,
+        small=True,
+        smoke=True,
     ),
+    Problem("floor-3x6", "joint project, best floor", _project(3, 6, FLOOR), ways=EITHER),
+    Problem("floor-3x8", "joint project, best floor", _project(3, 8, FLOOR), ways=EITHER),
+    Problem("money-3x6", "least outside money", _project(3, 6, MONEY), ways=EITHER),
     Problem(
         "general-2x3x3",
         "a choice of sites, vector types, most rent",
@@ -104,9 +123,37 @@ PROBLEMS: tuple[Problem, ...] = (
         small=True,
         smoke=True,
     ),
-    Problem("rule-3x4x3", "a choice of sites", _general(3, 4, 3, MONEY), small=True),
+    Problem("general-3x6x3", "most rent", _general(3, 6, 3, RENT), ways=EITHER),
+    Problem("general-3x8x3", "most rent", _general(3, 8, 3, RENT), ways=EITHER),
+    Problem("rule-3x4x3", "a choice of sites", _general(3, 4, 3, MONEY), ways=ROADS, small=True),
+    Problem("rule-3x6x3", "a choice of sites", _general(3, 6, 3, MONEY), ways=EITHER),
+    Problem("rule-3x8x3", "a choice of sites", _general(3, 8, 3, MONEY), ways=EITHER),
+    Problem("item-3x4", "one item", partial(invented.one_item, 3, 4, RENT), ways=EITHER),
+    Problem("item-3x6", "one item", partial(invented.one_item, 3, 6, RENT), ways=EITHER),
+    Problem(
+        "certain-3x6",
+        "honest in every case",
+        _project(3, 6, CERTAIN),
+        ways=("ours", "full", "type-graph"),
+    ),
     Problem(
         "whole-3x25", "everything asked at once", _project(3, 25, WHOLE), "impossible", REDUCED
+    ),
+    Problem("money-3x25", "least outside money", _project(3, 25, MONEY), ways=METHODS),
+    Problem("helped-3x25", "all at once, 100 given", _project(3, 25, HELPED), ways=METHODS),
+    Problem("lifted-3x25", "best floor, 100 given", _project(3, 25, HELPED_FLOOR), ways=METHODS),
+    Problem(
+        "odds-3x25",
+        "all at once, odds up to 999",
+        partial(invented.joint_project, 3, 25, WHOLE, uneven=True),
+        "impossible",
+        METHODS,
+    ),
+    Problem(
+        "odds-money-3x25",
+        "outside money, odds up to 999",
+        partial(invented.joint_project, 3, 25, MONEY, uneven=True),
+        ways=METHODS,
     ),
     Problem("rule-9x10x3", "a choice of sites, 10^9", _general(9, 10, 3, MONEY), ways=("ours",)),
     Problem(
@@ -213,14 +260,20 @@ PROBLEMS: tuple[Problem, ...] = (
         _project(6, 10, MEAN),
         ways=("ours",),
     ),
-    Problem("second-4", "sale, best lottery", _trade(4, SECOND), small=True),
+    Problem("second-4", "sale, best lottery", _trade(4, SECOND), ways=ROADS, small=True),
     Problem("second-30", "sale, best lottery", _trade(30, SECOND)),
     Problem("posted-4", "sale, honest in every case", _trade(4, POSTED), small=True),
     Problem("posted-16", "sale, honest in every case", _trade(16, POSTED)),
     Problem("sale-15", "sale, everything asked at once", _trade(15, WHOLE), expected="impossible"),
     Problem("picked-3", "sale, whole decisions", _trade(3, PICKED), small=True, smoke=True),
     Problem("picked-6", "sale, whole decisions", _trade(6, PICKED)),
-    Problem("item-2x4", "one item, most rent", partial(invented.one_item, 2, 4, RENT), small=True),
+    Problem(
+        "item-2x4",
+        "one item, most rent",
+        partial(invented.one_item, 2, 4, RENT),
+        ways=ROADS,
+        small=True,
+    ),
     Problem("item-3x10", "one item, most rent", partial(invented.one_item, 3, 10, RENT)),
     Problem("item-4x5", "one item, most rent", partial(invented.one_item, 4, 5, RENT)),
     Problem(
