@@ -327,10 +327,9 @@ def _shared_out(
         like = chunk.like
         if like.members[0] in done:
             continue  # the other chunk of the same parties says the same
-        shares = [
-            (chunk.numbers[:, c].astype(object)[:, None] * table).sum(axis=0) // chunk.size
-            for c in range(len(like.rows))
-        ]
+        short = setting.total_weight * chunk.size < ROOM
+        kind: Any = np.int64 if short else object
+        shares = chunk.numbers.T.astype(kind) @ table.astype(kind) // chunk.size
         for party, kinds in zip(like.members, like.kinds, strict=True):
             weights = setting.parties[party].weights
             done[party] = np.array(
