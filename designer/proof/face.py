@@ -61,8 +61,13 @@ def face(lp: LinearProgram, settled: list[Settled]) -> LinearProgram:
     return replace(lp, row_lo=row_lo, row_hi=row_hi, col_lo=col_lo, col_hi=col_hi)
 
 
-def lift(lp: LinearProgram, settled: list[Settled], dual: Vector) -> Vector:
-    """A dual on the face as a dual of `lp` itself, pins included; same value."""
+def lift(
+    lp: LinearProgram, settled: list[Settled], dual: Vector, least: Fraction = Fraction(0)
+) -> Vector:
+    """A dual on the face as a dual of `lp` itself, pins included; same value.
+
+    `least` is an M that the last settled goal needs at least, for columns that `lp` leaves out.
+    """
     rows = dual.fractions()
     columns = reduced_costs(lp, dual).fractions()
     for goal in reversed(settled):
@@ -70,6 +75,7 @@ def lift(lp: LinearProgram, settled: list[Settled], dual: Vector) -> Vector:
         needed = max(
             _needed(lp.row_lo, lp.row_hi, rows, own_rows),
             _needed(lp.col_lo, lp.col_hi, columns, own_columns),
+            least if goal is settled[-1] else Fraction(0),
         )
         if not needed:
             continue

@@ -140,7 +140,7 @@ class _Journey:
             lp = self.work.program().stage(len(self.results) - 1)
             pin = self.work.pin(value)
             if before.dual is not None and not lp.integer.any():
-                self.faces.append(_faced(lp, before.dual, pin, self.work))
+                self.faces.append(faced(lp, before.dual, pin, self.work))
         program = self.work.pose(name)
         self._spent("formulate", since)
         return program
@@ -243,7 +243,7 @@ class _Journey:
         self.seconds[part] = self.seconds.get(part, 0.0) + time.perf_counter() - since
 
 
-def _faced(lp: LinearProgram, dual: Vector, pin: int, work: Formulation) -> Faced:
+def faced(lp: LinearProgram, dual: Vector, pin: int, work: Formulation) -> Faced:
     """A settled goal as the face it leaves, with its pin row."""
     matrix = work.program().matrix
     k = int(matrix.indptr[pin])

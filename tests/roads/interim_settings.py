@@ -122,6 +122,19 @@ def questions(draw: st.DrawFn, max_parties: int = 4) -> tuple[Setting, Terms]:
     return setting, terms
 
 
+def in_order(setting: Setting, terms: Terms, data: st.DataObject) -> tuple[Setting, Terms]:
+    """The question with two or three goals, one after the other."""
+    others = [
+        goal
+        for goal in GOALS
+        if goal != terms.goals[0]
+        and not (goal == "outside-money" and terms.balance == "none")
+        and not (goal == "margin" and terms.ic == "none")
+    ]
+    more = data.draw(st.lists(st.sampled_from(others), min_size=1, max_size=2, unique=True))
+    return setting, replace(terms, goals=(*terms.goals, *more))
+
+
 @st.composite
 def sides(draw: st.DrawFn, setting: Setting) -> Side:
     """Side demands, half of the time none."""

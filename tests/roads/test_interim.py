@@ -27,7 +27,7 @@ from designer.roads.interim.road import Interim
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
 from tests.published.corpus import Query, queries, setting_of
-from tests.roads.interim_settings import questions, settings
+from tests.roads.interim_settings import in_order, questions, settings
 
 
 def both(setting: Setting, terms: Terms) -> tuple[Verdict, Verdict]:
@@ -47,6 +47,20 @@ def test_same_verdict_and_value_as_the_plain_road(question: tuple[Setting, Terms
     assert plain.proved
     assert (ours.status, ours.proved, ours.reason) == (plain.status, True, "")
     assert ours.goal_values == plain.goal_values
+
+
+@runs(max_examples=300, deadline=None)
+@given(questions(max_parties=3), st.data())
+def test_goals_in_order(question: tuple[Setting, Terms], data: st.DataObject) -> None:
+    setting, terms = in_order(*question, data)
+    ours, plain = both(setting, terms)
+    event(plain.status)
+    assert plain.proved
+    assert (ours.status, ours.proved, ours.reason) == (plain.status, True, "")
+    assert ours.goal_values == plain.goal_values
+    document: Any = parse_document(as_bytes(ours.proof))
+    assert recheck(document).holds
+    assert rebuild(setting, document) == []
 
 
 @runs(max_examples=150, deadline=None)
@@ -150,7 +164,7 @@ def mutate(document: dict[str, Any], data: st.DataObject) -> str:
     ways += ["dual"] * 3 + ["exception", "like"]
     way: str = data.draw(st.sampled_from(ways))
     shares, rules = reduction["shares"], reduction["rules"]
-    stage = document["stages"][0]
+    stage = data.draw(st.sampled_from(document["stages"]))
     step = data.draw(st.sampled_from((-1, 1)))
     if way == "share" and shares:
         place = data.draw(st.integers(0, len(shares) - 1))
@@ -202,6 +216,8 @@ def test_changed_documents_are_refused_or_true(
     question: tuple[Setting, Terms], data: st.DataObject
 ) -> None:
     setting, terms = question
+    if data.draw(st.booleans()):
+        setting, terms = in_order(setting, terms, data)
     verdict = pose_terms(setting, terms, path="interim")
     document: Any = parse_document(as_bytes(verdict.proof))
     assert recheck(document).holds
@@ -213,4 +229,5 @@ def test_changed_documents_are_refused_or_true(
     truth = pose_terms(setting, terms_of(document["terms"], setting), path="full")
     assert document["verdict"] == truth.status
     if truth.status == "possible":
-        assert document["stages"][0]["value"] in (None, str(truth.goal_value))
+        told = {stage["goal"]: stage["value"] for stage in document["stages"]}
+        assert told == {name: str(value) for name, value in truth.goal_values.items()}

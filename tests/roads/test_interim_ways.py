@@ -19,7 +19,7 @@ from designer.roads.interim import lies as lazy
 from designer.roads.interim.multiplier import sides
 from designer.roads.interim.rule import Rule, welfare_index
 from designer.setting.setting import Setting
-from tests.roads.interim_settings import invented, lines, questions
+from tests.roads.interim_settings import in_order, invented, lines, questions
 
 
 def agree(setting: Setting, terms: Terms) -> None:
@@ -50,6 +50,27 @@ def test_one_multiplier(question: tuple[Setting, Terms]) -> None:
     setting, terms = question
     assume(sides(setting, terms) is not None)
     agree(setting, terms)
+
+
+@runs(max_examples=150, deadline=None)
+@given(lines(), st.data())
+def test_goals_after_one_multiplier(question: tuple[Setting, Terms], data: st.DataObject) -> None:
+    setting, terms = in_order(*question, data)
+    assume(sides(setting, terms) is not None)
+    agree(setting, terms)
+
+
+@runs(max_examples=150, deadline=None)
+@given(questions(max_parties=3), st.data())
+def test_goals_in_order_with_late_lies(
+    question: tuple[Setting, Terms], data: st.DataObject
+) -> None:
+    setting, terms = in_order(*question, data)
+    lead = data.draw(st.sampled_from([None, *range(len(setting.parties))]))
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(lazy, "ALL_UP_TO", 0)
+        patch.setattr(road, "lead_party", lambda setting: lead)
+        agree(setting, terms)
 
 
 @runs(max_examples=150, deadline=None)

@@ -21,12 +21,12 @@ from typing import Any
 
 import numpy as np
 
-from designer.demands.formulate import Formulation, amounts_of
+from designer.demands.formulate import amounts_of
 from designer.demands.plain import from_plain
 from designer.demands.terms import Terms
 from designer.engines.watch import Interrupted, Watch
 from designer.program.program import Program
-from designer.proof.compare import same_program
+from designer.proof.compare import rebuild, same_program
 from designer.proof.vector import Vector
 from designer.roads.interim.counting import count, counts_of, tied
 from designer.roads.interim.draft import InterimDraft, Lies
@@ -69,7 +69,7 @@ def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str
                 0 <= g < (1 if lead is None else own.shape[lead]) and 0 <= r < len(rules)
                 for g, r in shares
             )
-            and [stage["goal"] for stage in document["stages"]] == list(terms.goals)
+            and _asked(document, terms)
         ):
             return ["the reduction does not fit the scenario"]
     except (KeyError, TypeError, ValueError) as error:
@@ -78,7 +78,7 @@ def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str
     if faults:
         return faults[:1]
     counts = counts_of(own, rules, lead, watch)
-    draft, program = _program(own, terms, lead, lies, [(g, counts[r]) for g, r in shares])
+    draft, program = _program(own, terms, lead, lies, [(g, counts[r]) for g, r in shares], document)
     differences = same_program(document, program)
     if differences:
         return differences
@@ -86,14 +86,29 @@ def _check(setting: Setting, document: dict[str, Any], watch: Watch) -> list[str
         for key, ray in (("primal", False), ("ray", True)):
             if key in document and any(_told(own, terms, draft, document[key], program, ray)):
                 return ["a lie that is not written gains more than the terms allow"]
-    if document["verdict"] == "unbounded" or terms.decision == "table":
+    if terms.decision == "table":
         return []
     if terms.decision == "efficient" and lead is None and len(rules) == 1:
         plain = Rule((welfare_index(own),))
         whole = counts[0] if len(rules[0].indices) == 1 else count(own, plain, None, watch)
         if not tied(own, plain, whole, watch):
             return []  # no other rule is efficient
-    return _better(own, terms, lead, program, _multipliers(document, program), watch)
+    for multipliers in _multipliers(document, program):
+        found = _better(own, terms, lead, program, multipliers, watch)
+        if found:
+            return found
+    return []
+
+
+def _asked(document: dict[str, Any], terms: Terms) -> bool:
+    """Whether the stages are the goals in order: all of them, or up to where it ends early."""
+    names, stages = [stage["goal"] for stage in document["stages"]], document["stages"]
+    if document["verdict"] == "possible":
+        return names == list(terms.goals) and all("dual" in stage for stage in stages)
+    if document["verdict"] == "impossible" and "farkas" not in document:
+        return False
+    first = names == list(terms.goals[: len(names)])
+    return first and bool(names) and all("dual" in stage for stage in stages[:-1])
 
 
 def _read_lies(plain: Any, setting: Setting) -> Lies | None:
@@ -152,8 +167,9 @@ def _program(
     lead: int | None,
     lies: Lies | None,
     columns: list[tuple[int, Counts]],
+    document: dict[str, Any],
 ) -> tuple[InterimDraft, Program]:
-    """The master that the scenario, the terms and the counts give."""
+    """The master that the scenario, the terms and the counts give, pinned at stated values."""
     inner = averaged(terms)
     draft = InterimDraft(
         setting,
@@ -164,12 +180,17 @@ def _program(
         lies=lies,
         chances=terms.side.chances,
     )
-    return draft, Formulation(setting, inner, draft=draft).pose(terms.goals[0])
+    return draft, rebuild(document, setting, inner, draft)
 
 
-def _multipliers(document: dict[str, Any], program: Program) -> Vector:
-    """The multipliers over rows: of the certificate of the only stage, or of impossibility."""
-    return _vector(document.get("farkas") or document["stages"][0]["dual"], program.matrix.rows)
+def _multipliers(document: dict[str, Any], program: Program) -> list[Vector]:
+    """The multipliers over rows: of impossibility, or of every stage that is said to be settled.
+
+    Those that are all 0 bound the goal without looking at decisions.
+    """
+    plain = [document["farkas"]] if "farkas" in document else []
+    plain += [stage["dual"] for stage in document["stages"] if "dual" in stage]
+    return [_vector(vector, program.matrix.rows) for vector in plain if vector["idx"]]
 
 
 def _vector(plain: dict[str, Any], size: int) -> Vector:

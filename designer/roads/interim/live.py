@@ -15,6 +15,7 @@ from designer.engines.floats import floats
 from designer.engines.listening import listening
 from designer.engines.model import load, quiet_highs
 from designer.engines.watch import Watch
+from designer.program.linear import LinearProgram
 from designer.program.program import Program
 from designer.roads.interim.merged import Merged
 from designer.roads.interim.rule import Counts
@@ -59,19 +60,21 @@ class Live:
         self,
         setting: Setting,
         program: Program,
+        lp: LinearProgram,
         lead: int | None,
         classes: tuple[Merged, ...],
     ) -> None:
-        """Load the program of a master without rules."""
+        """Load `lp`, the last stage of the program of a master without rules, or its face."""
         self.setting, self.lead, self.classes = setting, lead, classes
         self.sizes = [n * own.size for n, own in zip(setting.shape, classes, strict=True)]
         self.slices = 1 if lead is None else setting.shape[lead]
-        self.program = floats(program.stage(0))
+        self.program = floats(lp)
         self.model = quiet_highs()
         self.model.setOptionValue("presolve", "off")
         load(self.model, self.program)
         num, den = program.row_scale
-        ratio = np.array([int(n) / int(d) for n, d in zip(num, den, strict=True)])
+        stored = zip(num[: lp.rows], den[: lp.rows], strict=True)
+        ratio = np.array([int(n) / int(d) for n, d in stored])
         self.scale = ratio * np.exp2(self.program.row_exp.astype(np.float64))
         self.base = len(self.program.cost)
         self.start = program.row_axis.start("slice")

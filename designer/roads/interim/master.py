@@ -11,8 +11,12 @@ import numpy as np
 from designer.demands.formulate import Formulation, amounts_of
 from designer.demands.terms import Terms
 from designer.engines.watch import Watch
+from designer.program.linear import LinearProgram
 from designer.program.program import Program
+from designer.proof.face import Settled as Face
+from designer.proof.face import face
 from designer.proof.vector import Vector
+from designer.roads.full import faced
 from designer.roads.interim.counting import count
 from designer.roads.interim.draft import InterimDraft, Lies
 from designer.roads.interim.live import Duals, Floats
@@ -48,6 +52,47 @@ class Prices:
         return Fraction(total, self.den * counts.den)
 
 
+@dataclass(frozen=True, eq=False)
+class Reached:
+    """A settled goal: its value and the natural multipliers that prove it, by row.
+
+    prices  what the multipliers say of decisions; None where there is nothing to decide, or
+            the goal is the same everywhere
+    """
+
+    name: str
+    value: Fraction
+    natural: dict[int, Fraction]
+    prices: Prices | None
+
+    def stored(self, program: Program, rows: int) -> Vector:
+        """The multipliers over the program's own rows, which columns may have scaled anew."""
+        num, den = program.row_scale
+        entries = {
+            row: value * int(den[row]) / int(num[row]) for row, value in self.natural.items()
+        }
+        return Vector.of(entries, rows)
+
+
+@dataclass(frozen=True, eq=False)
+class Posed:
+    """A program up to the goal that is asked now, and the faces that earlier goals leave."""
+
+    draft: InterimDraft
+    program: Program
+    faces: list[Face]
+
+    @property
+    def whole(self) -> LinearProgram:
+        """The last stage, earlier goals pinned."""
+        return self.program.stage(len(self.program.stages) - 1)
+
+    @property
+    def asked(self) -> LinearProgram:
+        """The same on the faces, without the pins."""
+        return face(self.whole, self.faces) if self.faces else self.whole
+
+
 class Master:
     """The growing list of rules, and the programs over them."""
 
@@ -59,6 +104,7 @@ class Master:
         self.lead, self.lies = lead, lies
         self.listed: list[Listed] = []
         self.columns: list[Column] = []
+        self.reached: list[Reached] = []
 
     @property
     def slices(self) -> int:
@@ -66,8 +112,16 @@ class Master:
         return 1 if self.lead is None else self.setting.shape[self.lead]
 
     def first(self) -> tuple[Index, ...]:
-        """The indices that every rule must start with: welfare where efficiency is demanded."""
-        return (welfare_index(self.setting),) if self.terms.decision == "efficient" else ()
+        """The indices that every rule must start with.
+
+        Welfare where efficiency is demanded, and the prices of the last goal before: what is
+        best at those is what that goal leaves to choose among.
+        """
+        first = [welfare_index(self.setting)] if self.terms.decision == "efficient" else []
+        prices = next((goal.prices for goal in reversed(self.reached) if goal.prices), None)
+        if prices is not None:
+            first.append(Index(prices.parties, np.zeros(len(self.setting.options), dtype=object)))
+        return tuple(first)
 
     def count(self, rule: Rule) -> Counts:
         """The exact counts of a rule."""
@@ -96,12 +150,51 @@ class Master:
         return Formulation(self.setting, self.terms, draft=draft)
 
     def program(self, columns: list[Column] | None = None) -> tuple[InterimDraft, Program]:
-        """The draft and the program of the first goal over the listed columns."""
+        """The draft and the program over the listed columns."""
+        posed = self.posed(columns)
+        return posed.draft, posed.program
+
+    def posed(self, columns: list[Column] | None = None) -> Posed:
+        """The program over the listed columns, up to the goal that is asked now."""
         work = self.formulation(columns)
-        program = work.pose(self.terms.goals[0])
+        faces = []
+        for goal in self.reached:
+            program = work.pose(goal.name)
+            if not work.stages[-1].cost.any():
+                continue  # a constant goal needs no pin
+            lp = program.stage(len(program.stages) - 1)
+            pin = work.pin(goal.value)
+            faces.append(faced(lp, goal.stored(program, lp.rows), pin, work))
+        program = work.pose(self.terms.goals[len(self.reached)])
         if not isinstance(work.draft, InterimDraft):
             raise AssertionError("the master writes on an interim draft")
-        return work.draft, program
+        return Posed(work.draft, program, faces)
+
+    def go_on(self, goal: Reached) -> None:
+        """Ask the next goal among the optima of one that is settled: other columns are dropped."""
+        self.reached.append(goal)
+        prices = goal.prices
+        if prices is not None:
+            self.columns = [
+                (g, r)
+                for g, r in self.columns
+                if prices.worth(self.listed[r].counts, g) == prices.slices[g]
+            ]
+
+    def again(self) -> None:
+        """Ask the first goal again, over the columns there are."""
+        self.reached.clear()
+
+
+def beyond(earlier: Prices, later: Prices) -> Fraction:
+    """A multiple of earlier prices beyond which later ones decide ties alone.
+
+    Sums of the earlier index differ by at least 1 / den where they differ at all.
+    """
+    if not any((table != table[:, :1]).any() for table in earlier.parties):
+        return Fraction(0)
+    reach = sum(max(abs(int(v)) for v in table.flat) for table in later.parties)
+    return Fraction((2 * reach + 1) * earlier.den, later.den)
 
 
 def averaged(terms: Terms) -> Terms:

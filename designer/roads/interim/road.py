@@ -20,6 +20,7 @@ from designer.demands.terms import Terms
 from designer.engines.report import Basis, Engine
 from designer.engines.watch import Stopped, Watch
 from designer.program.program import Program
+from designer.proof.face import lift
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
@@ -28,7 +29,16 @@ from designer.roads.interim.certificate import outcome_of
 from designer.roads.interim.counting import TooMany, lead_party, tied, too_many
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.lies import broken, first_lies, with_more
-from designer.roads.interim.master import Master, Prices, averaged, exact_prices, rule_for
+from designer.roads.interim.master import (
+    Master,
+    Posed,
+    Prices,
+    Reached,
+    averaged,
+    beyond,
+    exact_prices,
+    rule_for,
+)
 from designer.roads.interim.mechanism import Mechanism, of_point, rules_to_plain
 from designer.roads.interim.multiplier import optimum, sides
 from designer.roads.interim.near import Hinted, corner_near
@@ -63,10 +73,9 @@ class Interim:
             return "even-handedness ties profiles together"
         if terms.decision == "deterministic":
             return "the decision must be sure at every profile"
-        if len(terms.goals) > 1:
-            return "several goals are asked one after the other"
-        if terms.goals[0] not in GOALS:
-            return f"the goal {terms.goals[0]} is about single profiles"
+        other = next((goal for goal in terms.goals if goal not in GOALS), None)
+        if other is not None:
+            return f"the goal {other} is about single profiles"
         if terms.tidy == "swing":
             return "a tidy table is asked, profile by profile"
         if len(setting.parties) == 1 and terms.balance == "ex-post":
@@ -90,7 +99,7 @@ class _Walk:
         self.setting, self.asked, self.engine, self.watch = setting, terms, engine, watch
         self.terms = averaged(terms)
         self.master = Master(setting, self.terms, None, first_lies(setting), watch)
-        self.goal = terms.goals[0]
+        self.results: list[Reached] = []
         self.seconds: dict[str, float] = {}
         self.search: Search | None = None
         self.wanted: set[int] = set()  # columns that an exact look asked for
@@ -101,9 +110,9 @@ class _Walk:
         try:
             with self._spending("count"):
                 best = self._start()
-            if best is not None:
-                return self._back(*best)
-            step = self._from_within()
+            step = None if best is None else self._reached(*best)
+            if step is None and not self.results:
+                step = self._from_within()
             if step is not None:
                 return step
             while True:
@@ -120,21 +129,31 @@ class _Walk:
         except KeyboardInterrupt:
             return self._undecided("interrupted; run it again to go on")
 
-    def _start(self) -> tuple[InterimDraft, Program, Outcome, list[int]] | None:
+    @property
+    def goal(self) -> str:
+        """The goal that is asked now."""
+        return self.terms.goals[len(self.results)]
+
+    def _start(self) -> tuple[Posed, Outcome, list[int]] | None:
         """A first list of rules; the whole answer where one multiplier finds it."""
         setting, master = self.setting, self.master
         if self.terms.decision == "table":
             self.only = True
             self._list(Rule(()))
             return None
-        found = sides(setting, self.terms)
+        # A later goal `outside-money` leaves the subsidy unknown from the start (convention 11).
+        unknown = "outside-money" in self.terms.goals[1:]
+        found = None if unknown else sides(setting, self.terms)
         if found is not None:
             with suppress(TooMany):
                 best = optimum(setting, self.terms, found, master.count)
                 columns = [master.add(listed)[0] for _, listed in best.shares]
-                draft, program = master.program()
-                outcome = outcome_of(setting, self.terms, found, best, draft, program)
-                return draft, program, outcome, columns
+                if len(self.terms.goals) > 1 and self.terms.decision == "efficient":
+                    plain = Rule(master.first())
+                    self.only = not tied(setting, plain, master.count(plain), self.watch)
+                posed = master.posed()
+                outcome = outcome_of(setting, self.terms, found, best, posed.draft, posed.program)
+                return posed, outcome, columns
         if self.terms.decision == "efficient":
             rule = Rule(master.first())
             counts = master.count(rule)
@@ -196,9 +215,10 @@ class _Walk:
         """Settle the master over chosen columns exactly; None if rules or lies came to light."""
         master = self.master
         with self._spending("formulate"):
-            draft, program = master.program([master.columns[j] for j in chosen])
+            posed = master.posed([master.columns[j] for j in chosen])
+        draft, program = posed.draft, posed.program
         engine = self.engine if basis is None else Hinted(basis)
-        outcome = prove(program.stage(0), engine=engine, watch=self.watch)
+        outcome = prove(posed.asked, engine=engine, watch=self.watch)
         for part, seconds in outcome.seconds.items():
             self.seconds[part] = self.seconds.get(part, 0.0) + seconds
         if outcome.status == "undecided" or not outcome.proved:
@@ -207,14 +227,47 @@ class _Walk:
             if self._told(draft, outcome):
                 return None
             mixed = any(master.listed[master.columns[j][1]].rule.exceptions for j in chosen)
-            if not self.only and not mixed:
+            if not (self.only or mixed or self.results):
                 outcome = even_outcome(self.setting, self.terms, master.lead, program, outcome)
             certificate = outcome.farkas if outcome.status == "infeasible" else outcome.dual
             if outcome.status != "unbounded" and certificate is not None and not self.only:
                 prices = exact_prices(self.setting, master.lead, program, certificate, draft.merged)
                 if self._improve(prices):
                     return None
-        return self._back(draft, program, outcome, chosen)
+            return self._reached(posed, outcome, chosen)
+
+    def _reached(self, posed: Posed, outcome: Outcome, chosen: list[int]) -> Settled | None:
+        """Keep what is settled; the answer, or None where another goal is to be asked."""
+        master = self.master
+        if outcome.status != "optimal" or outcome.value is None or outcome.dual is None:
+            return self._back(posed, outcome, chosen)
+        program, dual = posed.program, outcome.dual
+        earlier = next((goal.prices for goal in reversed(self.results) if goal.prices), None)
+
+        def prices_of(vector: Vector) -> Prices | None:
+            if self.only:
+                return None
+            return exact_prices(self.setting, master.lead, program, vector, posed.draft.merged)
+
+        if posed.faces:
+            here = prices_of(dual)
+            least = Fraction(0) if earlier is None or here is None else beyond(earlier, here)
+            dual = lift(posed.whole, posed.faces, dual, least)
+        num, den = program.row_scale
+        natural = {
+            row: value * int(num[row]) / int(den[row]) for row, value in dual.fractions().items()
+        }
+        more = len(self.results) + 1 < len(self.terms.goals)
+        prices = prices_of(dual) if more and program.stages[-1].cost.any() else None
+        goal = Reached(self.goal, outcome.value, natural, prices)
+        self.results.append(goal)
+        if not more:
+            return self._back(posed, outcome, chosen)
+        master.columns = [master.columns[j] for j in chosen]
+        master.go_on(goal)
+        self.search = None  # its rows are out of date
+        self.wanted.clear()
+        return None
 
     def _told(self, draft: InterimDraft, outcome: Outcome) -> bool:
         """Write lies that the point tells although they are not written yet; whether any."""
@@ -229,6 +282,8 @@ class _Walk:
         if not any(pairs for lies in found for pairs in lies):
             return False
         self.search = None  # its rows are out of date
+        self.results.clear()
+        master.again()
         groups = alike_parties(self.setting, self.terms, master.lead)
         for lies in found:
             master.lies = with_more(master.lies, even_lies(groups, lies))
@@ -245,31 +300,28 @@ class _Walk:
             self.wanted.update(master.add(Listed(rule, counts), better))
         return bool(better)
 
-    def _back(
-        self, draft: InterimDraft, program: Program, outcome: Outcome, chosen: list[int]
-    ) -> Settled:
+    def _back(self, posed: Posed, outcome: Outcome, chosen: list[int]) -> Settled:
         """The answer on the full program: a mechanism, and the master that proves it."""
         words: dict[str, Status] = {"optimal": "possible", "infeasible": "impossible"}
         status = words.get(outcome.status, "unbounded")
         keep, primal, ray = self._kept(outcome, chosen)
-        final = program
+        final = posed
         if len(keep) < len(chosen):
             with self._spending("formulate"):
-                draft, final = self.master.program([self.master.columns[j] for j in keep])
+                final = self.master.posed([self.master.columns[j] for j in keep])
+        goals = [
+            GoalResult(goal.name, goal.value, True, dual=goal.stored(final.program, stage.rows))
+            for goal, stage in zip(self.results, final.program.stages, strict=False)
+        ]
+        if status != "possible":
+            goals.append(GoalResult(self.goal, None, outcome.proved))
         settled = Settled(
             status=status,
             path="interim",
-            program=final,
-            goals=(
-                GoalResult(
-                    self.goal,
-                    outcome.value if status == "possible" else None,
-                    outcome.proved,
-                    dual=_restored(outcome.dual, program, final),
-                ),
-            ),
+            program=final.program,
+            goals=tuple(goals),
             primal=primal,
-            farkas=_restored(outcome.farkas, program, final),
+            farkas=_restored(outcome.farkas, posed.program, final.program),
             ray=ray,
             engine=outcome.engine,
             seconds=self.seconds,
@@ -278,7 +330,7 @@ class _Walk:
         if status != "possible" or primal is None:
             return settled
         with self._spending("table"):
-            mechanism = self._mechanism(draft, primal, keep)
+            mechanism = self._mechanism(final.draft, primal, keep)
             table = mechanism.table() if self.setting.profiles <= TABLE_UP_TO else None
         return replace(settled, mechanism=mechanism, table=table)
 
@@ -336,11 +388,12 @@ class _Walk:
 
     def _undecided(self, reason: str) -> Settled:
         _, program = self.master.program([])
+        goals = [GoalResult(goal.name, goal.value, True) for goal in self.results]
         return Settled(
             status="undecided",
             path="interim",
             program=program,
-            goals=(GoalResult(self.goal, None, False, reason=reason),),
+            goals=(*goals, GoalResult(self.goal, None, False, reason=reason)),
             reason=reason,
             seconds=self.seconds,
         )

@@ -28,8 +28,10 @@ class Search:
     def __init__(self, master: Master, watch: Watch) -> None:
         """Load the master's rows; its listed rules come in as columns."""
         self.master, self.watch = master, watch
-        draft, program = master.program([])
-        self.live = Live(master.setting, program, master.lead, draft.merged)
+        posed = master.posed([])
+        self.live = Live(
+            master.setting, posed.program, posed.asked, master.lead, posed.draft.merged
+        )
         self.columns: list[int] = []
 
     def run(self) -> list[int]:
