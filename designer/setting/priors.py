@@ -68,8 +68,7 @@ def _own_prior(section: Section, size: int | None) -> tuple[int, ...] | None:
             weights.append(value)
     if len(section.report) > before:
         return None
-    total = sum(weights)
-    if key == "prior" and total != 1:
+    if key == "prior" and (total := sum(weights)) != 1:
         section.report.add(
             section.at(key),
             f"weights that sum to {exact.text(Fraction(total))}",

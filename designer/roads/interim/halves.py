@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 import numpy.typing as npt
@@ -31,7 +32,11 @@ Ints = npt.NDArray[np.int64]
 
 def halves(setting: Setting, lead: int | None) -> tuple[tuple[int, ...], tuple[int, ...]]:
     """The parties on the left (the lead among them) and on the right, for the least work."""
-    shape = setting.shape
+    return _split(setting.shape, lead)
+
+
+@lru_cache(maxsize=16)
+def _split(shape: tuple[int, ...], lead: int | None) -> tuple[tuple[int, ...], tuple[int, ...]]:
     ways: dict[int, tuple[int, ...]] = {1: ()} if lead is None else {shape[lead]: (lead,)}
     for index, size in enumerate(shape):
         if index != lead:
@@ -40,7 +45,8 @@ def halves(setting: Setting, lead: int | None) -> tuple[tuple[int, ...], tuple[i
                 **ways,
             }
     slices = 1 if lead is None else shape[lead]
-    left = min(ways.items(), key=lambda way: (way[0] + slices * (setting.profiles // way[0]), way))
+    whole = math.prod(shape)
+    left = min(ways.items(), key=lambda way: (way[0] + slices * (whole // way[0]), way))
     own = tuple(sorted(left[1]))
     return own, tuple(i for i in range(len(shape)) if i not in own)
 

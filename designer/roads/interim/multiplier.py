@@ -28,6 +28,7 @@ import numpy.typing as npt
 
 from designer.demands.terms import Terms
 from designer.program.linear import IndexArray
+from designer.proof.sparse import narrow
 from designer.roads.interim.lies import Line, line
 from designer.roads.interim.rule import Counts, Index, Listed, Rule, welfare_index
 from designer.setting.setting import IntArray, Party, Setting
@@ -248,7 +249,8 @@ def rule_at(
         shift = own.virtual * (den // own.unit) - side.line.theta * scale
         tables.append(side.value * scale + np.multiply.outer(shift, side.line.slope))
     worth, outlay = setting.worth.astype(object), setting.outlay.astype(object)
-    return Rule((*first, Index(tuple(tables), worth * int(alpha * den) - outlay * scale)))
+    options = narrow(worth * int(alpha * den) - outlay * scale)
+    return Rule((*first, Index(tuple(narrow(t.ravel()).reshape(t.shape) for t in tables), options)))
 
 
 class Rough:
