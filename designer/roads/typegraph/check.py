@@ -36,11 +36,12 @@ from designer.roads.product import as_independent
 from designer.roads.typegraph.bases import OWN, ZERO, Base, kind, outside_scope
 from designer.roads.typegraph.cases import Cases, cases_program
 from designer.roads.typegraph.decided import Decided, decide
-from designer.roads.typegraph.evidence import Claim, read_bound, read_claim
+from designer.roads.typegraph.evidence import Claim, read_claim, read_part
 from designer.roads.typegraph.fibers import Fibers, Lengths, fibers
-from designer.roads.typegraph.lotteries import Bound, Opened, lottery_program, on_average
+from designer.roads.typegraph.listing import rule_of, spelled_base, starts
+from designer.roads.typegraph.lotteries import Bound, Lies, Opened, lottery_program, on_average
 from designer.roads.typegraph.mechanism import unrolled
-from designer.roads.typegraph.mixing import rule_of, uncovered
+from designer.roads.typegraph.mixing import uncovered
 from designer.roads.typegraph.paths import along
 from designer.roads.typegraph.pots import least_pot
 from designer.roads.typegraph.prices import better, prices
@@ -127,11 +128,10 @@ class _Check:
         opened = Opened(self.setting, self.terms, self._works(decided))
         if len(reduction["cuts"]) != len(opened.works):
             raise Rejected("the reduction does not fit the parties")
-        bounds = [
-            [_followed_cuts(found, read_bound(plain, found)) for plain in listed]
-            for found, listed in zip(opened.torn, reduction["cuts"], strict=True)
-        ]
-        program = lottery_program(self.setting, self.terms, opened, bounds)
+        parts = [read_part(plain, opened, i) for i, plain in enumerate(reduction["cuts"])]
+        for found, part in zip(opened.torn, parts, strict=True):
+            _followed_part(found, part)
+        program = lottery_program(self.setting, self.terms, opened, parts)
         faults = same_program(self.document, program)
         if faults or self.document["verdict"] == "impossible":
             return faults
@@ -141,8 +141,20 @@ class _Check:
             _whole(written["den"]), tuple(written["idx"]), tuple(tops), program.matrix.columns
         )
         works = self._works(rule_of(program, opened, primal))
-        for i, found in enumerate(self._bases(works, reduction)):
-            if found.most is not None and primal.value(i) > found.most:
+        if len(reduction["parties"]) != len(works):
+            raise Rejected("the reduction does not fit the parties")
+        values = np.array(primal.numerators(), dtype=object)
+        firsts = iter(starts(program))
+        for i, (work, part) in enumerate(zip(works, parts, strict=True)):
+            if isinstance(part, Lies):
+                first = next(firsts)
+                paid = values[first : first + opened.spelled(i).place.size]
+                base = _spelled(work, spelled_base(opened, i, work, paid, primal.den))
+            else:
+                for _ in part:
+                    next(firsts)
+                base = _measured(work, read_claim(reduction["parties"][i], work), self.watch)
+            if base.most is not None and primal.value(i) > base.most:
                 name = self.setting.parties[i].name
                 raise Rejected(f"{name} cannot be made to pay what the point says")
         return []
@@ -220,22 +232,44 @@ class _Check:
         return []
 
 
-def _followed_cuts(found: Torn, bound: Bound) -> Bound:
-    """The same paths, if every one of them bounds what the party pays."""
+def _followed_part(found: Torn, part: list[Bound] | Lies) -> None:
+    """Every listed path bounds what the party pays; every listed lie is asked about."""
     work = found.work
     name = work.setting.parties[work.party].name
     held = kind(work)
     if held not in ("cases", "types") or on_average(work):
-        raise Rejected(f"no paths bound what {name} pays")
-    if (bound.root == OWN) != (held == "cases"):
-        raise Rejected(f"the paths of {name} do not end where participation holds it")
-    scope = even_scope(found)
-    wrong = fault(work, bound.even, bound.root, scope)
-    scope = scope_at(work, found.others[bound.graph])
-    wrong = wrong or fault(work, bound.trees, bound.root, scope)
-    if wrong is not None:
-        raise Rejected(wrong)
-    return bound
+        if isinstance(part, Lies) or part:
+            raise Rejected(f"no paths bound what {name} pays")
+        return
+    if isinstance(part, Lies):
+        if held != "types":
+            raise Rejected(f"{name} is not held type by type and its payments are spelled")
+        return
+    for bound in part:
+        if (bound.root == OWN) != (held == "cases"):
+            raise Rejected(f"the paths of {name} do not end where participation holds it")
+        wrong = fault(work, bound.even, bound.root, even_scope(found))
+        scope = scope_at(work, found.others[bound.graph])
+        wrong = wrong or fault(work, bound.trees, bound.root, scope)
+        if wrong is not None:
+            raise Rejected(wrong)
+
+
+def _spelled(work: Fibers, found: Base) -> Base:
+    """The payments of a party that is spelled, held against every lie and type."""
+    sums: list[Any] = [0] * work.types
+    rooms = [0] * work.types
+    for start, lengths in work.blocks():
+        stop = start + len(lengths.room)
+        here = found.pays[start:stop]
+        _honest(work, lengths, here)
+        mass = work.mass[start:stop].astype(object)[:, None]
+        sums = [s + p for s, p in zip(sums, (mass * here).sum(axis=0), strict=True)]
+        rooms = _added(rooms, work.shared(start, stop, lengths.room))
+    if any(s > r for s, r in zip(sums, rooms, strict=True)):
+        name = work.setting.parties[work.party].name
+        raise Rejected(f"a type of {name} would rather stay out")
+    return found
 
 
 def _measured(work: Fibers, claim: Claim, watch: Watch) -> Base:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
@@ -11,7 +12,7 @@ import numpy as np
 from designer.roads.typegraph.bases import OWN, ZERO, Base, Flow, Root
 from designer.roads.typegraph.decided import Indices, distinct
 from designer.roads.typegraph.fibers import Fibers
-from designer.roads.typegraph.lotteries import Bound
+from designer.roads.typegraph.lotteries import Bound, Lies, Opened
 from designer.roads.typegraph.mechanism import runs, unrolled
 from designer.roads.typegraph.torn import Torn
 from designer.setting.exact import number, text
@@ -76,7 +77,43 @@ def read_claim(plain: Any, work: Fibers) -> Claim:
     return Claim(0, None, pays, flow)
 
 
-def plain_bound(bound: Bound) -> dict[str, Any]:
+def plain_part(part: list[Bound] | Lies) -> Any:
+    """What a document lists of one party while lotteries at ties are open."""
+    if not isinstance(part, Lies):
+        return [_plain_bound(bound) for bound in part]
+    sets: dict[tuple[tuple[int, ...], ...], int] = {}
+    of, graph = [], part.listed[:, 0]
+    cuts = np.searchsorted(graph, np.arange(int(graph.max(initial=-1)) + 2))
+    pairs = [tuple(pair) for pair in part.listed[:, 1:].tolist()]
+    for start, stop in itertools.pairwise(cuts.tolist()):
+        of.append(sets.setdefault(tuple(sorted(pairs[start:stop])), len(sets)))
+    return {
+        "lies": [[list(pair) for pair in pairs] for pairs in sets],
+        "of": runs(np.array(of, dtype=np.int64)),
+    }
+
+
+def read_part(plain: Any, opened: Opened, party: int) -> list[Bound] | Lies:
+    """What `plain_part` wrote. Raises ValueError or TypeError for anything else."""
+    if isinstance(plain, list):
+        return [_read_bound(bound, opened.torn[party]) for bound in plain]
+    found = opened.spelled(party)
+    types = found.work.types
+    sets = []
+    for lies in plain["lies"]:
+        pairs = [(_place(a, types), _place(b, types)) for a, b in lies]
+        if any(a == b for a, b in pairs):
+            raise ValueError("a lie is the truth")
+        sets.append(pairs)
+    size = sum(count for _, count in plain["of"])
+    if size > len(found.others):
+        raise ValueError("there are more graphs than the others have reports")
+    of = [_place(place, len(sets)) for place in unrolled(plain["of"], size).tolist()]
+    lines = [(g, a, b) for g, place in enumerate(of) for a, b in sets[place]]
+    return Lies(np.array(lines, dtype=np.int64).reshape(-1, 3))
+
+
+def _plain_bound(bound: Bound) -> dict[str, Any]:
     """Paths listed while lotteries at ties are open; per torn profile a bundle of trees."""
     both = np.concatenate([bound.even, bound.trees])
     trees, of = distinct(both, both.shape[1])
@@ -94,8 +131,8 @@ def plain_bound(bound: Bound) -> dict[str, Any]:
     }
 
 
-def read_bound(plain: Any, found: Torn) -> Bound:
-    """The paths that `plain_bound` wrote. Raises ValueError or TypeError for anything else."""
+def _read_bound(plain: Any, found: Torn) -> Bound:
+    """The paths that `_plain_bound` wrote. Raises ValueError or TypeError for anything else."""
     types, root = found.work.types, plain["root"]
     if root != OWN and not (type(root) is int and 0 <= root < types):
         raise ValueError("the trees have no root")

@@ -9,8 +9,8 @@ pay more than the paths allow. The last rounds are exact.
 from __future__ import annotations
 
 import time
+from collections.abc import Sequence
 from dataclasses import dataclass
-from fractions import Fraction
 
 import numpy as np
 
@@ -23,11 +23,18 @@ from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
 from designer.roads.typegraph.bases import OWN, Base, Cycle, Root, TooBig, base, kind
-from designer.roads.typegraph.decided import Decided, Indices
+from designer.roads.typegraph.decided import Decided
 from designer.roads.typegraph.fibers import Fibers, fibers
-from designer.roads.typegraph.lotteries import Bound, Opened, lottery_program, on_average
+from designer.roads.typegraph.listing import (
+    Listed,
+    Spelling,
+    mixed,
+    rule_of,
+    spelled_base,
+    starts,
+)
+from designer.roads.typegraph.lotteries import Opened, Parts, lottery_program, on_average
 from designer.roads.typegraph.road import in_every_case
-from designer.roads.typegraph.torn import Torn, shortest
 from designer.setting.setting import IntArray, Setting
 
 TIES = 12_000
@@ -40,8 +47,8 @@ FINE = 1 << 28
 """The parts into which lotteries are rounded while floats lead the search."""
 FEW = 20
 """A basis is carried over where no more than one row in so many is new."""
-NEAR = 1e-9
-"""What floats may leave of a difference, relative to the largest amount in sight."""
+CELLS = 250_000
+"""Payments by class and type up to which a party is spelled."""
 
 
 class Unsettled(Exception):  # noqa: N818 - not an error: another road may go there
@@ -55,7 +62,7 @@ class Mixture:
     program: Program
     outcome: Outcome
     opened: Opened
-    bounds: list[list[Bound]]
+    parts: Parts
     decided: Decided | None = None
     works: tuple[Fibers, ...] = ()
     bases: tuple[Base, ...] = ()
@@ -74,36 +81,6 @@ def uncovered(
     if limit is not None and len(decided.tied) > limit:
         return f"{len(decided.tied):,} profiles are tied, more than {limit:,}"
     return None
-
-
-@dataclass
-class _Listed:
-    """A bound in the making: its paths, and by key which are there."""
-
-    party: int
-    root: Root
-    even: IntArray
-    graph: Indices
-    trees: IntArray
-    known: set[bytes]
-
-    def add(self, graph: Indices, trees: IntArray) -> int:
-        """List paths that are not there yet; how many."""
-        lines = np.ascontiguousarray(np.column_stack([graph, trees]).astype(np.int64))
-        fresh = []
-        for j, line in enumerate(lines):
-            key = line.tobytes()
-            if key not in self.known:
-                self.known.add(key)
-                fresh.append(j)
-        self.graph = np.concatenate([self.graph, graph[fresh]]).astype(np.int64)
-        self.trees = np.concatenate([self.trees, trees[fresh]]).astype(np.int64)
-        return len(fresh)
-
-    def bound(self, ordered: bool) -> Bound:
-        """As the program takes it, in the order of arrival; `ordered`: by torn profile."""
-        order = np.argsort(self.graph, kind="stable") if ordered else slice(None)
-        return Bound(self.root, self.even, self.graph[order], self.trees[order])
 
 
 class _Started:
@@ -149,7 +126,8 @@ class Mixing:
         self.setting, self.terms, self.decided = setting, terms, decided
         self.engine, self.watch, self.seconds = engine, watch, seconds
         self.opened = Opened(setting, terms, works)
-        self.listed: list[list[_Listed]] = [[] for _ in works]
+        self.listed: list[list[Listed]] = [[] for _ in works]
+        self.spelling: dict[int, Spelling] = {}
         self._last: tuple[Program, Basis] | None = None
 
     def settle(self, roots: list[list[Root]], choices: list[IntArray]) -> Mixture:
@@ -159,10 +137,8 @@ class Mixing:
         choices  choices at ties that are worth looking at first
         """
         for i, places in enumerate(roots):
-            for root in places:
-                self._open(i, root)
-        for shares in self._first(choices):
-            self._list(shares, None)
+            self.listed[i] = [Listed(self.opened.torn[i], root) for root in places]
+        self._begin([bounds for bounds in self.listed if bounds], choices)
         leading = True
         for _ in range(ROUNDS):
             self.watch.tell("lotteries at ties", self._size())
@@ -172,7 +148,7 @@ class Mixing:
             program = self._program(ordered=True)
             outcome = self._prove(program)
             if outcome.status == "infeasible":
-                return Mixture(program, outcome, self.opened, self._bounds())
+                return Mixture(program, outcome, self.opened, self._parts(ordered=True))
             if outcome.primal is None:
                 raise Unsettled("the program over lotteries gave no point")
             found = self._home(program, outcome, outcome.primal)
@@ -181,18 +157,16 @@ class Mixing:
             leading = True
         raise Unsettled("the lotteries where several options are efficient were not settled")
 
-    # -- the paths that are listed -------------------------------------------------------
+    # -- what is listed ------------------------------------------------------------------
 
-    def _open(self, i: int, root: Root) -> _Listed:
-        """A bound on a party, with the paths under the options first listed."""
-        found = self.opened.torn[i]
-        _, tree = shortest(found.work, root)
-        none = np.zeros(0, dtype=np.int64)
-        listed = _Listed(i, root, tree[found.even], none, tree[:0], set())
-        every = np.arange(len(found.others), dtype=np.int64)
-        listed.add(every, tree[found.work.of[found.others]])
-        self.listed[i].append(listed)
-        return listed
+    def _begin(self, listed: Sequence[Sequence[Listed]], choices: list[IntArray]) -> None:
+        """List the paths of some bounds under lotteries to begin with."""
+        for shares, den in self._first(choices):
+            decided = mixed(self.decided, shares, den)
+            for bounds in listed:
+                alone = bounds[0].found.alone(decided)
+                for bound in bounds:
+                    bound.paths_under(alone)
 
     def _first(self, choices: list[IntArray]) -> list[tuple[IntArray, int]]:
         """Lotteries to begin with: given choices, each option in turn, and all alike."""
@@ -211,39 +185,33 @@ class Mixing:
         found.append((torn * (common // counts)[:, None], common))
         return found
 
-    def _list(self, shares: tuple[IntArray, int], paid: list[list[FloatArray]] | None) -> int:
-        """List the shortest paths under lotteries; `paid`: only where more is to be paid."""
-        decided = mixed(self.decided, *shares)
-        added = 0
-        for i, bounds in enumerate(self.listed):
-            if not bounds:
-                continue
-            found = self.opened.torn[i]
-            alone = found.alone(decided)
-            for b, listed in enumerate(bounds):
-                dist, tree = shortest(alone, listed.root)
-                chosen = np.arange(len(found.others), dtype=np.int64)
-                if paid is not None:
-                    reached = _averages(found, dist, alone.den)
-                    near = NEAR * max(1.0, float(abs(reached).max(initial=0)))
-                    chosen = np.flatnonzero(paid[i][b] > reached + near)
-                added += listed.add(chosen, tree[chosen])
-        if self._size() > CUTS:
-            raise Unsettled(f"more than {CUTS:,} paths bind at ties")
-        return added
+    def _each(self) -> list[list[Listed | Spelling]]:
+        """Per party what has payments of its own in the program, in their order."""
+        return [
+            [self.spelling[i]] if i in self.spelling else list(bounds)
+            for i, bounds in enumerate(self.listed)
+        ]
 
     def _size(self) -> int:
-        return sum(len(listed.graph) for bounds in self.listed for listed in bounds)
+        return sum(len(part.lines.rows) for parts in self._each() for part in parts)
 
-    def _bounds(self, ordered: bool = True) -> list[list[Bound]]:
-        return [[listed.bound(ordered) for listed in bounds] for bounds in self.listed]
+    def _parts(self, *, ordered: bool) -> Parts:
+        found: Parts = []
+        for i, bounds in enumerate(self.listed):
+            if i in self.spelling:
+                found.append(self.spelling[i].lies(ordered))
+            else:
+                found.append([bound.bound(ordered) for bound in bounds])
+        return found
 
     # -- rounds --------------------------------------------------------------------------
 
-    def _program(self, ordered: bool) -> Program:
+    def _program(self, *, ordered: bool) -> Program:
+        if self._size() > CUTS:
+            raise Unsettled(f"more than {CUTS:,} paths and lies bind at ties")
         since = time.perf_counter()
-        bounds = self._bounds(ordered)
-        program = lottery_program(self.setting, self.terms, self.opened, bounds)
+        parts = self._parts(ordered=ordered)
+        program = lottery_program(self.setting, self.terms, self.opened, parts)
         self._spent("lotteries", since)
         return program
 
@@ -263,13 +231,21 @@ class Mixing:
         x = report.x
         start = program.column_axis.start("decides")
         chances = x[start : start + len(self.opened.cells)]
-        paid, at = [], _starts(program)
-        for i, bounds in enumerate(self.listed):
-            size = len(self.opened.torn[i].others)
-            paid.append([x[(first := next(at)) : first + size] for _ in bounds])
-        added = self._list((self._rounded(chances), FINE), paid)
+        decided = mixed(self.decided, self._rounded(chances), FINE)
+        added, firsts = 0, iter(starts(program))
+        for parts in self._each():
+            for part, alone in self._alone(parts, decided):
+                first = next(firsts)
+                added += part.near(alone, x[first : first + _width(part)])
         self._spent("paths", since)
         return added > 0
+
+    def _alone(
+        self, parts: list[Listed | Spelling], decided: Decided
+    ) -> list[tuple[Listed | Spelling, Fibers]]:
+        """A party's parts, each with its graphs under a rule."""
+        alone = parts[0].found.alone(decided) if parts else None
+        return [] if alone is None else [(part, alone) for part in parts]
 
     def _carried(self, program: Program) -> Basis | None:
         """The last basis where little was added since: new rows are basic, the others stay."""
@@ -317,10 +293,11 @@ class Mixing:
         if self._last is None or self._last[0].matrix.rows != program.matrix.rows:
             return None
         rows = self._last[1].rows.copy()
-        orders = [np.argsort(listed.graph, kind="stable") for b in self.listed for listed in b]
+        listed = [part.lines for parts in self._each() for part in parts]
+        orders = [lines.order for lines in listed if len(lines.rows)]
         start = 0
         for block in program.row_axis.blocks:
-            if block.family == "paths":
+            if block.family in ("paths", "honest"):
                 part = rows[start : start + block.count]
                 rows[start : start + block.count] = part[orders.pop(0)]
             start += block.count
@@ -331,117 +308,70 @@ class Mixing:
         since = time.perf_counter()
         decided = rule_of(program, self.opened, primal)
         paid = [primal.value(i) for i in range(len(self.setting.parties))]
-        if self._against(program, primal, decided, paid):
-            self._spent("paths", since)
-            return None
+        values = np.array(primal.numerators(), dtype=object)
+        added, firsts, spelled = 0, iter(starts(program)), {}
+        for i, parts in enumerate(self._each()):
+            for part, alone in self._alone(parts, decided):
+                first = next(firsts)
+                mine = values[first : first + _width(part)]
+                added += part.exactly(alone, mine, primal.den)
+                spelled[i] = mine
+        bases: list[Base] = []
         works = [fibers(self.setting, self.terms, decided, i) for i in range(len(paid))]
-        bases = []
-        for i, work in enumerate(works):
-            try:
-                found = base(work, self.watch)
-            except TooBig as reason:
-                raise Unsettled(str(reason)) from None
-            if isinstance(found, Cycle):
-                raise AssertionError("private worths keep an efficient rule honest")
+        for i, work in enumerate(works if not added else []):
+            if i in self.spelling:
+                bases.append(spelled_base(self.opened, i, work, spelled[i], primal.den))
+                continue
+            found = self._based(work)
+            if found is None or (found.most is not None and paid[i] > found.most):
+                self._held_elsewhere(i, found, decided)
+                added += 1
+                break
             bases.append(found)
-            if found.most is not None and paid[i] > found.most:
-                self._held_elsewhere(i, found)
-                self._spent("paths", since)
-                return None
         self._spent("paths", since)
-        bounds = self._bounds()
-        return Mixture(program, outcome, self.opened, bounds, decided, tuple(works), tuple(bases))
+        if added:
+            return None
+        parts_listed = self._parts(ordered=True)
+        return Mixture(
+            program, outcome, self.opened, parts_listed, decided, tuple(works), tuple(bases)
+        )
 
-    def _against(
-        self, program: Program, primal: Vector, decided: Decided, paid: list[Fraction]
-    ) -> int:
-        """List the paths that allow less than a point pays, exactly; how many."""
-        added, at = 0, _starts(program)
-        values = primal.dense()
-        for i, bounds in enumerate(self.listed):
-            found = self.opened.torn[i]
-            alone = found.alone(decided) if bounds else None
-            for listed in bounds:
-                first = next(at)
-                if alone is None:
-                    continue
-                dist, tree = shortest(alone, listed.root)
-                sinks = found.sinks().astype(object)
-                total = (sinks * np.where(sinks != 0, dist, 0)).sum(axis=1)
-                whole = sinks.sum(axis=1) * alone.den
-                short = [
-                    j
-                    for j, (got, den) in enumerate(zip(total, whole, strict=True))
-                    if values[first + j] * den > got
-                ]
-                chosen = np.array(short, dtype=np.int64)
-                added += listed.add(chosen, tree[chosen])
-        return added
+    def _based(self, work: Fibers) -> Base | None:
+        """A party's own best table under a rule; None where there are too many graphs for it."""
+        try:
+            found = base(work, self.watch)
+        except TooBig:
+            return None
+        if isinstance(found, Cycle):
+            raise AssertionError("private worths keep an efficient rule honest")
+        return found
 
-    def _held_elsewhere(self, i: int, found: Base) -> None:
-        """Another type's participation binds: list the paths that end there.
+    def _held_elsewhere(self, i: int, found: Base | None, decided: Decided) -> None:
+        """Another type's participation binds under a rule: list the paths to it, or spell.
 
-        Raises Unsettled where one type alone does not tell.
+        Raises Unsettled where there are too many payments to tell apart.
         """
+        self._last = None
         known = {listed.root for listed in self.listed[i]}
-        if found.flow is not None:
-            fresh = [a for a, share in enumerate(found.flow.roots) if share and a not in known]
-        else:
-            fresh = [] if found.root in known else [int(found.root)]
-        if not fresh:
+        if found is not None and found.tree is not None and found.root not in known:
+            fresh = [Listed(self.opened.torn[i], found.root)]
+            self.listed[i] += fresh
+            self._begin([fresh], [])
+            return
+        graphs = self.opened.spelled(i)
+        if graphs.place.size > CELLS:
             name = self.setting.parties[i].name
             raise Unsettled(f"several types of {name} are worst off together")
-        for a in fresh:
-            self._open(i, a)
-        for shares in self._first([]):
-            self._list(shares, None)
+        self.spelling[i] = Spelling(graphs)
+        self.spelling[i].paths_under(graphs.alone(decided))
 
     def _spent(self, part: str, since: float) -> None:
         self.seconds[part] = self.seconds.get(part, 0.0) + time.perf_counter() - since
 
 
-def _starts(program: Program):  # type: ignore[no-untyped-def]
-    """The first column of each bound's payments at torn profiles, in order."""
-    place = 0
-    for block in program.column_axis.blocks:
-        if block.family == "pays against":
-            yield place
-        place += block.count
-
-
-def _averages(found: Torn, dist: IntArray, den: int) -> FloatArray:
-    """What a party pays on average over its own types, by torn profile."""
-    sinks = found.sinks()
-    counted = np.where(sinks != 0, dist, 0).astype(np.float64) / den
-    weights = sinks.astype(np.float64)
-    averages: FloatArray = (weights * counted).sum(axis=1) / weights.sum(axis=1)
-    return averages
-
-
-def mixed(decided: Decided, shares: IntArray, den: int) -> Decided:
-    """The rule with these lotteries at tied profiles, int (M, K) over den; equal ones once."""
-    found: dict[tuple[int, ...], int] = {}
-    of = [found.setdefault(tuple(row), len(found)) for row in shares.tolist()]
-    lotteries = np.array(list(found), dtype=object)
-    return decided.mixing(lotteries, den, np.array(of, dtype=np.int64))
-
-
-def rule_of(program: Program, opened: Opened, primal: Vector) -> Decided:
-    """The rule with the lotteries of a point of the program.
-
-    Raises ValueError where they are no lotteries over efficient options.
-    """
-    start = program.column_axis.start("decides")
-    stop = start + len(opened.cells)
-    shares = np.zeros(opened.decided.torn.shape, dtype=object)
-    inside = [
-        (j - start, n) for j, n in zip(primal.idx, primal.num, strict=True) if start <= j < stop
-    ]
-    for j, num in inside:
-        row, option = opened.cells[j]
-        shares[row, option] = Fraction(num, primal.den)
-    den = int(np.lcm.reduce([Fraction(v).denominator for v in shares.flat], dtype=object))
-    return mixed(opened.decided, np.vectorize(lambda v: int(v * den), otypes=[object])(shares), den)
+def _width(part: Listed | Spelling) -> int:
+    """How many payments a part has in the program."""
+    return part.found.place.size if isinstance(part, Spelling) else len(part.found.others)
 
 
 def first_roots(works: list[Fibers], bases: list[Base] | None) -> list[list[Root]]:

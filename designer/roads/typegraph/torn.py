@@ -68,7 +68,7 @@ def torn(work: Fibers) -> Torn:
     decided = work.decided
     options = len(work.setting.options)
     ties: Mask = np.asarray(work.rows >= options, dtype=bool)
-    touched = ties.any(axis=1)
+    touched: Mask = np.asarray(ties.any(axis=1), dtype=bool)
     others = np.flatnonzero(touched[work.of])
     at = places(work, others)
     if work.setting.joint is not None:
@@ -82,6 +82,23 @@ def torn(work: Fibers) -> Torn:
     place[place == len(decided.tied)] = 0
     place[decided.tied[place] != at] = -1
     return Torn(work, np.flatnonzero(~touched), others, place, masses)
+
+
+def spelled(found: Torn) -> Torn:
+    """Every graph once: the classes that no tie touches, each by its first, then the torn ones.
+
+    Independent types only: every profile has weight.
+    """
+    work = found.work
+    first = np.unique(work.of, return_index=True)[1][found.even]
+    none = np.full((len(first), work.types), -1, dtype=np.int64)
+    return Torn(
+        work,
+        found.even[:0],
+        np.concatenate([first, found.others]).astype(np.int64),
+        np.concatenate([none, found.place]),
+        np.concatenate([work.mass[found.even], found.masses]),
+    )
 
 
 def places(work: Fibers, others: IntArray) -> Indices:

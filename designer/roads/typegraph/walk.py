@@ -25,8 +25,9 @@ from designer.roads.settled import GoalResult, Settled
 from designer.roads.typegraph.bases import OWN, Base, Cycle, TooBig, base
 from designer.roads.typegraph.cases import Cases, cases_program
 from designer.roads.typegraph.decided import Decided, decide
-from designer.roads.typegraph.evidence import plain_base, plain_bound
+from designer.roads.typegraph.evidence import plain_base, plain_part
 from designer.roads.typegraph.fibers import Fibers, fibers
+from designer.roads.typegraph.lotteries import Lies
 from designer.roads.typegraph.mechanism import GraphMechanism, runs
 from designer.roads.typegraph.mixing import Mixing, Unsettled, first_roots, uncovered
 from designer.roads.typegraph.paths import trail
@@ -41,6 +42,8 @@ TABLE_UP_TO = 200_000
 """Profiles up to which the whole table is made at once."""
 ROUNDS = 8
 """Times that choices at tied profiles are changed before the plain road takes over."""
+PLAIN_UP_TO = 1_000_000
+"""Columns up to which the plain road takes over by itself: minutes, and some 6 GiB."""
 FIRST = 3
 """Times that they are changed before lotteries are looked for, where they can be."""
 
@@ -87,7 +90,8 @@ class Walk:
         """Change choices at ties, then open them to lotteries. Raises Torn, TooBig."""
         first, seen = decided, list[IntArray]()
         why = uncovered(self.setting, self.terms, decided)
-        while len(seen) < ROUNDS and not any((decided.choices == one).all() for one in seen):
+        rounds = ROUNDS if why is not None else FIRST
+        while len(seen) < rounds and not any((decided.choices == one).all() for one in seen):
             seen.append(decided.choices)
             found = self.attempt(decided)
             if found.settled is not None:
@@ -95,8 +99,6 @@ class Walk:
             if found.choices is None:
                 break
             decided = found.choices
-            if why is None and len(seen) == FIRST:
-                break
         if why is None:
             try:
                 return self._mixed(first, seen)
@@ -247,10 +249,13 @@ class Walk:
         result = GoalResult(self.goal, value, outcome.proved, dual=outcome.dual)
         reduction: dict[str, object] = {
             "road": "type-graph",
-            "cuts": [[plain_bound(bound) for bound in bounds] for bounds in found.bounds],
+            "cuts": [plain_part(part) for part in found.parts],
         }
         if found.decided is not None:
-            reduction["parties"] = [plain_base(base) for base in found.bases]
+            reduction["parties"] = [
+                None if isinstance(part, Lies) else plain_base(base)
+                for part, base in zip(found.parts, found.bases, strict=True)
+            ]
         settled = self._settled(status, found.program, outcome, result, reduction)
         if status != "possible" or found.decided is None or outcome.primal is None:
             return settled
@@ -330,10 +335,11 @@ class Walk:
         if likeness.applies(self.asked, self.terms) is None:
             return likeness.travel(self.asked, self.terms, self.engine, self.watch)
         cells = self.asked.profiles * (len(self.asked.parties) + len(self.asked.options))
-        if cells > full.CELLS_UP_TO:
+        if cells > PLAIN_UP_TO:
+            can = "take --path full and several GiB, " if cells <= full.CELLS_UP_TO else ""
             return self._undecided(
                 f"{reason}; the plain program would have {cells:,} columns: "
-                "ask for less, or take fewer types"
+                f"{can}ask for less, or take fewer types"
             )
         return full.travel(self.asked, self.terms, self.engine, self.watch)
 
