@@ -6,18 +6,27 @@ option per member: "to Farm 1", "to Farm 2", ... Tables with an amount per optio
     "to {Farm}"   as the key of all these options
     "to {name}"   in a party's own table: the option with its own name in it
 
+Two places among the farms are "to {Farm} and {Farm}": one option for every pair, each pair once.
+To a farm "to {name} and {Farm}" are those that it is in.
+
 {name} goes before an option written out, and that before {Farm}. In a file without `count`
 braces are characters like any other.
 """
 
 from __future__ import annotations
 
+import itertools
+import math
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 from designer.setting.parties import OWN, Roster
 from designer.setting.reading import Report, describe, join, listing, read_name
+
+MOST = 5_000
+"""Most options of a file with braces. Every party has a worth for each, written out in all that is
+saved; {Farm} three times over among 50 farms would be 19,600."""
 
 _BRACES = re.compile(r"\{([^{}]*)\}")
 
@@ -28,15 +37,20 @@ class Options:
 
     names   every option, in the order listed everywhere
     series  per option written with {GROUP}, as written: the positions of those it stands for
+    within  per such option, by position: the parties put for {GROUP}
     """
 
     names: tuple[str, ...]
     series: Mapping[str, tuple[int, ...]] = field(default_factory=dict)
+    within: Mapping[int, frozenset[str]] = field(default_factory=dict)
 
-    def keys(self, written: Iterable[str], own: str | None) -> tuple[list[str | None], list[str]]:
+    def keys(
+        self, written: Iterable[str], own: str | None, group: str | None = None
+    ) -> tuple[list[str | None], list[str]]:
         """Per option the key of a table it takes its amount from (or None), and unknown keys.
 
-        own  the name that {name} stands for in this table; None where it stands for nothing
+        own    the name that {name} stands for in this table; None where it stands for nothing
+        group  the group of that party
         """
         found: list[str | None] = [None] * len(self.names)
         place = {name: k for k, name in enumerate(self.names)}
@@ -49,6 +63,13 @@ class Options:
                 plain.append((key, place[key]))
             elif own is not None and named(key, own) in place:
                 mine.append((key, place[named(key, own)]))
+            elif (
+                own is not None
+                and f"{{{OWN}}}" in key
+                and named(key, f"{{{group}}}") in self.series
+            ):
+                series = self.series[named(key, f"{{{group}}}")]
+                mine += [(key, k) for k in series if own in self.within[k]]
             else:
                 unknown.append(key)
         for key, k in (*plain, *mine):
@@ -75,35 +96,55 @@ def expand(raw: Sequence[str], place: str, roster: Roster, report: Report) -> Op
     if not roster.groups and roster.counted:
         return Options(tuple(raw))
     before = len(report)
-    names: list[str] = []
+    names: dict[str, None] = {}
     series: dict[str, tuple[int, ...]] = {}
+    within: dict[int, frozenset[str]] = {}
     for index, option in enumerate(raw):
         here = f"{place}[{index}]"
-        members = _members(option, here, roster, report)
-        if members is None:
+        group = _group(option, here, roster, report)
+        if group is None:
             continue
-        for name in members:
+        first, braces = len(names), f"{{{group}}}"
+        parties = [str(roster.names[i]) for i in roster.groups.get(group, ())]
+        places = option.count(braces) if group else 0
+        count = math.comb(len(parties), places)
+        if not count:
+            remedy = "Write fewer places, or a larger count."
+            report.add(here, describe(option), f"{braces} at most {len(parties)} times", remedy)
+            continue
+        if first + count > MOST:
+            found = f"{describe(option)}, which makes {first + count:,} options"
+            report.add(here, found, f"at most {MOST:,}", "Take fewer parties or fewer places.")
+            continue
+        longest = ""
+        for chosen in itertools.combinations(parties, places):
+            name = _written(option, braces, chosen)
+            longest = max(longest, name, key=len)
             if name in names:
                 report.add(here, f"{name!r} a second time", "each once", "Remove one.")
-        if option not in members:
-            series[option] = tuple(range(len(names), len(names) + len(members)))
-        names += members
-    return (
-        Options(tuple(names), series) if len(report) == before and roster.counted else Options(())
-    )
+            within[len(names)] = frozenset(chosen)
+            names[name] = None
+        if group:
+            series[option] = tuple(range(first, len(names)))
+            read_name(longest, here, report, "a name")
+    sound = len(report) == before and roster.counted
+    return Options(tuple(names), series, within) if sound else Options(())
 
 
-def _members(option: str, place: str, roster: Roster, report: Report) -> list[str] | None:
-    """The options that one stands for; None after noting why where it cannot be said."""
-    words = list(dict.fromkeys(_BRACES.findall(option)))
+def _written(option: str, braces: str, chosen: Sequence[str]) -> str:
+    """An option with parties put for the braces, one after the other."""
+    for name in chosen:
+        option = option.replace(braces, name, 1)
+    return option
+
+
+def _group(option: str, place: str, roster: Roster, report: Report) -> str | None:
+    """The group an option has in braces, empty for none; None after noting that it is no group."""
+    words: list[str] = list(dict.fromkeys(_BRACES.findall(option)))
     if not words:
-        return [option]
+        return ""
     if len(words) == 1 and words[0] in roster.groups:
-        found = [
-            option.replace(f"{{{words[0]}}}", str(roster.names[i])) for i in roster.groups[words[0]]
-        ]
-        sound = read_name(max(found, key=len), place, report, "a name") is not None
-        return found if sound else None
+        return words[0]
     if not roster.counted or None in roster.names:
         return None  # the word may be the name that is mistaken
     if len(words) > 1:

@@ -56,7 +56,9 @@ class WorthReader:
         mine = self.roster.names[own] if own is not None and alike else None
         chosen: list[str | None] = []
         if options.names:
-            chosen, unknown = options.keys(table.values, mine)
+            chosen, unknown = options.keys(
+                table.values, mine, None if own is None else self.roster.group_of.get(own)
+            )
             if self.first:
                 unknown_options(unknown, options, mine, table.place, self.report)
         else:

@@ -84,6 +84,46 @@ def test_an_option_in_braces_is_one_for_each_and_name_is_ones_own() -> None:
     assert setting.parties[2].value.tolist() == [[0, 0, 1, 0], [0, 0, 2, 0]]
 
 
+PAIRS = """decisions.options = ["none", "to {Farm}", "to {Farm} and {Farm}"]
+[[party]]
+name = "Farm"
+count = 4
+types = [1, 2]
+weights = [2, 1]
+[party.value]
+none = 0
+"to {Farm}" = 0
+"to {name}" = "type"
+"to {Farm} and {Farm}" = "1 / 2"
+"to {name} and {Farm}" = "2 * type"
+"""
+
+
+def test_braces_twice_are_one_option_for_every_pair() -> None:
+    setting = parse_scenario(PAIRS)
+    pairs = [(i, j) for i in range(1, 5) for j in range(i + 1, 5)]
+    names = [f"to Farm {i} and Farm {j}" for i, j in pairs]
+    assert setting.options == ("none", *(f"to Farm {i}" for i in range(1, 5)), *names)
+    for own, party in enumerate(setting.parties, 1):
+        low, high = (party.value / setting.grain).tolist()
+        assert low == [
+            0,
+            *(float(i == own) for i in range(1, 5)),
+            *(2 if own in pair else 0.5 for pair in pairs),
+        ]
+        assert high[-6:] == [4 if own in pair else 0.5 for pair in pairs]
+
+
+def test_two_places_among_alike_farms_sold_for_the_most() -> None:
+    """E[the two largest positive virtual worths] (Myerson 1981): 1 - (2 - 1) / 2 = 1/2, and 2."""
+    text = PAIRS.replace('"1 / 2"', "0").replace('"2 * type"', '"type"')
+    asked = Demands(goal="revenue", decision="randomized", balance="ex-post", budget="no-deficit")
+    verdict = pose(parse_scenario(text), asked)
+    low = Fraction(2, 3)
+    none, one = low**4, 4 * low**3 * (1 - low)
+    assert verdict.goal_value == none * 1 + one * Fraction(5, 2) + (1 - none - one) * 4
+
+
 def test_own_name_goes_before_an_option_written_out_and_that_before_all_of_them() -> None:
     text = PLACE.replace("none = 0", 'none = 0, "to Farm 2" = "type / 2"')
     text += 'designer.outlay = { "to {Farm}" = 3, "to Farm 1" = 1 }\n'.replace("designer.", "")
@@ -300,6 +340,27 @@ CASES = [
         '["{Farm} or {Mill}", "to {Farm}"',
         "decisions.options[0]: found '{Farm} or {Mill}'; expected one name in braces, of parties "
         "with a count: Farm.\n    Write out the options for every pair.",
+    ),
+    (
+        PLACE,
+        '["to {Farm}"',
+        '["{Farm}, {Farm}, {Farm}, {Farm}", "to {Farm}"',
+        "decisions.options[0]: found '{Farm}, {Farm}, {Farm}, {Farm}'; expected {Farm} at most 3 "
+        "times.\n    Write fewer places, or a larger count.",
+    ),
+    (
+        PLACE.replace("count = 3", "count = 60"),
+        '["to {Farm}"',
+        '["{Farm}, {Farm}, {Farm}", "to {Farm}"',
+        "decisions.options[0]: found '{Farm}, {Farm}, {Farm}', which makes 34,220 options; "
+        "expected at most 5,000.\n    Take fewer parties or fewer places.",
+    ),
+    (
+        PAIRS,
+        '"to {Farm} and {Farm}" = "1 / 2"',
+        "",
+        "party[0] 'Farm'.value.\"to {Farm} and {Farm}\": found nothing; expected a worth for every "
+        "option.\n    Write 0 if it is worth nothing.",
     ),
     (
         PLACE,
