@@ -12,6 +12,7 @@ import pytest
 from hypothesis import HealthCheck, assume, given, settings
 from hypothesis import strategies as st
 
+from benchmarks.invented import general
 from designer import Demands, parse_scenario, pose
 from designer.auditing import audit
 from designer.demands.plain import as_plain
@@ -27,13 +28,13 @@ from designer.roads.registry import choose
 from designer.roads.settled import Settled, build
 from designer.roads.typegraph import walk
 from designer.roads.typegraph.check import check
-from designer.roads.typegraph.decided import decide
+from designer.roads.typegraph.decided import Decided, decide
 from designer.roads.typegraph.mechanism import GraphMechanism, from_plain
 from designer.roads.typegraph.road import TypeGraph
 from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
-from tests.roads.typegraph_settings import designs, lifted
+from tests.roads.typegraph_settings import designs, lifted, torn_designs
 
 Design = tuple[Setting, Terms]
 
@@ -189,6 +190,111 @@ def test_a_flawless_proof_of_a_worse_choice_is_rejected() -> None:
     document = build(setting, as_plain(terms), settled)
     assert recheck(document).holds
     assert check(setting, document) == ["another choice at a tied profile may do better"]
+
+
+# -- lotteries at ties -------------------------------------------------------------------
+
+
+@settings(max_examples=200, deadline=None, derandomize=True)
+@given(torn_designs(), st.sampled_from((0, 1, 3)))
+def test_lotteries_at_ties_are_settled_without_the_plain_road(design: Design, first: int) -> None:
+    """Many profiles are tied; `first`: how often choices are changed before lotteries come."""
+    setting, _ = design
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", first)
+        ours, plain = both(design)
+    assert ours.path == "type-graph", ours.reason
+    assert ours.proved, (ours.status, ours.reason)
+    assert (ours.status, ours.goal_value) == (plain.status, plain.goal_value)
+    document = json.loads(json.dumps(ours.proof))
+    assert recheck(document).holds
+    assert rebuild(setting, document) == []
+    opened = "cuts" in document["reduction"]
+    assert opened or first > 0 or not len(decide_of(setting).tied)
+
+
+def decide_of(setting: Setting) -> Decided:
+    return decide(as_independent(setting) or setting, "efficient", Watch())
+
+
+@settings(max_examples=100, deadline=None, derandomize=True)
+@given(torn_designs())
+def test_tables_with_lotteries_pass_the_audit_and_survive_their_file(design: Design) -> None:
+    setting, terms = design
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", 0)
+        verdict = pose_terms(setting, terms, path="type-graph")
+    assume(verdict.status == "possible" and "cuts" in verdict.proof["reduction"])
+    assert verdict.table is not None
+    assert isinstance(verdict.mechanism, GraphMechanism)
+    back = from_plain(json.loads(json.dumps(verdict.mechanism.plain())), setting)
+    for profile in range(setting.profiles):
+        types = setting.types_at(profile)
+        pays = tuple(verdict.table.payment(i, profile) for i in range(len(types)))
+        chances = tuple(verdict.table.chance(profile, k) for k in range(len(setting.options)))
+        assert verdict.mechanism.pays(types) == pays == back.pays(types)
+        assert verdict.mechanism.decides(types) == chances == back.decides(types)
+    assert verdict.audit is not None
+    assert standings(verdict.mechanism) == verdict.audit.standings
+    if terms.trusted:
+        return
+    found = audit(
+        setting,
+        verdict.table,
+        subsidy=verdict.subsidy,
+        slack=terms.slack,
+        shortfall=terms.shortfall,
+        compelled=terms.compelled,
+    )
+    words = {"ic-dominant", f"ir-{terms.ir}", f"balance-{terms.balance}-{terms.budget}"}
+    judged = {name: finding for name, finding in found.worst.items() if name in words}
+    assert "ic-dominant" in judged
+    assert [name for name, finding in judged.items() if not finding.holds] == []
+
+
+@settings(max_examples=100, deadline=None, derandomize=True)
+@given(torn_designs(most_profiles=9))
+def test_cuts_are_proofs_about_the_full_program(design: Design) -> None:
+    setting, terms = design
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", 0)
+        verdict = pose_terms(setting, terms, path="type-graph")
+    assume(verdict.status in ("possible", "impossible") and "cuts" in verdict.proof["reduction"])
+    document = lifted(setting, terms, verdict)
+    finding = recheck(document)
+    assert finding.holds, finding.faults
+    from designer.demands.formulate import Formulation
+
+    program = Formulation(setting, terms).pose(terms.goals[0])
+    assert same_program(document, program) == []
+
+
+SITES = general(
+    4,
+    6,
+    2,
+    8,
+    {
+        "decision": "efficient",
+        "ic": "dominant",
+        "ir": "ex-post",
+        "balance": "ex-ante",
+        "goal": "outside-money",
+        "tidy": "none",
+    },
+)["scenario.toml"]
+
+
+def test_the_best_answer_needs_lotteries_at_ties() -> None:
+    """Four parties, 1,296 profiles, many of them tied; the plain road is the judge."""
+    setting = parse_scenario(SITES)
+    ours = pose(setting, path="type-graph")
+    plain = pose(setting, path="full")
+    assert (ours.path, ours.proved, plain.proved) == ("type-graph", True, True)
+    assert ours.goal_value == plain.goal_value
+    assert isinstance(ours.mechanism, GraphMechanism)
+    decided = ours.mechanism.decided
+    assert any(0 < int(part) < decided.den for part in decided.palette.flat)
 
 
 # -- attacks -----------------------------------------------------------------------------

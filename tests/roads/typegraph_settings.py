@@ -8,6 +8,7 @@ checker can judge without knowing of the road.
 from __future__ import annotations
 
 import itertools
+from collections.abc import Callable
 from dataclasses import replace
 from fractions import Fraction
 from typing import Any
@@ -20,6 +21,7 @@ from designer.demands.formulate import Formulation
 from designer.demands.terms import Terms
 from designer.engines.watch import Watch
 from designer.program.labels import (
+    AtMost,
     Decides,
     ExpectedDecision,
     ExpectedPay,
@@ -27,6 +29,7 @@ from designer.program.labels import (
     Label,
     Lottery,
     OnAverage,
+    Paths,
     Pays,
     TakesPart,
     Unknown,
@@ -34,13 +37,16 @@ from designer.program.labels import (
 from designer.program.program import Program
 from designer.proof.document import compose
 from designer.proof.vector import Vector
+from designer.roads.product import as_independent
 from designer.roads.settled import GoalResult
 from designer.roads.typegraph.decided import decide
-from designer.roads.typegraph.evidence import read_claim
+from designer.roads.typegraph.evidence import read_claim, read_part
 from designer.roads.typegraph.fibers import Fibers, fibers, others_weights
+from designer.roads.typegraph.lotteries import Bound, Lies, Opened, on_average
 from designer.roads.typegraph.mechanism import unrolled
 from designer.roads.typegraph.paths import carried
 from designer.roads.typegraph.road import TypeGraph
+from designer.roads.typegraph.torn import places
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
 from tests.oracles.settings import small_settings
@@ -99,6 +105,44 @@ def designs(
     return setting, found
 
 
+@st.composite
+def torn_designs(draw: st.DrawFn, most_profiles: int = 18) -> tuple[Setting, Terms]:
+    """Efficient designs on average with private worths of 0 to 2: many profiles are tied."""
+    ir, balance, budget, goal = draw(st.sampled_from(ON_AVERAGE))
+    ir = draw(st.sampled_from((ir, "ex-post", "interim")))
+    setting = draw(
+        small_settings(
+            most_profiles=most_profiles, correlated=ir != "interim", interdependent=False
+        )
+    )
+    few = draw(st.sampled_from((2, 3)))
+    setting = replace(
+        setting,
+        parties=tuple(replace(party, value=party.value % few) for party in setting.parties),
+        outlay=setting.outlay % 2,
+        worth=setting.worth * 0,
+        grain=1,
+    )
+    terms = Demands(
+        decision="efficient",
+        ic="dominant",
+        ir=ir,
+        balance=balance,
+        budget=budget,
+        goal=goal,
+        subsidy=draw(st.sampled_from((Fraction(0), Fraction(1, 2)))),
+        slack=draw(st.sampled_from((Fraction(0), Fraction(0), Fraction(1, 3)))),
+        tidy="none",
+        compelled=frozenset(),
+    ).over(setting)
+    first = frozenset({setting.parties[0].name})
+    trusted = draw(st.sampled_from([frozenset[str](), frozenset[str](), first]))
+    shortfall = Fraction(draw(st.sampled_from((0, 0, 1))))
+    found = replace(terms, trusted=trusted, shortfall=shortfall)
+    assert TypeGraph().applies(setting, found) is None
+    return setting, found
+
+
 def lifted(setting: Setting, terms: Terms, verdict: Verdict) -> dict[str, Any]:
     """The verdict's document, about the full program."""
     program = Formulation(setting, terms).pose(terms.goals[0])
@@ -112,7 +156,9 @@ def lifted(setting: Setting, terms: Terms, verdict: Verdict) -> dict[str, Any]:
     vector = verdict.farkas if status == "impossible" else verdict.goals[0].dual
     assert vector is not None
     multipliers = _by_label(small, vector)
-    if "parties" in document["reduction"] and "rows" not in document["reduction"]:
+    if "cuts" in document["reduction"]:
+        multipliers = _spread_cuts(setting, terms, document["reduction"], multipliers)
+    elif "parties" in document["reduction"] and "rows" not in document["reduction"]:
         multipliers = _spread(setting, terms, document["reduction"], multipliers)
     cost = status != "impossible"
     dual = _completed(program, multipliers, cost)
@@ -137,9 +183,6 @@ def _spread(
     setting: Setting, terms: Terms, reduction: dict[str, Any], small: dict[Label, Fraction]
 ) -> dict[Label, Fraction]:
     """Bounds on averages as what they stand for: lies and participation, case by case."""
-    from designer.program.labels import AtMost
-    from designer.roads.product import as_independent
-
     own = as_independent(setting) or setting
     decided = decide(own, terms.decision, Watch())
     decided = decided.choosing(unrolled(reduction["ties"], len(decided.tied)))
@@ -153,6 +196,106 @@ def _spread(
             if value:
                 found[label] = charge * value
     return found
+
+
+def _spread_cuts(
+    setting: Setting, terms: Terms, reduction: dict[str, Any], small: dict[Label, Fraction]
+) -> dict[Label, Fraction]:
+    """The same where lotteries at ties are open: cuts and spelled lies, case by case."""
+    own = as_independent(setting) or setting
+    decided = decide(own, terms.decision, Watch())
+    works = [fibers(own, terms, decided, i) for i in range(len(own.parties))]
+    opened = Opened(own, terms, works)
+    reduced = (AtMost, OnAverage, Lottery, Paths)
+    found: dict[Label, Fraction] = {}
+    spelled = {
+        own.parties[i].name for i, plain in enumerate(reduction["cuts"]) if isinstance(plain, dict)
+    }
+    for label, value in small.items():
+        if isinstance(label, reduced) or (isinstance(label, Honest) and label.party in spelled):
+            continue
+        found[label] = value
+
+    def add(label: Label, value: Fraction) -> None:
+        if value:
+            found[label] = found.get(label, Fraction(0)) + value
+
+    for i, plain in enumerate(reduction["cuts"]):
+        party, part = own.parties[i], read_part(plain, opened, i)
+        if on_average(works[i]):
+            charge = small.get(AtMost(party.name), Fraction(0))
+            if terms.ir == "ex-ante":
+                add(TakesPart(party.name), charge)
+            else:
+                for a, weight in enumerate(party.weights):
+                    share = Fraction(weight, sum(party.weights))
+                    add(TakesPart(party.name, party.types[a].label), charge * share)
+        elif isinstance(part, Lies):
+            _spread_lies(opened, i, part, small, add)
+        else:
+            for bound in part:
+                _spread_bound(opened, i, bound, small, add)
+    return found
+
+
+Add = Callable[[Label, Fraction], None]
+
+
+def _spread_bound(
+    opened: Opened, i: int, bound: Bound, small: dict[Label, Fraction], add: Add
+) -> None:
+    """One bound: the classes that no tie touches by its own row, torn profiles by their cuts."""
+    setting, found, party = opened.setting, opened.torn[i], opened.setting.parties[i]
+    work = found.work
+    worst = None if bound.root == "own" else party.types[int(bound.root)].label
+    charge = small.get(AtMost(party.name, worst), Fraction(0))
+    if worst is not None:
+        add(TakesPart(party.name, worst), charge)
+    flows: list[tuple[int, Any, Any, Fraction]] = []
+    for r in range(len(work.of)):
+        place = np.flatnonzero(found.even == work.of[r])
+        if len(place):
+            one = replace(found, others=np.array([r]))
+            sinks, mass = one.sinks(), 1
+            if setting.joint is None:
+                mass = int(others_weights(setting, i)[r])
+            flows.append((r, bound.even[place], sinks, charge * Fraction(mass, work.total)))
+    numbers: dict[int, int] = {}
+    for graph, tree in zip(bound.graph.tolist(), bound.trees, strict=True):
+        number = numbers.get(graph, 0)
+        numbers[graph] = number + 1
+        value = small.get(Paths(party.name, opened.others(i, graph), number, worst), Fraction(0))
+        sinks = found.sinks()[graph : graph + 1]
+        r = int(found.others[graph])
+        flows.append((r, tree[None], sinks, value / int(sinks.sum())))
+    for r, trees, sinks, value in flows:
+        carry = carried(trees, sinks.astype(object))[0]
+        at = [setting.labels_at(int(p)) for p in places(work, np.array([r]))[0]]
+        for a, b in enumerate(trees[0].tolist()):
+            true = at[a][i]
+            if a != b:
+                add(_lie(party.name, at[a], true, at[b][i]), value * int(carry[a]))
+            elif worst is None:
+                add(TakesPart(party.name, true, at[a]), value * int(carry[a]))
+
+
+def _spread_lies(
+    opened: Opened, i: int, lies: Lies, small: dict[Label, Fraction], add: Add
+) -> None:
+    """The lies of one graph, shared among the others' profiles that have it."""
+    setting, found, name = opened.setting, opened.spelled(i), opened.setting.parties[i].name
+    work, weights = found.work, others_weights(setting, i)
+    even = len(opened.torn[i].even)
+    for graph, a, b in lies.listed.tolist():
+        first = int(found.others[graph])
+        members = np.flatnonzero(work.of == work.of[first]) if graph < even else [first]
+        at = setting.labels_at(int(places(work, np.array([first]))[0, a]))
+        labels = [kind.label for kind in setting.parties[i].types]
+        value = small.get(Honest(name, labels[a], labels[b], at), Fraction(0))
+        for r in members:
+            here = setting.labels_at(int(places(work, np.array([r]))[0, a]))
+            share = Fraction(int(weights[r]), int(found.masses[graph]))
+            add(Honest(name, labels[a], labels[b], here), value * share)
 
 
 def _party_rows(setting: Setting, terms: Terms, work: Fibers, plain: Any) -> dict[Label, Fraction]:
