@@ -20,16 +20,23 @@ from designer.demands.terms import Terms
 from designer.engines.highs import HIGHS
 from designer.engines.watch import Watch
 from designer.posing import pose_terms
+from designer.program.program import Program
 from designer.proof.compare import same_program
+from designer.proof.outcome import Outcome
 from designer.proof.recheck import recheck
+from designer.proof.vector import Vector
 from designer.rebuilding import rebuild
 from designer.roads.product import as_independent
 from designer.roads.registry import choose
 from designer.roads.settled import Settled, build
 from designer.roads.typegraph import walk
+from designer.roads.typegraph.bases import Base, base
 from designer.roads.typegraph.check import check
 from designer.roads.typegraph.decided import Decided, decide
+from designer.roads.typegraph.fibers import fibers
+from designer.roads.typegraph.listing import rule_of
 from designer.roads.typegraph.mechanism import GraphMechanism, from_plain
+from designer.roads.typegraph.mixing import Mixing, Mixture
 from designer.roads.typegraph.road import TypeGraph
 from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
@@ -373,6 +380,136 @@ def test_a_program_with_a_tighter_bound_is_rejected() -> None:
     row = document["program"]["row_lo"]
     row["num"] = [int(n) + 1 for n in row["num"]]
     assert check(setting, document) != []
+
+
+def stubborn_lotteries(design: Design) -> Settled | None:
+    """What the road brings home if it takes the first paths listed for all that bind."""
+    setting, terms = design
+
+    def accept(self: Mixing, program: Program, outcome: Outcome, primal: Vector) -> Mixture | None:
+        decided = rule_of(program, self.opened, primal)
+        works = [fibers(self.setting, self.terms, decided, i) for i in range(len(self.listed))]
+        bases = [base(work, self.watch) for work in works]
+        assert all(isinstance(found, Base) for found in bases)
+        parts = self._parts(ordered=True)
+        known = tuple(found for found in bases if isinstance(found, Base))
+        return Mixture(program, outcome, self.opened, parts, decided, tuple(works), known)
+
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", 0)
+        patch.setattr(Mixing, "_led", lambda self, program: False)
+        patch.setattr(Mixing, "_first", lambda self, choices: [])
+        patch.setattr(Mixing, "_home", accept)
+        settled = walk.Walk(
+            as_independent(setting) or setting, setting, terms, HIGHS, Watch()
+        ).walk()
+    return settled if settled.reduction and "cuts" in settled.reduction else None
+
+
+@settings(max_examples=200, deadline=None, derandomize=True)
+@given(torn_designs())
+def test_no_lotteries_pass_the_check_unless_they_are_best(design: Design) -> None:
+    setting, terms = design
+    settled = stubborn_lotteries(design)
+    assume(settled is not None)
+    assert settled is not None
+    document = build(setting, as_plain(terms), settled)
+    assert recheck(document).holds
+    plain = pose_terms(setting, terms, path="full")
+    right = (settled.status, settled.goals[0].value) == (plain.status, plain.goal_value)
+    assert right or check(setting, document) != []
+
+
+def test_a_flawless_proof_with_too_few_paths_is_rejected() -> None:
+    setting = parse_scenario(SITES)
+    settled = stubborn_lotteries((setting, CASES.over(setting)))
+    assert settled is not None
+    document = build(setting, as_plain(CASES.over(setting)), settled)
+    assert recheck(document).holds
+    assert "cannot be made to pay" in check(setting, document)[0]
+
+
+def proof_with_cuts(demands: Demands) -> tuple[Setting, dict[str, Any]]:
+    text = SITES if demands.ir == "ex-post" else general(3, 6, 2, 8, {})["scenario.toml"]
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", 0)
+        return proof_of(demands, text)
+
+
+def first_bound(reduction: dict[str, Any]) -> dict[str, Any]:
+    found: dict[str, Any] = next(
+        party for party in reduction["cuts"] if isinstance(party, list) and party
+    )[0]
+    return found
+
+
+def first_lies(reduction: dict[str, Any]) -> dict[str, Any]:
+    found: dict[str, Any] = next(party for party in reduction["cuts"] if isinstance(party, dict))
+    return found
+
+
+def loop(reduction: dict[str, Any]) -> None:
+    trees = first_bound(reduction)["trees"]
+    trees[:] = [[1, 0, *tree[2:]] for tree in trees]
+
+
+def alone(reduction: dict[str, Any]) -> None:
+    trees = reduction["parties"][0]["trees"]
+    trees[:] = [list(range(len(tree))) for tree in trees]
+
+
+def one_tree(reduction: dict[str, Any]) -> None:
+    found = first_bound(reduction)
+    found["bundles"] = [[0] * len(bundle) for bundle in found["bundles"]]
+
+
+def one_even(reduction: dict[str, Any]) -> None:
+    found = first_bound(reduction)
+    found["even"] = [[0, sum(count for _, count in found["even"])]]
+
+
+@pytest.mark.parametrize(
+    ("demands", "spoil", "says"),
+    [
+        (CASES, lambda r: r["cuts"].pop(), "does not fit the parties"),
+        (CASES, lambda r: r["cuts"].append([]), "does not fit the parties"),
+        (CASES, lambda r: r["cuts"][0].clear(), "differ"),
+        (CASES, lambda r: first_bound(r).update(root=0), "do not end where participation"),
+        (CASES, lambda r: first_bound(r).update(root="zero"), "the trees have no root"),
+        (CASES, lambda r: first_bound(r)["bundles"].__setitem__(0, []), "have no paths"),
+        (CASES, lambda r: first_bound(r)["bundles"][0].pop(), "differ"),
+        (CASES, lambda r: first_bound(r).update(torn=[[0, 1]]), "the runs do not fit"),
+        (CASES, loop, "circles"),
+        (CASES, one_tree, "differs"),
+        (CASES, one_even, "differs"),
+        (CASES, alone, "gains by a lie"),
+        (CASES, lambda r: r["parties"].pop(), "does not fit the parties"),
+        (CASES, lambda r: r["parties"].__setitem__(0, None), "cannot be read"),
+        (CASES, lambda r: r.pop("parties"), "cannot be read"),
+        (TYPES, lambda r: first_bound(r).update(root="own"), "do not end where participation"),
+        (TYPES, lambda r: first_bound(r).update(root=5), "do not all start at one type"),
+        (TYPES, lambda r: first_lies(r)["lies"][0].pop(), "differ"),
+        (TYPES, lambda r: first_lies(r)["lies"][0].append([2, 2]), "a lie is the truth"),
+        (TYPES, lambda r: first_lies(r)["lies"][0].append([0, 99]), "names what is not there"),
+        (TYPES, lambda r: first_lies(r)["of"].append([0, 9999]), "more graphs"),
+    ],
+)
+def test_spoiled_cuts_are_rejected(demands: Demands, spoil: Any, says: str) -> None:
+    setting, document = proof_with_cuts(demands)
+    spoil(document["reduction"])
+    faults = check(setting, document)
+    assert faults
+    assert says in " ".join(faults) or (says == "differ" and "in the proof" in faults[0]), faults
+
+
+def test_cuts_for_other_terms_are_rejected() -> None:
+    setting, document = proof_with_cuts(CASES)
+    for key, value in (("ir", "interim"), ("ir", "none"), ("slack", "1"), ("budget", "no-deficit")):
+        other = copy.deepcopy(document)
+        other["terms"][key] = value
+        assert check(setting, other) != [], key
+    document["terms"].update(balance="ex-post", budget="no-deficit")
+    assert "case by case" in check(setting, document)[0]
 
 
 # -- chains of lies ----------------------------------------------------------------------
