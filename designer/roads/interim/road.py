@@ -26,7 +26,7 @@ from designer.proof.prove import prove
 from designer.proof.vector import Vector
 from designer.roads.interim.barrier import interior
 from designer.roads.interim.certificate import outcome_of
-from designer.roads.interim.counting import TooMany, lead_party, tied, too_many
+from designer.roads.interim.counting import TooMany, lead_party, structured, tied, too_many
 from designer.roads.interim.draft import InterimDraft
 from designer.roads.interim.lies import broken, first_lies, with_more
 from designer.roads.interim.master import (
@@ -141,6 +141,14 @@ class _Walk:
             self.only = True
             self._list(Rule(()))
             return None
+        if self.terms.decision == "efficient":
+            plain = Rule(master.first())
+            if structured(setting, plain):
+                counts = master.count(plain)
+                self.only = not tied(setting, plain, counts, self.watch)
+                if self.only:
+                    master.add(Listed(plain, counts))
+                    return None
         # A later goal `outside-money` leaves the subsidy unknown from the start (convention 11).
         unknown = "outside-money" in self.terms.goals[1:]
         found = None if unknown else sides(setting, self.terms)
