@@ -4,25 +4,26 @@ from __future__ import annotations
 
 import itertools
 import math
+from dataclasses import replace
 from fractions import Fraction
 from itertools import pairwise
 from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import event, given
+from hypothesis import assume, event, given
 from hypothesis import settings as runs
 from hypothesis import strategies as st
 
-from designer.demands.terms import Demands
+from designer.demands.terms import Demands, Terms
 from designer.engines.watch import Watch
 from designer.posing import pose_terms
 from designer.proof.document import as_bytes, parse_document
 from designer.rebuilding import rebuild
-from designer.roads.interim import blocks, units
+from designer.roads.interim import blocks, counting, units
 from designer.roads.interim.rule import Index, Rule
 from designer.setting.setting import Party, Setting, Type, integers
-from tests.roads.interim_settings import counted
+from tests.roads.interim_settings import counted, sides
 from tests.roads.test_interim_counts import plain
 
 
@@ -180,3 +181,48 @@ def test_two_units_that_must_go_are_decided_ties_and_all(high: int) -> None:
     assert (floor.status, floor.proved) == ("possible", True)
     document: Any = parse_document(as_bytes(floor.proof))
     assert rebuild(setting, document) == []
+
+
+@runs(max_examples=120, deadline=None)
+@given(st.data())
+def test_same_verdict_and_value_as_the_plain_road(data: st.DataObject) -> None:
+    """Every rule that units can count is counted so; options may cost the same for each unit."""
+    parties = data.draw(st.integers(1, 3))
+    least = data.draw(st.integers(0, parties - 1))
+    most = data.draw(st.integers(max(least, 1), parties))
+    sets = data.draw(st.sampled_from(orders(parties, least, most)))
+    assume(len(sets) > 1)
+    sizes = [data.draw(st.integers(1, 3 if parties < 3 else 2)) for _ in range(parties)]
+    worths = [[data.draw(st.integers(1, 6)) for _ in range(n)] for n in sizes]
+    weights = [[data.draw(st.integers(1, 3)) for _ in range(n)] for n in sizes]
+    cost = data.draw(st.integers(0, 3))
+    setting = assigning(sets, worths, weights, data.draw(st.integers(0, 1)))
+    setting = replace(setting, outlay=integers([cost * len(own) for own in sets]))
+    goal = data.draw(st.sampled_from(("any", "outside-money", "revenue", "welfare", "floor")))
+    terms = Terms(
+        decision=data.draw(st.sampled_from(("efficient", "randomized"))),
+        ir=data.draw(st.sampled_from(("none", "interim"))),
+        balance="ex-ante",
+        budget=data.draw(st.sampled_from(("exact", "no-deficit"))),
+        goals=(goal,),
+        subsidy=data.draw(st.sampled_from((Fraction(0), Fraction(1, 2)))),
+        side=data.draw(sides(setting)),
+        tidy="none",
+    )
+    usual = counting._way
+
+    def way(one: Setting, rule: Rule, lead: int | None) -> str:
+        could = rule.indices and not rule.exceptions and lead is None
+        able = could and units.work(one, rule) < math.inf
+        event("by order statistics" if able else "by another way")
+        return "units" if able else usual(one, rule, lead)
+
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(counting, "_way", way)
+        patch.setattr("designer.roads.interim.road.lead_party", lambda _: None)
+        ours = pose_terms(setting, terms, path="interim")
+        document: Any = parse_document(as_bytes(ours.proof))
+        assert rebuild(setting, document) == []
+    plain_road = pose_terms(setting, terms, path="full")
+    assert (ours.status, ours.proved, ours.reason) == (plain_road.status, True, "")
+    assert ours.goal_values == plain_road.goal_values
