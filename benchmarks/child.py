@@ -48,7 +48,7 @@ def peak_mib() -> float:
 def warm(way: str) -> None:
     """Answer a tiny problem so that imports and first calls are behind us."""
     with tempfile.TemporaryDirectory() as folder:
-        name = "certain-3x4" if way == "type-graph" else "money-3x4"
+        name = {"type-graph": "certain-3x4", "likeness": "alike-3x3"}.get(way, "money-3x4")
         WAYS[way](write(problem(name).files(), Path(folder)))
 
 

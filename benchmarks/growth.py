@@ -10,12 +10,12 @@ profile and 1/2 is one look at every profile of half the parties.
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
 
 from benchmarks import invented
-from benchmarks.invented import Asked
+from benchmarks.invented import Asked, Files
 from benchmarks.measure import Measured
 from benchmarks.registry import CERTAIN, MEAN, MONEY, Problem
 
@@ -24,7 +24,7 @@ from benchmarks.registry import CERTAIN, MEAN, MONEY, Problem
 class Family:
     """One road over joint projects of rising size.
 
-    along   "T" or "n": what rises
+    along   "T" or "n": what rises; "alike": n, of parties that are alike
     sizes   (parties, types) of each
     theory  for each quantity, the expected exponent and where it comes from
     """
@@ -35,6 +35,7 @@ class Family:
     along: str
     sizes: tuple[tuple[int, int], ...]
     theory: dict[str, tuple[str, str]]
+    made: Callable[[int, int, Asked], Files] = invented.joint_project
 
     def problems(self) -> list[Problem]:
         """A problem per size, answered in this family's one way."""
@@ -42,7 +43,7 @@ class Family:
             Problem(
                 f"{self.name}-{n}x{t}",
                 f"growth along {self.along}",
-                partial(invented.joint_project, n, t, self.asked),
+                partial(self.made, n, t, self.asked),
                 expected="",
                 ways=(self.way,),
             )
@@ -50,7 +51,9 @@ class Family:
         ]
 
     def x(self, size: tuple[int, int]) -> int:
-        """What the exponent refers to: types, or profiles."""
+        """What the exponent refers to: types, parties alike, or profiles."""
+        if self.along == "alike":
+            return size[0]
         return size[1] if self.along == "T" else size[1] ** size[0]
 
 
@@ -114,6 +117,18 @@ FAMILIES = (
             "bytes": ("1", "a distance per party and profile, n·T^n"),
         },
     ),
+    Family(
+        "likeness-n",
+        "likeness",
+        CERTAIN,
+        "alike",
+        tuple((n, 4) for n in (2, 4, 8, 16, 32)),
+        {
+            "seconds": ("≥ 3", "rows as below; the engine's steps come on top"),
+            "nonzeros": ("3", "T² lies at each of C(n+T-2, T-1) others' multisets, here T = 4"),
+        },
+        invented.alike_project,
+    ),
 )
 
 
@@ -158,6 +173,6 @@ def rows(family: Family, measured: Sequence[Measured]) -> list[list[str]]:
             q.append(value)
         fits = [exponent(x, q), exponent(x[-2:], q[-2:])]
         told = ["–" if fit is None else f"{fit:.2f}" for fit in fits]
-        base = "T" if family.along == "T" else "T^n"
+        base = {"T": "T", "alike": "n"}.get(family.along, "T^n")
         found.append([family.name, f"{quantity} by {base}", "; ".join(shown), *told, expected, why])
     return found

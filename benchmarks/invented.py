@@ -59,6 +59,19 @@ def joint_project(
     return _scenario("A joint project", ["build", "leave"], blocks, asked, outlay={"build": outlay})
 
 
+def alike_project(parties: int, types: int, asked: Asked) -> Files:
+    """Build or leave, among parties that are all alike; ties are frequent."""
+    block = _party(
+        "Farm",
+        types=range(types),
+        weights=weights(0, types),
+        value={"build": "type", "leave": 0},
+    )
+    counted = block.replace('name = "Farm"', f'name = "Farm"\ncount = {parties}')
+    outlay = parties * (types - 1) // 2
+    return _scenario("A shared weir", ["build", "leave"], [counted], asked, {"build": outlay})
+
+
 def trade(size: int, asked: Asked) -> Files:
     """One buyer and one seller, each with `size` types on overlapping grids."""
     buyer = _party(

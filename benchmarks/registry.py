@@ -77,6 +77,7 @@ SECOND = _asks("randomized", "bayesian", "interim", "ex-post", "exact", "welfare
 POSTED = _asks("randomized", "dominant", "ex-post", "ex-post", "exact", "welfare")
 PICKED = _asks("deterministic", "dominant", "ex-post", "ex-post", "exact", "welfare")
 RENT = _asks("randomized", "bayesian", "interim", "ex-ante", "no-deficit", "revenue")
+SURE_SECOND = _asks("randomized", "dominant", "ex-post", "ex-post", "no-deficit", "welfare")
 SURE_RENT = _asks("randomized", "dominant", "ex-post", "ex-post", "no-deficit", "revenue")
 ONE_RENT = _asks("efficient", "bayesian", "interim", "ex-ante", "no-deficit", "revenue")
 
@@ -93,6 +94,10 @@ def _general(
 
 def _trade(size: int, asked: Asked) -> Callable[[], Files]:
     return partial(invented.trade, size, asked)
+
+
+def _alike(parties: int, types: int, asked: Asked) -> Callable[[], Files]:
+    return partial(invented.alike_project, parties, types, asked)
 
 
 PROBLEMS: tuple[Problem, ...] = (
@@ -258,6 +263,38 @@ PROBLEMS: tuple[Problem, ...] = (
         "mean-6x10",
         "a million cases, honest in every one",
         _project(6, 10, MEAN),
+        ways=("ours",),
+    ),
+    Problem(
+        "alike-3x3",
+        "parties alike, honest in every case, best lottery",
+        _alike(3, 3, SURE_SECOND),
+        ways=("ours", "likeness", "full"),
+        small=True,
+    ),
+    Problem(
+        "alike-5x5",
+        "parties alike, honest in every case, best lottery",
+        _alike(5, 5, SURE_SECOND),
+        ways=("ours", "full", "simplex", "ipm"),
+    ),
+    Problem(
+        "alike-8x6",
+        "parties alike, best lottery, 1.7e6",
+        _alike(8, 6, SURE_SECOND),
+        ways=("ours",),
+    ),
+    Problem(
+        "alike-8x10",
+        "parties alike, honest in every case, 10^8",
+        _alike(8, 10, CERTAIN),
+        ways=("ours",),
+        budget=60.0,
+    ),
+    Problem(
+        "alike-money-20x10",
+        "parties alike, tied cases, 10^20",
+        _alike(20, 10, MONEY),
         ways=("ours",),
     ),
     Problem("second-4", "sale, best lottery", _trade(4, SECOND), ways=ROADS, small=True),

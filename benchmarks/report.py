@@ -15,7 +15,7 @@ from benchmarks.targets import Target
 from benchmarks.ways import ROADS
 
 BASELINES = (
-    *("full", "interim", "type-graph", "textbook", "textbook-quick", "linprog"),
+    *("full", "interim", "type-graph", "likeness", "textbook", "textbook-quick", "linprog"),
     *("highs", "simplex", "ipm"),
 )
 PARTS = ("read", "count", "formulate", "solve", "prove", "table", "check", "save")
@@ -30,7 +30,7 @@ peak of the whole process in MiB, imports included.
   audit, verdict, proof) is timed apart: the other ways save nothing.
 - **full**: the same on the plain program; **ours** takes the first road that applies, named
   beside its answer.
-- **interim**, **type-graph**: the same by the road of that name.
+- **interim**, **type-graph**, **likeness**: the same by the road of that name.
 - **shell**: `designer pose FILE --json`, start-up included.
 - **textbook**: PuLP and HiGHS with a loop per quantifier (`tests/oracles/textbook.py`), from the
   setting in memory to a float answer; **textbook-quick** adds terms up in dictionaries.
@@ -46,9 +46,10 @@ peak of the whole process in MiB, imports included.
 
 
 GROWTH = """\
-Least-squares slope of the quantity's logarithm on that of T, the types a party has, or of T^n,
-the profiles. Joint projects; bytes are beyond the warm process. Fixed costs flatten the fit at
-small sizes, so the slope between the last two sizes stands beside it.
+Least-squares slope of the quantity's logarithm on that of T, the types a party has, of T^n,
+the profiles, or of n, the parties where they are alike. Joint projects; bytes are beyond the
+warm process. Fixed costs flatten the fit at small sizes, so the slope between the last two
+sizes stands beside it.
 """
 
 

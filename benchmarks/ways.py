@@ -22,7 +22,7 @@ from typing import Any
 SAVED = 200_000
 """Profiles up to which saving is timed too."""
 
-ROADS = ("ours", "full", "interim", "type-graph")
+ROADS = ("ours", "full", "interim", "type-graph", "likeness")
 """The ways that are ours: the road that is taken by itself, and each by name."""
 
 
@@ -92,6 +92,11 @@ def interim(path: Path) -> Run:
 def type_graph(path: Path) -> Run:
     """The same, by the type-graph road."""
     return ours(path, "type-graph")
+
+
+def likeness(path: Path) -> Run:
+    """The same, by the likeness road."""
+    return ours(path, "likeness")
 
 
 def textbook(path: Path, quick: bool = False) -> Run:
@@ -209,6 +214,7 @@ WAYS: dict[str, Callable[[Path], Run]] = {
     "full": full,
     "interim": interim,
     "type-graph": type_graph,
+    "likeness": likeness,
     "textbook": textbook,
     "textbook-quick": textbook_quick,
     "linprog": linprog,
