@@ -86,7 +86,7 @@ class LikenessDraft(Draft):
 
     def payment_columns(self, index: int, profiles: IndexArray) -> IndexArray:
         """The column of the party in the same place at the representative."""
-        flat = profiles.ravel()
+        flat = profiles if profiles.ndim == 1 else profiles.ravel()
         place, _ = self.orbits.to_first(flat)
         columns: IndexArray = self.payment_column[place, self.orbits.slot(index, flat)]
         return columns.reshape(profiles.shape)

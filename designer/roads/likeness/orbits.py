@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import itertools
 import math
+from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
@@ -32,6 +33,8 @@ class Orbits:
         # profile numbers are Python integers where they pass 64 bits
         self.dtype = np.dtype(np.int64 if setting.profiles < WORDS else object)
         self.strides: IndexArray = np.array(strides(setting.shape), dtype=self.dtype)
+        self._words = _words(setting.shape)
+        self._asked: list[tuple[IndexArray, tuple[IndexArray, IndexArray | None]]] = []
         self.options = len(setting.options)
 
     # -- the representatives ---------------------------------------------------------------
@@ -84,15 +87,35 @@ class Orbits:
 
     def types(self, profiles: IndexArray) -> IndexArray:
         """Type positions at the listed profiles, int (R, n)."""
-        shape = np.array(self.setting.shape, dtype=np.int64)
-        found: IndexArray = profiles[:, None] // self.strides % shape
-        return found.astype(np.int64)
+        found = np.empty((len(profiles), len(self.setting.shape)), dtype=np.int64)
+        rest = profiles
+        for word in self._words:
+            part = (rest % word.size).astype(np.int64) if len(self._words) > 1 else rest
+            rest = rest // word.size if len(self._words) > 1 else rest
+            found[:, word.parties] = part[:, None] // word.strides % word.shape
+        return found
+
+    def numbers(self, types: IndexArray) -> IndexArray:
+        """Profile numbers of rows of type positions, int (R,)."""
+        total: IndexArray = np.zeros(len(types), dtype=self.dtype)
+        for word in reversed(self._words):
+            total = total * word.size + types[:, word.parties] @ word.strides
+        return total
 
     def to_first(self, profiles: IndexArray) -> tuple[IndexArray, IndexArray | None]:
         """The place of each profile's representative in `profiles`, and where options go.
 
         x_k(theta) = x_moved[k](representative); None where no option ever moves.
         """
+        for known, found in self._asked:
+            if known is profiles:
+                return found
+        found = self._found(profiles)
+        # payments and chances ask for the same lists, truths and lies in turn
+        self._asked = [*self._asked[-1:], (profiles, found)]
+        return found
+
+    def _found(self, profiles: IndexArray) -> tuple[IndexArray, IndexArray | None]:
         types = self.types(profiles)
         moved = None
         if self.likeness.still:
@@ -102,7 +125,7 @@ class Orbits:
             moved = np.tile(np.arange(self.options, dtype=np.int64), (len(profiles), 1))
             for group in self.likeness.groups:
                 self._ordered(types, moved, group)
-        return np.searchsorted(self.profiles, types @ self.strides), moved
+        return np.searchsorted(self.profiles, self.numbers(types)), moved
 
     def _ordered(self, types: IndexArray, moved: IndexArray, group: tuple[int, ...]) -> None:
         """Sort a group's types by trades of neighbours, and carry the options along."""
@@ -151,6 +174,38 @@ class Orbits:
             own = multiset_weights(types, self.setting.parties[group[0]].weights)
             weights = np.multiply.outer(weights, own).ravel()
         return numbers, weights
+
+
+@dataclass(frozen=True, eq=False)
+class _Word:
+    """Consecutive parties whose part of a profile number fits a word: its range, and strides."""
+
+    parties: slice
+    size: int
+    shape: IndexArray
+    strides: IndexArray
+
+
+def _words(shape: tuple[int, ...]) -> tuple[_Word, ...]:
+    """The parties in words, the last first: Python integers are only split and put together."""
+    found = []
+    stop = len(shape)
+    while stop:
+        start, size = stop, 1
+        while start and (start == stop or size * shape[start - 1] < WORDS):
+            start -= 1
+            size *= shape[start]
+        own = shape[start:stop]
+        found.append(
+            _Word(
+                slice(start, stop),
+                size,
+                np.array(own, dtype=np.int64),
+                np.array(strides(own), dtype=np.int64),
+            )
+        )
+        stop = start
+    return tuple(found)
 
 
 def count(setting: Setting, likeness: Likeness) -> int:
