@@ -14,7 +14,7 @@ from designer.demands.plain import as_plain
 from designer.demands.terms import Terms
 from designer.engines.watch import Progress, Watch
 from designer.posing import pose_terms
-from designer.roads.interim import blocks, road
+from designer.roads.interim import barrier, blocks, cube, road
 from designer.roads.interim import lies as lazy
 from designer.roads.interim.multiplier import sides
 from designer.roads.interim.rule import Rule, welfare_index
@@ -143,6 +143,20 @@ def test_column_generation_alone(question: tuple[Setting, Terms]) -> None:
     setting, terms = question
     with pytest.MonkeyPatch.context() as patch:
         patch.setattr(road, "interior", lambda *asked: None)
+        agree(setting, terms)
+
+
+@runs(max_examples=150, deadline=None)
+@given(questions(max_parties=3))
+def test_profiles_left_out_of_the_interior_point(question: tuple[Setting, Terms]) -> None:
+    """Whatever is left out, and however early: the exact pass afterwards sees it."""
+    setting, terms = question
+    assume(terms.decision == "randomized")
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(barrier, "LARGE", 0)
+        patch.setattr(barrier, "OPEN", 1)
+        patch.setattr(barrier, "CLEAR", 2.0)
+        patch.setattr(cube, "FEW", 1)
         agree(setting, terms)
 
 

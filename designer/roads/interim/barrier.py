@@ -45,6 +45,14 @@ KEPT = 1e-5
 """How far rows may be from being kept."""
 FAR = 1e4
 """A multiplier of this size says that the demands cannot be met."""
+LARGE = 1 << 16
+"""Profiles from which those that are clear are left out."""
+OPEN = 4_000
+"""Profiles that are never left out."""
+CLEAR = 1e-2
+"""Relative complementarity from which some are."""
+DRIFTS = 2.0
+"""A profile is clear where every other option lacks so many times what the last steps moved."""
 SHORT = 0.1
 """A step that goes no farther than this is tried again."""
 REFINED = 1
@@ -170,6 +178,8 @@ class _Path:
         self.turned = csr_array(self.matrix.T)
         marginal = np.concatenate(self.cube.marginals)
         self.share = np.repeat(marginal, self.options)
+        self.drifts: list[float] = []  # what each step, taken whole, changes between options
+        self.far = float("inf")  # relative complementarity
         self._begin()
 
     def _begin(self) -> None:
@@ -204,26 +214,35 @@ class _Path:
         move = (0.0, 0.0)
         for step in range(MOST):
             self.watch.tell("looking for prices, step", step)
-            seen = self.cube.each(partial(_moved, primal=move[0], dual=move[1]))
-            q = _total(part[0] for part in seen) / self.share
+            self._settle(move)
+            seen = self.cube.each(_curved)
+            fixed = self.cube.fixed.ravel() / self.share
+            q = fixed + _total(part[0] for part in seen) / self.share
             near = self._near(q, sum(part[3] for part in seen))
             if near is None:
                 return None
-            gap, off = near
-            if gap <= CLOSE and off <= KEPT:
+            self.far, off, short = near
+            if self.far <= CLOSE and max(off, short) <= KEPT:
                 return self._found()
             stuck = step > 3 and min(move) < 1e-3
-            if stuck or (gap <= USEFUL and off > KEPT):
-                return self._found() if gap <= USEFUL else None
-            centred = _total(part[1] for part in seen) / self.share
+            if stuck or (self.far <= USEFUL and short > KEPT):
+                return self._found() if self.far <= USEFUL else None
+            centred = fixed + _total(part[1] for part in seen) / self.share
             blocks = np.sum([part[2] for part in seen], axis=0)
             pairs = curved(blocks, self.options)
             pairs /= self.share[:, None] * self.share
             move = self._step(q, centred, pairs)
         return None
 
-    def _near(self, q: Floats, gap: float) -> tuple[float, float] | None:
-        """Complementarity relative to the money at stake, and how far rows are from being kept.
+    def _settle(self, move: tuple[float, float]) -> None:
+        """Take the step; leave out profiles at which prices will hardly change what is best."""
+        for _ in self.cube.each(partial(Slab.move, primal=move[0], dual=move[1])):
+            pass
+        if self.setting.profiles > LARGE and self.far < CLEAR:
+            self.cube.settle(DRIFTS * max(self.drifts[-3:]), OPEN)
+
+    def _near(self, q: Floats, gap: float) -> tuple[float, float, float] | None:
+        """Complementarity relative to the money at stake, and what rows and multipliers lack.
 
         None where the path has no end.
         """
@@ -237,7 +256,7 @@ class _Path:
         off = float(np.abs(level).max(initial=0.0)) / self.size
         short = float(np.abs(self.short).max(initial=0.0))
         fine = np.isfinite(near + off + short) and float(np.abs(self.y).max(initial=0.0)) < FAR
-        return (near, max(off, short)) if fine else None
+        return (near, off, short) if fine else None
 
     def _step(self, q: Floats, centred: Floats, pairs: Floats) -> tuple[float, float]:
         """Predict and correct; how far to go in x, s and u, and in y and z."""
@@ -278,7 +297,8 @@ class _Path:
         primal = _reach(min(part[3] for part in looks), ds, self.s)
         dual = _reach(min(part[4] for part in looks), dy[:free], self.y[:free])
         # The averages of x dz and of dx dz follow from the tables: chances sum to one.
-        one = sum(part[2] for part in looks) - float(q @ prices)
+        one = sum(part[2] for part in looks)
+        one -= float((q - self.cube.fixed.ravel() / self.share) @ prices)
         both = -float((centred - q + pairs @ prices) @ prices)
         gap, own = self.gap
         after = gap + primal * (-gap - one) + dual * one + primal * dual * both
@@ -291,7 +311,7 @@ class _Path:
 
         def correct(centre: float, share: float) -> tuple[float, float, tuple[Floats, ...]]:
             """How far the step goes that aims at a share of the gap, and the step."""
-            target = centre * gap / self.options
+            target = centre * gap / (self.options * self.cube.weight)
             aimed = centre * own / max(free, 1) - share * product
             step = solve(centred + target * per_target - share * crossed, aimed)
             tables = self._tables(step[0])
@@ -305,6 +325,9 @@ class _Path:
             # The predictor was too bold: aim nearer the middle, and believe less of it.
             best = correct(max(centre, 0.5), primal * dual)
         primal, dual, (prices, du, dy, ds) = best
+        tables = self._tables(prices)
+        edges = np.cumsum([0, *self.setting.shape])[:-1]
+        self.drifts.append(float(np.maximum.reduceat(np.ptp(tables, axis=1), edges).sum()))
         self.u = self.u + primal * du
         self.s = self.s + primal * ds
         self.y = self.y + dual * dy
@@ -321,8 +344,7 @@ class _Path:
         return Interior(prices, *self.cube.closest(CANDIDATES), self.money, tight)
 
 
-def _moved(slab: Slab, primal: float, dual: float) -> tuple[Floats, Floats, Floats, float]:
-    slab.move(primal, dual)
+def _curved(slab: Slab) -> tuple[Floats, Floats, Floats, float]:
     return slab.curvature()
 
 

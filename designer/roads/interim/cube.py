@@ -12,7 +12,7 @@ import math
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, field
-from typing import TypeVar
+from typing import Any, TypeVar
 
 import numpy as np
 import numpy.typing as npt
@@ -22,8 +22,11 @@ from designer.roads.interim.cores import CORES
 from designer.setting.setting import Setting
 
 Floats = npt.NDArray[np.float64]
+Places = npt.NDArray[np.int64]
 Result = TypeVar("Result")
 
+FEW = 4
+"""Profiles without order take several times longer each: one in so many must be left."""
 SLAB = 1 << 13
 """Profiles handled at once: their arrays stay in the cache."""
 
@@ -44,6 +47,17 @@ class Slab:
     step: tuple[Floats, Floats] | None = None
     bend: Floats | None = None
     inverse: Floats = field(default_factory=lambda: np.empty(0))
+    first: int = 0
+
+    @property
+    def places(self) -> Places:
+        """The numbers of its profiles, row-major."""
+        return np.arange(self.first, self.first + self.x[0].size)
+
+    @property
+    def weights(self) -> Floats:
+        """The probabilities of its profiles."""
+        return np.multiply.outer(*self.odds).ravel()
 
     def sums(self, tables: Floats) -> Floats:
         """Sum over the parties of tables (stacked types, options)."""
@@ -78,7 +92,7 @@ class Slab:
         """Averages of x and of d / sum(d), of the pairs, d = x / z, and of x z."""
         d = self.x / self.z
         self.inverse = 1.0 / d.sum(axis=0)
-        gap = self.mean(np.einsum("kab,kab->ab", self.x, self.z))
+        gap = self.mean(np.einsum("k...,k...->...", self.x, self.z))
         return self.see(self.x), self.see(d * self.inverse), self._pairs(d), gap
 
     def _pairs(self, d: Floats) -> Floats:
@@ -111,7 +125,7 @@ class Slab:
         """
         ratio = self.sums(tables)
         d = self.x / self.z
-        level = (np.einsum("kab,kab->ab", d, ratio) - 1.0) * self.inverse
+        level = (np.einsum("k...,k...->...", d, ratio) - 1.0) * self.inverse
         np.subtract(level, ratio, out=ratio)
         ratio /= self.z
         least = (-1.0 - float(ratio.max()), float(ratio.min()))
@@ -142,13 +156,64 @@ class Slab:
         e = target / self.z
         e -= self.x
         e -= self.bend if share == 1.0 else share * self.bend
-        level = (e.sum(axis=0) + np.einsum("kab,kab->ab", d, dz)) * self.inverse
+        level = (e.sum(axis=0) + np.einsum("k...,k...->...", d, dz)) * self.inverse
         np.subtract(level, dz, out=dz)
         d *= dz
         e -= d
         self.step = e, dz
         least = float(np.divide(e, self.x, out=d).min())
         return least, float(np.divide(dz, self.z, out=d).min())
+
+
+@dataclass(eq=False)
+class Scattered(Slab):
+    """Profiles without order: those at which it is not yet clear what is best; (options, R).
+
+    kinds  the sparse matrix of profiles by stacked types
+    codes  per two parties their stacked types, and which pair of those each profile has
+    """
+
+    kinds: Any = None
+    codes: list[tuple[slice, slice, Places]] = field(default_factory=list)
+    numbers: Places = field(default_factory=lambda: np.empty(0, dtype=np.int64))
+
+    @property
+    def places(self) -> Places:
+        """The numbers of its profiles, row-major."""
+        return self.numbers
+
+    @property
+    def weights(self) -> Floats:
+        """The probabilities of its profiles."""
+        return self.odds[0]
+
+    def sums(self, tables: Floats) -> Floats:
+        """As of slabs."""
+        total: Floats = np.ascontiguousarray((self.kinds @ tables).T)
+        return total
+
+    def see(self, values: Floats) -> Floats:
+        """As of slabs."""
+        seen: Floats = self.kinds.T @ (values * self.odds[0]).T
+        return seen
+
+    def mean(self, values: Floats) -> float:
+        """As of slabs."""
+        return float(values @ self.odds[0])
+
+    def _pairs(self, d: Floats) -> Floats:
+        found = []
+        for k in range(len(d) - 1):
+            share = d[k] * self.inverse * self.odds[0]
+            for other in range(k + 1, len(d)):
+                both = share * d[other]
+                block = np.diag(self.kinds.T @ both)
+                for rows, columns, code in self.codes:
+                    shape = rows.stop - rows.start, columns.stop - columns.start
+                    part = np.bincount(code, both, shape[0] * shape[1]).reshape(shape)
+                    block[rows, columns], block[columns, rows] = part, part.T
+                found.append(block)
+        return np.array(found)
 
 
 def curved(blocks: Floats, options: int) -> Floats:
@@ -176,6 +241,8 @@ class Cube:
         self.outer, self.outer_weight = self._half(range(self.cut))
         self.inner, self.inner_weight = self._half(range(self.cut, len(shape)))
         self.slabs: list[Slab] = []
+        self.weight = 1.0
+        self.fixed = np.zeros((sum(shape), len(setting.options)))
 
     def _half(self, parties: range) -> tuple[Floats, Floats]:
         """Indicators of the types of some parties, and the probability, per half-profile."""
@@ -203,7 +270,60 @@ class Cube:
             slab = Slab(outer, self.inner, odds, x, x)
             price = slab.sums(tables)
             slab.z = price.max(axis=0) + margin - price
+            slab.first = first * len(self.inner)
             self.slabs.append(slab)
+
+    def settle(self, margin: float, least: int) -> None:
+        """Fix the best option wherever every other lacks more than a margin.
+
+        Only where that leaves few of the profiles open, but at least `least`.
+        """
+        from scipy.sparse import csr_array
+
+        lacks = self.each(_second)
+        whole = np.concatenate(lacks)
+        if len(whole) <= FEW * least:
+            return
+        margin = max(margin, float(np.partition(whole, least)[least]))
+        if FEW * int(np.count_nonzero(whole <= margin)) > len(whole):
+            return
+        parts = []
+        for slab, lack in zip(self.slabs, lacks, strict=True):
+            open_to = lack <= margin
+            x, z = slab.x.reshape(len(slab.x), -1), slab.z.reshape(len(slab.z), -1)
+            pure = np.arange(len(z))[:, None] == z.argmin(axis=0)
+            self.fixed += slab.see((pure & ~open_to).astype(np.float64).reshape(slab.x.shape))
+            parts.append(
+                (slab.places[open_to], slab.weights[open_to], x[:, open_to], z[:, open_to])
+            )
+        numbers, weights, chances, missing = zip(*parts, strict=True)
+        place = np.concatenate(numbers)
+        odds = np.concatenate(weights)
+        self.weight = float(odds.sum())
+        shape = self.setting.shape
+        starts = [int(v) for v in np.cumsum([0, *shape[:-1]])]
+        types = np.unravel_index(place, shape)
+        columns = np.stack(types, axis=1) + starts
+        rows, whole_shape = np.arange(0, columns.size + 1, len(shape)), (len(place), sum(shape))
+        self.slabs = [
+            Scattered(
+                self.outer,
+                self.inner,
+                (odds, odds),
+                np.concatenate(chances, axis=1),
+                np.concatenate(missing, axis=1),
+                kinds=csr_array((np.ones(columns.size), columns.ravel(), rows), whole_shape),
+                codes=[
+                    (
+                        slice(starts[i], starts[i] + shape[i]),
+                        slice(starts[j], starts[j] + shape[j]),
+                        types[i] * shape[j] + types[j],
+                    )
+                    for i, j in itertools.combinations(range(len(shape)), 2)
+                ],
+                numbers=place,
+            )
+        ]
 
     def each(self, work: Callable[[Slab], Result]) -> list[Result]:
         """The work on every slab, on both cores where there are many."""
@@ -217,19 +337,26 @@ class Cube:
         with ThreadPoolExecutor(max_workers=CORES) as pool:
             return list(pool.map(watched, self.slabs))
 
-    def closest(self, most: int) -> tuple[npt.NDArray[np.int64], Floats, Floats]:
+    def closest(self, most: int) -> tuple[Places, Floats, Floats]:
         """The profiles whose second-best option lacks least: types (R, n), x and z (R, K)."""
-        lacks = [np.partition(slab.z, 1, axis=0)[1].ravel() for slab in self.slabs]
+        lacks = self.each(_second)
         whole = np.concatenate(lacks)
-        places = np.arange(len(whole))
+        chosen = np.arange(len(whole))
         if len(whole) > most:
-            places = np.sort(np.argpartition(whole, most)[:most])
+            chosen = np.sort(np.argpartition(whole, most)[:most])
         edges = np.cumsum([0, *(len(part) for part in lacks)])
-        chances, missing = [], []
+        places, chances, missing = [], [], []
         for slab, first, last in zip(self.slabs, edges[:-1], edges[1:], strict=True):
-            own = places[(places >= first) & (places < last)] - first
+            own = chosen[(chosen >= first) & (chosen < last)] - first
+            places.append(slab.places[own])
             chances.append(slab.x.reshape(len(slab.x), -1)[:, own].T)
             missing.append(slab.z.reshape(len(slab.z), -1)[:, own].T)
-        at = np.unravel_index(places, self.setting.shape)
+        at = np.unravel_index(np.concatenate(places), self.setting.shape)
         types = np.stack(at, axis=1).astype(np.int64)
         return types, np.concatenate(chances), np.concatenate(missing)
+
+
+def _second(slab: Slab) -> Floats:
+    """What the second-best option lacks, per profile."""
+    lacks: Floats = np.partition(slab.z, 1, axis=0)[1].ravel()
+    return lacks
