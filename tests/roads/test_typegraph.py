@@ -393,7 +393,7 @@ def stubborn_lotteries(design: Design) -> Settled | None:
         assert all(isinstance(found, Base) for found in bases)
         parts = self._parts(ordered=True)
         known = tuple(found for found in bases if isinstance(found, Base))
-        return Mixture(program, outcome, self.opened, parts, decided, tuple(works), known)
+        return Mixture(program, outcome, self.opened, parts, (), decided, tuple(works), known)
 
     with pytest.MonkeyPatch.context() as patch:
         patch.setattr(walk, "FIRST", 0)
@@ -509,7 +509,48 @@ def test_cuts_for_other_terms_are_rejected() -> None:
         other["terms"][key] = value
         assert check(setting, other) != [], key
     document["terms"].update(balance="ex-post", budget="no-deficit")
-    assert "case by case" in check(setting, document)[0]
+    assert "single pots" in check(setting, document)[0]
+
+
+def a_pot(reduction: dict[str, Any]) -> list[Any]:
+    found: list[Any] = next(pot for pot in reduction["pots"] if any(len(p) > 1 for p in pot[1]))
+    return found
+
+
+def cut_short(reduction: dict[str, Any]) -> None:
+    path = next(path for path in a_pot(reduction)[1] if len(path) > 1)
+    path.pop()
+
+
+def turned(reduction: dict[str, Any]) -> None:
+    path = next(path for path in a_pot(reduction)[1] if len(path) > 1)
+    path.reverse()
+
+
+@pytest.mark.parametrize(
+    ("spoil", "says"),
+    [
+        (lambda r: r["pots"].pop(), "differ"),
+        (lambda r: r.pop("pots"), "differ"),
+        (lambda r: a_pot(r).__setitem__(0, 99999), "names what is not there"),
+        (lambda r: a_pot(r)[1].pop(), "does not fit the parties"),
+        (lambda r: a_pot(r)[1][0].append(a_pot(r)[1][0][0]), "does not begin at its own type"),
+        (turned, "does not begin at its own type"),
+        (cut_short, "differs"),
+    ],
+)
+def test_spoiled_pots_are_rejected(spoil: Any, says: str) -> None:
+    setting = project(3, 5, 6)
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "FIRST", 0)
+        verdict = pose(setting, replace(POTS, goal="revenue", subsidy=5), path="type-graph")
+    assert (verdict.path, verdict.status) == ("type-graph", "impossible")
+    document = copy.deepcopy(verdict.proof)
+    assert check(setting, document) == []
+    spoil(document["reduction"])
+    faults = check(setting, document)
+    assert faults
+    assert says in " ".join(faults) or (says == "differ" and "in the proof" in faults[0]), faults
 
 
 # -- chains of lies ----------------------------------------------------------------------

@@ -22,6 +22,7 @@ from designer.demands.terms import Terms
 from designer.engines.watch import Watch
 from designer.program.labels import (
     AtMost,
+    Balances,
     Decides,
     ExpectedDecision,
     ExpectedPay,
@@ -107,9 +108,12 @@ def designs(
 
 @st.composite
 def torn_designs(draw: st.DrawFn, most_profiles: int = 18) -> tuple[Setting, Terms]:
-    """Efficient designs on average with private worths of 0 to 2: many profiles are tied."""
+    """Efficient designs with private worths of 0 to 2: many profiles are tied."""
     ir, balance, budget, goal = draw(st.sampled_from(ON_AVERAGE))
     ir = draw(st.sampled_from((ir, "ex-post", "interim")))
+    if draw(st.integers(0, 3)) == 0:
+        goal = draw(st.sampled_from(("any", "revenue", "revenue", "welfare")))
+        ir, balance, budget = "ex-post", "ex-post", "no-deficit"
     setting = draw(
         small_settings(
             most_profiles=most_profiles, correlated=ir != "interim", interdependent=False
@@ -198,6 +202,9 @@ def _spread(
     return found
 
 
+Add = Callable[[Label, Fraction], None]
+
+
 def _spread_cuts(
     setting: Setting, terms: Terms, reduction: dict[str, Any], small: dict[Label, Fraction]
 ) -> dict[Label, Fraction]:
@@ -235,10 +242,22 @@ def _spread_cuts(
         else:
             for bound in part:
                 _spread_bound(opened, i, bound, small, add)
+    for profile, trails in reduction.get("pots", []):
+        value = small.get(Balances(own.labels_at(profile)), Fraction(0))
+        _spread_pot(own, profile, trails, value, add)
     return found
 
 
-Add = Callable[[Label, Fraction], None]
+def _spread_pot(
+    setting: Setting, profile: int, trails: list[list[int]], value: Fraction, add: Add
+) -> None:
+    """The lies and participation on the paths into one pot."""
+    types = list(setting.types_at(profile))
+    for i, (party, path) in enumerate(zip(setting.parties, trails, strict=True)):
+        at = [setting.labels_at(setting.profile_of((*types[:i], a, *types[i + 1 :]))) for a in path]
+        for here, there in itertools.pairwise(at):
+            add(_lie(party.name, here, here[i], there[i]), value)
+        add(TakesPart(party.name, at[-1][i], at[-1]), value)
 
 
 def _spread_bound(

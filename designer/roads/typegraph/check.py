@@ -42,6 +42,7 @@ from designer.roads.typegraph.listing import rule_of, spelled_base, starts
 from designer.roads.typegraph.lotteries import Bound, Lies, Opened, lottery_program, on_average
 from designer.roads.typegraph.mechanism import unrolled
 from designer.roads.typegraph.mixing import uncovered
+from designer.roads.typegraph.openpots import Pot, pot_fault
 from designer.roads.typegraph.paths import along
 from designer.roads.typegraph.pots import least_pot
 from designer.roads.typegraph.prices import better, prices
@@ -131,7 +132,8 @@ class _Check:
         parts = [read_part(plain, opened, i) for i, plain in enumerate(reduction["cuts"])]
         for found, part in zip(opened.torn, parts, strict=True):
             _followed_part(found, part)
-        program = lottery_program(self.setting, self.terms, opened, parts)
+        pots = self._listed_pots(opened, reduction.get("pots", []))
+        program = lottery_program(self.setting, self.terms, opened, parts, pots)
         faults = same_program(self.document, program)
         if faults or self.document["verdict"] == "impossible":
             return faults
@@ -145,6 +147,7 @@ class _Check:
             raise Rejected("the reduction does not fit the parties")
         values = np.array(primal.numerators(), dtype=object)
         firsts = iter(starts(program))
+        bases = []
         for i, (work, part) in enumerate(zip(works, parts, strict=True)):
             if isinstance(part, Lies):
                 first = next(firsts)
@@ -157,7 +160,29 @@ class _Check:
             if base.most is not None and primal.value(i) > base.most:
                 name = self.setting.parties[i].name
                 raise Rejected(f"{name} cannot be made to pay what the point says")
+            bases.append(base)
+        if in_every_case(self.terms):
+            self._pots(works, bases, None)
         return []
+
+    def _listed_pots(self, opened: Opened, plain: Any) -> list[Pot]:
+        """The listed pots and the paths into them, if each of these bounds a payment."""
+        if plain and not in_every_case(self.terms):
+            raise Rejected("a pot is listed that is not asked to balance")
+        pots = []
+        for profile, trails in plain:
+            if len(trails) != len(opened.works):
+                raise Rejected("the reduction does not fit the parties")
+            paths = tuple(
+                tuple(_at(a, work.types) for a in path)
+                for work, path in zip(opened.works, trails, strict=True)
+            )
+            pots.append(Pot(_at(profile, self.setting.profiles), paths))
+        for work in opened.works:
+            wrong = pot_fault(work, pots)
+            if wrong is not None:
+                raise Rejected(wrong)
+        return pots
 
     def _rows(self, plain: Any) -> list[str]:
         """The document's program is the listed rows of the full one."""

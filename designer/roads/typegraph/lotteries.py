@@ -14,12 +14,15 @@ listed: more of them only describe the payments better.
 Where several types of a party are worst off together, no single paths tell what it can be made
 to pay. It is then *spelled*: its payments by class and torn profile are columns, and rows are
 participation type by type and the lies that are listed.
+
+Where pots are asked case by case, rows `balance` say of listed profiles that the lengths of
+some paths, one per party, cover the outlay.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import cached_property
@@ -28,25 +31,24 @@ import numpy as np
 
 from designer.demands.formulate import Formulation
 from designer.demands.terms import Terms
-from designer.program.affine import Affine, constants, of_columns
+from designer.program.affine import Affine, of_columns
 from designer.program.labels import (
     AtMost,
     Decides,
-    Honest,
     Label,
     Lottery,
     OnAverage,
     Paths,
-    Pays,
     PaysAgainst,
-    TakesPart,
 )
 from designer.program.linear import IndexArray
 from designer.program.program import Program
 from designer.roads.typegraph.bases import OWN, Root, kind
 from designer.roads.typegraph.decided import Decided, Indices
 from designer.roads.typegraph.fibers import Fibers
-from designer.roads.typegraph.torn import Torn, even_sum, places, spelled, sums, torn
+from designer.roads.typegraph.openpots import Pot, pot_rows
+from designer.roads.typegraph.spelled import Spelled
+from designer.roads.typegraph.torn import Torn, even_sum, spelled, sums, torn
 from designer.roads.typegraph.totals import Figures, TotalsDraft, spending
 from designer.setting.setting import IntArray, Setting
 
@@ -144,9 +146,16 @@ def on_average(work: Fibers) -> bool:
 class LotteryDraft(TotalsDraft):
     """The columns and rows above."""
 
-    def __init__(self, setting: Setting, terms: Terms, opened: Opened, parts: Parts) -> None:
+    def __init__(
+        self,
+        setting: Setting,
+        terms: Terms,
+        opened: Opened,
+        parts: Parts,
+        pots: Sequence[Pot] = (),
+    ) -> None:
         """Write everything but the demands."""
-        self.opened, self.parts = opened, parts
+        self.opened, self.parts, self.pots = opened, parts, pots
         super().__init__(setting, terms, opened.figures)
 
     def _lay_out(self) -> None:
@@ -163,10 +172,11 @@ class LotteryDraft(TotalsDraft):
                 self._on_average(i)
             part = self.parts[i]
             if isinstance(part, Lies):
-                Spelled(self, i, part).write()
+                Spelled(self, i, part.listed).write()
                 continue
             for bound in part:
                 self._bounded(i, bound)
+        pot_rows(self, self.pots)
 
     def _lay_out_lotteries(self) -> None:
         setting, opened = self.setting, self.opened
@@ -296,86 +306,6 @@ class LotteryDraft(TotalsDraft):
         return label
 
 
-class Spelled:
-    """The columns and rows of a party whose payments are told apart by graph and type."""
-
-    def __init__(self, draft: LotteryDraft, party: int, lies: Lies) -> None:
-        """Write into a draft whose decision columns are laid out."""
-        self.draft, self.index, self.lies = draft, party, lies
-        self.party = draft.setting.parties[party]
-        self.found = draft.opened.spelled(party)
-        self.at = places(self.found.work, self.found.others)
-
-    def write(self) -> None:
-        """Payments, their average, the listed lies and participation."""
-        draft, at, name, dtype = self.draft, self.at, self.party.name, self.draft.dtype
-        setting = draft.setting
-
-        def pays(j: int) -> Label:
-            return Pays(name, setting.labels_at(int(at.flat[j])))
-
-        self.columns = draft.add_columns("pays", at.size, pays).reshape(at.shape)
-        weights = self.found.sinks().astype(object) * self.found.masses.astype(object)[:, None]
-        average = Affine(
-            np.zeros(at.size, dtype=np.int64),
-            self.columns.ravel(),
-            weights.ravel(),
-            np.zeros(1, dtype=object),
-            np.array([self.found.work.total], dtype=object),
-        )
-        paid = of_columns(draft.totals[self.index : self.index + 1], dtype)
-        draft.require(average - paid, ">=", "at most", lambda _: AtMost(name))
-        self._honest()
-        for a in range(self.party.size):
-            self._takes_part(a)
-
-    def _honest(self) -> None:
-        draft, listed, party = self.draft, self.lies.listed, self.party
-        graph, true, told = listed.T
-        honest = self._worth(graph, true, true) - self._pays(graph, true)
-        lying = self._worth(graph, true, told) - self._pays(graph, told)
-        slack = draft.allowance("slack", draft.opened.terms.slack).repeat(len(listed))
-
-        def label(j: int) -> Label:
-            g, a, b = (int(part) for part in listed[j])
-            at = draft.setting.labels_at(int(self.at[g, a]))
-            return Honest(party.name, party.types[a].label, party.types[b].label, at)
-
-        draft.require(honest - lying + slack, ">=", "honest", label)
-
-    def _takes_part(self, a: int) -> None:
-        draft, party = self.draft, self.party
-        graph = np.arange(len(self.at), dtype=np.int64)
-        types = np.full(len(graph), a)
-        rows = self.at[:, a] if party.outside_depends else types
-        outside = constants(party.outside[rows].astype(object), draft.setting.grain, draft.dtype)
-        utility = self._worth(graph, types, types) - self._pays(graph, types)
-        mean = (utility - outside).mean(self.found.masses.astype(object))
-        allowed = draft.allowance("shortfall", draft.opened.terms.shortfall, party.name)
-        kept = TakesPart(party.name, party.types[a].label)
-        draft.require(mean + allowed, ">=", "takes part", lambda _: kept)
-
-    def _pays(self, graph: IntArray, types: IntArray) -> Affine:
-        return of_columns(self.columns[graph, types], self.draft.dtype)
-
-    def _worth(self, graph: IntArray, true: IntArray, told: IntArray) -> Affine:
-        """The worth to true types of what is decided where others are told."""
-        opened, draft = self.draft.opened, self.draft
-        value = self.party.value.astype(object)[true]
-        place = self.found.place[graph, told]
-        column = np.where(place[:, None] >= 0, opened.column[place], -1)
-        row, option = np.nonzero((column >= 0) & (value != 0))
-        taken = opened.decided.at[self.at[graph, told]].astype(np.int64)
-        settled = value[np.arange(len(graph)), np.where(place < 0, taken, 0)]
-        return Affine(
-            row.astype(np.int64),
-            draft.chances_at[column[row, option]],
-            value[row, option],
-            np.where(place < 0, settled, 0).astype(object),
-            np.full(len(graph), draft.setting.grain, dtype=object),
-        )
-
-
 def _stacked(forms: list[Affine]) -> Affine:
     """Vectors of forms one below the other."""
     starts = np.cumsum([0, *(len(form) for form in forms)])
@@ -388,9 +318,11 @@ def _stacked(forms: list[Affine]) -> Affine:
     )
 
 
-def lottery_program(setting: Setting, terms: Terms, opened: Opened, parts: Parts) -> Program:
+def lottery_program(
+    setting: Setting, terms: Terms, opened: Opened, parts: Parts, pots: Sequence[Pot] = ()
+) -> Program:
     """The program of the only goal with the listed paths."""
     balance = "ex-ante" if terms.balance == "ex-ante" else "none"
     inner = replace(terms, ic="none", ir="none", balance=balance, tidy="none")
-    draft = LotteryDraft(setting, inner, opened, parts)
+    draft = LotteryDraft(setting, inner, opened, parts, pots)
     return Formulation(setting, inner, draft=draft).pose(terms.goals[0])

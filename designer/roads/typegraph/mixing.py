@@ -34,6 +34,8 @@ from designer.roads.typegraph.listing import (
     starts,
 )
 from designer.roads.typegraph.lotteries import Opened, Parts, lottery_program, on_average
+from designer.roads.typegraph.openpots import Pot, pot_at
+from designer.roads.typegraph.pots import low_pots
 from designer.roads.typegraph.road import in_every_case
 from designer.setting.setting import IntArray, Setting
 
@@ -47,6 +49,8 @@ FINE = 1 << 28
 """The parts into which lotteries are rounded while floats lead the search."""
 FEW = 20
 """A basis is carried over where no more than one row in so many is new."""
+POTS = 200
+"""Pots that are listed in one round, the smallest first."""
 CELLS = 250_000
 """Payments by class and type up to which a party is spelled."""
 
@@ -63,6 +67,7 @@ class Mixture:
     outcome: Outcome
     opened: Opened
     parts: Parts
+    pots: tuple[Pot, ...] = ()
     decided: Decided | None = None
     works: tuple[Fibers, ...] = ()
     bases: tuple[Base, ...] = ()
@@ -76,8 +81,8 @@ def uncovered(
         return "no profile is tied"
     if setting.interdependent:
         return "worths depend on the others' types"
-    if in_every_case(terms):
-        return "the pot is asked case by case"
+    if in_every_case(terms) and terms.goals[0] in ("outside-money", "worst-pot"):
+        return "the goal is about single pots"
     if limit is not None and len(decided.tied) > limit:
         return f"{len(decided.tied):,} profiles are tied, more than {limit:,}"
     return None
@@ -128,6 +133,7 @@ class Mixing:
         self.opened = Opened(setting, terms, works)
         self.listed: list[list[Listed]] = [[] for _ in works]
         self.spelling: dict[int, Spelling] = {}
+        self.pots: list[Pot] = []
         self._last: tuple[Program, Basis] | None = None
 
     def settle(self, roots: list[list[Root]], choices: list[IntArray]) -> Mixture:
@@ -148,7 +154,8 @@ class Mixing:
             program = self._program(ordered=True)
             outcome = self._prove(program)
             if outcome.status == "infeasible":
-                return Mixture(program, outcome, self.opened, self._parts(ordered=True))
+                listed = self._parts(ordered=True)
+                return Mixture(program, outcome, self.opened, listed, tuple(self.pots))
             if outcome.primal is None:
                 raise Unsettled("the program over lotteries gave no point")
             found = self._home(program, outcome, outcome.primal)
@@ -211,7 +218,7 @@ class Mixing:
             raise Unsettled(f"more than {CUTS:,} paths and lies bind at ties")
         since = time.perf_counter()
         parts = self._parts(ordered=ordered)
-        program = lottery_program(self.setting, self.terms, self.opened, parts)
+        program = lottery_program(self.setting, self.terms, self.opened, parts, self.pots)
         self._spent("lotteries", since)
         return program
 
@@ -237,8 +244,24 @@ class Mixing:
             for part, alone in self._alone(parts, decided):
                 first = next(firsts)
                 added += part.near(alone, x[first : first + _width(part)])
+        added += self._short(decided)
         self._spent("paths", since)
         return added > 0
+
+    def _short(
+        self, decided: Decided, works: list[Fibers] | None = None, bases: list[Base] | None = None
+    ) -> int:
+        """List pots that are smaller under a rule than is asked; how many."""
+        if not in_every_case(self.terms):
+            return 0
+        if works is None or bases is None:
+            works = [fibers(self.setting, self.terms, decided, i) for i in range(len(self.listed))]
+            bases = [found for work in works if (found := self._based(work)) is not None]
+        low = low_pots(works, bases, -self.terms.subsidy, POTS, self.watch)
+        known = set(self.pots)
+        fresh = [pot for pot in (pot_at(works, bases, p) for p in low) if pot not in known]
+        self.pots += fresh
+        return len(fresh)
 
     def _alone(
         self, parts: list[Listed | Spelling], decided: Decided
@@ -255,10 +278,11 @@ class Mixing:
         added = program.matrix.rows - before.matrix.rows
         if program.matrix.columns != before.matrix.columns or added * FEW > program.matrix.rows:
             return None
+        old, new = before.row_axis.blocks, program.row_axis.blocks
+        if [block.family for block in old] != [block.family for block in new]:
+            return None
         parts, start = [], 0
-        old = [block.count for block in before.row_axis.blocks]
-        new = [block.count for block in program.row_axis.blocks]
-        for count, now in zip(old, new, strict=True):
+        for count, now in zip((b.count for b in old), (b.count for b in new), strict=True):
             parts += [basis.rows[start : start + count], np.full(now - count, BASIC, np.int8)]
             start += count
         return Basis(basis.columns, np.concatenate(parts))
@@ -328,12 +352,21 @@ class Mixing:
                 added += 1
                 break
             bases.append(found)
+        if not added:
+            added = self._short(decided, works, bases)
         self._spent("paths", since)
         if added:
             return None
         parts_listed = self._parts(ordered=True)
         return Mixture(
-            program, outcome, self.opened, parts_listed, decided, tuple(works), tuple(bases)
+            program,
+            outcome,
+            self.opened,
+            parts_listed,
+            tuple(self.pots),
+            decided,
+            tuple(works),
+            tuple(bases),
         )
 
     def _based(self, work: Fibers) -> Base | None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator, Sequence
 from fractions import Fraction
 
 import numpy as np
@@ -16,8 +17,37 @@ BLOCK = 1 << 17
 """Profiles of one block, about."""
 
 
-def least_pot(works: list[Fibers], bases: list[Base], watch: Watch) -> tuple[Fraction, int]:
+def least_pot(works: Sequence[Fibers], bases: Sequence[Base], watch: Watch) -> tuple[Fraction, int]:
     """The least sum_i t_i(theta) - outlay over the profiles in scope, and the first place."""
+    least: int | None = None
+    place = 0
+    for numbers, pot in _pots(works, bases, watch):
+        here = int(pot.argmin())
+        if least is None or int(pot[here]) < least:
+            least, place = int(pot[here]), int(numbers[here])
+    if least is None:
+        raise AssertionError("some profile is in scope")
+    return Fraction(least, works[0].den), place
+
+
+def low_pots(
+    works: Sequence[Fibers], bases: Sequence[Base], need: Fraction, most: int, watch: Watch
+) -> list[int]:
+    """The profiles in scope whose pots are smaller than needed, the lowest `most` of them."""
+    found: list[tuple[int, int]] = []
+    bar = math.ceil(need * works[0].den)
+    for numbers, pot in _pots(works, bases, watch):
+        low = np.flatnonzero((pot < bar).astype(bool))
+        found += [(int(pot[j]), int(numbers[j])) for j in low]
+        if len(found) > 4 * most:
+            found = sorted(found)[:most]
+    return [profile for _, profile in sorted(found)[:most]]
+
+
+def _pots(
+    works: Sequence[Fibers], bases: Sequence[Base], watch: Watch
+) -> Iterator[tuple[IntArray, IntArray]]:
+    """Profile numbers in scope and their pots, in units of 1 / den, block by block."""
     setting, decided = works[0].setting, works[0].decided
     shape, den = setting.shape, works[0].den
     outlay = (decided.palette.astype(object) @ setting.outlay.astype(object)) * (
@@ -30,8 +60,6 @@ def least_pot(works: list[Fibers], bases: list[Base], watch: Watch) -> tuple[Fra
     while split > 1 and size * shape[split - 1] <= BLOCK:
         split -= 1
         size *= shape[split]
-    least: int | None = None
-    place = 0
     inner = shape[split:]
     for block in range(math.prod(shape[:split])):
         start = block * size
@@ -47,16 +75,10 @@ def least_pot(works: list[Fibers], bases: list[Base], watch: Watch) -> tuple[Fra
         flat = pot.ravel()
         if weights is not None:
             inside = np.flatnonzero(weights[start : start + size])
-            if not len(inside):
-                continue
-            here = int(inside[flat[inside].argmin()])
+            if len(inside):
+                yield inside + start, flat[inside]
         else:
-            here = int(flat.argmin())
-        if least is None or int(flat[here]) < least:
-            least, place = int(flat[here]), start + here
-    if least is None:
-        raise AssertionError("some profile is in scope")
-    return Fraction(least, den), place
+            yield np.arange(start, start + size), flat
 
 
 def _paid(

@@ -251,6 +251,8 @@ class Walk:
             "road": "type-graph",
             "cuts": [plain_part(part) for part in found.parts],
         }
+        if found.pots:
+            reduction["pots"] = [[pot.profile, list(map(list, pot.trails))] for pot in found.pots]
         if found.decided is not None:
             reduction["parties"] = [
                 None if isinstance(part, Lies) else plain_base(base)
@@ -261,7 +263,9 @@ class Walk:
             return settled
         paid = [outcome.primal.value(i) for i in range(len(found.bases))]
         works, bases = list(found.works), list(found.bases)
-        return self._with_table(settled, found.decided, works, bases, paid)
+        # Where pots are asked case by case it is the greatest table that fills them.
+        averages = None if in_every_case(self.terms) else paid
+        return self._with_table(settled, found.decided, works, bases, averages)
 
     # -- home ----------------------------------------------------------------------------
 
