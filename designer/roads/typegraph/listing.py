@@ -19,6 +19,7 @@ from designer.roads.typegraph.bases import ZERO, Base, Root
 from designer.roads.typegraph.decided import Decided, Indices
 from designer.roads.typegraph.fibers import Fibers
 from designer.roads.typegraph.lotteries import Bound, Lies, Opened
+from designer.roads.typegraph.paths import shorten
 from designer.roads.typegraph.torn import Torn, shortest
 from designer.setting.setting import IntArray
 
@@ -110,12 +111,24 @@ class Spelling:
         self.lines = Lines(np.zeros((0, 3), dtype=np.int64))
 
     def paths_under(self, alone: Fibers) -> int:
-        """List the lies on shortest paths under a rule, from every type: no type is left free."""
+        """List the lies on shortest paths under a rule, from every type: no type is left free.
+
+        Among shortest paths those of many small steps are taken: they imply the others.
+        """
+        steps = _steps(alone)
+        part = int(steps.sum()) + 1
+        small = alone.reach * part < 2**57
+        far = 2**60 if small else 8 * alone.reach * part
         added = 0
-        for root in range(alone.types):
-            _, tree = shortest(alone, root)
-            graph, a = np.nonzero(tree != np.arange(alone.types))
-            added += self.lines.add(np.column_stack([graph, a, tree[graph, a]]))
+        for start, lengths in alone.blocks():
+            cost = lengths.cost.astype(np.int64 if small else object) * part + steps
+            for root in range(alone.types):
+                begin = np.full(lengths.room.shape, far, dtype=cost.dtype)
+                begin[:, root] = 0
+                _, tree, _ = shorten(cost, begin)
+                graph, a = np.nonzero(tree != np.arange(alone.types))
+                lies = np.column_stack([graph + start, a, tree[graph, a]])
+                added += self.lines.add(lies)
         return added
 
     def lies(self, ordered: bool) -> Lies:
@@ -147,6 +160,17 @@ class Spelling:
     def _tempting(self, start: int, gap: Any, far: float) -> int:
         graph, true, told = np.nonzero((gap > far).astype(bool))
         return self.lines.add(np.column_stack([graph + start, true, told]))
+
+
+def _steps(alone: Fibers) -> IntArray:
+    """Squares of how far types are apart, (T, T), in the direction in which worths vary most."""
+    value = alone.setting.parties[alone.party].value.astype(np.float64)
+    spread = value - value[:, :1]
+    spread -= spread.mean(axis=0)
+    direction = np.linalg.svd(spread, full_matrices=False)[2][0]
+    rank = np.argsort(np.argsort(spread @ direction, kind="stable"))
+    found: IntArray = (rank[:, None] - rank[None, :]).astype(np.int64) ** 2
+    return found
 
 
 def starts(program: Program) -> list[int]:
