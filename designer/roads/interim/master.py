@@ -54,7 +54,7 @@ class Prices:
 
 @dataclass(frozen=True, eq=False)
 class Reached:
-    """A settled goal: its value and the natural multipliers that prove it, by row.
+    """A settled goal: its value and the multipliers that prove it, over rows scaled by `scale`.
 
     prices  what the multipliers say of decisions; None where there is nothing to decide, or
             the goal is the same everywhere
@@ -62,14 +62,21 @@ class Reached:
 
     name: str
     value: Fraction
-    natural: dict[int, Fraction]
+    dual: Vector
+    scale: tuple[IntArray, IntArray]
     prices: Prices | None
 
     def stored(self, program: Program, rows: int) -> Vector:
         """The multipliers over the program's own rows, which columns may have scaled anew."""
-        num, den = program.row_scale
+        (num, den), (old_num, old_den) = program.row_scale, self.scale
+        size = self.dual.size
+        if np.array_equal(num[:size], old_num[:size]) and np.array_equal(
+            den[:size], old_den[:size]
+        ):
+            return replace(self.dual, size=rows)
         entries = {
-            row: value * int(den[row]) / int(num[row]) for row, value in self.natural.items()
+            row: value * int(old_num[row]) * int(den[row]) / (int(old_den[row]) * int(num[row]))
+            for row, value in self.dual.fractions().items()
         }
         return Vector.of(entries, rows)
 

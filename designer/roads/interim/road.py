@@ -261,13 +261,9 @@ class _Walk:
             here = prices_of(dual)
             least = Fraction(0) if earlier is None or here is None else beyond(earlier, here)
             dual = lift(posed.whole, posed.faces, dual, least)
-        num, den = program.row_scale
-        natural = {
-            row: value * int(num[row]) / int(den[row]) for row, value in dual.fractions().items()
-        }
         more = len(self.results) + 1 < len(self.terms.goals)
         prices = prices_of(dual) if more and program.stages[-1].cost.any() else None
-        goal = Reached(self.goal, outcome.value, natural, prices)
+        goal = Reached(self.goal, outcome.value, dual, program.row_scale, prices)
         self.results.append(goal)
         if not more:
             return self._back(posed, outcome, chosen)
