@@ -39,10 +39,10 @@ from designer.roads.typegraph.pots import low_pots
 from designer.roads.typegraph.road import in_every_case
 from designer.setting.setting import IntArray, Setting
 
-TIES = 12_000
+TIES = 60_000
 """Tied profiles up to which their lotteries are columns of one program."""
-CUTS = 150_000
-"""Paths that may be listed."""
+CUTS = 600_000
+"""Paths and lies that may be listed; half as many take about a minute and 1.5 GiB."""
 ROUNDS = 60
 """Times that paths are added."""
 FINE = 1 << 28
