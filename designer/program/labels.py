@@ -149,6 +149,13 @@ class Balances(Label):
 
 
 @dataclass(frozen=True)
+class Covered(Label):
+    """What paths of lies let the parties pay at a profile covers the outlay there."""
+
+    at: tuple[str, ...]
+
+
+@dataclass(frozen=True)
 class Lottery(Label):
     """The probabilities of the options sum to one at a profile."""
 

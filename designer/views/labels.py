@@ -9,6 +9,7 @@ from designer.program.labels import (
     AtMost,
     Balances,
     Clause,
+    Covered,
     Decides,
     ExpectedDecision,
     ExpectedPay,
@@ -129,6 +130,8 @@ def sentence(label: Label | None, folds: int = 1) -> str:
             return "the pot balances on average"
         case Balances(at):
             return f"the pot balances{_where(at)}"
+        case Covered(at):
+            return f"what paths of lies let the parties pay covers the outlay{_where(at)}"
         case Clause(group, key, party, at):
             return f"{_clause(group, key, party)}{_where(at)}"
         case AtMost(party, worst):
@@ -176,7 +179,7 @@ def family(label: Label | None) -> str:
             return "honesty and taking part together"
         case OnAverage():
             return "the decision rule"
-        case Balances():
+        case Balances() | Covered():
             return "the pot"
         case Clause("limit"):
             return "the limits on payments"

@@ -33,7 +33,7 @@ from designer.roads.typegraph.decided import Decided, decide
 from designer.roads.typegraph.fibers import fibers
 from designer.roads.typegraph.listing import rule_of
 from designer.roads.typegraph.mechanism import GraphMechanism, from_plain
-from designer.roads.typegraph.mixing import Mixing, Mixture
+from designer.roads.typegraph.mixing import Mixing, Mixture, uncovered
 from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
 from tests.roads.test_typegraph import CASES, POTS, TYPES, Design, both, project, proof_of
@@ -140,6 +140,24 @@ def test_the_best_answer_needs_lotteries_at_ties() -> None:
     assert isinstance(ours.mechanism, GraphMechanism)
     decided = ours.mechanism.decided
     assert any(0 < int(part) < decided.den for part in decided.palette.flat)
+
+
+def test_the_plain_road_does_not_take_over_where_it_would_not_stop() -> None:
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(walk, "uncovered", lambda *_: "they were not looked for")
+        patch.setattr(walk, "PLAIN_UP_TO", 1_000)
+        verdict = pose(parse_scenario(SITES), path="type-graph")
+    assert (verdict.path, verdict.status, verdict.proved) == ("type-graph", "undecided", False)
+    assert "they were not looked for" in verdict.reason
+    assert "7,776 columns: take --path full" in verdict.reason
+
+
+def test_many_ties_are_given_up_with_their_number() -> None:
+    setting = parse_scenario(SITES)
+    terms = CASES.over(setting)
+    decided = decide_of(setting)
+    assert uncovered(setting, terms, decided) is None
+    assert uncovered(setting, terms, decided, limit=10) == "64 profiles are tied, more than 10"
 
 
 # -- attacks ----------------------------------------------------------------------------

@@ -23,6 +23,7 @@ from designer.engines.watch import Watch
 from designer.program.labels import (
     AtMost,
     Balances,
+    Covered,
     Decides,
     ExpectedDecision,
     ExpectedPay,
@@ -213,7 +214,7 @@ def _spread_cuts(
     decided = decide(own, terms.decision, Watch())
     works = [fibers(own, terms, decided, i) for i in range(len(own.parties))]
     opened = Opened(own, terms, works)
-    reduced = (AtMost, OnAverage, Lottery, Paths)
+    reduced = (AtMost, Covered, OnAverage, Lottery, Paths)
     found: dict[Label, Fraction] = {}
     spelled = {
         own.parties[i].name for i, plain in enumerate(reduction["cuts"]) if isinstance(plain, dict)
@@ -243,7 +244,7 @@ def _spread_cuts(
             for bound in part:
                 _spread_bound(opened, i, bound, small, add)
     for profile, trails in reduction.get("pots", []):
-        value = small.get(Balances(own.labels_at(profile)), Fraction(0))
+        value = small.get(Covered(own.labels_at(profile)), Fraction(0))
         _spread_pot(own, profile, trails, value, add)
     return found
 
@@ -252,6 +253,7 @@ def _spread_pot(
     setting: Setting, profile: int, trails: list[list[int]], value: Fraction, add: Add
 ) -> None:
     """The lies and participation on the paths into one pot."""
+    add(Balances(setting.labels_at(profile)), value)
     types = list(setting.types_at(profile))
     for i, (party, path) in enumerate(zip(setting.parties, trails, strict=True)):
         at = [setting.labels_at(setting.profile_of((*types[:i], a, *types[i + 1 :]))) for a in path]

@@ -15,7 +15,7 @@ Where several types of a party are worst off together, no single paths tell what
 to pay. It is then *spelled*: its payments by class and torn profile are columns, and rows are
 participation type by type and the lies that are listed.
 
-Where pots are asked case by case, rows `balance` say of listed profiles that the lengths of
+Where pots are asked case by case, rows `pots` say of listed profiles that the lengths of
 some paths, one per party, cover the outlay.
 """
 

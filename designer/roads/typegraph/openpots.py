@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from designer.program.affine import Affine
-from designer.program.labels import Balances
+from designer.program.labels import Covered
 from designer.roads.typegraph.bases import Base
 from designer.roads.typegraph.fibers import Fibers
 from designer.roads.typegraph.paths import trail
@@ -125,6 +125,6 @@ def _require(
     draft.require(
         form.plus(opened.terms.subsidy),
         ">=",
-        "balance",
-        lambda j: Balances(setting.labels_at(pots[j].profile)),
+        "pots",
+        lambda j: Covered(setting.labels_at(pots[j].profile)),
     )
