@@ -383,3 +383,18 @@ def test_small_settings_stay_on_the_plain_road() -> None:
     setting = parse_scenario(TIED)
     terms = replace(CASES, tidy=None).over(setting)
     assert choose(setting, terms).road.name == "full"
+
+
+def test_a_trusted_party_pays_nothing_where_nobody_is() -> None:
+    """Off the support nothing is asked of it and no lie of its own leads there."""
+    one = parse_scenario(TIED)
+    setting = replace(one, joint=np.eye(4, dtype=np.int64).ravel(), support_only=True)
+    terms = replace(CASES, ir="none", goal="any", balance="none").over(setting)
+    verdict = pose_terms(setting, replace(terms, trusted=frozenset({"Suth"})), path="type-graph")
+    assert verdict.path == "type-graph"
+    assert verdict.table is not None
+    off = [p for p in range(setting.profiles) if not setting.probability(p)]
+    assert {verdict.table.payment(1, p) for p in off} == {0}
+    assert isinstance(verdict.mechanism, GraphMechanism)
+    assert verdict.audit is not None
+    assert standings(verdict.mechanism) == verdict.audit.standings

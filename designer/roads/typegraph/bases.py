@@ -152,10 +152,11 @@ def _begin(work: Fibers, lengths: Lengths, root: Root) -> IntArray:
 def outside_scope(dist: IntArray, cost: IntArray, scope: IntArray, far: int) -> None:
     """Payments where nothing is asked, high enough that nobody in scope lies its way there.
 
-    t(a) >= t(b) - cost[b, a] for every b in scope; 0 where nothing is in scope.
+    t(a) >= t(b) - cost[b, a] for every b in scope; 0 where nobody in scope could lie.
     """
     need = np.where(scope[:, :, None], dist[:, :, None] - cost, -far).max(axis=1)
-    dist[~scope] = np.where(scope.any(axis=1, keepdims=True), need, 0)[~scope]
+    # A lie that is not asked about costs more than `far`: it needs no deterrent.
+    dist[~scope] = np.where((need > -far).astype(bool), need, 0)[~scope]
 
 
 def cycle(work: Fibers, place: int) -> Cycle:
