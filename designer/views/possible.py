@@ -232,8 +232,9 @@ def _at(profile: Mapping[str, str]) -> str:
 
 
 def _paired(setting: Setting, cells: Sequence[str]) -> str:
-    parties = setting.parties
-    return ", ".join(f"{party.name} {text}" for party, text in zip(parties, cells, strict=True))
+    names = [party.name for party in setting.parties]
+    found = runs(list(zip(names, cells, strict=True)), lambda one: one[0], lambda one: one[1])
+    return ", ".join(f"{span(run[0][0], run[-1][0])} {run[0][1]}" for run in found)
 
 
 def _shown(count: int, limit: int) -> int:
