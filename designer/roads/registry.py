@@ -102,13 +102,15 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
     Raises UsageError if the forced road does not exist or does not apply, or if none does.
     """
     if forced is not None:
-        return Choice(_forced(forced, dict(_reasons(setting, terms))), setting, terms)
+        named = next((road for road in ROADS if road.name == forced), None)
+        if named is not None and named.applies(setting, terms) is None:
+            return Choice(named, setting, terms)
+        raise _cannot(forced, dict(_reasons(setting, terms)))
     small = full.tidies(setting, terms) or _payments(setting) <= full.SMALL_UP_TO
     if small and PLAIN.applies(setting, terms) is None:
         return Choice(PLAIN, setting, terms, small=True)
-    reasons = _reasons(setting, terms)
-    for road, (_, reason) in zip(ROADS, reasons, strict=True):
-        if reason is None:
+    for road in ROADS:
+        if road.applies(setting, terms) is None:
             small = road.name == "interim" and _searched_longer(setting, terms)
             return Choice(PLAIN if small else road, setting, terms, small)
     raise UsageError(
@@ -116,7 +118,7 @@ def choose(setting: Setting, terms: Terms, forced: str | None = None) -> Choice:
             Mistake(
                 "the design",
                 f"{setting.profiles:,} profiles, and no road that goes there: "
-                + "; ".join(f"{name}: {reason}" for name, reason in reasons),
+                + "; ".join(f"{name}: {reason}" for name, reason in _reasons(setting, terms)),
                 "a design that some road can decide",
                 "Weaken a demand that is asked profile by profile, or take fewer types.",
             )
@@ -131,21 +133,15 @@ def _searched_longer(setting: Setting, terms: Terms) -> bool:
     return _payments(setting) <= full.SEARCHED_UP_TO and not direct(setting, terms)
 
 
-def _forced(name: str, reasons: dict[str, str | None]) -> Road:
+def _cannot(name: str, reasons: dict[str, str | None]) -> UsageError:
+    """Why a road cannot be forced."""
     if name not in reasons:
-        raise UsageError(
-            [Mistake("--path", repr(name), f"one of {', '.join(reasons)}", "Pick a road.")]
+        found, expected, remedy = repr(name), f"one of {', '.join(reasons)}", "Pick a road."
+    else:
+        found = f"{name!r}, which does not apply because {reasons[name]}"
+        able = ", ".join(road for road, reason in reasons.items() if reason is None)
+        expected, remedy = (
+            f"a road that applies: {able}",
+            "Leave the option out, or see --why-path.",
         )
-    if reasons[name] is not None:
-        raise UsageError(
-            [
-                Mistake(
-                    "--path",
-                    f"{name!r}, which does not apply because {reasons[name]}",
-                    "a road that applies: "
-                    + ", ".join(road for road, reason in reasons.items() if reason is None),
-                    "Leave the option out, or see --why-path.",
-                )
-            ]
-        )
-    return next(road for road in ROADS if road.name == name)
+    return UsageError([Mistake("--path", found, expected, remedy)])

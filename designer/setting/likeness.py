@@ -41,7 +41,7 @@ def matching(setting: Setting, i: int, j: int) -> IntArray | None:
 
     Options that nothing tells apart keep their order, so that the swap is its own inverse.
     """
-    if not _same_types(setting, i, j):
+    if not _same_types(setting, i, j) or not _same_worths(setting, i, j):
         return None
     profile: IntArray | None = None
     if setting.joint is not None or any(p.depends or p.outside_depends for p in setting.parties):
@@ -87,6 +87,14 @@ def _same_types(setting: Setting, i: int, j: int) -> bool:
         and one.marginal == two.marginal
         and one.compelled == two.compelled
     )
+
+
+def _same_worths(setting: Setting, i: int, j: int) -> bool:
+    """Whether private worths agree up to the order of options: settles nearly every pair."""
+    one, two = setting.parties[i], setting.parties[j]
+    if one.depends or two.depends:
+        return one.depends == two.depends
+    return sorted(one.value.T.tolist()) == sorted(two.value.T.tolist())
 
 
 def _table(setting: Setting, index: int, what: str, profile: IntArray | None) -> IntArray:
