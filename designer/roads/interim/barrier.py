@@ -14,7 +14,7 @@ to list.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import partial
 
@@ -25,12 +25,14 @@ from designer.engines.floats import floats
 from designer.engines.watch import Watch
 from designer.program.program import Program
 from designer.roads.interim.cores import one_blas_thread
-from designer.roads.interim.cube import Cube, Floats, Slab, curved
+from designer.roads.interim.cube import CELLS, Cube
 from designer.roads.interim.draft import InterimDraft
+from designer.roads.interim.rule import Index
+from designer.roads.interim.slab import Floats, Slab, curved
 from designer.setting.setting import Setting
 
-CELLS = 12_000_000
-"""Chances up to which they are held in memory, four times over: 384 MiB."""
+LOOKED = 600_000_000
+"""Chances up to which profiles are looked at for ties."""
 ROWS = 4_000
 """Rows of the master up to which its matrix is held densely."""
 MOST = 100
@@ -70,6 +72,7 @@ class Interior:
     chances   of the options there, shape (R, K);  lacks  what each lacks to be the best
     money     what is at stake at a profile, at most
     tight     bool per row of the master: whether it binds
+    cube      all profiles that are not settled
     """
 
     prices: tuple[Floats, ...]
@@ -78,26 +81,34 @@ class Interior:
     lacks: Floats
     money: float
     tight: npt.NDArray[np.bool_]
+    cube: Cube
 
 
-def fits(setting: Setting, rows: int) -> bool:
-    """Whether chances and rows fit in memory."""
+def fits(setting: Setting, rows: int, ties: bool) -> bool:
+    """Whether chances and rows fit in memory; `ties`: those at tied profiles may."""
     options = len(setting.options)
-    return options > 1 and setting.profiles * options <= CELLS and rows <= ROWS
+    most = LOOKED if ties else CELLS
+    return options > 1 and setting.profiles * options <= most and rows <= ROWS
 
 
 def interior(
-    setting: Setting, draft: InterimDraft, program: Program, watch: Watch
+    setting: Setting,
+    draft: InterimDraft,
+    program: Program,
+    watch: Watch,
+    first: Sequence[Index] = (),
 ) -> Interior | None:
     """A point near the optimum; None where there is none or none is found.
 
-    `program` is a master without rules. Raises Stopped as `watch` says.
+    `program` is a master without rules; `first` are indices that decide before all prices, so
+    that only what they leave tied is open. Raises Stopped as `watch` says.
     """
-    if not fits(setting, program.matrix.rows):
+    if not fits(setting, program.matrix.rows, bool(first)):
         return None
     try:
         with np.errstate(all="ignore"), one_blas_thread():
-            return _Path(setting, _Rows.of(setting, draft, program), watch).walk()
+            path = _Path(setting, _Rows.of(setting, draft, program), watch, first)
+            return path.walk() if path.begin() else None
     except np.linalg.LinAlgError:
         return None
 
@@ -168,9 +179,9 @@ class _Rows:
 class _Path:
     """The iterates: multipliers y of the rows, slacks s, unknowns u, and the cube's x and z."""
 
-    def __init__(self, setting: Setting, rows: _Rows, watch: Watch) -> None:
+    def __init__(self, setting: Setting, rows: _Rows, watch: Watch, first: Sequence[Index]) -> None:
         self.setting, self.rows, self.watch = setting, rows, watch
-        self.cube = Cube(setting, watch)
+        self.cube = Cube(setting, watch, first)
         self.options = len(setting.options)
         from scipy.sparse import csr_array
 
@@ -180,9 +191,9 @@ class _Path:
         self.share = np.repeat(marginal, self.options)
         self.drifts: list[float] = []  # what each step, taken whole, changes between options
         self.far = float("inf")  # relative complementarity
-        self._begin()
 
-    def _begin(self) -> None:
+    def begin(self) -> bool:
+        """Choose where to start; whether there is room."""
         rows = self.rows
         a, b, free = rows.quantities, rows.others, rows.inequalities
         self.size = max(1.0, float(np.abs(a).max(initial=0.0)))
@@ -197,12 +208,15 @@ class _Path:
         edges = np.cumsum([0, *self.setting.shape])[:-1]
         spread = np.maximum.reduceat(tables, edges) - np.minimum.reduceat(tables, edges)
         self.money = max(float(spread.max(axis=1).sum()), 1e-6 * self.size)
-        self.cube.start(tables, self.money)
-        even = np.full(a.shape[1], 1.0 / self.options)
+        if not self.cube.start(tables, self.money):
+            return False
+        seen = self.cube.each(lambda slab: slab.see(slab.x))
+        even = (self.cube.fixed.ravel() + _total(seen)) / self.share
         self.u = np.linalg.lstsq(b.T @ b, b.T @ (rows.bound - a @ even), rcond=None)[0]
         slack = (a @ even + b @ self.u - rows.bound)[:free]
         top = float(np.abs(slack).max(initial=0.0))
         self.s = np.maximum(slack, 0.1 * top + 0.01 * self.size)
+        return True
 
     def _tables(self, price: Floats) -> Floats:
         """Prices of interim quantities as stacked tables of prices per unit of probability."""
@@ -341,7 +355,7 @@ class _Path:
         tight = np.zeros(rows.count, dtype=bool)
         binds = rows.places[self.y[: rows.inequalities] > self.s]
         tight[binds[binds < rows.count]] = True
-        return Interior(prices, *self.cube.closest(CANDIDATES), self.money, tight)
+        return Interior(prices, *self.cube.closest(CANDIDATES), self.money, tight, self.cube)
 
 
 def _curved(slab: Slab) -> tuple[Floats, Floats, Floats, float]:

@@ -9,230 +9,43 @@ from __future__ import annotations
 
 import itertools
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass, field
-from typing import Any, TypeVar
+from typing import TypeVar
 
 import numpy as np
-import numpy.typing as npt
 
 from designer.engines.watch import Watch
 from designer.roads.interim.cores import CORES
+from designer.roads.interim.leading import Leading, Mask
+from designer.roads.interim.rule import Index
+from designer.roads.interim.slab import Floats, Places, Slab, scattered
 from designer.setting.setting import Setting
 
-Floats = npt.NDArray[np.float64]
-Places = npt.NDArray[np.int64]
 Result = TypeVar("Result")
 
 FEW = 4
 """Profiles without order take several times longer each: one in so many must be left."""
 SLAB = 1 << 13
 """Profiles handled at once: their arrays stay in the cache."""
-
-
-@dataclass(eq=False)
-class Slab:
-    """Some outer halves with all inner ones; arrays are (options, outer, inner).
-
-    outer, inner    indicators of types, with the same times the half-profile's probability
-    x  chances of the options; z  what each lacks to be the best one; step  the next moves of both
-    """
-
-    outer: Floats
-    inner: Floats
-    odds: tuple[Floats, Floats]
-    x: Floats
-    z: Floats
-    step: tuple[Floats, Floats] | None = None
-    bend: Floats | None = None
-    inverse: Floats = field(default_factory=lambda: np.empty(0))
-    first: int = 0
-
-    @property
-    def places(self) -> Places:
-        """The numbers of its profiles, row-major."""
-        return np.arange(self.first, self.first + self.x[0].size)
-
-    @property
-    def weights(self) -> Floats:
-        """The probabilities of its profiles."""
-        return np.multiply.outer(*self.odds).ravel()
-
-    def sums(self, tables: Floats) -> Floats:
-        """Sum over the parties of tables (stacked types, options)."""
-        split = self.outer.shape[1]
-        high, low = self.outer @ tables[:split], self.inner @ tables[split:]
-        total: Floats = high.T[:, :, None] + low.T[:, None, :]
-        return total
-
-    def see(self, values: Floats) -> Floats:
-        """What every type sees of values on average, times its probability."""
-        high, low = self.odds
-        outer = self.outer.T @ ((values @ low).T * high[:, None])
-        inner = self.inner.T @ (np.matmul(high, values).T * low[:, None])
-        return np.vstack([outer, inner])
-
-    def mean(self, values: Floats) -> float:
-        """The average of one value per profile."""
-        high, low = self.odds
-        return float(high @ (values @ low))
-
-    def move(self, primal: float, dual: float) -> None:
-        """Take the step."""
-        if self.step is not None:
-            dx, dz = self.step
-            dx *= primal
-            dz *= dual
-            self.x += dx
-            self.z += dz
-            self.step = self.bend = None
-
-    def curvature(self) -> tuple[Floats, Floats, Floats, float]:
-        """Averages of x and of d / sum(d), of the pairs, d = x / z, and of x z."""
-        d = self.x / self.z
-        self.inverse = 1.0 / d.sum(axis=0)
-        gap = self.mean(np.einsum("k...,k...->...", self.x, self.z))
-        return self.see(self.x), self.see(d * self.inverse), self._pairs(d), gap
-
-    def _pairs(self, d: Floats) -> Floats:
-        """The average of d_k d_l / sum(d), seen by pairs of stacked types, for k < l."""
-        options = len(d)
-        outer, inner = self.outer.shape[1], self.inner.shape[1]
-        high, low = self.odds
-        size = outer + inner
-        weighed_outer, weighed_inner = self.outer * high[:, None], self.inner * low[:, None]
-        found = np.empty((options * (options - 1) // 2, size, size))
-        both = np.empty_like(d[0])
-        place = 0
-        for k in range(options - 1):
-            share = d[k] * self.inverse
-            for other in range(k + 1, options):
-                np.multiply(share, d[other], out=both)
-                block = found[place]
-                block[:outer, :outer] = weighed_outer.T @ ((both @ low)[:, None] * self.outer)
-                block[outer:, outer:] = weighed_inner.T @ ((high @ both)[:, None] * self.inner)
-                cross = weighed_outer.T @ (both @ weighed_inner)
-                block[:outer, outer:], block[outer:, :outer] = cross, cross.T
-                place += 1
-        return found
-
-    def predict(self, tables: Floats) -> tuple[Floats, Floats, float, float, float]:
-        """Look at the step that aims at x z = 0 when prices move by tables.
-
-        What the corrector adds (per unit of its target) and takes away (for dx dz), the average
-        move of the best option's price, and the least of dx / x and dz / z.
-        """
-        ratio = self.sums(tables)
-        d = self.x / self.z
-        level = (np.einsum("k...,k...->...", d, ratio) - 1.0) * self.inverse
-        np.subtract(level, ratio, out=ratio)
-        ratio /= self.z
-        least = (-1.0 - float(ratio.max()), float(ratio.min()))
-        unit = 1.0 / self.z
-        per_target = self.see(self._centred(unit, d))
-        # dx dz / z = -x r (1 + r) with r = dz / z
-        bend = np.add(ratio, 1.0, out=unit)
-        bend *= ratio
-        bend *= self.x
-        self.bend = -bend
-        return per_target, self.see(self._centred(self.bend, d)), self.mean(level), *least
-
-    def _centred(self, e: Floats, d: Floats) -> Floats:
-        """Write e - d * sum(e) / sum(d)."""
-        centred: Floats = d * (e.sum(axis=0) * self.inverse)
-        np.subtract(e, centred, out=centred)
-        return centred
-
-    def correct(self, tables: Floats, target: float, share: float) -> tuple[float, float]:
-        """Fix the step that aims at x z = target, with a share of the predictor's dx dz.
-
-        The least of dx / x and dz / z.
-        """
-        if self.bend is None:
-            raise AssertionError("a corrector follows a predictor")
-        dz = self.sums(tables)
-        d = self.x / self.z
-        e = target / self.z
-        e -= self.x
-        e -= self.bend if share == 1.0 else share * self.bend
-        level = (e.sum(axis=0) + np.einsum("k...,k...->...", d, dz)) * self.inverse
-        np.subtract(level, dz, out=dz)
-        d *= dz
-        e -= d
-        self.step = e, dz
-        least = float(np.divide(e, self.x, out=d).min())
-        return least, float(np.divide(dz, self.z, out=d).min())
-
-
-@dataclass(eq=False)
-class Scattered(Slab):
-    """Profiles without order: those at which it is not yet clear what is best; (options, R).
-
-    kinds  the sparse matrix of profiles by stacked types
-    codes  per two parties their stacked types, and which pair of those each profile has
-    """
-
-    kinds: Any = None
-    codes: list[tuple[slice, slice, Places]] = field(default_factory=list)
-    numbers: Places = field(default_factory=lambda: np.empty(0, dtype=np.int64))
-
-    @property
-    def places(self) -> Places:
-        """The numbers of its profiles, row-major."""
-        return self.numbers
-
-    @property
-    def weights(self) -> Floats:
-        """The probabilities of its profiles."""
-        return self.odds[0]
-
-    def sums(self, tables: Floats) -> Floats:
-        """As of slabs."""
-        total: Floats = np.ascontiguousarray((self.kinds @ tables).T)
-        return total
-
-    def see(self, values: Floats) -> Floats:
-        """As of slabs."""
-        seen: Floats = self.kinds.T @ (values * self.odds[0]).T
-        return seen
-
-    def mean(self, values: Floats) -> float:
-        """As of slabs."""
-        return float(values @ self.odds[0])
-
-    def _pairs(self, d: Floats) -> Floats:
-        found = []
-        for k in range(len(d) - 1):
-            share = d[k] * self.inverse * self.odds[0]
-            for other in range(k + 1, len(d)):
-                both = share * d[other]
-                block = np.diag(self.kinds.T @ both)
-                for rows, columns, code in self.codes:
-                    shape = rows.stop - rows.start, columns.stop - columns.start
-                    part = np.bincount(code, both, shape[0] * shape[1]).reshape(shape)
-                    block[rows, columns], block[columns, rows] = part, part.T
-                found.append(block)
-        return np.array(found)
-
-
-def curved(blocks: Floats, options: int) -> Floats:
-    """Sum over profiles of diag(d) - d d' / sum(d), seen by pairs of stacked types and options."""
-    size = blocks.shape[1]
-    found = np.zeros((size, options, size, options))
-    for block, (k, other) in zip(blocks, itertools.combinations(range(options), 2), strict=True):
-        found[:, k, :, other] -= block
-        found[:, other, :, k] -= block
-        found[:, k, :, k] += block
-        found[:, other, :, other] += block
-    return found.reshape(size * options, size * options)
+PIECE = 1 << 14
+"""The same without order."""
+CELLS = 12_000_000
+"""Chances up to which they are held in memory, four times over: 384 MiB."""
+SCATTERED = 4_000_000
+"""The same without order: what is known of each profile is held, too."""
+NEVER = 1e60
+"""What an option lacks that is not open: far beyond money, but its square is still a number."""
 
 
 class Cube:
     """All slabs."""
 
-    def __init__(self, setting: Setting, watch: Watch) -> None:
-        """Split the parties in two halves of about the same number of profiles."""
+    def __init__(self, setting: Setting, watch: Watch, first: Sequence[Index] = ()) -> None:
+        """Split the parties in two halves of about the same number of profiles.
+
+        first  indices that decide before all prices
+        """
         self.setting, self.watch = setting, watch
         shape = setting.shape
         cuts = range(len(shape))
@@ -240,6 +53,7 @@ class Cube:
         self.marginals = [np.array([float(p) for p in one.marginal]) for one in setting.parties]
         self.outer, self.outer_weight = self._half(range(self.cut))
         self.inner, self.inner_weight = self._half(range(self.cut, len(shape)))
+        self.leading = Leading(setting, first, self.cut) if first else None
         self.slabs: list[Slab] = []
         self.weight = 1.0
         self.fixed = np.zeros((sum(shape), len(setting.options)))
@@ -258,19 +72,75 @@ class Cube:
             start += shape[place]
         return found, weight
 
-    def start(self, tables: Floats, margin: float) -> None:
-        """Even chances, and prices whose best option still lacks `margin`."""
+    def start(self, tables: Floats, margin: float) -> bool:
+        """Even chances, and prices whose best option still lacks `margin`.
+
+        With leading indices, among the options that they leave open: where that is one, it is
+        settled. Whether there is room for all that are not.
+        """
         options = tables.shape[1]
         rows = max(1, SLAB // len(self.inner))
+        dense = self.setting.profiles * options <= CELLS
+        if self.leading is not None:
+            tied = self._tied(rows, options)
+            if tied is not None and not (dense and FEW * len(tied[0]) > self.setting.profiles):
+                self._start_scattered(*tied, tables, margin)
+                return True
+            self.fixed[:] = 0.0
+        if not dense:
+            return False
         self.slabs = []
         for first in range(0, len(self.outer), rows):
-            outer = self.outer[first : first + rows]
-            odds = self.outer_weight[first : first + rows], self.inner_weight
-            x = np.full((options, len(outer), len(self.inner)), 1.0 / options)
-            slab = Slab(outer, self.inner, odds, x, x)
+            slab = self._slab(first, rows, np.empty(0))
             price = slab.sums(tables)
-            slab.z = price.max(axis=0) + margin - price
-            slab.first = first * len(self.inner)
+            if self.leading is None:
+                slab.x = np.full(price.shape, 1.0 / options)
+                slab.z = price.max(axis=0) + margin - price
+            else:
+                slab.x, slab.z = _among(self.leading.open(first, rows), price, margin)
+            self.slabs.append(slab)
+        return True
+
+    def _slab(self, first: int, rows: int, chances: Floats) -> Slab:
+        odds = self.outer_weight[first : first + rows], self.inner_weight
+        outer = self.outer[first : first + rows]
+        place = first * len(self.inner)
+        return Slab(outer, self.inner, odds, chances, chances, first=place)
+
+    def _tied(self, rows: int, options: int) -> tuple[Places, Floats, Mask] | None:
+        """The profiles at which several options are open: numbers, probabilities, and which.
+
+        All others are fixed. None where they are too many.
+        """
+        if self.leading is None:
+            raise AssertionError("nothing is tied without an index that leads")
+        parts, count = [], 0
+        for first in range(0, len(self.outer), rows):
+            self.watch.check()
+            best = self.leading.open(first, rows)
+            several = (np.count_nonzero(best, axis=0) > 1).ravel()
+            slab = self._slab(first, rows, np.empty(0))
+            self.fixed += slab.see((best & ~several.reshape(best[0].shape)).astype(np.float64))
+            own = np.flatnonzero(several)
+            count += len(own)
+            if count * options > SCATTERED:
+                return None
+            places = slab.first + own
+            parts.append((places, slab.weights[own], best.reshape(options, -1)[:, own]))
+        numbers, odds, open_to = zip(*parts, strict=True)
+        return np.concatenate(numbers), np.concatenate(odds), np.concatenate(open_to, axis=1)
+
+    def _start_scattered(
+        self, numbers: Places, odds: Floats, open_to: Mask, tables: Floats, margin: float
+    ) -> None:
+        self.weight = float(odds.sum())
+        like = self._slab(0, 0, np.empty(0))
+        self.slabs = []
+        for first in range(0, len(numbers), PIECE):
+            own = slice(first, first + PIECE)
+            nothing = np.empty(0)
+            slab = scattered(like, self.setting.shape, numbers[own], odds[own], nothing, nothing)
+            slab.x, slab.z = _among(open_to[:, own], slab.sums(tables), margin)
             self.slabs.append(slab)
 
     def settle(self, margin: float, least: int) -> None:
@@ -278,8 +148,6 @@ class Cube:
 
         Only where that leaves few of the profiles open, but at least `least`.
         """
-        from scipy.sparse import csr_array
-
         lacks = self.each(_second)
         whole = np.concatenate(lacks)
         if len(whole) <= FEW * least:
@@ -300,30 +168,9 @@ class Cube:
         place = np.concatenate(numbers)
         odds = np.concatenate(weights)
         self.weight = float(odds.sum())
-        shape = self.setting.shape
-        starts = [int(v) for v in np.cumsum([0, *shape[:-1]])]
-        types = np.unravel_index(place, shape)
-        columns = np.stack(types, axis=1) + starts
-        rows, whole_shape = np.arange(0, columns.size + 1, len(shape)), (len(place), sum(shape))
-        self.slabs = [
-            Scattered(
-                self.outer,
-                self.inner,
-                (odds, odds),
-                np.concatenate(chances, axis=1),
-                np.concatenate(missing, axis=1),
-                kinds=csr_array((np.ones(columns.size), columns.ravel(), rows), whole_shape),
-                codes=[
-                    (
-                        slice(starts[i], starts[i] + shape[i]),
-                        slice(starts[j], starts[j] + shape[j]),
-                        types[i] * shape[j] + types[j],
-                    )
-                    for i, j in itertools.combinations(range(len(shape)), 2)
-                ],
-                numbers=place,
-            )
-        ]
+        x, z = np.concatenate(chances, axis=1), np.concatenate(missing, axis=1)
+        like = self.slabs[0]
+        self.slabs = [scattered(like, self.setting.shape, place, odds, x, z)]
 
     def each(self, work: Callable[[Slab], Result]) -> list[Result]:
         """The work on every slab, on both cores where there are many."""
@@ -336,6 +183,30 @@ class Cube:
             return [watched(slab) for slab in self.slabs]
         with ThreadPoolExecutor(max_workers=CORES) as pool:
             return list(pool.map(watched, self.slabs))
+
+    def better(
+        self, rule: Floats, prices: Floats, least: float, most: int
+    ) -> tuple[Places, Places]:
+        """Where the best option at some prices beats the best by `rule`: types (R, n), option.
+
+        By more than `least`; the `most` profiles where it does so by most. Open options alone.
+        """
+
+        def look(slab: Slab) -> tuple[Floats, Places, Places]:
+            closed = slab.z >= NEVER / 2
+            first = np.where(closed, -np.inf, slab.sums(rule)).argmax(axis=0)
+            price = slab.sums(prices)
+            price[closed] = -np.inf
+            best = price.argmax(axis=0)
+            gain = price.max(axis=0) - np.take_along_axis(price, first[None], axis=0)[0]
+            own = np.flatnonzero(gain > least)
+            return gain.ravel()[own], slab.places[own], best.ravel()[own]
+
+        parts = self.each(look)
+        gain, places, best = (np.concatenate(part) for part in zip(*parts, strict=True))
+        chosen = np.argsort(-gain, kind="stable")[:most]
+        at = np.unravel_index(places[chosen], self.setting.shape)
+        return np.stack(at, axis=1).astype(np.int64), best[chosen]
 
     def closest(self, most: int) -> tuple[Places, Floats, Floats]:
         """The profiles whose second-best option lacks least: types (R, n), x and z (R, K)."""
@@ -360,3 +231,12 @@ def _second(slab: Slab) -> Floats:
     """What the second-best option lacks, per profile."""
     lacks: Floats = np.partition(slab.z, 1, axis=0)[1].ravel()
     return lacks
+
+
+def _among(open_to: Mask, price: Floats, margin: float) -> tuple[Floats, Floats]:
+    """Even chances of open options, and what each lacks: at most `margin` for the best."""
+    count = np.count_nonzero(open_to, axis=0)
+    best = np.where(open_to, price, -np.inf).max(axis=0)
+    # A closed option keeps its place, at a chance that is next to nothing.
+    x = np.where(open_to, 1.0 / count, margin / NEVER)
+    return x, np.where(open_to, best + margin - price, NEVER)

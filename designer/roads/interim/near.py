@@ -13,27 +13,27 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
 
-from designer.engines.floats import floats
 from designer.engines.highs import HIGHS
-from designer.engines.listening import listening
-from designer.engines.model import load, quiet_highs, sides_of, their_basis
-from designer.engines.report import BASIC, LOWER, UPPER, Basis, Report
+from designer.engines.report import BASIC, UPPER, Basis, Report
 from designer.engines.watch import Watch
 from designer.program.linear import LinearProgram
-from designer.program.program import Program
 from designer.roads.interim.barrier import Interior
-from designer.roads.interim.cube import Floats
 from designer.roads.interim.live import Duals
 from designer.roads.interim.master import Column, Master, rough_rule
-from designer.roads.interim.merged import Merged
 from designer.roads.interim.rule import Listed, Move, Rule
+from designer.roads.interim.small import Other, Small
 
 FINE = 40
 """Bits of the prices as integers."""
 CLOSE = 1e-2
 """Share of the money at stake that an option may lack and still be looked at."""
+AWAY = 1e-9
+"""Share of it by which another option must be better to join the small program."""
+JOIN = 1_000
+"""Profiles that join it at once."""
+ROUNDS = 50
+"""Times that some do."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -68,36 +68,19 @@ class Hinted:
 
 
 @dataclass(eq=False)
-class _Other:
-    """One option that may be taken at one profile instead of what the first rule takes."""
-
-    types: tuple[int, ...]
-    before: int
-    after: int
-    chance: float = 0.0
-    stands: int = LOWER
-    column: int = 0
-
-    @property
-    def basic(self) -> bool:
-        """Whether its chance is basic."""
-        return self.stands == BASIC
-
-
-@dataclass(eq=False)
 class _Slice:
     """The others of one slice, profile by profile."""
 
-    at: dict[tuple[int, ...], list[_Other]] = field(default_factory=dict)
+    at: dict[tuple[int, ...], list[Other]] = field(default_factory=dict)
 
-    def rules(self) -> list[list[_Other]]:
+    def rules(self) -> list[list[Other]]:
         """Per stretch of the random number what differs from the first rule."""
         ends: list[tuple[float, int]] = []
         for others in self.at.values():
             level = 0.0
             for other in others:
                 level += other.chance
-                if other.basic:
+                if other.ends:
                     ends.append((level, other.column))
         order = [column for _, column in sorted(ends)]
         found = []
@@ -107,7 +90,7 @@ class _Slice:
             found.append([other for other in taken if other is not None])
         return found
 
-    def _taken(self, others: list[_Other], gone: set[int]) -> _Other | None:
+    def _taken(self, others: list[Other], gone: set[int]) -> Other | None:
         """The first other whose stretch has not ended; None for the first rule's option."""
         for other in others:
             if other.basic:
@@ -130,13 +113,14 @@ def corner_near(master: Master, found: Interior, watch: Watch) -> Corner | None:
     master.add(Listed(rule, counts), [])
     first = len(master.listed) - 1
     draft, program = master.program([(g, first) for g in range(master.slices)])
-    others = _others(master, found, rule)
-    ended = _Small(master, draft.merged, program, others, found).solve(watch)
-    if ended is None:
+    small = Small(master, draft.merged, program)
+    small.add(_others(master, found, rule))
+    small.hint(found.tight)
+    if not _grown(small, found, rule, watch):
         return None
-    columns_at, rows_at = ended
+    columns_at, rows_at = small.read()
     slices = [_Slice() for _ in range(master.slices)]
-    for other in others:
+    for other in small.others:
         g = 0 if master.lead is None else other.types[master.lead]
         slices[g].at.setdefault(other.types, []).append(other)
     kept: list[Column] = []
@@ -155,124 +139,48 @@ def corner_near(master: Master, found: Interior, watch: Watch) -> Corner | None:
     return Corner(kept, Basis(status, rows_at))
 
 
-def _others(master: Master, found: Interior, rule: Rule) -> list[_Other]:
+def _grown(small: Small, found: Interior, rule: Rule, watch: Watch) -> bool:
+    """Solve the small program until no profile speaks for an option that is not in it.
+
+    Whether it has an optimum.
+    """
+    setting = small.master.setting
+    index = rule.indices[-1]
+    tables = [np.asarray(table, dtype=np.float64) for table in index.parties]
+    tables[0] = tables[0] + np.asarray(index.options, dtype=np.float64)
+    stacked = np.vstack(tables)
+    for _ in range(ROUNDS):
+        if not small.solve(watch):
+            return False
+        types, best = found.cube.better(stacked, small.prices(), AWAY * found.money, JOIN)
+        if not len(types):
+            break
+        takes = rule.decides(setting, types)[0].argmax(axis=1)
+        listed = {(other.types, other.after) for other in small.others}
+        more = [
+            Other(at, int(before), int(after))
+            for at, before, after in zip(map(tuple, types.tolist()), takes, best, strict=True)
+            if before != after and (at, int(after)) not in listed
+        ]
+        if not more:
+            break
+        small.add(more)
+    return True
+
+
+def _others(master: Master, found: Interior, rule: Rule) -> list[Other]:
     """What else may be taken at the profiles that come close to a tie."""
     takes = rule.decides(master.setting, found.profiles)[0].argmax(axis=1)
     # Chance times lack is about the same everywhere: the larger of the two says which is 0.
     taken_at = found.chances > found.lacks / found.money
     seen = taken_at | (found.lacks <= CLOSE * found.money)
-    listed: list[_Other] = []
+    listed: list[Other] = []
     for row, taken in enumerate(takes):
         types = tuple(int(a) for a in found.profiles[row])
         for k in np.flatnonzero(seen[row]):
             if k != taken:
-                other = _Other(types, int(taken), int(k), float(found.chances[row, k]))
-                other.column = len(listed)
+                other = Other(types, int(taken), int(k), float(found.chances[row, k]))
                 if taken_at[row, k]:
                     other.stands = BASIC if taken_at[row, taken] else UPPER
                 listed.append(other)
     return listed
-
-
-class _Small:
-    """The master over one rule, and the chances of others at some profiles."""
-
-    def __init__(
-        self,
-        master: Master,
-        classes: tuple[Merged, ...],
-        program: Program,
-        others: list[_Other],
-        found: Interior,
-    ) -> None:
-        self.master, self.classes, self.others = master, classes, others
-        self.program = floats(program.stage(0))
-        self.model = quiet_highs()
-        load(self.model, self.program)
-        self.start = program.row_axis.start("slice")
-        num, den = program.row_scale
-        ratio = np.array([int(n) / int(d) for n, d in zip(num, den, strict=True)])
-        self.scale = ratio * np.exp2(self.program.row_exp.astype(np.float64))
-        self._add()
-        self._hint(found)
-
-    def _add(self) -> None:
-        """One column per other option, and a row where a profile has several."""
-        setting, others = self.master.setting, self.others
-        if not others:
-            return
-        types = np.array([other.types for other in others])
-        marginals = [np.array([float(p) for p in party.marginal]) for party in setting.parties]
-        own = np.stack([m[types[:, i]] for i, m in enumerate(marginals)], axis=1)
-        chance = own.prod(axis=1)
-        rows, values = [], []
-        place = self.start + self.master.slices
-        for i, (size, classes) in enumerate(zip(setting.shape, self.classes, strict=True)):
-            before = classes.of[[other.before for other in others]]
-            after = classes.of[[other.after for other in others]]
-            at = place + types[:, i] * classes.size
-            for option, sign in ((before, -1.0), (after, 1.0)):
-                rows.append(at + option)
-                value = sign * chance / own[:, i] * self.scale[at + option]
-                values.append(np.where(before == after, 0.0, value))
-            place += size * classes.size
-        index, value = np.stack(rows, axis=1), np.stack(values, axis=1)
-        count, used = len(others), value != 0
-        self.model.addCols(
-            count,
-            np.zeros(count),
-            np.zeros(count),
-            np.ones(count),
-            int(used.sum()),
-            (np.cumsum(used.sum(axis=1)) - used.sum(axis=1)).astype(np.int32),
-            index[used].astype(np.int32),
-            value[used],
-        )
-        shared: dict[tuple[int, ...], list[int]] = {}
-        for place, other in enumerate(others):
-            shared.setdefault(other.types, []).append(len(self.program.cost) + place)
-        for columns in shared.values():
-            if len(columns) > 1:
-                ones = np.ones(len(columns))
-                self.model.addRow(
-                    -np.inf, 1.0, len(columns), np.array(columns, dtype=np.int32), ones
-                )
-
-    def _hint(self, found: Interior) -> None:
-        """Start where the interior point leads."""
-        columns = np.full(self.model.getNumCol(), BASIC, dtype=np.int8)
-        for place, other in enumerate(self.others):
-            columns[len(self.program.cost) + place] = other.stands
-        rows = np.full(self.model.getNumRow(), BASIC, dtype=np.int8)
-        lo, hi = self.program.row_lo, self.program.row_hi
-        binds = found.tight | (lo == hi)
-        side_of = np.where(np.isfinite(lo), LOWER, UPPER)
-        rows[: len(lo)] = np.where(binds, side_of, BASIC)
-        self.model.setBasis(their_basis(Basis(columns, rows)))
-
-    def solve(self, watch: Watch) -> tuple[npt.NDArray[np.int8], npt.NDArray[np.int8]] | None:
-        """Fill in the chances; the statuses of columns and rows, or None without an optimum."""
-        import highspy
-
-        watch.check()
-        if watch.limit is not None:
-            self.model.setOptionValue("time_limit", watch.left)
-        with listening(self.model, watch, attached=True) as stop:
-            self.model.run()
-        if stop.interrupted:
-            raise KeyboardInterrupt
-        watch.check()
-        if self.model.getModelStatus() != highspy.HighsModelStatus.kOptimal:
-            return None
-        basis = self.model.getBasis()
-        lp, first = self.program, len(self.program.cost)
-        count = len(lp.row_lo)
-        columns = np.array([int(status) for status in basis.col_status], dtype=np.int8)
-        own = basis.col_status[:first], np.isfinite(lp.col_lo), np.isfinite(lp.col_hi)
-        columns[:first] = sides_of(*own)
-        rows = basis.row_status[:count], np.isfinite(lp.row_lo), np.isfinite(lp.row_hi)
-        values: Floats = np.array(self.model.getSolution().col_value)
-        for place, other in enumerate(self.others):
-            other.stands = int(columns[first + place])
-            other.chance = float(np.clip(values[first + place], 0.0, 1.0))
-        return columns[:first], sides_of(*rows)

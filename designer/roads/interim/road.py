@@ -181,13 +181,13 @@ class _Walk:
     def _from_within(self) -> Settled | None:
         """List the rules near an interior point, or simple ones; the answer if they settle it."""
         master = self.master
-        if self.terms.decision != "randomized":
+        if self.only:
             return None
         while self.goal != "any":
             lies = master.lies
             with self._spending("search"):
                 draft, program = master.program([])
-                found = interior(self.setting, draft, program, self.watch)
+                found = interior(self.setting, draft, program, self.watch, master.first())
                 if found is None:
                     break
                 first = len(master.columns)
