@@ -49,7 +49,7 @@ def test_same_verdict_and_value_as_the_plain_road(question: tuple[Setting, Terms
     assert ours.goal_values == plain.goal_values
 
 
-@runs(max_examples=300, deadline=None)
+@runs(max_examples=150, deadline=None)
 @given(questions(max_parties=3), st.data())
 def test_goals_in_order(question: tuple[Setting, Terms], data: st.DataObject) -> None:
     setting, terms = in_order(*question, data)
@@ -210,7 +210,7 @@ def mutate(document: dict[str, Any], data: st.DataObject) -> str:
     return way
 
 
-@runs(max_examples=300, deadline=None)
+@runs(max_examples=150, deadline=None)
 @given(questions(max_parties=3), st.data())
 def test_changed_documents_are_refused_or_true(
     question: tuple[Setting, Terms], data: st.DataObject

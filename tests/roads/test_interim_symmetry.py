@@ -80,7 +80,7 @@ def crowds(draw: st.DrawFn) -> tuple[Setting, Terms]:
     return crowd, terms
 
 
-@runs(max_examples=250, deadline=None)
+@runs(max_examples=150, deadline=None)
 @given(crowds(), st.booleans())
 def test_same_verdict_and_value_as_the_plain_road(
     question: tuple[Setting, Terms], whole: bool

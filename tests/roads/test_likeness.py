@@ -33,7 +33,7 @@ ROAD = ByLikeness()
 SLOW = [HealthCheck.too_slow, HealthCheck.filter_too_much]
 
 
-@settings(max_examples=300, deadline=None, derandomize=True, suppress_health_check=SLOW)
+@settings(max_examples=200, deadline=None, derandomize=True, suppress_health_check=SLOW)
 @given(designs())
 def test_the_same_exact_answer_as_the_plain_road(design: Design) -> None:
     setting, terms = design
@@ -48,7 +48,7 @@ def test_the_same_exact_answer_as_the_plain_road(design: Design) -> None:
     assert rebuild(setting, document) == []
 
 
-@settings(max_examples=200, deadline=None, derandomize=True, suppress_health_check=SLOW)
+@settings(max_examples=100, deadline=None, derandomize=True, suppress_health_check=SLOW)
 @given(designs())
 def test_tables_pass_the_audit(design: Design) -> None:
     setting, terms = design
