@@ -130,7 +130,7 @@ def test_ctrl_c_leaves_it_undecided(after: str, parties: int, size: int, options
 def test_ctrl_c_in_column_generation() -> None:
     terms = Terms(decision="randomized", goals=("floor",), ir="none", tidy="none")
     with pytest.MonkeyPatch.context() as patch:
-        patch.setattr(road, "interior", lambda *asked: None)
+        patch.setattr(road, "interior", lambda *asked: iter(()))
         verdict = pose_terms(
             invented(6, 5, 3, 1), terms, path="interim", progress=pressed("looking for better")
         )
@@ -142,7 +142,7 @@ def test_ctrl_c_in_column_generation() -> None:
 def test_column_generation_alone(question: tuple[Setting, Terms]) -> None:
     setting, terms = question
     with pytest.MonkeyPatch.context() as patch:
-        patch.setattr(road, "interior", lambda *asked: None)
+        patch.setattr(road, "interior", lambda *asked: iter(()))
         agree(setting, terms)
 
 

@@ -14,7 +14,7 @@ to list.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from functools import partial
 
@@ -39,6 +39,12 @@ MOST = 100
 """Steps; twenty to thirty are usual."""
 CLOSE = 1e-8
 """Relative complementarity at which the point is near enough."""
+LOOSE = 1e-3
+"""The same for a first try, which often succeeds."""
+COSTLY = 1 << 17
+"""Chances below which the last steps cost less than a corner that is farther away."""
+MANY = 1 << 18
+"""Profiles beyond which such a try is lost: too many would have to join the corner."""
 USEFUL = 1e-4
 """The same where no further step succeeds."""
 CANDIDATES = 400
@@ -97,20 +103,31 @@ def interior(
     program: Program,
     watch: Watch,
     first: Sequence[Index] = (),
-) -> Interior | None:
-    """A point near the optimum; None where there is none or none is found.
+) -> Iterator[Interior]:
+    """Points ever nearer the optimum, two at most; none where there is none or none is found.
 
     `program` is a master without rules; `first` are indices that decide before all prices, so
     that only what they leave tied is open. Raises Stopped as `watch` says.
     """
     if not fits(setting, program.matrix.rows, bool(first)):
-        return None
-    try:
-        with np.errstate(all="ignore"), one_blas_thread():
-            path = _Path(setting, _Rows.of(setting, draft, program), watch, first)
-            return path.walk() if path.begin() else None
-    except np.linalg.LinAlgError:
-        return None
+        return
+    path = None
+    few = not first and setting.profiles * len(setting.options) < COSTLY
+    for close in (CLOSE if few or setting.profiles > MANY else LOOSE, CLOSE):
+        try:
+            with np.errstate(all="ignore"), one_blas_thread():
+                if path is None:
+                    path = _Path(setting, _Rows.of(setting, draft, program), watch, first)
+                    if not path.begin():
+                        return
+                found = path.walk(close)
+        except np.linalg.LinAlgError:
+            return
+        if found is None:
+            return
+        yield found
+        if path.far <= CLOSE:
+            return
 
 
 @dataclass(frozen=True, eq=False)
@@ -223,10 +240,10 @@ class _Path:
         tables: Floats = (price / self.share).reshape(-1, self.options)
         return tables
 
-    def walk(self) -> Interior | None:
+    def walk(self, close: float) -> Interior | None:
         """Step until the point is near enough."""
         move = (0.0, 0.0)
-        for step in range(MOST):
+        for step in range(len(self.drifts), MOST):
             self.watch.tell("looking for prices, step", step)
             self._settle(move)
             seen = self.cube.each(_curved)
@@ -236,9 +253,9 @@ class _Path:
             if near is None:
                 return None
             self.far, off, short = near
-            if self.far <= CLOSE and max(off, short) <= KEPT:
+            if self.far <= close and max(off, short) <= max(KEPT, close):
                 return self._found()
-            stuck = step > 3 and min(move) < 1e-3
+            stuck = step > 3 and 0.0 < min(move) < 1e-3
             if stuck or (self.far <= USEFUL and short > KEPT):
                 return self._found() if self.far <= USEFUL else None
             centred = fixed + _total(part[1] for part in seen) / self.share

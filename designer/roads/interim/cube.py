@@ -26,7 +26,7 @@ Result = TypeVar("Result")
 
 FEW = 4
 """Profiles without order take several times longer each: one in so many must be left."""
-SLAB = 1 << 13
+SLAB = 1 << 14
 """Profiles handled at once: their arrays stay in the cache."""
 PIECE = 1 << 14
 """The same without order."""
@@ -55,6 +55,7 @@ class Cube:
         self.inner, self.inner_weight = self._half(range(self.cut, len(shape)))
         self.leading = Leading(setting, first, self.cut) if first else None
         self.slabs: list[Slab] = []
+        self.all: list[Slab] = []  # the first ones, whatever has been settled since
         self.weight = 1.0
         self.fixed = np.zeros((sum(shape), len(setting.options)))
 
@@ -99,6 +100,7 @@ class Cube:
             else:
                 slab.x, slab.z = _among(self.leading.open(first, rows), price, margin)
             self.slabs.append(slab)
+        self.all = self.slabs
         return True
 
     def _slab(self, first: int, rows: int, chances: Floats) -> Slab:
@@ -142,6 +144,7 @@ class Cube:
             slab = scattered(like, self.setting.shape, numbers[own], odds[own], nothing, nothing)
             slab.x, slab.z = _among(open_to[:, own], slab.sums(tables), margin)
             self.slabs.append(slab)
+        self.all = self.slabs
 
     def settle(self, margin: float, least: int) -> None:
         """Fix the best option wherever every other lacks more than a margin.
@@ -172,41 +175,59 @@ class Cube:
         like = self.slabs[0]
         self.slabs = [scattered(like, self.setting.shape, place, odds, x, z)]
 
-    def each(self, work: Callable[[Slab], Result]) -> list[Result]:
+    def each(self, work: Callable[[Slab], Result], slabs: list[Slab] | None = None) -> list[Result]:
         """The work on every slab, on both cores where there are many."""
+        slabs = self.slabs if slabs is None else slabs
 
         def watched(slab: Slab) -> Result:
             self.watch.check()
             return work(slab)
 
-        if len(self.slabs) < 8 * CORES:
-            return [watched(slab) for slab in self.slabs]
+        if len(slabs) < 8 * CORES:
+            return [watched(slab) for slab in slabs]
         with ThreadPoolExecutor(max_workers=CORES) as pool:
-            return list(pool.map(watched, self.slabs))
+            return list(pool.map(watched, slabs))
+
+    def taken(self, rule: Floats) -> list[Places]:
+        """Per slab of all profiles, the first open option of those that are best by a rule."""
+
+        def look(slab: Slab) -> Places:
+            score = slab.sums(rule)
+            score[slab.z >= NEVER / 2] = -np.inf
+            best: Places = score.argmax(axis=0)
+            return best
+
+        return self.each(look, self.all)
 
     def better(
-        self, rule: Floats, prices: Floats, least: float, most: int
+        self, taken: list[Places], prices: Floats, least: float, known: Places, most: int
     ) -> tuple[Places, Places]:
-        """Where the best option at some prices beats the best by `rule`: types (R, n), option.
+        """Where the best open option beats what is taken by more than `least`.
 
-        By more than `least`; the `most` profiles where it does so by most. Open options alone.
+        Types (R, n) and that option.
+
+        The `most` profiles where it does so by most; without those that are known as
+        number * K + option.
         """
+        options = len(self.setting.options)
 
-        def look(slab: Slab) -> tuple[Floats, Places, Places]:
-            closed = slab.z >= NEVER / 2
-            first = np.where(closed, -np.inf, slab.sums(rule)).argmax(axis=0)
+        def look(place: int) -> tuple[Floats, Places]:
+            slab, own = self.all[place], taken[place]
             price = slab.sums(prices)
-            price[closed] = -np.inf
+            price[slab.z >= NEVER / 2] = -np.inf
             best = price.argmax(axis=0)
-            gain = price.max(axis=0) - np.take_along_axis(price, first[None], axis=0)[0]
-            own = np.flatnonzero(gain > least)
-            return gain.ravel()[own], slab.places[own], best.ravel()[own]
+            level = np.take_along_axis(price, np.stack([best, own]), axis=0)
+            gain = (level[0] - level[1]).ravel()
+            better = np.flatnonzero(gain > least)
+            return gain[better], slab.places[better] * options + best.ravel()[better]
 
-        parts = self.each(look)
-        gain, places, best = (np.concatenate(part) for part in zip(*parts, strict=True))
-        chosen = np.argsort(-gain, kind="stable")[:most]
-        at = np.unravel_index(places[chosen], self.setting.shape)
-        return np.stack(at, axis=1).astype(np.int64), best[chosen]
+        parts = [look(place) for place in range(len(self.all))]
+        gain, codes = (np.concatenate(part) for part in zip(*parts, strict=True))
+        new = ~np.isin(codes, known)
+        gain, codes = gain[new], codes[new]
+        codes = codes[np.argsort(-gain, kind="stable")[:most]]
+        at = np.unravel_index(codes // options, self.setting.shape)
+        return np.stack(at, axis=1).astype(np.int64), codes % options
 
     def closest(self, most: int) -> tuple[Places, Floats, Floats]:
         """The profiles whose second-best option lacks least: types (R, n), x and z (R, K)."""

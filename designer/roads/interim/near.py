@@ -33,7 +33,9 @@ AWAY = 1e-9
 JOIN = 1_000
 """Profiles that join it at once."""
 ROUNDS = 50
-"""Times that some do."""
+"""Times that some do, at most."""
+MOST = 10_000
+"""Options in it with which it has grown too large."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -142,30 +144,30 @@ def corner_near(master: Master, found: Interior, watch: Watch) -> Corner | None:
 def _grown(small: Small, found: Interior, rule: Rule, watch: Watch) -> bool:
     """Solve the small program until no profile speaks for an option that is not in it.
 
-    Whether it has an optimum.
+    Whether it comes to that.
     """
-    setting = small.master.setting
+    setting, cube = small.master.setting, found.cube
     index = rule.indices[-1]
     tables = [np.asarray(table, dtype=np.float64) for table in index.parties]
     tables[0] = tables[0] + np.asarray(index.options, dtype=np.float64)
-    stacked = np.vstack(tables)
+    taken = cube.taken(np.vstack(tables))
     for _ in range(ROUNDS):
         if not small.solve(watch):
             return False
-        types, best = found.cube.better(stacked, small.prices(), AWAY * found.money, JOIN)
+        types, best = cube.better(taken, small.prices(), AWAY * found.money, small.codes(), JOIN)
         if not len(types):
-            break
+            return True
+        if len(small.others) > MOST:
+            return False
         takes = rule.decides(setting, types)[0].argmax(axis=1)
-        listed = {(other.types, other.after) for other in small.others}
-        more = [
-            Other(at, int(before), int(after))
-            for at, before, after in zip(map(tuple, types.tolist()), takes, best, strict=True)
-            if before != after and (at, int(after)) not in listed
-        ]
-        if not more:
-            break
-        small.add(more)
-    return True
+        small.add(
+            [
+                Other(tuple(at), int(before), int(after))
+                for at, before, after in zip(types.tolist(), takes, best, strict=True)
+                if before != after
+            ]
+        )
+    return False
 
 
 def _others(master: Master, found: Interior, rule: Rule) -> list[Other]:

@@ -24,7 +24,7 @@ from designer.proof.face import lift
 from designer.proof.outcome import Outcome
 from designer.proof.prove import prove
 from designer.proof.vector import Vector
-from designer.roads.interim.barrier import interior
+from designer.roads.interim.barrier import Interior, interior
 from designer.roads.interim.certificate import outcome_of
 from designer.roads.interim.counting import TooMany, lead_party, structured, tied, too_many
 from designer.roads.interim.draft import InterimDraft
@@ -183,27 +183,40 @@ class _Walk:
         master = self.master
         if self.only:
             return None
-        while self.goal != "any":
-            lies = master.lies
-            with self._spending("search"):
-                draft, program = master.program([])
-                found = interior(self.setting, draft, program, self.watch, master.first())
-                if found is None:
-                    break
+        told = self.goal != "any"
+        while told:
+            told = False
+            for found in self._points():
                 first = len(master.columns)
-                corner = corner_near(master, found, self.watch)
-            if corner is None:
-                break
-            self.wanted.update(range(first, len(master.columns)))
-            step = self._exact(list(range(first, len(master.columns))), corner.basis)
-            if step is not None:
-                return step
-            if master.lies is lies:
-                break
+                with self._spending("search"):
+                    corner = corner_near(master, found, self.watch)
+                if corner is None:
+                    continue
+                lies = master.lies
+                chosen = list(range(first, len(master.columns)))
+                self.wanted.update(chosen)
+                step = self._exact(chosen, corner.basis)
+                if step is not None:
+                    return step
+                told = master.lies is not lies
+                if told or self.results:
+                    break
         if not master.columns:
             with self._spending("count"):
                 self._list_simple()
         return None
+
+    def _points(self) -> Iterator[Interior]:
+        """Interior points, ever nearer the optimum."""
+        with self._spending("search"):
+            draft, program = self.master.program([])
+            points = interior(self.setting, draft, program, self.watch, self.master.first())
+        while True:
+            with self._spending("search"):
+                found = next(points, None)
+            if found is None:
+                return
+            yield found
 
     def _list_simple(self) -> None:
         """The efficient rule, and one that always takes the same option for each."""

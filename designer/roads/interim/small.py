@@ -20,6 +20,9 @@ from designer.roads.interim.master import Master
 from designer.roads.interim.merged import Merged
 from designer.roads.interim.slab import Floats
 
+TOLERANCE = 1e-9
+"""Of HiGHS: profiles are many, and each counts for little."""
+
 
 @dataclass(eq=False)
 class Other:
@@ -31,6 +34,7 @@ class Other:
     chance: float = 0.0
     stands: int = LOWER
     column: int = 0
+    unit: float = 1.0
     last: bool = False
 
     @property
@@ -54,6 +58,8 @@ class Small:
         self.program = floats(program.stage(0))
         self.model = quiet_highs()
         self.model.setOptionValue("presolve", "off")
+        for side in ("primal", "dual"):
+            self.model.setOptionValue(f"{side}_feasibility_tolerance", TOLERANCE)
         load(self.model, self.program)
         self.start = program.row_axis.start("slice")
         num, den = program.row_scale
@@ -73,6 +79,7 @@ class Small:
         types = np.array([other.types for other in others])
         own = np.stack([m[types[:, i]] for i, m in enumerate(self.marginals)], axis=1)
         chance = own.prod(axis=1)
+        unit = np.sqrt(chance)
         rows, values = [], []
         place = self.start + self.master.slices
         for i, (size, classes) in enumerate(zip(shape, self.classes, strict=True)):
@@ -81,7 +88,7 @@ class Small:
             at = place + types[:, i] * classes.size
             for option, sign in ((before, -1.0), (after, 1.0)):
                 rows.append(at + option)
-                value = sign * chance / own[:, i] * self.scale[at + option]
+                value = sign * unit / own[:, i] * self.scale[at + option]
                 values.append(np.where(before == after, 0.0, value))
             place += size * classes.size
         index, value = np.stack(rows, axis=1), np.stack(values, axis=1)
@@ -90,21 +97,21 @@ class Small:
             count,
             np.zeros(count),
             np.zeros(count),
-            np.ones(count),
+            unit,
             int(used.sum()),
             (np.cumsum(used.sum(axis=1)) - used.sum(axis=1)).astype(np.int32),
             index[used].astype(np.int32),
             value[used],
         )
-        for other in others:
-            other.column = len(self.others)
+        for other, size in zip(others, unit, strict=True):
+            other.column, other.unit = len(self.others), float(size)
             self.others.append(other)
             shared = self.at.setdefault(other.types, [])
             shared.append(len(self.program.cost) + other.column)
             if len(shared) > 1:
-                self._share(other.types, shared)
+                self._share(other.types, shared, other.unit)
 
-    def _share(self, types: tuple[int, ...], columns: list[int]) -> None:
+    def _share(self, types: tuple[int, ...], columns: list[int], unit: float) -> None:
         """A profile's chances sum to 1 at most: the row says so, so no chance has an upper end.
 
         Two ways to say the same would leave bases that no list of rules has.
@@ -114,9 +121,19 @@ class Small:
         else:
             self.row_at[types] = self.model.getNumRow()
             both = np.array(columns, dtype=np.int32)
-            self.model.addRow(-np.inf, 1.0, len(both), both, np.ones(len(both)))
+            self.model.addRow(-np.inf, unit, len(both), both, np.ones(len(both)))
         for column in columns:
             self.model.changeColBounds(column, 0.0, np.inf)
+
+    def codes(self) -> npt.NDArray[np.int64]:
+        """The numbers of the others' profiles, times K, plus the option."""
+        setting = self.master.setting
+        if not self.others:
+            return np.empty(0, dtype=np.int64)
+        types = np.array([other.types for other in self.others])
+        after = np.array([other.after for other in self.others])
+        places = np.ravel_multi_index(tuple(types.T), setting.shape)
+        return np.asarray(places * len(setting.options) + after, dtype=np.int64)
 
     def hint(self, tight: npt.NDArray[np.bool_]) -> None:
         """Start where the others stand, with the rows that bind."""
@@ -162,20 +179,21 @@ class Small:
     def read(self) -> tuple[npt.NDArray[np.int8], npt.NDArray[np.int8]]:
         """Fill in chances and standings; the statuses of columns and rows."""
         basis = self.model.getBasis()
+        column_status, row_status = list(basis.col_status), list(basis.row_status)
         lp, first = self.program, len(self.program.cost)
         count = len(lp.row_lo)
-        columns = np.array([int(status) for status in basis.col_status], dtype=np.int8)
-        own = basis.col_status[:first], np.isfinite(lp.col_lo), np.isfinite(lp.col_hi)
+        columns = np.array([int(status) for status in column_status], dtype=np.int8)
+        own = column_status[:first], np.isfinite(lp.col_lo), np.isfinite(lp.col_hi)
         columns[:first] = sides_of(*own)
-        rows = basis.row_status[:count], np.isfinite(lp.row_lo), np.isfinite(lp.row_hi)
+        rows = row_status[:count], np.isfinite(lp.row_lo), np.isfinite(lp.row_hi)
         values: Floats = np.array(self.model.getSolution().col_value)
         for place, other in enumerate(self.others):
             other.stands = int(columns[first + place])
-            other.chance = float(np.clip(values[first + place], 0.0, 1.0))
+            other.chance = float(np.clip(values[first + place] / other.unit, 0.0, 1.0))
             other.last = False
         for types, row in self.row_at.items():
             # A row that binds leaves nothing to the first rule's option.
-            if int(basis.row_status[row]) != BASIC:
+            if int(row_status[row]) != BASIC:
                 mixed = [self.others[j - first] for j in self.at[types]]
                 for other in [other for other in mixed if other.basic][-1:]:
                     other.last = True
