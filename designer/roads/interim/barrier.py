@@ -53,14 +53,17 @@ KEPT = 1e-5
 """How far rows may be from being kept."""
 FAR = 1e4
 """A multiplier of this size says that the demands cannot be met."""
-LARGE = 1 << 16
+LARGE = 1 << 12
 """Profiles from which those that are clear are left out."""
-OPEN = 4_000
+OPEN = 2_000
 """Profiles that are never left out."""
 CLEAR = 1e-2
 """Relative complementarity from which some are."""
-DRIFTS = 2.0
-"""A profile is clear where every other option lacks so many times what the last steps moved."""
+DRIFTS = 0.25
+"""A profile is clear where every other option lacks so many times what the last steps moved.
+
+Seldom wrong, as most moves cancel; and the corner looks at all profiles again.
+"""
 SHORT = 0.1
 """A step that goes no farther than this is tried again."""
 REFINED = 1
