@@ -31,7 +31,7 @@ from designer.roads.interim.rule import Index
 from designer.roads.interim.slab import Floats, Slab, curved
 from designer.setting.setting import Setting
 
-LOOKED = 600_000_000
+LOOKED = 200_000_000
 """Chances up to which profiles are looked at for ties."""
 ROWS = 4_000
 """Rows of the master up to which its matrix is held densely."""
@@ -53,16 +53,16 @@ KEPT = 1e-5
 """How far rows may be from being kept."""
 FAR = 1e4
 """A multiplier of this size says that the demands cannot be met."""
-LARGE = 1 << 12
+LARGE = 1 << 14
 """Profiles from which those that are clear are left out."""
-OPEN = 2_000
+OPEN = 4_000
 """Profiles that are never left out."""
 CLEAR = 1e-2
 """Relative complementarity from which some are."""
-DRIFTS = 0.25
+DRIFTS = 2.0
 """A profile is clear where every other option lacks so many times what the last steps moved.
 
-Seldom wrong, as most moves cancel; and the corner looks at all profiles again.
+With fewer some turn out not to be, and more must join the corner than it can hold.
 """
 SHORT = 0.1
 """A step that goes no farther than this is tried again."""
