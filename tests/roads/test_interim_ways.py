@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tracemalloc
+from dataclasses import replace
 
 import pytest
 from hypothesis import assume, event, given
@@ -18,7 +19,7 @@ from designer.roads.interim import barrier, blocks, cube, road
 from designer.roads.interim import lies as lazy
 from designer.roads.interim.multiplier import sides
 from designer.roads.interim.rule import Rule, welfare_index
-from designer.setting.setting import Setting
+from designer.setting.setting import Party, Setting, Type, integers
 from tests.roads.interim_settings import in_order, invented, lines, questions
 
 
@@ -158,6 +159,21 @@ def test_profiles_left_out_of_the_interior_point(question: tuple[Setting, Terms]
         patch.setattr(barrier, "CLEAR", 2.0)
         patch.setattr(cube, "FEW", 1)
         agree(setting, terms)
+
+
+def test_a_point_that_is_near_enough_at_once_leaves_nothing_out() -> None:
+    """Nothing is at stake: no step is taken, so none says how far prices may still move."""
+    party = Party("Norhaven", (Type("t0"),), (1,), integers([[0, 0]], (1, 2)), integers([0]))
+    zero = integers([0, 0])
+    setting = Setting("Nothing", ("k0", "k1"), (party,), zero, zero, 1, digest="0" * 64)
+    terms = Terms(decision="randomized", goals=("revenue",), ir="none", tidy="none")
+    asked = replace(terms, trusted=frozenset({"Norhaven"}), balance="none")
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr(barrier, "LARGE", 0)
+        patch.setattr(barrier, "CLEAR", 2.0)
+        verdict = pose_terms(setting, asked, path="interim")
+    assert (verdict.status, verdict.proved) == ("unbounded", True)
+    assert pose_terms(setting, asked, path="full").status == "unbounded"
 
 
 def test_the_time_limit_leaves_it_undecided() -> None:

@@ -272,7 +272,8 @@ class _Path:
         """Take the step; leave out profiles at which prices will hardly change what is best."""
         for _ in self.cube.each(partial(Slab.move, primal=move[0], dual=move[1])):
             pass
-        if self.setting.profiles > LARGE and self.far < CLEAR:
+        # a point that was near enough at once has no steps behind it to judge by
+        if self.drifts and self.setting.profiles > LARGE and self.far < CLEAR:
             self.cube.settle(DRIFTS * max(self.drifts[-3:]), OPEN)
 
     def _near(self, q: Floats, gap: float) -> tuple[float, float, float] | None:
