@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
 from types import MappingProxyType
 from typing import TYPE_CHECKING
 
-from designer.setting.setting import IntArray, Setting
+from designer.setting.setting import IntArray, Party, Setting
 from designer.table import Table
 
 if TYPE_CHECKING:
@@ -74,6 +74,36 @@ class Standing:
     gain: Fraction
     lie: str | None
     margin: Fraction | None
+
+    @classmethod
+    def of(
+        cls,
+        party: Party,
+        a: int,
+        probability: Fraction,
+        worth: Sequence[Fraction],
+        pays: Sequence[Fraction],
+        outside: Fraction,
+    ) -> Standing:
+        """What type a can expect, from the worth and the payment of each report, honest ones too.
+
+        worth, pays  by told type, given the true type a
+        """
+        utility = worth[a] - pays[a]
+        lies = [(utility - worth[b] + pays[b], b) for b in range(party.size) if b != a]
+        margin, lie = min(lies) if lies else (None, None)
+        return cls(
+            party=party.name,
+            type=party.types[a].label,
+            probability=probability,
+            pays=pays[a],
+            worth=worth[a],
+            utility=utility,
+            outside=outside,
+            gain=utility - outside,
+            lie=None if lie is None else party.types[lie].label,
+            margin=margin,
+        )
 
 
 @dataclass(frozen=True)

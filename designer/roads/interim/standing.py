@@ -58,24 +58,9 @@ def _of_party(
         )
 
     found = []
-    for a, label in enumerate(labels):
-        paid = [pays.get((party.name, told), Fraction(0)) for told in labels]
-        utility = worth(a, a) - paid[a]
+    paid = [pays.get((party.name, told), Fraction(0)) for told in labels]
+    for a in range(len(labels)):
         outside = Fraction(int(party.outside[a]), setting.grain)
-        lies = [(utility - worth(a, b) + paid[b], b) for b in range(len(labels)) if b != a]
-        margin, lie = min(lies) if lies else (None, None)
-        found.append(
-            Standing(
-                party=party.name,
-                type=label,
-                probability=party.marginal[a],
-                pays=paid[a],
-                worth=worth(a, a),
-                utility=utility,
-                outside=outside,
-                gain=utility - outside,
-                lie=None if lie is None else labels[lie],
-                margin=margin,
-            )
-        )
+        worths = [worth(a, b) for b in range(len(labels))]
+        found.append(Standing.of(party, a, party.marginal[a], worths, paid, outside))
     return found

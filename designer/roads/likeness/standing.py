@@ -45,22 +45,6 @@ def _of_party(mechanism: LikenessMechanism, index: int) -> list[Standing]:
             )
             for chances in likely
         ]
-        utility = worths[a] - paid[a]
         outside = Fraction(int(party.outside[a]), setting.grain)
-        lies = [(utility - worths[b] + paid[b], b) for b in range(party.size) if b != a]
-        margin, lie = min(lies) if lies else (None, None)
-        standing.append(
-            Standing(
-                party=party.name,
-                type=party.types[a].label,
-                probability=party.marginal[a],
-                pays=paid[a],
-                worth=worths[a],
-                utility=utility,
-                outside=outside,
-                gain=utility - outside,
-                lie=None if lie is None else party.types[lie].label,
-                margin=margin,
-            )
-        )
+        standing.append(Standing.of(party, a, party.marginal[a], worths, paid, outside))
     return standing

@@ -45,11 +45,9 @@ def _of_party(work: Fibers, pays: IntArray, shift: Fraction) -> list[Standing]:
             for b in range(types):
                 worth[a][b] += _whole((given * hoped[:, a, b]).sum())
                 paid[a][b] += _whole((given * told[:, b]).sum())
-    labels = [type_.label for type_ in party.types]
     return [
-        _standing(
-            party.name,
-            labels,
+        Standing.of(
+            party,
             a,
             Fraction(mass[a], work.total),
             [Fraction(v) / (mass[a] * work.den) for v in worth[a]],
@@ -58,32 +56,6 @@ def _of_party(work: Fibers, pays: IntArray, shift: Fraction) -> list[Standing]:
         )
         for a in range(types)
     ]
-
-
-def _standing(
-    name: str,
-    labels: list[str],
-    a: int,
-    chance: Fraction,
-    worth: list[Fraction],
-    paid: list[Fraction],
-    outside: Fraction,
-) -> Standing:
-    utility = worth[a] - paid[a]
-    lies = [(utility - worth[b] + paid[b], b) for b in range(len(labels)) if b != a]
-    margin, lie = min(lies) if lies else (None, None)
-    return Standing(
-        party=name,
-        type=labels[a],
-        probability=chance,
-        pays=paid[a],
-        worth=worth[a],
-        utility=utility,
-        outside=outside,
-        gain=utility - outside,
-        lie=None if lie is None else labels[lie],
-        margin=margin,
-    )
 
 
 def _whole(value: Any) -> Any:
