@@ -272,20 +272,24 @@ def table_of(draft: Draft, primal: Vector) -> Table:
     setting = draft.setting
     total, parties = setting.profiles, len(setting.parties)
     numbers = primal.numerators()
-    pays, pays_den = _lowest(integers(numbers[: total * parties], (parties, total)), primal.den)
+    pays, pays_den = lowest(integers(numbers[: total * parties], (parties, total)), primal.den)
+    return Table(*decisions_of(draft, primal), pays, pays_den)
+
+
+def decisions_of(draft: Draft, primal: Vector) -> tuple[IntArray, int]:
+    """The chances at the profiles that a draft tells apart, int (N, K), and their denominator."""
     free = draft.chance_col >= 0
     if not free.any():
-        return Table(integers(draft.chance), draft.chance_den, pays, pays_den)
+        return integers(draft.chance), draft.chance_den
     decides = np.zeros(draft.chance.shape, dtype=object)
     common = math.lcm(primal.den, draft.chance_den)
-    columns = np.array(numbers, dtype=object)
+    columns = np.array(primal.numerators(), dtype=object)
     decides[~free] = draft.chance[~free].astype(object) * (common // draft.chance_den)
     decides[free] = columns[draft.chance_col[free]] * (common // primal.den)
-    chances, chances_den = _lowest(integers(decides), common)
-    return Table(chances, chances_den, pays, pays_den)
+    return lowest(integers(decides), common)
 
 
-def _lowest(values: IntArray, den: int) -> tuple[IntArray, int]:
+def lowest(values: IntArray, den: int) -> tuple[IntArray, int]:
     """Numerators and denominator divided by what they share."""
     shared = math.gcd(den, *{int(value) for value in values.flat})
     return (values // shared, den // shared) if shared > 1 else (values, den)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
@@ -12,6 +11,7 @@ import numpy as np
 
 from designer.program.linear import IndexArray
 from designer.proof.vector import Vector
+from designer.roads.full import decisions_of, lowest
 from designer.roads.likeness import likeness as groups
 from designer.roads.likeness.draft import LikenessDraft
 from designer.roads.likeness.orbits import Orbits, count
@@ -101,13 +101,8 @@ class LikenessMechanism:
 def mechanism_of(draft: LikenessDraft, primal: Vector) -> LikenessMechanism:
     """The mechanism that a point of the program stands for."""
     columns = np.array(primal.numerators(), dtype=object)
-    paid, paid_den = _lowest(columns[draft.payment_column], primal.den)
-    common = math.lcm(primal.den, draft.chance_den)
-    free = draft.chance_col >= 0
-    decides = draft.chance.astype(object) * (common // draft.chance_den)
-    decides[free] = columns[draft.chance_col[free]] * (common // primal.den)
-    chances, chances_den = _lowest(decides, common)
-    return LikenessMechanism(draft.orbits, chances, chances_den, paid, paid_den)
+    paid, paid_den = lowest(integers(columns[draft.payment_column]), primal.den)
+    return LikenessMechanism(draft.orbits, *decisions_of(draft, primal), paid, paid_den)
 
 
 def from_plain(plain: dict[str, Any], setting: Setting) -> LikenessMechanism:
@@ -134,9 +129,3 @@ def _whole(rows: Any, width: int) -> IntArray:
     if any(len(row) != width or not all(type(v) is int for v in row) for row in rows):
         raise ValueError("a row of the table does not fit the scenario")
     return integers(rows, (len(rows), width))
-
-
-def _lowest(values: IntArray, den: int) -> tuple[IntArray, int]:
-    """Numerators and denominator divided by what they share."""
-    shared = math.gcd(den, *{int(value) for value in values.flat})
-    return integers(values // shared, values.shape), den // shared
