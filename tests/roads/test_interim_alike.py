@@ -15,6 +15,7 @@ from hypothesis import strategies as st
 from designer.engines.watch import Watch
 from designer.roads.interim import alike, blocks, counting, halves
 from designer.roads.interim.rule import Index, Rule
+from designer.roads.multisets import multisets
 from designer.setting.setting import Party, Setting, Type, integers
 from tests.roads.interim_settings import counted
 from tests.roads.test_interim_counts import plain
@@ -100,7 +101,7 @@ def test_multisets_agree_with_a_pass_over_many_profiles(parties: int, options: i
 @runs(max_examples=100, deadline=None)
 @given(st.integers(1, 8), st.lists(st.integers(1, 10**6), min_size=1, max_size=4))
 def test_multinomial_weights(size: int, masses: list[int]) -> None:
-    numbers, weights = alike._multisets(size, tuple(masses))
+    numbers, weights = multisets(size, tuple(masses))
     assert len(numbers) == math.comb(size + len(masses) - 1, size) == len(set(map(tuple, numbers)))
     assert sum(map(int, weights)) == sum(masses) ** size
     for own, weight in zip(numbers.tolist(), weights.tolist(), strict=True):

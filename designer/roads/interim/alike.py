@@ -15,7 +15,6 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
-from functools import lru_cache
 from typing import Any
 
 import numpy as np
@@ -26,6 +25,7 @@ from designer.roads.interim import halves
 from designer.roads.interim.additive import ROOM as SHORT
 from designer.roads.interim.additive import Additive, additive
 from designer.roads.interim.rule import Counts, Index, Rule
+from designer.roads.multisets import multisets
 from designer.setting.setting import IntArray, Party, Setting, Type
 
 ROOM = 2**62
@@ -189,35 +189,6 @@ def _split(likes: tuple[_Like, ...], lead: int | None) -> tuple[int, ...] | None
     return min(ways.items(), key=lambda way: (sum(way[0]), way))[1]
 
 
-@lru_cache(maxsize=8)
-def _multisets(size: int, masses: tuple[int, ...]) -> tuple[Ints, Ints]:
-    """All multisets of `size` parties: how many have each row, (M, rows), and their weights (M,).
-
-    The weight is size! / prod n_c! * prod masses_c**n_c, found as a product of binomials.
-    """
-    kind: Any = np.int64 if sum(masses) ** size < ROOM else object
-    left = np.array([size], dtype=np.int64)
-    columns: list[Ints] = []
-    weights: Ints = np.ones(1, dtype=kind)
-    binomial = np.array(
-        [[math.comb(n, j) for j in range(size + 1)] for n in range(size + 1)], dtype=object
-    ).astype(kind)
-    for mass in masses[:-1]:
-        copies = left + 1
-        start = np.cumsum(copies) - copies
-        own = np.arange(int(copies.sum()), dtype=np.int64) - np.repeat(start, copies)
-        columns = [np.repeat(column, copies) for column in columns]
-        left = np.repeat(left, copies)
-        powers = np.array([mass**n for n in range(size + 1)], dtype=object).astype(kind)
-        weights = np.repeat(weights, copies) * binomial[left, own] * powers[own]
-        columns.append(own)
-        left = left - own
-    last = np.array([masses[-1] ** n for n in range(size + 1)], dtype=object).astype(kind)
-    numbers, weights = np.stack([*columns, left], axis=1), weights * last[left]
-    numbers.flags.writeable = weights.flags.writeable = False
-    return numbers, weights
-
-
 @dataclass(frozen=True, eq=False)
 class _Chunk:
     """Some parties alike as one: its types are the multisets.
@@ -237,7 +208,7 @@ class _Chunk:
         if size == 1:
             numbers: Ints = np.eye(len(like.rows), dtype=np.int64)
             return _Chunk(like, 1, numbers, np.array(like.masses, dtype=object))
-        return _Chunk(like, size, *_multisets(size, like.masses))
+        return _Chunk(like, size, *multisets(size, like.masses))
 
     def table(self, reach: int) -> IntArray:
         """The multisets' index sums, shape (M, K)."""

@@ -17,6 +17,7 @@ import numpy as np
 
 from designer.program.linear import BoolArray, IndexArray
 from designer.roads.likeness.likeness import Likeness
+from designer.roads.multisets import multisets
 from designer.setting.profiles import strides
 from designer.setting.setting import IntArray, Setting
 
@@ -168,11 +169,12 @@ class Orbits:
         numbers: IndexArray = np.zeros(1, dtype=self.dtype)
         weights: IntArray = np.ones(1, dtype=object)
         for group in groups:
-            types = multisets(self.setting.shape[group[0]], len(group))
-            steps = types @ self.strides[list(group)]
-            numbers = np.add.outer(numbers, steps).ravel()
-            own = multiset_weights(types, self.setting.parties[group[0]].weights)
-            weights = np.multiply.outer(weights, own).ravel()
+            counts, own = multisets(len(group), self.setting.parties[group[0]].weights)
+            # from how many have each type to the types in rising order
+            kinds = np.tile(np.arange(counts.shape[1]), len(counts))
+            types = np.repeat(kinds, counts.ravel()).reshape(len(counts), len(group))
+            numbers = np.add.outer(numbers, types @ self.strides[list(group)]).ravel()
+            weights = np.multiply.outer(weights, own.astype(object)).ravel()
         return numbers, weights
 
 
@@ -213,26 +215,3 @@ def count(setting: Setting, likeness: Likeness) -> int:
     return math.prod(
         math.comb(len(group) + setting.shape[group[0]] - 1, len(group)) for group in likeness.groups
     )
-
-
-def multisets(size: int, members: int) -> IndexArray:
-    """All multisets of `members` types out of `size`, as rising rows, int (C, members)."""
-    found = itertools.combinations_with_replacement(range(size), members)
-    return np.fromiter(itertools.chain.from_iterable(found), dtype=np.int64).reshape(-1, members)
-
-
-def multiset_weights(types: IndexArray, weights: tuple[int, ...]) -> IntArray:
-    """The weight of all orders of each multiset: m! prod_a weights_a^n_a / n_a!, Python ints."""
-    rows, members = types.shape
-    left = np.full(rows, members, dtype=np.int64)
-    total: IntArray = np.ones(rows, dtype=object)
-    for a, weight in enumerate(weights):
-        power = [weight**n for n in range(members + 1)]
-        ways = [[math.comb(m, n) * power[n] for n in range(m + 1)] for m in range(members + 1)]
-        table = np.zeros((members + 1, members + 1), dtype=object)
-        for m, row in enumerate(ways):
-            table[m, : m + 1] = row
-        n = (types == a).sum(axis=1)
-        total = total * table[left, n]
-        left = left - n
-    return total
