@@ -144,6 +144,21 @@ def of_columns(columns: IndexArray, dtype: np.dtype[Any]) -> Affine:
     )
 
 
+def averages(forms: Affine, weights: IntArray, totals: IntArray) -> Affine:
+    """Averages of consecutive runs of forms with one denominator, weights (R, runs)."""
+    runs = weights.shape[1]
+    flat = weights.ravel()
+    factor = flat[forms.row]
+    keep = factor != 0
+    return Affine(
+        forms.row[keep] // runs,
+        forms.col[keep],
+        forms.num[keep] * factor[keep],
+        (forms.const * flat).reshape(weights.shape).sum(axis=1).astype(forms.const.dtype),
+        totals * forms.den[0],
+    )
+
+
 @dataclass(frozen=True, eq=False)
 class Rows:
     """Integer rows in compressed form, each divided by the gcd of its numbers.

@@ -11,11 +11,10 @@ import math
 from collections.abc import Callable, Sequence
 from fractions import Fraction
 from functools import cached_property
-from typing import Any
 
 import numpy as np
 
-from designer.program.affine import Affine, Rows, compress, constants, of_columns
+from designer.program.affine import Affine, Rows, averages, compress, constants, of_columns
 from designer.program.labels import (
     Decides,
     ExpectedDecision,
@@ -27,6 +26,7 @@ from designer.program.labels import (
 )
 from designer.program.linear import BoolArray, IndexArray
 from designer.program.program import Block
+from designer.program.width import width
 from designer.setting.setting import IntArray, Setting
 
 FREE_RULES = ("randomized", "deterministic")
@@ -43,7 +43,7 @@ class Draft:
         """
         self.setting = setting
         self.decision = decision
-        self.dtype = _dtype(setting, amounts)
+        self.dtype = width(setting, amounts)
         self.column_blocks: list[Block] = []
         self.row_blocks: list[Block] = []
         self.rows: list[tuple[Rows, str]] = []
@@ -488,35 +488,6 @@ class Draft:
             if known in self._allowances:
                 return self._allowances[known]
         return constants(np.zeros(1, dtype=self.dtype), 1, self.dtype).plus(amount)
-
-
-def averages(forms: Affine, weights: IntArray, totals: IntArray) -> Affine:
-    """Averages of consecutive runs of forms with one denominator, weights (R, runs)."""
-    runs = weights.shape[1]
-    flat = weights.ravel()
-    factor = flat[forms.row]
-    keep = factor != 0
-    return Affine(
-        forms.row[keep] // runs,
-        forms.col[keep],
-        forms.num[keep] * factor[keep],
-        (forms.const * flat).reshape(weights.shape).sum(axis=1).astype(forms.const.dtype),
-        totals * forms.den[0],
-    )
-
-
-def _dtype(setting: Setting, amounts: tuple[Fraction, ...]) -> np.dtype[Any]:
-    """int64 where no product or sum of a row can leave it, Python integers otherwise."""
-    money = [setting.outlay, setting.worth]
-    for party in setting.parties:
-        money += [party.value, party.outside]
-    largest = max((int(abs(array).max()) for array in money if array.size), default=1)
-    reach = (largest + 1) * (len(setting.parties) + len(setting.options) + 2) * setting.grain
-    for amount in amounts:
-        reach *= amount.denominator
-        reach = max(reach, abs(amount.numerator) * setting.grain)
-    reach *= setting.total_weight * setting.rule_den
-    return np.dtype(np.int64) if reach < 2**58 else np.dtype(object)
 
 
 def _pays_label(setting: Setting, name: str) -> Callable[[int], Label]:

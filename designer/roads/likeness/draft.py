@@ -6,8 +6,8 @@ from fractions import Fraction
 
 import numpy as np
 
-from designer.program.affine import Affine, constants, of_columns
-from designer.program.draft import Draft, averages
+from designer.program.affine import Affine, averages, constants, of_columns
+from designer.program.draft import Draft
 from designer.program.labels import ExpectedDecision, Label, Pays
 from designer.program.linear import BoolArray, IndexArray
 from designer.roads.likeness.orbits import Orbits
