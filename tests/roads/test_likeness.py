@@ -5,6 +5,7 @@ from __future__ import annotations
 import copy
 import json
 import math
+from dataclasses import replace
 from fractions import Fraction
 from typing import Any
 
@@ -25,6 +26,7 @@ from designer.roads.likeness.orbits import Orbits, count
 from designer.roads.likeness.road import ByLikeness
 from designer.roads.likeness.standing import standings
 from designer.setting.setting import Setting
+from tests.roads.brought_home import assert_on_demand
 from tests.roads.likeness_settings import designs, spread
 from tests.roads.likeness_settings import settings as alike_settings
 
@@ -98,12 +100,7 @@ def test_payments_on_demand_are_the_table_and_survive_their_file(design: Design)
     assert isinstance(verdict.mechanism, LikenessMechanism)
     assert verdict.table is not None
     back = from_plain(json.loads(json.dumps(verdict.mechanism.plain())), setting)
-    for profile in range(setting.profiles):
-        types = setting.types_at(profile)
-        pays = tuple(verdict.table.payment(i, profile) for i in range(len(types)))
-        chances = tuple(verdict.table.chance(profile, k) for k in range(len(setting.options)))
-        assert verdict.mechanism.pays(types) == pays == back.pays(types)
-        assert verdict.mechanism.decides(types) == chances == back.decides(types)
+    assert_on_demand(setting, verdict, back)
     assert verdict.audit is not None
     assert standings(verdict.mechanism) == verdict.audit.standings
 
@@ -114,8 +111,6 @@ def test_even_handed_tables_are_found_without_asking(design: Design) -> None:
     """Its tables pass the demand that alike parties be treated alike (anonymity)."""
     setting, terms = design
     assume(not terms.even_handed and ROAD.applies(setting, terms) is None)
-    from dataclasses import replace
-
     fair = replace(terms, even_handed=True)
     assume(ROAD.applies(setting, fair) is None)
     ours = pose_terms(setting, terms, path="likeness")

@@ -13,7 +13,6 @@ from hypothesis import HealthCheck, assume, given, settings
 from hypothesis import strategies as st
 
 from designer import Demands, parse_scenario, pose
-from designer.auditing import audit
 from designer.demands.plain import as_plain
 from designer.demands.terms import Terms
 from designer.engines.highs import HIGHS
@@ -33,6 +32,7 @@ from designer.roads.typegraph.road import TypeGraph
 from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
 from designer.verdict import Verdict
+from tests.roads.brought_home import assert_honest_and_balanced, assert_on_demand
 from tests.roads.typegraph_settings import designs, lifted
 
 Design = tuple[Setting, Terms]
@@ -66,18 +66,7 @@ def test_tables_pass_the_audit(design: Design) -> None:
     verdict = pose_terms(setting, terms, path="type-graph")
     assume(verdict.status == "possible" and not terms.trusted)
     assert verdict.table is not None
-    found = audit(
-        setting,
-        verdict.table,
-        subsidy=verdict.subsidy,
-        slack=terms.slack,
-        shortfall=terms.shortfall,
-        compelled=terms.compelled,
-    )
-    words = {"ic-dominant", f"ir-{terms.ir}", f"balance-{terms.balance}-{terms.budget}"}
-    judged = {name: finding for name, finding in found.worst.items() if name in words}
-    assert "ic-dominant" in judged
-    assert [name for name, finding in judged.items() if not finding.holds] == []
+    assert_honest_and_balanced(setting, terms, verdict)
 
 
 @settings(max_examples=150, deadline=None, derandomize=True)
@@ -104,12 +93,7 @@ def test_payments_on_demand_are_the_table_and_survive_their_file(design: Design)
     assert verdict.mechanism is not None
     assert verdict.table is not None
     back = from_plain(json.loads(json.dumps(verdict.mechanism.plain())), setting)
-    for profile in range(setting.profiles):
-        types = setting.types_at(profile)
-        pays = tuple(verdict.table.payment(i, profile) for i in range(len(types)))
-        chances = tuple(verdict.table.chance(profile, k) for k in range(len(setting.options)))
-        assert verdict.mechanism.pays(types) == pays == back.pays(types)
-        assert verdict.mechanism.decides(types) == chances == back.decides(types)
+    assert_on_demand(setting, verdict, back)
     assert isinstance(verdict.mechanism, GraphMechanism)
     assert verdict.audit is not None
     assert standings(verdict.mechanism) == verdict.audit.standings

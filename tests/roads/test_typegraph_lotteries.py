@@ -13,7 +13,6 @@ from hypothesis import strategies as st
 
 from benchmarks.invented import general
 from designer import Demands, parse_scenario, pose
-from designer.auditing import audit
 from designer.demands.plain import as_plain
 from designer.engines.highs import HIGHS
 from designer.engines.watch import Watch
@@ -36,6 +35,7 @@ from designer.roads.typegraph.mechanism import GraphMechanism, from_plain
 from designer.roads.typegraph.mixing import Mixing, Mixture, uncovered
 from designer.roads.typegraph.standing import standings
 from designer.setting.setting import Setting
+from tests.roads.brought_home import assert_honest_and_balanced, assert_on_demand
 from tests.roads.test_typegraph import CASES, POTS, TYPES, Design, both, project, proof_of
 from tests.roads.typegraph_settings import lifted, torn_designs
 
@@ -73,28 +73,12 @@ def test_tables_with_lotteries_pass_the_audit_and_survive_their_file(design: Des
     assert verdict.table is not None
     assert isinstance(verdict.mechanism, GraphMechanism)
     back = from_plain(json.loads(json.dumps(verdict.mechanism.plain())), setting)
-    for profile in range(setting.profiles):
-        types = setting.types_at(profile)
-        pays = tuple(verdict.table.payment(i, profile) for i in range(len(types)))
-        chances = tuple(verdict.table.chance(profile, k) for k in range(len(setting.options)))
-        assert verdict.mechanism.pays(types) == pays == back.pays(types)
-        assert verdict.mechanism.decides(types) == chances == back.decides(types)
+    assert_on_demand(setting, verdict, back)
     assert verdict.audit is not None
     assert standings(verdict.mechanism) == verdict.audit.standings
     if terms.trusted:
         return
-    found = audit(
-        setting,
-        verdict.table,
-        subsidy=verdict.subsidy,
-        slack=terms.slack,
-        shortfall=terms.shortfall,
-        compelled=terms.compelled,
-    )
-    words = {"ic-dominant", f"ir-{terms.ir}", f"balance-{terms.balance}-{terms.budget}"}
-    judged = {name: finding for name, finding in found.worst.items() if name in words}
-    assert "ic-dominant" in judged
-    assert [name for name, finding in judged.items() if not finding.holds] == []
+    assert_honest_and_balanced(setting, terms, verdict)
 
 
 @settings(max_examples=100, deadline=None, derandomize=True)
